@@ -1,0 +1,34 @@
+//! The data types of the API under `/api/v1`: one vocabulary for the daemon that answers and the client that asks.
+//!
+//! Only data and serde live here. Every physical quantity is a [`Quantity`], `{"value": …, "u": …, "unit": "…"}`,
+//! with `u` the *standard* uncertainty (JCGM 100, 2.3.1); people see the expanded one, `2 u`.
+//! Sign conventions: with both tips on the node `s(t)`, `P(t) = s(t)` and `N(t) = g·s(t − τ) + o`, so a
+//! positive skew τ says that the negative leg arrives late, the gain g is N relative to P, and the offset o is in
+//! volts at the probe tips.
+
+mod bench;
+mod capture;
+mod correction;
+mod event;
+mod problem;
+mod quantity;
+mod run;
+mod sequence;
+
+pub use bench::{Bench, Instrument, Leg, LinkState, Pair, Probe, Reference, Rest, Route, Setting};
+pub use capture::{Capture, Captures, Condition, Figure, Grade, LeakBound, LimitVerdict, UncertaintyTerm};
+pub use correction::{
+    Carried, Correction, CorrectionConditions, CorrectionState, DeskewRequest, LegConditions, RejectionPoint,
+    VerifyRequest,
+};
+pub use event::{Event, EventKind};
+pub use problem::{Problem, ProblemCode};
+pub use quantity::Quantity;
+pub use run::{LimitFailure, Run, RunKind, RunProgress, RunRequest, RunState, Runs, StageReport};
+pub use sequence::{CheckReport, MistakeReport, SequenceInfo, Sequences};
+
+/// Where every path of this API begins.
+pub const PREFIX: &str = "/api/v1";
+
+/// The address that the daemon listens on unless told otherwise; loopback only.
+pub const DEFAULT_LISTEN: &str = "127.0.0.1:7488";

@@ -1,0 +1,57 @@
+use super::*;
+
+/// Largest `|H(f) − exp(j2πf·advance)|` over the band and over fractions, in dB.
+fn worst_error_db(taps: usize) -> f64 {
+    let mut worst = 0.0f64;
+    for step in 0..=20 {
+        let advance = f64::from(step) / 20.0 - 3.0;
+        let interpolator = Interpolator::with_taps(advance, taps);
+        for bin in 0..=400 {
+            let omega = 2.0 * std::f64::consts::PI * BAND * f64::from(bin) / 400.0;
+            let (mut re, mut im) = (0.0, 0.0);
+            for (k, h) in interpolator.taps.iter().enumerate() {
+                let angle = omega * (interpolator.first as f64 + k as f64);
+                re += h * angle.cos();
+                im += h * angle.sin();
+            }
+            let angle = omega * advance;
+            worst = worst.max((re - angle.cos()).hypot(im - angle.sin()));
+        }
+    }
+    20.0 * worst.log10()
+}
+
+#[test]
+fn error_stays_below_120_db_in_the_band() {
+    let error = worst_error_db(TAPS);
+    assert!(error <= -120.0, "{error} dB");
+    // A shorter kernel must be worse, or the measure is blind.
+    assert!(worst_error_db(28) > -100.0);
+}
+
+#[test]
+fn bessel_function_has_its_tabulated_values() {
+    // Abramowitz and Stegun, table 9.8: e^-x·I0(x) at x = 1 and x = 10, from memory.
+    assert!((bessel_i0(1.0) * (-1.0f64).exp() - 0.465_759_607_6).abs() < 1e-9);
+    assert!((bessel_i0(10.0) * (-10.0f64).exp() - 0.127_833_337_2).abs() < 1e-9);
+}
+
+#[test]
+fn a_delayed_sine_is_brought_back() {
+    let advance = 2.37;
+    let signal: Vec<f64> = (0..400).map(|i| (0.9 * (f64::from(i) - advance)).sin()).collect();
+    let interpolator = Interpolator::new(advance);
+    let range = interpolator.support(signal.len());
+    let output = interpolator.apply(&signal);
+    assert_eq!(range.len(), output.len());
+    for (i, y) in range.zip(output) {
+        assert!((y - (0.9 * i as f64).sin()).abs() < 2e-6, "sample {i}");
+    }
+}
+
+#[test]
+fn a_short_record_has_no_support() {
+    assert!(Interpolator::new(0.5).apply(&[1.0; 10]).is_empty());
+    assert!(Interpolator::new(-300.5).apply(&[1.0; 100]).is_empty());
+    assert!(Interpolator::new(300.5).apply(&[1.0; 100]).is_empty());
+}

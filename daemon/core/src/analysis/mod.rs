@@ -1,0 +1,13 @@
+//! The mathematics of two legs that must agree.
+//!
+//! The model, used everywhere: with both tips on one node `s(t)`, the positive leg gives `P(t) = s(t)` and the
+//! negative leg `N(t) = g·s(t − τ) + o`. *Skew* τ > 0: the negative leg arrives late. *Gain* g: N relative to P.
+//! *Offset* o: volts at the tips. The corrected difference is `D(t) = P(t) − (N(t + τ) − o)/g`, the common mode
+//! `C = (P + N_corrected)/2`.
+
+pub mod correction;
+pub mod interpolate;
+pub mod record;
+
+pub use correction::{Correction, Estimate};
+pub use record::{Record, Samples};

@@ -1,0 +1,72 @@
+//! The samples of one leg from one acquisition.
+
+/// Samples as the instrument sent them.
+#[derive(Debug, Clone, PartialEq)]
+pub enum Samples {
+    /// Converter codes, or averaged codes on a finer grid.
+    Codes(Vec<i16>),
+    /// Numbers, from instruments that send floating point or text.
+    Numbers(Vec<f32>),
+}
+
+impl Samples {
+    /// How many samples there are.
+    #[must_use]
+    pub fn len(&self) -> usize {
+        match self {
+            Self::Codes(codes) => codes.len(),
+            Self::Numbers(numbers) => numbers.len(),
+        }
+    }
+
+    /// Whether there are none.
+    #[must_use]
+    pub fn is_empty(&self) -> bool {
+        self.len() == 0
+    }
+}
+
+/// The samples of one leg from one acquisition, with what turns them into volts at the probe tip and seconds.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Record {
+    /// Raw samples.
+    pub samples: Samples,
+    /// Volts at the tip per code.
+    pub volts_per_code: f64,
+    /// Volts at the tip at code 0.
+    pub zero_v: f64,
+    /// Seconds between two samples.
+    pub interval_s: f64,
+    /// Time of sample 0 relative to the trigger, in seconds.
+    pub start_s: f64,
+    /// The converter's lowest and highest code; a sample at or beyond one of them is clipped.
+    pub end_codes: (f64, f64),
+    /// Size of one converter step at the tip in volts. Equal to `volts_per_code` for a single acquisition; an averaged
+    /// record has finer codes than its converter.
+    pub step_v: f64,
+    /// How many acquisitions were averaged into it, at least 1.
+    pub averages: u32,
+}
+
+impl Record {
+    /// The samples in volts at the tip.
+    #[must_use]
+    pub fn volts(&self) -> Vec<f64> {
+        let volt = |code: f64| code.mul_add(self.volts_per_code, self.zero_v);
+        match &self.samples {
+            Samples::Codes(codes) => codes.iter().map(|&code| volt(f64::from(code))).collect(),
+            Samples::Numbers(numbers) => numbers.iter().map(|&number| volt(f64::from(number))).collect(),
+        }
+    }
+
+    /// How many samples lie at or beyond the converter's ends.
+    #[must_use]
+    pub fn clipped(&self) -> usize {
+        let (low, high) = self.end_codes;
+        let beyond = |code: f64| code <= low || code >= high;
+        match &self.samples {
+            Samples::Codes(codes) => codes.iter().filter(|&&code| beyond(f64::from(code))).count(),
+            Samples::Numbers(numbers) => numbers.iter().filter(|&&number| beyond(f64::from(number))).count(),
+        }
+    }
+}
