@@ -1,0 +1,128 @@
+//! A simulated bench with a daemon on it.
+
+use std::path::{Path, PathBuf};
+
+use serde_json::Value;
+use tempfile::TempDir;
+
+use crate::api::Api;
+use crate::process::Program;
+use crate::rewrite::set_resource;
+
+/// The texts that a lab is made of; begin with the shipped ones and change what the test is about.
+#[derive(Debug, Clone)]
+pub struct LabPlan {
+    /// The simulator's scenario.
+    pub scenario: String,
+    /// The bench file; the instruments' addresses are filled in.
+    pub bench: String,
+    /// More sequences for the bench's folder: name without ending, text.
+    pub sequences: Vec<(String, String)>,
+}
+
+impl Default for LabPlan {
+    fn default() -> Self {
+        let read = |path: &str| {
+            let path = crate::project().join("configs").join(path);
+            std::fs::read_to_string(&path).unwrap_or_else(|error| panic!("{}: {error}", path.display()))
+        };
+        Self {
+            scenario: read("scenarios/greenhouse-fan.toml"),
+            bench: read("benches/greenhouse-fan.toml"),
+            sequences: vec![
+                ("gate-night".to_owned(), read("sequences/gate-night.toml")),
+                ("gate-quick".to_owned(), read("sequences/gate-quick.toml")),
+            ],
+        }
+    }
+}
+
+/// A simulated bench with a daemon on it.
+#[derive(Debug)]
+pub struct Lab {
+    /// The daemon's API.
+    pub api: Api,
+    /// The daemon's address, such as `http://127.0.0.1:40001`.
+    pub url: String,
+    /// The simulator.
+    pub sim: Program,
+    /// The daemon.
+    pub daemon: Program,
+    folder: TempDir,
+}
+
+impl Lab {
+    /// Starts both programs and waits until they are ready.
+    ///
+    /// # Panics
+    /// When one of them does not come up.
+    pub async fn start(plan: &LabPlan) -> Self {
+        let folder = tempfile::tempdir().expect("a temporary folder");
+        let place = folder.path();
+        let write = |name: &str, text: &str| {
+            let path = place.join(name);
+            std::fs::write(&path, text).expect("writing a test's file");
+            path
+        };
+        let scenario = write("scenario.toml", &plan.scenario);
+        let mut sim = Program::start("evenpair-sim", &["--scenario", text(&scenario), "--exit-with-stdin"], &place.join("sim.log"));
+        let mut bench = plan.bench.clone();
+        loop {
+            let line = sim.line().await.expect("the simulator becomes ready");
+            if line == "ready" {
+                break;
+            }
+            let told: Value = serde_json::from_str(&line).expect("the simulator tells JSON");
+            let word = |key: &str| told[key].as_str().expect("name and resource").to_owned();
+            bench = set_resource(&bench, &word("name"), &word("resource"));
+        }
+        std::fs::create_dir_all(place.join("sequences")).expect("a folder for sequences");
+        for (name, sequence) in &plan.sequences {
+            write(&format!("sequences/{name}.toml"), sequence);
+        }
+        bench = crate::set_in_table(&bench, "", "sequences", "\"sequences\"");
+        write("bench.toml", &bench);
+        let (daemon, url) = Self::start_daemon(place).await;
+        Self { api: Api::new(&url), url, sim, daemon, folder }
+    }
+
+    async fn start_daemon(place: &Path) -> (Program, String) {
+        let (bench, data) = (place.join("bench.toml"), place.join("data"));
+        let arguments = ["--bench", text(&bench), "--data", text(&data), "--listen", "127.0.0.1:0", "--exit-with-stdin"];
+        let mut daemon = Program::start("evenpaird", &arguments, &place.join("daemon.log"));
+        let line = daemon.line().await;
+        let Some(url) = line.as_deref().and_then(|line| line.strip_prefix("listening on ")) else {
+            let log = std::fs::read_to_string(place.join("daemon.log")).unwrap_or_default();
+            panic!("the daemon said {line:?}; its log:\n{log}");
+        };
+        let url = url.to_owned();
+        (daemon, url)
+    }
+
+    /// Starts the daemon again on the same data, after it has ended.
+    ///
+    /// # Panics
+    /// When it does not come up.
+    pub async fn restart_daemon(&mut self) {
+        let (daemon, url) = Self::start_daemon(self.folder.path()).await;
+        self.daemon = daemon;
+        self.api = Api::new(&url);
+        self.url = url;
+    }
+
+    /// The folder that holds the bench file, the logs and `data`.
+    #[must_use]
+    pub fn folder(&self) -> &Path {
+        self.folder.path()
+    }
+
+    /// The daemon's data folder.
+    #[must_use]
+    pub fn data(&self) -> PathBuf {
+        self.folder.path().join("data")
+    }
+}
+
+fn text(path: &Path) -> &str {
+    path.to_str().expect("a temporary path is UTF-8")
+}
