@@ -1,2 +1,52 @@
-//! Placeholder.
-fn main() {}
+//! `evenpaird`: the daemon that owns a bench.
+//!
+//! Floors, each using only those below it: [`app`] starts and ends everything; [`http`] answers; [`conductor`] carries
+//! runs out; [`session`], [`store`] and [`clock`] touch instruments, disk and time.
+
+mod app;
+mod arguments;
+mod clock;
+mod conductor;
+mod http;
+mod mistakes;
+mod session;
+mod store;
+
+use std::process::ExitCode;
+
+use clap::Parser;
+
+use arguments::{Arguments, LogFormat};
+
+/// Exit status when the daemon could not start: 2, as for a command that could not be completed.
+const NOT_STARTED: u8 = 2;
+
+fn main() -> ExitCode {
+    let arguments = match Arguments::try_parse() {
+        Ok(arguments) => arguments,
+        Err(error) => {
+            let _ = error.print();
+            return ExitCode::from(if error.use_stderr() { 3 } else { 0 });
+        }
+    };
+    let filter = tracing_subscriber::EnvFilter::try_new(&arguments.log).unwrap_or_else(|_| "info".into());
+    let subscriber = tracing_subscriber::fmt().with_writer(std::io::stderr).with_env_filter(filter);
+    match arguments.log_format {
+        LogFormat::Human => subscriber.with_ansi(false).init(),
+        LogFormat::Json => subscriber.json().init(),
+    }
+    let runtime = match tokio::runtime::Builder::new_multi_thread().enable_all().build() {
+        Ok(runtime) => runtime,
+        Err(error) => {
+            eprintln!("evenpaird: starting: {error}");
+            return ExitCode::from(NOT_STARTED);
+        }
+    };
+    match runtime.block_on(app::serve(arguments)) {
+        Ok(()) => ExitCode::SUCCESS,
+        Err(error) => {
+            eprintln!("evenpaird: {error}");
+            ExitCode::from(NOT_STARTED)
+        }
+    }
+}

@@ -84,6 +84,8 @@ pub struct LegConditions {
     pub coupling: String,
     /// Attenuation of the probe.
     pub attenuation: f64,
+    /// The probe's name in the bench file.
+    pub probe: String,
 }
 
 /// Skew that was taken on one vertical range and is used on another.

@@ -28,16 +28,21 @@ impl LiveRun {
     /// Puts a new run into the store.
     pub(crate) async fn create(run: Run, source_text: &str, store: Store) -> Result<Self, StoreError> {
         store.create_run(&run, source_text).await?;
-        let live = Self {
+        let live = Self::again(run, store);
+        live.change(|_| {}, Some(EventKind::StateChanged { state: RunState::Waiting, reason: None })).await?;
+        Ok(live)
+    }
+
+    /// A run that the store has already, from an earlier life of the daemon.
+    pub(crate) fn again(run: Run, store: Store) -> Self {
+        Self {
             id: run.id,
             told: watch::Sender::new(run.generation),
-            face: Mutex::new(run),
+            face: Mutex::new(Run { stages: Vec::new(), ..run }),
             stop: CancellationToken::new(),
             stopped_by: Mutex::default(),
             store,
-        };
-        live.change(|_| {}, Some(EventKind::StateChanged { state: RunState::Waiting, reason: None })).await?;
-        Ok(live)
+        }
     }
 
     /// The run's identity.
@@ -77,8 +82,7 @@ impl LiveRun {
             let at_s = seconds_between(face.created_at, Timestamp::now());
             (face.clone(), Event { generation: face.generation, at_s, kind })
         };
-        self.store.update_run(&run).await?;
-        self.store.append_event(self.id, &event).await?;
+        self.store.publish(&run, &event).await?;
         self.told.send_replace(event.generation);
         Ok(())
     }

@@ -189,7 +189,7 @@ impl Scope<'_> {
             }
         };
         match outcome {
-            Err(SessionError::Deadline { .. }) => {
+            Err(SessionError::NotComplete { .. }) => {
                 self.abort().await;
                 let trigger = match acquisition.trigger.channel {
                     0 => "the external trigger".to_owned(),
@@ -217,7 +217,8 @@ impl Scope<'_> {
     async fn record(&self, leg: &LegSpec) -> Result<(Record, i64), Trouble> {
         let channel = i64::from(leg.channel);
         let preamble = self.handle.call(Call::new(Intent::RecordPreamble).with("channel", channel)).await?;
-        let block = self.handle.data(Call::new(Intent::RecordData).with("channel", channel)).await?;
+        let points = preamble.whole("points").ok().and_then(|points| u64::try_from(points).ok()).unwrap_or(0);
+        let block = self.handle.data(Call::new(Intent::RecordData).with("channel", channel), points).await?;
         let raw = self.handle.dialect().record(&preamble, &block).map_err(|source| self.unreadable(source))?;
         let attenuation = leg.probe.attenuation;
         let record = Record {
@@ -237,6 +238,17 @@ impl Scope<'_> {
         let call = Call::new(Intent::RecordPreamble).with("channel", i64::from(leg.channel));
         let preamble = self.handle.call(call).await?;
         preamble.whole("acquisition").map_err(|source| self.unreadable(source))
+    }
+
+    /// The trouble with a record that was driven to its converter's ends.
+    pub(crate) fn clipped(&self, leg: &'static str, record: &Record, span_v: f64) -> Trouble {
+        Trouble::Clipped {
+            pair: self.pair.name.clone(),
+            leg,
+            count: record.clipped(),
+            points: record.samples.len(),
+            span: show(span_v, Unit::Volt, 3),
+        }
     }
 
     fn number(&self, fields: &Fields, name: &str) -> Result<f64, Trouble> {

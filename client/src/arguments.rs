@@ -1,0 +1,143 @@
+//! What may stand on the command line.
+
+use std::path::PathBuf;
+
+use clap::{Parser, Subcommand, ValueEnum};
+
+/// Deskew two single-ended scope probes and measure the voltage between two points, with its uncertainty.
+///
+/// Both probe grounds are at earth. Never defeat a scope's earth; stay inside the probes' rating and measurement
+/// category; hot circuits are for qualified people, and local codes come first.
+#[derive(Debug, Parser)]
+#[command(name = "evenpair", version)]
+pub(crate) struct Arguments {
+    /// The daemon's address.
+    #[arg(long, global = true, env = "EVENPAIR_SERVER", default_value = "http://127.0.0.1:7488", value_name = "URL")]
+    pub(crate) server: String,
+    /// Print JSON instead of text.
+    #[arg(long, global = true)]
+    pub(crate) json: bool,
+    /// What to do.
+    #[command(subcommand)]
+    pub(crate) command: Command,
+}
+
+/// What to do.
+#[derive(Debug, Subcommand)]
+pub(crate) enum Command {
+    /// Show the whole job on a simulated bench: deskew, verify, measure, all through a real daemon.
+    Demo {
+        /// Keep the data in this folder.
+        #[arg(long, value_name = "DIR")]
+        data: Option<PathBuf>,
+        /// The seed of the simulated bench's noise; the scenario's own if absent.
+        #[arg(long)]
+        seed: Option<u64>,
+    },
+    /// Show the bench: instruments, pairs, settings, routes, cautions.
+    Bench,
+    /// Deskew a pair on its references and verify the correction.
+    Deskew {
+        /// The pair's name.
+        pair: String,
+        /// The most acquisitions to spend on each reference.
+        #[arg(long, value_name = "N")]
+        most: Option<u32>,
+        /// Write the rounded skew into the scope's own skew setting.
+        #[arg(long)]
+        use_scope_skew: bool,
+    },
+    /// Verify a pair's correction on fresh acquisitions.
+    Verify {
+        /// The pair's name.
+        pair: String,
+    },
+    /// Start a sequence: the name of one in the bench's folder, or the path of a file that ends in `.toml`.
+    Run {
+        /// Name or path.
+        sequence: String,
+        /// Stay until it has ended, and tell how.
+        #[arg(long)]
+        wait: bool,
+    },
+    /// List the runs, the latest first.
+    Runs,
+    /// Show a run with its stages, captures and figures.
+    Show {
+        /// The run's identity, or `last`.
+        run: String,
+    },
+    /// Follow a run until it has ended.
+    Watch {
+        /// The run's identity, or `last`.
+        run: String,
+    },
+    /// Stop a run; the bench goes to its safe state.
+    Stop {
+        /// The run's identity, or `last`.
+        run: String,
+    },
+    /// Save a run's waveforms and figures in a folder.
+    Export {
+        /// The run's identity, or `last`.
+        run: String,
+        /// The format of the waveforms.
+        #[arg(long)]
+        to: Format,
+        /// The folder; made if it is not there.
+        folder: PathBuf,
+    },
+    /// Check a bench file or a sequence, without a daemon.
+    Check {
+        /// The file.
+        file: PathBuf,
+        /// The bench that a sequence is checked against.
+        #[arg(long, value_name = "FILE")]
+        bench: Option<PathBuf>,
+    },
+}
+
+/// A format of waveform files.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, ValueEnum)]
+pub(crate) enum Format {
+    /// Text: time, both legs and the corrected difference in seconds and volts.
+    Csv,
+    /// The stored file itself: raw codes with their scale, and the corrected difference.
+    Parquet,
+}
+
+impl Format {
+    /// Its media type.
+    pub(crate) fn media_type(self) -> &'static str {
+        match self {
+            Self::Csv => "text/csv",
+            Self::Parquet => "application/vnd.apache.parquet",
+        }
+    }
+
+    /// Its file name's ending.
+    pub(crate) fn ending(self) -> &'static str {
+        match self {
+            Self::Csv => "csv",
+            Self::Parquet => "parquet",
+        }
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use clap::CommandFactory;
+
+    use super::*;
+
+    #[test]
+    fn the_command_line_is_consistent() {
+        Arguments::command().debug_assert();
+    }
+
+    #[test]
+    fn the_default_server_is_where_the_daemon_listens() {
+        let arguments = Arguments::try_parse_from(["evenpair", "bench"]).unwrap();
+        assert_eq!(arguments.server, format!("http://{}", evenpair_api::DEFAULT_LISTEN));
+    }
+}

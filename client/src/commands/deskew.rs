@@ -1,0 +1,51 @@
+//! `evenpair deskew` and `evenpair verify`
+
+use evenpair_api::{DeskewRequest, Run, RunState, VerifyRequest};
+
+use super::follow;
+use crate::exit::Exit;
+use crate::http::Daemon;
+use crate::trouble::Trouble;
+use crate::{output, render};
+
+/// Deskews a pair and shows the correction that came of it.
+pub(crate) async fn deskew(
+    daemon: &Daemon,
+    pair: &str,
+    most: Option<u32>,
+    use_scope_skew: bool,
+    json: bool,
+) -> Result<Exit, Trouble> {
+    let request = DeskewRequest {
+        most_acquisitions: most,
+        use_scope_skew: use_scope_skew.then_some(true),
+        ..DeskewRequest::default()
+    };
+    let run = daemon.deskew(pair, &request).await?;
+    finish(daemon, pair, run, json).await
+}
+
+/// Verifies a pair's correction and shows it.
+pub(crate) async fn verify(daemon: &Daemon, pair: &str, json: bool) -> Result<Exit, Trouble> {
+    let run = daemon.verify(pair, &VerifyRequest::default()).await?;
+    finish(daemon, pair, run, json).await
+}
+
+async fn finish(daemon: &Daemon, pair: &str, run: Run, json: bool) -> Result<Exit, Trouble> {
+    let run = follow(daemon, &run.id.to_string(), json).await?;
+    if run.state != RunState::Passed {
+        if json {
+            output::print_json(&run)?;
+        } else {
+            output::print(&render::run(&run))?;
+        }
+        return Ok(Exit::of_run(run.state));
+    }
+    let correction = daemon.correction(pair).await?;
+    if json {
+        output::print_json(&correction)?;
+    } else {
+        output::print(&format!("\n{}\n\n{}", render::correction(&correction), render::rejection(&correction.rejection)))?;
+    }
+    Ok(Exit::Passed)
+}

@@ -1,0 +1,66 @@
+//! A quantity for people: value ± expanded uncertainty, to the digit that the uncertainty reaches.
+
+use evenpair_api::Quantity;
+use evenpair_core::units::{Unit, show};
+
+/// The coverage factor of every ± that is printed (JCGM 100, 6.2).
+const COVERAGE: f64 = 2.0;
+
+/// Prefixes by power of ten.
+const PREFIXES: [(i32, &str); 9] =
+    [(-15, "f"), (-12, "p"), (-9, "n"), (-6, "µ"), (-3, "m"), (0, ""), (3, "k"), (6, "M"), (9, "G")];
+
+/// `2.301 ns ± 0.012 ns`: two digits of the expanded uncertainty (JCGM 100, 7.2.6), the value to the same place.
+/// Without an uncertainty, four digits of the value.
+pub(crate) fn with_uncertainty(quantity: &Quantity) -> String {
+    let unit = Unit::from_symbol(&quantity.unit).unwrap_or(Unit::One);
+    let Some(u) = quantity.u.filter(|u| *u > 0.0 && u.is_finite() && quantity.value.is_finite()) else {
+        return show(quantity.value, unit, 4);
+    };
+    let expanded = COVERAGE * u;
+    let (power, prefix) = prefix_for(quantity.value.abs().max(expanded), unit);
+    let scale = 10f64.powi(power);
+    let decimals = decimals_for(expanded / scale);
+    let symbol = if unit == Unit::One { String::new() } else { format!(" {prefix}{unit}") };
+    let (value, expanded) = (quantity.value / scale, expanded / scale);
+    format!("{value:.decimals$}{symbol} ± {expanded:.decimals$}{symbol}")
+}
+
+/// The prefix that brings `size` to 1…999; numbers and decibels have none.
+fn prefix_for(size: f64, unit: Unit) -> (i32, &'static str) {
+    if matches!(unit, Unit::One | Unit::Decibel) || size <= 0.0 {
+        return (0, "");
+    }
+    let wanted = (size.log10() / 3.0).floor() as i32 * 3;
+    PREFIXES.iter().copied().min_by_key(|(power, _)| (power - wanted).abs()).unwrap_or((0, ""))
+}
+
+/// How many decimals show two digits of `expanded`.
+fn decimals_for(expanded: f64) -> usize {
+    // Rounded to two digits first: 0.0996 needs two decimals, not three.
+    let text = format!("{expanded:.1e}");
+    let exponent: i32 = text.rsplit('e').next().and_then(|power| power.parse().ok()).unwrap_or(0);
+    usize::try_from(1 - exponent).unwrap_or(0).min(12)
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn the_uncertainty_decides_the_digits() {
+        let text = |value, u, unit| with_uncertainty(&Quantity::new(value, u, unit));
+        assert_eq!(text(2.30123e-9, 6.1e-12, "s"), "2.301 ns ± 0.012 ns");
+        assert_eq!(text(0.976_012_3, 1.05e-5, "1"), "0.976012 ± 0.000021");
+        assert_eq!(text(11.9, 0.0498, "V"), "11.90 V ± 0.10 V");
+        assert_eq!(text(-0.0352, 0.00055, "V"), "-35.2 mV ± 1.1 mV");
+        assert_eq!(text(1e-12, 1e-9, "s"), "0.0 ns ± 2.0 ns");
+        assert_eq!(text(99_987.0, 600.0, "Hz"), "100.0 kHz ± 1.2 kHz");
+    }
+
+    #[test]
+    fn without_an_uncertainty_four_digits_stand() {
+        assert_eq!(with_uncertainty(&Quantity::exact(48.0, "V")), "48.00 V");
+        assert_eq!(with_uncertainty(&Quantity::exact(f64::NAN, "V")), "NaN V");
+    }
+}

@@ -1,0 +1,216 @@
+//! Start order, shutdown order, signals: once, everything ends in order; twice, at once.
+//!
+//! Up: bench file and dialects, store, sessions, conductor, HTTP. Down: no new requests, runs end and the bench goes to
+//! its safe state, streams and requests drain, sessions end, the store closes. Each step has a deadline.
+
+use std::collections::BTreeMap;
+use std::path::{Path, PathBuf};
+use std::sync::Arc;
+use std::time::Duration;
+
+use evenpair_core::bench::{self, Bench};
+use evenpair_core::dialect::{self, Dialect};
+use evenpair_core::scpi::address::Resource;
+use tokio::io::AsyncReadExt;
+use tokio::signal::unix::{Signal, SignalKind, signal};
+use tokio_util::sync::CancellationToken;
+use tokio_util::task::TaskTracker;
+
+use crate::arguments::Arguments;
+use crate::clock::RealClock;
+use crate::conductor::{Conductor, Instruments, Refusal, Workshop};
+use crate::http;
+use crate::mistakes;
+use crate::session::{self, Caps, SessionSpec, Timing};
+use crate::store::{Store, StoreError};
+
+/// The longest that runs may take to end and the bench to come to rest.
+const REST_WITHIN: Duration = Duration::from_secs(25);
+
+/// The longest that requests which were accepted may take to be answered.
+const DRAIN_WITHIN: Duration = Duration::from_secs(3);
+
+/// Why the daemon does not start.
+#[derive(Debug, thiserror::Error)]
+pub(crate) enum StartError {
+    #[error("{}: {count} mistake(s) in the bench file, shown above; nothing was started", path.display())]
+    Bench { path: PathBuf, count: usize },
+    #[error(transparent)]
+    Conductor(#[from] Refusal),
+    #[error("the instrument `{instrument}` speaks the dialect `{dialect}`, {why}")]
+    Dialect { instrument: String, dialect: String, why: String },
+    #[error("listening on {address}: {source}; is another daemon there? choose another address with --listen")]
+    Listen { address: std::net::SocketAddr, source: std::io::Error },
+    #[error("{address} is not a loopback address; the daemon listens on loopback only, since whoever reaches it drives the bench")]
+    NotLoopback { address: std::net::SocketAddr },
+    #[error("reading {}: {source}", path.display())]
+    Read { path: PathBuf, source: std::io::Error },
+    #[error("the instrument `{instrument}` is at {resource}; this daemon speaks to `TCPIP::host::port::SOCKET` only")]
+    Resource { instrument: String, resource: String },
+    #[error("serving HTTP: {0}")]
+    Serve(std::io::Error),
+    #[error("waiting for signals: {0}")]
+    Signals(std::io::Error),
+    #[error(transparent)]
+    Store(#[from] StoreError),
+}
+
+/// Runs the daemon until it is told to end.
+pub(crate) async fn serve(arguments: Arguments) -> Result<(), StartError> {
+    if !arguments.listen.ip().is_loopback() {
+        return Err(StartError::NotLoopback { address: arguments.listen });
+    }
+    let mut signals = Signals::new(arguments.exit_with_stdin).map_err(StartError::Signals)?;
+    let bench = read_bench(&arguments.bench)?;
+    let dialects = read_dialects(&bench)?;
+    let sequences = bench.sequences.as_ref().map(|folder| beside(&arguments.bench, folder));
+    let store = {
+        let data = arguments.data.clone();
+        let opened = tokio::task::spawn_blocking(move || Store::open(&data)).await;
+        opened.map_err(|error| StartError::Serve(std::io::Error::other(error)))??
+    };
+    let listener = tokio::net::TcpListener::bind(arguments.listen)
+        .await
+        .map_err(|source| StartError::Listen { address: arguments.listen, source })?;
+    let address = listener.local_addr().map_err(StartError::Serve)?;
+
+    let sessions = TaskTracker::new();
+    let hang_up = CancellationToken::new();
+    let instruments = connect(&bench, &dialects, &hang_up, &sessions)?;
+    let workshop =
+        Workshop { bench: Arc::new(bench), instruments, store: store.clone(), clock: Arc::new(RealClock::new()) };
+    let conductor = Conductor::begin(workshop, sequences).await?;
+
+    let stop_serving = CancellationToken::new();
+    let router = http::router(conductor.clone(), stop_serving.clone());
+    let server = axum::serve(listener, router).with_graceful_shutdown(stop_serving.clone().cancelled_owned());
+    let mut server = tokio::spawn(server.into_future());
+    println!("listening on http://{address}");
+    tracing::info!(%address, "listening");
+
+    let why = tokio::select! {
+        why = signals.next() => why,
+        ended = &mut server => return Err(StartError::Serve(ended.map_or_else(std::io::Error::other, |ended| {
+            ended.err().unwrap_or_else(|| std::io::Error::other("the server ended by itself"))
+        }))),
+    };
+    tracing::info!(why, "shutting down; once more ends at once");
+    let down = async {
+        if tokio::time::timeout(REST_WITHIN, conductor.end("the daemon was shut down")).await.is_err() {
+            tracing::error!("the bench did not come to rest in time; look at it");
+        }
+        stop_serving.cancel();
+        if tokio::time::timeout(DRAIN_WITHIN, &mut server).await.is_err() {
+            tracing::warn!("requests were cut off");
+            server.abort();
+        }
+        hang_up.cancel();
+        sessions.close();
+        sessions.wait().await;
+        drop(conductor);
+        store.close().await
+    };
+    tokio::select! {
+        closed = down => Ok(closed?),
+        why = signals.next_signal() => {
+            tracing::warn!(why, "ending at once; the bench may not be at rest");
+            std::process::exit(1)
+        }
+    }
+}
+
+fn read_bench(path: &Path) -> Result<Bench, StartError> {
+    let text = std::fs::read_to_string(path).map_err(|source| StartError::Read { path: path.to_owned(), source })?;
+    bench::read(&text).map_err(|found| {
+        mistakes::show(path, &text, &found);
+        StartError::Bench { path: path.to_owned(), count: found.len() }
+    })
+}
+
+/// A path in the bench file is relative to the bench file.
+fn beside(bench: &Path, path: &str) -> PathBuf {
+    bench.parent().unwrap_or_else(|| Path::new(".")).join(path)
+}
+
+/// Every dialect that the bench's instruments speak, each read once.
+fn read_dialects(bench: &Bench) -> Result<BTreeMap<String, Arc<Dialect>>, StartError> {
+    let mut dialects = BTreeMap::new();
+    for instrument in &bench.instruments {
+        if dialects.contains_key(&instrument.dialect) {
+            continue;
+        }
+        let wrong = |why: String| StartError::Dialect {
+            instrument: instrument.name.clone(),
+            dialect: instrument.dialect.clone(),
+            why,
+        };
+        let text = dialect::bundled(&instrument.dialect)
+            .ok_or_else(|| wrong("which does not come with this daemon; `scpi-99` does".to_owned()))?;
+        let read = Dialect::read(text).map_err(|found| wrong(format!("which has {} mistakes", found.len())))?;
+        dialects.insert(instrument.dialect.clone(), Arc::new(read));
+    }
+    Ok(dialects)
+}
+
+fn connect(
+    bench: &Bench,
+    dialects: &BTreeMap<String, Arc<Dialect>>,
+    hang_up: &CancellationToken,
+    sessions: &TaskTracker,
+) -> Result<Instruments, StartError> {
+    let mut handles = BTreeMap::new();
+    for instrument in &bench.instruments {
+        let Resource::Socket { host, port, .. } = &instrument.resource else {
+            let resource = instrument.resource.to_string();
+            return Err(StartError::Resource { instrument: instrument.name.clone(), resource });
+        };
+        let Some(dialect) = dialects.get(&instrument.dialect) else { continue };
+        let spec = SessionSpec {
+            instrument: instrument.name.clone(),
+            host: host.to_string(),
+            port: *port,
+            dialect: Arc::clone(dialect),
+            timing: Timing { reply: Duration::from_secs_f64(instrument.timeout_s), ..Timing::default() },
+            caps: Caps::default(),
+        };
+        handles.insert(instrument.name.clone(), session::spawn(spec, hang_up.clone(), sessions));
+    }
+    Ok(Instruments::new(handles))
+}
+
+/// What ends the daemon.
+struct Signals {
+    terminate: Signal,
+    interrupt: Signal,
+    with_stdin: bool,
+}
+
+impl Signals {
+    fn new(with_stdin: bool) -> std::io::Result<Self> {
+        Ok(Self { terminate: signal(SignalKind::terminate())?, interrupt: signal(SignalKind::interrupt())?, with_stdin })
+    }
+
+    /// The first of them, in words.
+    async fn next(&mut self) -> &'static str {
+        if !self.with_stdin {
+            return self.next_signal().await;
+        }
+        tokio::select! {
+            why = self.next_signal() => why,
+            () = end_of_stdin() => "standard input was closed",
+        }
+    }
+
+    async fn next_signal(&mut self) -> &'static str {
+        tokio::select! {
+            _ = self.terminate.recv() => "SIGTERM",
+            _ = self.interrupt.recv() => "SIGINT",
+        }
+    }
+}
+
+async fn end_of_stdin() {
+    let mut stdin = tokio::io::stdin();
+    let mut scrap = [0; 64];
+    while stdin.read(&mut scrap).await.is_ok_and(|read| read > 0) {}
+}

@@ -1,0 +1,95 @@
+//! Verification: both tips on one node, fresh acquisitions, and what of the common mode is left in the difference.
+
+use evenpair_api as api;
+use evenpair_core::analysis::rejection::{RejectionBand, measure};
+use evenpair_core::bench::{Acquisition, PairSpec, ReferenceSpec};
+use tokio_util::sync::CancellationToken;
+
+use super::correction::{for_software, rejection_points};
+use super::scope::Scope;
+use super::tell::Tell;
+use super::trouble::Trouble;
+use super::workshop::{Workshop, compute};
+
+/// Fresh acquisitions of one verification: enough that noise falls by half, few enough for a moment.
+const ACQUISITIONS: u32 = 4;
+
+/// The frequencies at which rejection is told, in hertz: 1–3–10 from audio to the top of a passive probe. Those at
+/// which the reference holds nothing are left out.
+const BANDS_HZ: [f64; 11] = [1e3, 3e3, 1e4, 3e4, 1e5, 3e5, 1e6, 3e6, 1e7, 3e7, 1e8];
+
+/// Verifies a pair's correction on a reference and stores what was found with it.
+pub(crate) async fn verify(
+    workshop: &Workshop,
+    pair: &PairSpec,
+    reference: &ReferenceSpec,
+    tell: &Tell,
+    stop: &CancellationToken,
+) -> Result<api::Correction, Trouble> {
+    let latest = workshop.store.latest_correction(&pair.name).await?;
+    let mut correction = latest.ok_or_else(|| Trouble::NoCorrection { pair: pair.name.clone() })?;
+    let scope = workshop.scope(pair)?;
+    let remembered = scope.remember().await?;
+    // On the measuring range, where the correction is to hold.
+    let mut acquisition = pair.acquisition.with(&reference.overrides);
+    acquisition.span_v = pair.acquisition.span_v;
+    acquisition.offset_v = pair.acquisition.offset_v;
+    let outcome = on_range(workshop, &scope, &correction, reference, acquisition, tell, stop).await;
+    let returned = scope.give_back(remembered, false).await;
+    correction.rejection = rejection_points(&outcome?);
+    returned?;
+    workshop.store.set_rejection(correction.id, &correction.rejection).await?;
+    super::correction::judge_by_bench(workshop, &mut correction, pair);
+    tell.corrected(&correction).await?;
+    Ok(correction)
+}
+
+/// Measures rejection on a reference, acquired as `acquisition` says.
+pub(crate) async fn on_range(
+    workshop: &Workshop,
+    scope: &Scope<'_>,
+    correction: &api::Correction,
+    reference: &ReferenceSpec,
+    acquisition: Acquisition,
+    tell: &Tell,
+    stop: &CancellationToken,
+) -> Result<Vec<RejectionBand>, Trouble> {
+    workshop.start_reference(reference, stop).await?;
+    let outcome = acquire_and_measure(scope, correction, acquisition, tell, stop).await;
+    let ended = workshop.stop_reference(reference).await;
+    let bands = outcome?;
+    ended?;
+    if bands.is_empty() {
+        return Err(Trouble::NothingToVerify { pair: scope.pair.name.clone(), reference: reference.name.clone() });
+    }
+    Ok(bands)
+}
+
+async fn acquire_and_measure(
+    scope: &Scope<'_>,
+    correction: &api::Correction,
+    acquisition: Acquisition,
+    tell: &Tell,
+    stop: &CancellationToken,
+) -> Result<Vec<RejectionBand>, Trouble> {
+    scope.prepare(&acquisition).await?;
+    let [positive, negative] = scope.settings().await?;
+    let software = for_software(correction, negative.delay_s - positive.delay_s);
+    let (mut all_p, mut all_n) = (Vec::new(), Vec::new());
+    for number in 1..=ACQUISITIONS {
+        if stop.is_cancelled() {
+            return Err(Trouble::Stopped);
+        }
+        tell.doing(format!("verifying: acquisition {number} of {ACQUISITIONS}")).await?;
+        let (p, n) = scope.acquire(&acquisition, stop).await?;
+        for (leg, record) in [("positive", &p), ("negative", &n)] {
+            if record.clipped() > 0 {
+                return Err(scope.clipped(leg, record, acquisition.span_v));
+            }
+        }
+        all_p.push(p);
+        all_n.push(n);
+    }
+    let measured = compute("measuring the rejection", move || measure(&all_p, &all_n, &software, &BANDS_HZ)).await?;
+    measured.map_err(|source| Trouble::Apply { pair: scope.pair.name.clone(), source })
+}
