@@ -1,5 +1,5 @@
 //! Placeholder.
-#![expect(dead_code, reason = "the devices that use the world are not here yet")]
+#![expect(dead_code, unused_imports, reason = "the devices that use the world are not here yet")]
 
 mod scenario;
 mod world;

@@ -2,6 +2,8 @@
 //!
 //! Unknown keys and values out of range are refused. Every key is explained in `configs/scenarios/greenhouse-fan.toml`.
 
+#![cfg_attr(test, allow(clippy::unwrap_used, clippy::float_cmp))]
+
 mod check;
 mod device;
 mod leg;
@@ -9,7 +11,7 @@ mod leg;
 mod tests;
 
 pub(crate) use device::{DeviceSpec, DividerSpec, HalfBridgeSpec, RectifierSpec};
-pub(crate) use leg::{LegSpec, RangeSpec, Tip, UnlistedSpec};
+pub(crate) use leg::{LegSpec, RangeSpec, Tip};
 
 use serde::Deserialize;
 

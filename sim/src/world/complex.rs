@@ -12,9 +12,6 @@ pub(crate) struct Complex {
 }
 
 impl Complex {
-    /// Nought.
-    pub(crate) const ZERO: Self = Self { re: 0.0, im: 0.0 };
-
     /// `re + j·im`.
     pub(crate) const fn new(re: f64, im: f64) -> Self {
         Self { re, im }

@@ -30,7 +30,7 @@ pub(crate) struct SourceOutput {
     pub(crate) on: bool,
     /// The waveform.
     pub(crate) shape: Shape,
-    /// In hertz; of a multitone the distance of the tones.
+    /// In hertz, above 0; of a multitone the distance of the tones.
     pub(crate) frequency_hz: f64,
     /// Peak to peak, without a load, in volts.
     pub(crate) amplitude_vpp: f64,

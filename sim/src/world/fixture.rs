@@ -1,7 +1,7 @@
 //! A bench for the tests: two legs with known faults on channels 1 and 2, and usual settings.
 
-use super::{ChannelSettings, Controls, Coupling, ScopeSettings, Shape, SourceOutput, SupplyOutput, Trigger};
-use super::{TriggerSource, World};
+use super::controls::{SourceOutput, SupplyOutput};
+use super::{ChannelSettings, Controls, Coupling, ScopeSettings, Shape, Trigger, TriggerSource, World};
 use crate::scenario::{DeviceSpec, RangeSpec, Scenario};
 
 /// The demo scenario with other legs than the demo's: no noise, no jitter, no drift, one listed range of 2 V.
@@ -23,7 +23,7 @@ pub(crate) fn ideal(device: DeviceSpec) -> Scenario {
     let mut scenario = scenario();
     for leg in &mut scenario.legs {
         (leg.gain, leg.delay_s, leg.bandwidth_hz, leg.compensation_error) = (1.0, 0.0, 1e15, 0.0);
-        leg.unlisted = crate::scenario::UnlistedSpec::default();
+        leg.unlisted = Default::default();
         leg.ranges.clear();
     }
     scenario.device = device;

@@ -10,9 +10,11 @@
 //! its compensation, a delay, the gain of leg and range, coupling, the offset of the range, noise, the converter.
 //! A channel without a leg is quiet and at nought.
 
-mod acquisition;
+#![cfg_attr(test, allow(clippy::unwrap_used, clippy::float_cmp))]
+
+pub(crate) mod acquisition;
 mod complex;
-mod controls;
+pub(crate) mod controls;
 mod converter;
 mod device;
 #[cfg(test)]
@@ -30,7 +32,7 @@ mod wave;
 pub(crate) use acquisition::{
     Acquisition, ChannelData, ChannelSettings, Coupling, NoTrigger, ScopeSettings, Trigger, TriggerSource,
 };
-pub(crate) use controls::{Controls, Shape, SourceOutput, SupplyOutput};
+pub(crate) use controls::{Controls, Shape};
 
 use rand::SeedableRng;
 use rand_chacha::ChaCha8Rng;

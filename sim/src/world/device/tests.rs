@@ -2,9 +2,10 @@
 
 use super::*;
 use crate::scenario::{DividerSpec, RectifierSpec};
+use crate::world::Shape;
+use crate::world::controls::SupplyOutput;
 use crate::world::fixture::{bridge, ideal, reference, scenario};
 use crate::world::wave::Sampler;
-use crate::world::{Shape, SupplyOutput};
 
 fn ten_volts(route: u32) -> Controls {
     let mut controls = Controls::default();

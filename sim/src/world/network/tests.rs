@@ -19,7 +19,7 @@ fn an_unbalanced_bridge() {
     let voltages = network.solve().voltages;
     close(voltages[left], 20.0 / 3.0);
     close(voltages[right], 2.5);
-    // With 5 kΩ across: i = (V_l − V_r)/5k; node equations (15·V_l = 100 + 2·V_r − ... solved by hand below).
+    // With 5 kΩ across, the currents into the two nodes, in milliamperes:
     // (10−l)/1 − l/2 − (l−r)/5 = 0 and (10−r)/3 − r/1 + (l−r)/5 = 0  →  17·l − 2·r = 100, −3·l + 23·r = 50
     // → l = (2300 + 100)/(391 − 6) = 6.23377, r = (850 + 300)/385 = 2.98701.
     network.resistor(left, right, 5e3);

@@ -77,7 +77,7 @@ impl Triggers {
         let at_s = match &self.source {
             Source::Crossings { instants_s, period_s } => {
                 let armed_s = rng.random::<f64>() * period_s;
-                let next = instants_s.iter().find(|&&at_s| at_s >= armed_s).or(instants_s.first());
+                let next = instants_s.iter().find(|&&at_s| at_s >= armed_s).or_else(|| instants_s.first());
                 next.copied().unwrap_or(0.0)
             }
             Source::Free { period_s } => rng.random::<f64>() * period_s,

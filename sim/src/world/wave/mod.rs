@@ -95,11 +95,6 @@ impl Wave {
         self.events.push(event);
     }
 
-    /// Seconds after which the voltage repeats.
-    pub(crate) const fn period_s(&self) -> f64 {
-        self.period_s
-    }
-
     /// True when nothing ever changes.
     pub(crate) const fn is_constant(&self) -> bool {
         self.events.is_empty() && self.tones.is_empty()
