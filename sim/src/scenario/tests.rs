@@ -1,0 +1,62 @@
+//! Reading a scenario: what is accepted and what is refused, and how it is said.
+
+use super::*;
+
+const DEMO: &str = include_str!("../../../configs/scenarios/greenhouse-fan.toml");
+
+#[test]
+fn reads_the_demo() {
+    let scenario = Scenario::read(DEMO).unwrap();
+    let kinds: Vec<Kind> = scenario.instruments.iter().map(|instrument| instrument.kind).collect();
+    assert_eq!(kinds, [Kind::Scope, Kind::Generator, Kind::Supply, Kind::Switch]);
+    assert_eq!(scenario.legs.iter().map(|leg| (leg.channel, leg.tip)).collect::<Vec<_>>(), [(1, Tip::P), (2, Tip::N)]);
+    assert!(matches!(scenario.device, DeviceSpec::HalfBridge(_)));
+}
+
+#[test]
+fn refuses_keys_it_does_not_know_everywhere() {
+    for (from, to) in [
+        ("seed = ", "sed = 1\nseed = "),
+        ("converter_bits = 8", "converter_bits = 8\nbits = 8"),
+        ("source_ohm = 50.0", "source_ohm = 50.0\nohm = 50"),
+        ("tip = \"P\"", "tip = \"P\"\ntop = 1"),
+        ("span_v = 1.0", "span_v = 1.0\nspan = 1"),
+        ("kind = \"half-bridge\"", "kind = \"half-bridge\"\nbridge = 1"),
+        ("kind = \"supply\"", "kind = \"supply\"\nnumber = 1"),
+        ("unlisted = { gain", "unlisted = { again = 0, gain"),
+    ] {
+        let text = DEMO.replacen(from, to, 1);
+        assert_ne!(text, DEMO, "{from}");
+        let error = Scenario::read(&text).unwrap_err();
+        assert!(error.to_string().contains("unknown field"), "{to}: {error}");
+    }
+}
+
+#[test]
+fn refuses_values_out_of_range_by_their_key() {
+    for (from, to, key) in [
+        ("converter_bits = 8", "converter_bits = 12", "scope.converter_bits"),
+        ("channel = 2", "channel = 1", "leg.channel"),
+        ("channel = 2", "channel = 5", "leg.channel"),
+        ("bandwidth_hz = 350e6", "bandwidth_hz = 0.0", "leg.bandwidth_hz"),
+        ("noise_v = 100e-6", "noise_v = -1.0", "leg.noise_v"),
+        ("delay_s = 5.0e-9", "delay_s = nan", "leg.delay_s"),
+        ("ring_hz = 35e6", "ring_hz = inf", "device.ring_hz"),
+        ("switch_threshold_v = 4.0", "switch_threshold_v = 14.0", "device.switch_threshold_v"),
+        ("name = \"supply\"", "name = \"scope\"", "instrument.name"),
+    ] {
+        let text = DEMO.replacen(from, to, 1);
+        let error = Scenario::read(&text).unwrap_err();
+        assert!(matches!(&error, ScenarioError::Range { key: found, .. } if found == key), "{to}: {error}");
+    }
+}
+
+#[test]
+fn leaves_out_what_has_a_default() {
+    let text = "seed = 1\ninstrument = []\n[device]\nkind = \"divider\"\nresistors_ohm = [1.0, 2.0, 3.0]\n";
+    let scenario = Scenario::read(text).unwrap();
+    assert_eq!(scenario.scope, ScopeSpec::default());
+    assert_eq!(scenario.reference, ReferenceSpec::default());
+    let divider = DividerSpec { resistors_ohm: [1.0, 2.0, 3.0], earth_lead: false };
+    assert_eq!(scenario.device, DeviceSpec::Divider(divider));
+}
