@@ -36,6 +36,8 @@ pub(crate) enum Command {
     },
     /// Show the bench: instruments, pairs, settings, routes, cautions.
     Bench,
+    /// Bring an unsettled bench to rest again, once you have looked at it.
+    Settle,
     /// Deskew a pair on its references and verify the correction.
     Deskew {
         /// The pair's name.

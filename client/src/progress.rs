@@ -47,9 +47,10 @@ impl Progress {
                 self.line(event, &line)
             }
             EventKind::Captured { capture } => self.line(event, &render::capture_summary(capture)),
-            EventKind::Corrected { correction } => {
-                self.line(event, &format!("correction of {}: skew {}", correction.pair, render::with_uncertainty(&correction.skew)))
-            }
+            EventKind::Corrected { correction } => self.line(
+                event,
+                &format!("correction of {}: skew {}", correction.pair, render::with_uncertainty(&correction.skew)),
+            ),
             EventKind::StateChanged { state, reason } => {
                 if state.ended()
                     && let Some(bar) = &self.bar
@@ -66,9 +67,7 @@ impl Progress {
         let text = format!("{:8.2} s  {text}", event.at_s);
         match &self.bar {
             _ if self.silent => Ok(()),
-            Some(bar) => {
-                bar.suspend(|| output::print(&text))
-            }
+            Some(bar) => bar.suspend(|| output::print(&text)),
             None => output::print(&text),
         }
     }

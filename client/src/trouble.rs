@@ -31,7 +31,9 @@ pub(crate) enum Trouble {
     #[error("{}: {}", .0.title, .0.detail)]
     Problem(Box<Problem>),
     /// No daemon answers.
-    #[error("no daemon answers at {url}: {reason}; start one with `evenpaird --bench FILE --data DIR`, or name another with --server")]
+    #[error(
+        "no daemon answers at {url}: {reason}; start one with `evenpaird --bench FILE --data DIR`, or name another with --server"
+    )]
     Unreachable { url: String, reason: String },
     /// What was asked for makes no sense.
     #[error("{0}")]

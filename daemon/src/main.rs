@@ -42,7 +42,10 @@ fn main() -> ExitCode {
             return ExitCode::from(NOT_STARTED);
         }
     };
-    match runtime.block_on(app::serve(arguments)) {
+    let ended = runtime.block_on(app::serve(arguments));
+    // A read of standard input that is under way cannot be taken back; it must not keep the process.
+    runtime.shutdown_timeout(std::time::Duration::from_secs(1));
+    match ended {
         Ok(()) => ExitCode::SUCCESS,
         Err(error) => {
             eprintln!("evenpaird: {error}");

@@ -30,7 +30,9 @@ pub(crate) fn show(path: &Path) -> String {
 
 /// Whether a file holds only tests.
 pub(crate) fn is_test(path: &Path) -> bool {
-    path.starts_with(project().join("tests")) || path.file_name().is_some_and(|name| name == "tests.rs") || show(path).contains("/tests/")
+    path.starts_with(project().join("tests"))
+        || path.file_name().is_some_and(|name| name == "tests.rs")
+        || show(path).contains("/tests/")
 }
 
 fn sources() -> Vec<(String, String)> {
@@ -81,7 +83,11 @@ fn nothing_is_left_open() {
         .filter(|(name, _)| !name.ends_with("house/files.rs"))
         .flat_map(|(name, text)| {
             let marks = ["todo!(", "unimplemented!(", "TODO", "FIXME", "#[ignore"];
-            marks.into_iter().filter(|mark| text.contains(mark)).map(|mark| format!("{name}: {mark}")).collect::<Vec<_>>()
+            marks
+                .into_iter()
+                .filter(|mark| text.contains(mark))
+                .map(|mark| format!("{name}: {mark}"))
+                .collect::<Vec<_>>()
         })
         .collect();
     assert!(open.is_empty(), "{open:#?}");
@@ -90,8 +96,19 @@ fn nothing_is_left_open() {
 #[test]
 fn the_top_level_is_as_designed() {
     let known = [
-        "Cargo.lock", "Cargo.toml", "DEVELOPERS.md", "LICENSE-APACHE", "LICENSE-MIT", "README.md", "client", "configs", "daemon",
-        "rustfmt.toml", "sim", "target", "tests",
+        "Cargo.lock",
+        "Cargo.toml",
+        "DEVELOPERS.md",
+        "LICENSE-APACHE",
+        "LICENSE-MIT",
+        "README.md",
+        "client",
+        "configs",
+        "daemon",
+        "rustfmt.toml",
+        "sim",
+        "target",
+        "tests",
     ];
     for entry in std::fs::read_dir(project()).unwrap() {
         let name = entry.unwrap().file_name().to_string_lossy().into_owned();

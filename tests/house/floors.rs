@@ -16,7 +16,9 @@ fn must_not_know(folder: &str, words: &[&str]) {
         let text = std::fs::read_to_string(path).unwrap();
         let code = text.split("#[cfg(test)]").next().unwrap_or(&text);
         for line in code.lines().filter(|line| !line.trim_start().starts_with("//")) {
-            found.extend(words.iter().filter(|word| line.contains(**word)).map(|word| format!("{}: {word}", show(path))));
+            found.extend(
+                words.iter().filter(|word| line.contains(**word)).map(|word| format!("{}: {word}", show(path))),
+            );
         }
     }
     assert!(found.is_empty(), "{folder} must not know these: {found:#?}");
@@ -33,10 +35,23 @@ fn dependencies(package: &str) -> Vec<String> {
 fn the_core_touches_nothing_of_the_world() {
     must_not_know(
         "daemon/core/src",
-        &["std::fs", "std::net", "std::thread", "std::process", "std::env", "Instant::now", "SystemTime", "tokio", "println!"],
+        &[
+            "std::fs",
+            "std::net",
+            "std::thread",
+            "std::process",
+            "std::env",
+            "Instant::now",
+            "SystemTime",
+            "tokio",
+            "println!",
+        ],
     );
     for name in dependencies("daemon/core") {
-        assert!(!["tokio", "rusqlite", "axum", "reqwest", "jiff", "rand"].contains(&name.as_str()), "the core depends on {name}");
+        assert!(
+            !["tokio", "rusqlite", "axum", "reqwest", "jiff", "rand"].contains(&name.as_str()),
+            "the core depends on {name}"
+        );
     }
 }
 
@@ -46,7 +61,10 @@ fn the_floors_of_the_core_stand_on_each_other() {
     must_not_know("daemon/core/src/analysis", &above_mathematics);
     must_not_know("daemon/core/src/units", &above_mathematics);
     must_not_know("daemon/core/src/scpi", &["crate::dialect", "crate::bench", "crate::sequence", "crate::analysis"]);
-    must_not_know("daemon/core/src/document", &["crate::scpi", "crate::dialect", "crate::bench", "crate::sequence", "crate::analysis"]);
+    must_not_know(
+        "daemon/core/src/document",
+        &["crate::scpi", "crate::dialect", "crate::bench", "crate::sequence", "crate::analysis"],
+    );
     must_not_know("daemon/core/src/dialect", &["crate::bench", "crate::sequence"]);
     must_not_know("daemon/core/src/bench", &["crate::sequence"]);
 }
@@ -70,14 +88,20 @@ fn an_instruments_words_are_in_dialects_only() {
 #[test]
 fn the_simulator_shares_no_code() {
     for name in dependencies("sim") {
-        assert!(!name.starts_with("evenpair"), "the simulator depends on {name}: an echo of our own mistake proves nothing");
+        assert!(
+            !name.starts_with("evenpair"),
+            "the simulator depends on {name}: an echo of our own mistake proves nothing"
+        );
     }
 }
 
 #[test]
 fn the_client_is_light() {
     for name in dependencies("client") {
-        assert!(!["evenpair-daemon", "rusqlite", "parquet", "axum"].contains(&name.as_str()), "the client depends on {name}");
+        assert!(
+            !["evenpair-daemon", "rusqlite", "parquet", "axum"].contains(&name.as_str()),
+            "the client depends on {name}"
+        );
     }
 }
 

@@ -41,10 +41,28 @@ fn every_configuration_key_is_documented() {
             continue;
         }
         let value: toml::Value = toml::from_str(&text).unwrap_or_else(|error| panic!("{}: {error}", show(&path)));
-        let chosen = ["instrument", "pair", "probe", "reference", "setting", "settings", "route", "intent", "reply", "words", "maps", "map"];
+        let chosen = [
+            "instrument",
+            "pair",
+            "probe",
+            "reference",
+            "setting",
+            "settings",
+            "route",
+            "intent",
+            "reply",
+            "words",
+            "maps",
+            "map",
+        ];
         let mut found = BTreeSet::new();
         keys(&value, &chosen, &mut found);
-        missing.extend(found.iter().filter(|key| !documents.contains(&format!("`{key}`"))).map(|key| format!("{}: {key}", show(&path))));
+        missing.extend(
+            found
+                .iter()
+                .filter(|key| !documents.contains(&format!("`{key}`")))
+                .map(|key| format!("{}: {key}", show(&path))),
+        );
     }
     assert!(missing.is_empty(), "describe these in configs/README.md or configs/dialects/README.md: {missing:#?}");
 }
@@ -56,8 +74,12 @@ fn paths_named_in_the_documents_exist() {
         let text = std::fs::read_to_string(project().join(name)).unwrap();
         for word in text.split('`').skip(1).step_by(2) {
             let path = word.trim_end_matches('/');
-            let starts = ["daemon/", "client/", "sim/", "tests/", "configs/", ".ci/"].iter().any(|top| word.starts_with(top));
-            if starts && !path.contains(|c: char| c.is_whitespace() || "*<>{}…".contains(c)) && !project().join(path).exists() {
+            let starts =
+                ["daemon/", "client/", "sim/", "tests/", "configs/", ".ci/"].iter().any(|top| word.starts_with(top));
+            if starts
+                && !path.contains(|c: char| c.is_whitespace() || "*<>{}…".contains(c))
+                && !project().join(path).exists()
+            {
                 wrong.push(format!("{name}: {word}"));
             }
         }

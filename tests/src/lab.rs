@@ -65,7 +65,11 @@ impl Lab {
             path
         };
         let scenario = write("scenario.toml", &plan.scenario);
-        let mut sim = Program::start("evenpair-sim", &["--scenario", text(&scenario), "--exit-with-stdin"], &place.join("sim.log"));
+        let mut sim = Program::start(
+            "evenpair-sim",
+            &["--scenario", text(&scenario), "--exit-with-stdin"],
+            &place.join("sim.log"),
+        );
         let mut bench = plan.bench.clone();
         loop {
             let line = sim.line().await.expect("the simulator becomes ready");
@@ -88,7 +92,8 @@ impl Lab {
 
     async fn start_daemon(place: &Path) -> (Program, String) {
         let (bench, data) = (place.join("bench.toml"), place.join("data"));
-        let arguments = ["--bench", text(&bench), "--data", text(&data), "--listen", "127.0.0.1:0", "--exit-with-stdin"];
+        let arguments =
+            ["--bench", text(&bench), "--data", text(&data), "--listen", "127.0.0.1:0", "--exit-with-stdin"];
         let mut daemon = Program::start("evenpaird", &arguments, &place.join("daemon.log"));
         let line = daemon.line().await;
         let Some(url) = line.as_deref().and_then(|line| line.strip_prefix("listening on ")) else {

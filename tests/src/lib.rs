@@ -16,5 +16,7 @@ pub use rewrite::{set_in_table, set_resource};
 /// The folder of the project, where `configs` lies.
 #[must_use]
 pub fn project() -> std::path::PathBuf {
-    std::path::Path::new(env!("CARGO_MANIFEST_DIR")).parent().map_or_else(Default::default, std::path::Path::to_path_buf)
+    std::path::Path::new(env!("CARGO_MANIFEST_DIR"))
+        .parent()
+        .map_or_else(Default::default, std::path::Path::to_path_buf)
 }

@@ -19,7 +19,11 @@ pub const PATIENCE: Duration = Duration::from_secs(120);
 pub fn binary(name: &str) -> PathBuf {
     let test = std::env::current_exe().expect("a test knows its own path");
     let path = test.ancestors().nth(2).expect("a test lies in target/PROFILE/deps").join(name);
-    assert!(path.exists(), "{} is not built; run `cargo build --workspace --bins` with the same profile first", path.display());
+    assert!(
+        path.exists(),
+        "{} is not built; run `cargo build --workspace --bins` with the same profile first",
+        path.display()
+    );
     path
 }
 

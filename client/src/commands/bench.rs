@@ -1,4 +1,6 @@
-//! `evenpair bench`
+//! `evenpair bench` and `evenpair settle`
+
+use evenpair_api::Bench;
 
 use crate::exit::Exit;
 use crate::http::Daemon;
@@ -7,11 +9,19 @@ use crate::{output, render};
 
 /// Shows the bench.
 pub(crate) async fn bench(daemon: &Daemon, json: bool) -> Result<Exit, Trouble> {
-    let bench = daemon.bench().await?;
+    tell(&daemon.bench().await?, json)
+}
+
+/// Brings the bench to rest, once a person has looked at it.
+pub(crate) async fn settle(daemon: &Daemon, json: bool) -> Result<Exit, Trouble> {
+    tell(&daemon.settle().await?, json)
+}
+
+fn tell(bench: &Bench, json: bool) -> Result<Exit, Trouble> {
     if json {
-        output::print_json(&bench)?;
+        output::print_json(bench)?;
     } else {
-        output::print(&render::bench(&bench))?;
+        output::print(&render::bench(bench))?;
     }
     Ok(Exit::Passed)
 }

@@ -28,7 +28,12 @@ pub(crate) fn check(file: &Path, bench_file: Option<&Path>, json: bool) -> Resul
     let Some(bench_file) = bench_file else {
         return match bench::read(&text) {
             Ok(bench) => {
-                let found = format!("bench `{}`: {} instruments, {} pairs", bench.name, bench.instruments.len(), bench.pairs.len());
+                let found = format!(
+                    "bench `{}`: {} instruments, {} pairs",
+                    bench.name,
+                    bench.instruments.len(),
+                    bench.pairs.len()
+                );
                 right(file, "bench", 0, 0, &found, json)
             }
             Err(mistakes) => wrong(file, "bench", &text, &mistakes, json),
@@ -54,7 +59,14 @@ fn read(path: &Path) -> Result<String, Trouble> {
     std::fs::read_to_string(path).map_err(|source| Trouble::File { doing: "reading", path: path.into(), source })
 }
 
-fn right(file: &Path, kind: &'static str, steps: usize, captures: usize, found: &str, json: bool) -> Result<Exit, Trouble> {
+fn right(
+    file: &Path,
+    kind: &'static str,
+    steps: usize,
+    captures: usize,
+    found: &str,
+    json: bool,
+) -> Result<Exit, Trouble> {
     if json {
         output::print_json(&Checked { file: file.display().to_string(), kind, steps, captures, mistakes: vec![] })?;
     } else {

@@ -45,7 +45,11 @@ async fn finish(daemon: &Daemon, pair: &str, run: Run, json: bool) -> Result<Exi
     if json {
         output::print_json(&correction)?;
     } else {
-        output::print(&format!("\n{}\n\n{}", render::correction(&correction), render::rejection(&correction.rejection)))?;
+        output::print(&format!(
+            "\n{}\n\n{}",
+            render::correction(&correction),
+            render::rejection(&correction.rejection)
+        ))?;
     }
     Ok(Exit::Passed)
 }

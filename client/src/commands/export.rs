@@ -24,7 +24,11 @@ pub(crate) async fn export(daemon: &Daemon, id: &str, to: Format, folder: &Path,
     let run = daemon.run(id).await?;
     let id = run.id.to_string();
     let captures = daemon.captures(&id).await?;
-    std::fs::create_dir_all(folder).map_err(|source| Trouble::File { doing: "making the folder", path: folder.into(), source })?;
+    std::fs::create_dir_all(folder).map_err(|source| Trouble::File {
+        doing: "making the folder",
+        path: folder.into(),
+        source,
+    })?;
     let mut files = Vec::new();
     for capture in &captures {
         let bytes = daemon.waveform(&id, capture.number, to.media_type()).await?;
@@ -33,7 +37,8 @@ pub(crate) async fn export(daemon: &Daemon, id: &str, to: Format, folder: &Path,
         files.push(name);
     }
     write(folder, "figures.csv", figures_csv(&captures).as_bytes())?;
-    let text = serde_json::to_string_pretty(&captures).map_err(|error| Trouble::Demo(format!("making JSON: {error}")))?;
+    let text =
+        serde_json::to_string_pretty(&captures).map_err(|error| Trouble::Demo(format!("making JSON: {error}")))?;
     write(folder, "captures.json", text.as_bytes())?;
     files.extend(["figures.csv".to_owned(), "captures.json".to_owned()]);
     let exported = Exported { captures: captures.len(), folder: folder.display().to_string(), files };
@@ -50,9 +55,11 @@ pub(crate) async fn export(daemon: &Daemon, id: &str, to: Format, folder: &Path,
 fn write(folder: &Path, name: &str, bytes: &[u8]) -> Result<(), Trouble> {
     let path = folder.join(name);
     let part = folder.join(format!(".{name}.part"));
-    std::fs::write(&part, bytes)
-        .and_then(|()| std::fs::rename(&part, &path))
-        .map_err(|source| Trouble::File { doing: "writing", path, source })
+    std::fs::write(&part, bytes).and_then(|()| std::fs::rename(&part, &path)).map_err(|source| Trouble::File {
+        doing: "writing",
+        path,
+        source,
+    })
 }
 
 /// One line a figure: what a spreadsheet wants.

@@ -23,6 +23,7 @@ pub(crate) async fn perform(arguments: Arguments) -> Result<Exit, Trouble> {
     match arguments.command {
         Command::Demo { data, seed } => demo::demo(data, seed, json).await,
         Command::Bench => bench::bench(&daemon()?, json).await,
+        Command::Settle => bench::settle(&daemon()?, json).await,
         Command::Deskew { pair, most, use_scope_skew } => {
             deskew::deskew(&daemon()?, &pair, most, use_scope_skew, json).await
         }

@@ -13,8 +13,11 @@ use crate::{output, render};
 /// Starts a sequence; with `wait` stays until it has ended, and the exit status tells how.
 pub(crate) async fn run(daemon: &Daemon, sequence: &str, wait: bool, json: bool) -> Result<Exit, Trouble> {
     let request = if Path::new(sequence).extension().is_some_and(|ending| ending == "toml") {
-        let text = std::fs::read_to_string(sequence)
-            .map_err(|source| Trouble::File { doing: "reading the sequence", path: sequence.into(), source })?;
+        let text = std::fs::read_to_string(sequence).map_err(|source| Trouble::File {
+            doing: "reading the sequence",
+            path: sequence.into(),
+            source,
+        })?;
         RunRequest { sequence: None, text: Some(text) }
     } else {
         RunRequest { sequence: Some(sequence.to_owned()), text: None }

@@ -43,8 +43,9 @@ impl Child {
             if line == "ready" {
                 return Ok((child, addresses));
             }
-            let told: Told = serde_json::from_str(&line)
-                .map_err(|error| Trouble::Demo(format!("evenpair-sim said `{line}`, which is not understood: {error}")))?;
+            let told: Told = serde_json::from_str(&line).map_err(|error| {
+                Trouble::Demo(format!("evenpair-sim said `{line}`, which is not understood: {error}"))
+            })?;
             addresses.push((told.name, told.resource));
         }
     }
@@ -60,7 +61,12 @@ impl Child {
         Ok((child, url))
     }
 
-    fn start(name: &'static str, log: &str, place: &Place, arguments: impl FnOnce(&mut Command)) -> Result<Self, Trouble> {
+    fn start(
+        name: &'static str,
+        log: &str,
+        place: &Place,
+        arguments: impl FnOnce(&mut Command),
+    ) -> Result<Self, Trouble> {
         let binary = beside_us(name)?;
         let path = place.folder.join(log);
         let log = std::fs::File::create(&path).map_err(|source| Trouble::File { doing: "writing", path, source })?;
@@ -96,12 +102,16 @@ impl Child {
 
 /// The path of a program that is installed beside this one.
 fn beside_us(name: &str) -> Result<PathBuf, Trouble> {
-    let us = std::env::current_exe().map_err(|error| Trouble::Demo(format!("finding this program's own place: {error}")))?;
+    let us =
+        std::env::current_exe().map_err(|error| Trouble::Demo(format!("finding this program's own place: {error}")))?;
     let path = us.parent().unwrap_or_else(|| Path::new(".")).join(name);
     if path.exists() {
         Ok(path)
     } else {
-        let help = format!("`{name}` is not beside this program ({}); build all of them: cargo build --release", path.display());
+        let help = format!(
+            "`{name}` is not beside this program ({}); build all of them: cargo build --release",
+            path.display()
+        );
         Err(Trouble::Demo(help))
     }
 }

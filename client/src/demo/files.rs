@@ -38,8 +38,11 @@ pub(super) fn lay_out(folder: &Path, seed: Option<u64>) -> Result<Place, Trouble
         data: folder.join("data"),
     };
     let sequences = folder.join("sequences");
-    std::fs::create_dir_all(&sequences)
-        .map_err(|source| Trouble::File { doing: "making the folder", path: sequences.clone(), source })?;
+    std::fs::create_dir_all(&sequences).map_err(|source| Trouble::File {
+        doing: "making the folder",
+        path: sequences.clone(),
+        source,
+    })?;
     let scenario = match seed {
         Some(seed) => with_value(SCENARIO, "", "seed", &seed.to_string()),
         None => Some(SCENARIO.to_owned()),
@@ -56,9 +59,11 @@ pub(super) fn lay_out(folder: &Path, seed: Option<u64>) -> Result<Place, Trouble
 pub(super) fn write_bench(place: &Place, addresses: &[Address]) -> Result<(), Trouble> {
     let mut text = with_value(BENCH, "", "sequences", "\"sequences\"");
     for (name, resource) in addresses {
-        text = text.and_then(|text| with_value(&text, &format!("instrument.{name}"), "resource", &format!("\"{resource}\"")));
+        text = text
+            .and_then(|text| with_value(&text, &format!("instrument.{name}"), "resource", &format!("\"{resource}\"")));
     }
-    let text = text.ok_or_else(|| Trouble::Demo("the shipped bench file does not fit the simulated bench".to_owned()))?;
+    let text =
+        text.ok_or_else(|| Trouble::Demo("the shipped bench file does not fit the simulated bench".to_owned()))?;
     write(&place.bench, &text)
 }
 

@@ -81,7 +81,13 @@ impl Children {
     }
 }
 
-async fn show(folder: &Path, kept: bool, seed: Option<u64>, json: bool, children: &mut Children) -> Result<Exit, Trouble> {
+async fn show(
+    folder: &Path,
+    kept: bool,
+    seed: Option<u64>,
+    json: bool,
+    children: &mut Children,
+) -> Result<Exit, Trouble> {
     let say = |text: &str| if json { Ok(()) } else { output::print(text) };
     let place = files::lay_out(folder, seed)?;
     say("Evenpair demo: the high-side gate of a half bridge that drives a greenhouse fan.")?;
@@ -133,7 +139,11 @@ async fn show(folder: &Path, kept: bool, seed: Option<u64>, json: bool, children
 fn completed(run: &Run) -> Result<(), Trouble> {
     match run.state {
         RunState::Passed | RunState::Failed => Ok(()),
-        _ => Err(Trouble::Demo(format!("{} did not come to its end: {}", run.title, run.reason.as_deref().unwrap_or("")))),
+        _ => Err(Trouble::Demo(format!(
+            "{} did not come to its end: {}",
+            run.title,
+            run.reason.as_deref().unwrap_or("")
+        ))),
     }
 }
 

@@ -20,14 +20,16 @@ pub(super) struct Report {
 
 impl Report {
     pub(super) fn new(folder: &Path, kept: bool, correction: Correction, run: Run, captures: Vec<Capture>) -> Self {
-        let data = kept.then(|| std::path::absolute(folder).unwrap_or_else(|_| folder.to_owned()).display().to_string());
+        let data =
+            kept.then(|| std::path::absolute(folder).unwrap_or_else(|_| folder.to_owned()).display().to_string());
         Self { correction, run, captures, data }
     }
 
     /// Where the data lies and how to open it.
     pub(super) fn where_the_data_lies(&self) -> String {
         let Some(folder) = &self.data else {
-            return "The data was in a temporary folder and is gone; keep it with `evenpair demo --data DIR`.".to_owned();
+            return "The data was in a temporary folder and is gone; keep it with `evenpair demo --data DIR`."
+                .to_owned();
         };
         let first = self.captures.first().map_or("waveforms", |capture| capture.file.as_str());
         format!(

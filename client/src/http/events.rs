@@ -2,8 +2,8 @@
 
 use std::time::Duration;
 
-use eventsource_stream::Eventsource;
 use evenpair_api::{Event, EventKind};
+use eventsource_stream::Eventsource;
 use futures_util::StreamExt;
 
 use super::{Daemon, resources};
@@ -19,7 +19,11 @@ impl Daemon {
     /// Calls `each` for every event of the run from the first, until the run has ended or `each` fails.
     ///
     /// A connection that drops is taken up again after the last event that was seen, so each comes exactly once.
-    pub(crate) async fn follow(&self, id: &str, mut each: impl FnMut(&Event) -> Result<(), Trouble>) -> Result<(), Trouble> {
+    pub(crate) async fn follow(
+        &self,
+        id: &str,
+        mut each: impl FnMut(&Event) -> Result<(), Trouble>,
+    ) -> Result<(), Trouble> {
         let url = self.url(&format!("/runs/{}/events", resources::segment(id)));
         let (mut seen, mut retries) = (0u64, 0);
         loop {
@@ -30,7 +34,10 @@ impl Daemon {
                 Err(trouble) => return Err(trouble),
             };
             if retries >= MOST_RETRIES {
-                return Err(Trouble::Unreachable { url: self.base.clone(), reason: format!("{why}; the run goes on without us") });
+                return Err(Trouble::Unreachable {
+                    url: self.base.clone(),
+                    reason: format!("{why}; the run goes on without us"),
+                });
             }
             tokio::time::sleep(FIRST_WAIT * 2u32.pow(retries)).await;
             retries += 1;
@@ -44,15 +51,18 @@ impl Daemon {
         retries: &mut u32,
         each: &mut impl FnMut(&Event) -> Result<(), Trouble>,
     ) -> Result<Stream, Trouble> {
-        let request = self.client.get(url).header("accept", "text/event-stream").header("last-event-id", seen.to_string());
+        let request =
+            self.client.get(url).header("accept", "text/event-stream").header("last-event-id", seen.to_string());
         let mut stream = self.send(request).await?.bytes_stream().eventsource();
         while let Some(message) = stream.next().await {
             let message = match message {
                 Ok(message) => message,
                 Err(error) => return Ok(Stream::Dropped(error.to_string())),
             };
-            let event: Event = serde_json::from_str(&message.data)
-                .map_err(|error| Trouble::Answer { url: url.to_owned(), what: format!("an event that is none ({error})") })?;
+            let event: Event = serde_json::from_str(&message.data).map_err(|error| Trouble::Answer {
+                url: url.to_owned(),
+                what: format!("an event that is none ({error})"),
+            })?;
             if event.generation <= *seen {
                 continue;
             }

@@ -21,7 +21,9 @@ impl Daemon {
     pub(crate) fn new(server: &str) -> Result<Self, Trouble> {
         let server = server.trim_end_matches('/');
         if !server.starts_with("http://") {
-            return Err(Trouble::Usage(format!("`{server}` is no server's address; write it like http://127.0.0.1:7488")));
+            return Err(Trouble::Usage(format!(
+                "`{server}` is no server's address; write it like http://127.0.0.1:7488"
+            )));
         }
         // A proxy has no business between a client and a daemon on loopback.
         let client = reqwest::Client::builder()
@@ -46,14 +48,19 @@ impl Daemon {
         let body = response.bytes().await.map_err(|error| self.unreachable(&error))?;
         match serde_json::from_slice::<Problem>(&body) {
             Ok(problem) => Err(Trouble::Problem(Box::new(problem))),
-            Err(_) => Err(Trouble::Answer { url: self.base.clone(), what: format!("status {status} without a problem document") }),
+            Err(_) => Err(Trouble::Answer {
+                url: self.base.clone(),
+                what: format!("status {status} without a problem document"),
+            }),
         }
     }
 
     async fn json<T: DeserializeOwned>(&self, request: RequestBuilder) -> Result<T, Trouble> {
         let body = self.send(request).await?.bytes().await.map_err(|error| self.unreachable(&error))?;
-        serde_json::from_slice(&body)
-            .map_err(|error| Trouble::Answer { url: self.base.clone(), what: format!("something unexpected ({error})") })
+        serde_json::from_slice(&body).map_err(|error| Trouble::Answer {
+            url: self.base.clone(),
+            what: format!("something unexpected ({error})"),
+        })
     }
 
     fn unreachable(&self, error: &reqwest::Error) -> Trouble {

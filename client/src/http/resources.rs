@@ -15,6 +15,11 @@ impl Daemon {
         self.json(self.client.get(self.url("/bench"))).await
     }
 
+    /// `POST /bench/settle`
+    pub(crate) async fn settle(&self) -> Result<Bench, Trouble> {
+        self.json(self.client.post(self.url("/bench/settle"))).await
+    }
+
     /// `GET /pairs/{pair}/correction`
     pub(crate) async fn correction(&self, pair: &str) -> Result<Correction, Trouble> {
         self.json(self.client.get(self.url(&format!("/pairs/{}/correction", segment(pair))))).await

@@ -28,7 +28,10 @@ async fn server(answers: Vec<String>) -> (Daemon, tokio::sync::mpsc::UnboundedRe
 }
 
 fn answer(status: &str, kind: &str, body: &str) -> String {
-    format!("HTTP/1.1 {status}\r\ncontent-type: {kind}\r\nconnection: close\r\ncontent-length: {}\r\n\r\n{body}", body.len())
+    format!(
+        "HTTP/1.1 {status}\r\ncontent-type: {kind}\r\nconnection: close\r\ncontent-length: {}\r\n\r\n{body}",
+        body.len()
+    )
 }
 
 fn stream(body: &str) -> String {

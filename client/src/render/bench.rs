@@ -32,7 +32,12 @@ pub(crate) fn bench(bench: &Bench) -> String {
 
     let mut references = table(&["reference", "kind", "route", "frequency"], &[3]);
     for reference in &bench.references {
-        references.add_row([&reference.name, &reference.kind, &reference.route, &with_uncertainty(&reference.frequency)]);
+        references.add_row([
+            &reference.name,
+            &reference.kind,
+            &reference.route,
+            &with_uncertainty(&reference.frequency),
+        ]);
     }
     parts.push(lines(&references));
 

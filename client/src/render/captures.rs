@@ -39,11 +39,12 @@ pub(crate) fn captures(captures: &[Capture], figure_name: &str) -> String {
             Some(figure) => ("not valid".to_owned(), plain(figure), String::new()),
             None => ("none".to_owned(), String::new(), String::new()),
         };
-        let limits = match capture.limits.iter().filter(|limit| limit.figure == figure_name).map(|limit| limit.passed).min() {
-            None => "",
-            Some(true) => "kept",
-            Some(false) => "EXCEEDED",
-        };
+        let limits =
+            match capture.limits.iter().filter(|limit| limit.figure == figure_name).map(|limit| limit.passed).min() {
+                None => "",
+                Some(true) => "kept",
+                Some(false) => "EXCEEDED",
+            };
         list.add_row([capture.number.to_string(), conditions(capture), value, plain, grade, limits.to_owned()]);
     }
     lines(&list)

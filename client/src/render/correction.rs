@@ -46,7 +46,8 @@ pub(crate) fn rejection(points: &[RejectionPoint]) -> String {
     }
     let mut rejection = table(&["rejection at", "plain subtraction", "corrected", "noise floor"], &[0, 1, 2, 3]);
     for point in points {
-        let after = if point.at_least { format!("≥ {:.1} dB", point.after_db) } else { format!("{:.1} dB", point.after_db) };
+        let after =
+            if point.at_least { format!("≥ {:.1} dB", point.after_db) } else { format!("{:.1} dB", point.after_db) };
         rejection.add_row([
             show(point.frequency_hz, Unit::Hertz, 1),
             format!("{:.1} dB", point.before_db),

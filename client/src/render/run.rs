@@ -23,7 +23,12 @@ pub(crate) fn runs(runs: &Runs) -> String {
     }
     let mut list = table(&["run", "state", "captures", "title"], &[2]);
     for run in &runs.items {
-        list.add_row([run.id.to_string(), state_word(run.state).to_owned(), run.progress.captures.to_string(), run.title.clone()]);
+        list.add_row([
+            run.id.to_string(),
+            state_word(run.state).to_owned(),
+            run.progress.captures.to_string(),
+            run.title.clone(),
+        ]);
     }
     lines(&list)
 }
