@@ -31,7 +31,7 @@ impl Default for LabPlan {
             bench: read("benches/greenhouse-fan.toml"),
             sequences: vec![
                 ("gate-night".to_owned(), read("sequences/gate-night.toml")),
-                ("gate-quick".to_owned(), read("sequences/gate-quick.toml")),
+                ("quick-look".to_owned(), read("sequences/quick-look.toml")),
             ],
         }
     }

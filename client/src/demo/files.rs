@@ -14,7 +14,7 @@ const SCENARIO: &str = include_str!("../../../configs/scenarios/greenhouse-fan.t
 const BENCH: &str = include_str!("../../../configs/benches/greenhouse-fan.toml");
 const SEQUENCES: [(&str, &str); 2] = [
     ("gate-night.toml", include_str!("../../../configs/sequences/gate-night.toml")),
-    ("gate-quick.toml", include_str!("../../../configs/sequences/gate-quick.toml")),
+    ("quick-look.toml", include_str!("../../../configs/sequences/quick-look.toml")),
 ];
 
 /// Where everything of a demo lies.
