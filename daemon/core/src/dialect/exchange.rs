@@ -86,7 +86,8 @@ impl SkewSetting {
     /// The delay nearest to `delay_s` that the scope can set.
     #[must_use]
     pub fn round(&self, delay_s: f64) -> f64 {
-        let steps = (self.range_s / self.step_s).floor();
+        // Rounding must not take the last step away: 100 ns in steps of 50 ps are 2000, not 1999.999….
+        let steps = (self.range_s / self.step_s * (1.0 + 1e-9)).floor();
         (delay_s / self.step_s).round().clamp(-steps, steps) * self.step_s
     }
 }

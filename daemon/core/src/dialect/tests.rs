@@ -1,5 +1,6 @@
-#![allow(clippy::unwrap_used, clippy::float_cmp)]
 //! The bundled dialect word by word, and what a dialect file may and may not say.
+
+#![allow(clippy::unwrap_used, clippy::float_cmp)]
 
 mod bundled;
 mod files;

@@ -11,8 +11,14 @@ fn word(word: &str) -> Value {
     Value::Keyword(word.to_owned())
 }
 
+/// An intent, its arguments, and the text that must go out.
+type Row = (Intent, Vec<(&'static str, Value)>, &'static str);
+
+/// An intent, the lines that come back, and the fields that they hold.
+type Reply<'r> = (Intent, &'r [&'r str], Vec<(&'static str, Value)>);
+
 /// Every intent with arguments and the text that must go out.
-fn table() -> Vec<(Intent, Vec<(&'static str, Value)>, &'static str)> {
+fn table() -> Vec<Row> {
     use Intent::*;
     let channel = |number: i64| ("channel", Value::Whole(number));
     let number = |name: &'static str, value: f64| (name, Value::Number(value));
@@ -116,7 +122,7 @@ fn every_query_reads_literal_replies() {
     use Intent::*;
     let dialect = scpi_99();
     let preamble = ["1000,2.0E-10,-1.0E-07,3.125E-04,0.25,-32768,32512,8.0E-02,16,7"];
-    let cases: Vec<(Intent, &[&str], Vec<(&str, Value)>)> = vec![
+    let cases: Vec<Reply<'_>> = vec![
         (
             Identify,
             &["ACME,Model 1,\"a,b\",Joe's 1.0"],

@@ -40,6 +40,7 @@ clear = 1
     let expected = [
         ("3", "`name` must be a text in quotes"),
         ("\"cr\"", "`ending` cannot be `cr`"),
+        ("\"50 ps\"", "the step must be above 0 and no larger than the range"),
         ("\"up\"", "`positive` cannot be `up`"),
         ("\"POS;*RST\"", "`POS;*RST`: a word must not hold `;` or `?`: it is one word of a command"),
         ("\"RANGe {span}\"", "`{span}` names no argument"),
@@ -65,7 +66,7 @@ clear = 1
     for (place, what) in expected {
         assert!(found.iter().any(|(p, w)| *p == place && w == what), "{place}: {what}\nfound: {found:#?}");
     }
-    // One more: the skew table is not usable, so `skew.set` lacks it only in appearance and nothing is said of it.
+    // `[skew]` is there, though not usable, so nothing is said of `skew.set` lacking it.
     assert_eq!(found.len(), expected.len(), "{found:#?}");
 }
 
