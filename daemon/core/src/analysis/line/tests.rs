@@ -49,8 +49,8 @@ const NORRIS: [(f64, f64); 36] = [
 
 #[test]
 fn norris_has_its_certified_line() {
-    // The file lists y before x; above each pair is (x, y).
-    let (x, y): (Vec<f64>, Vec<f64>) = NORRIS.iter().copied().unzip();
+    // As in the file, y stands before x.
+    let (y, x): (Vec<f64>, Vec<f64>) = NORRIS.iter().copied().unzip();
     let line = ordinary(&x, &y).unwrap();
     assert!(digits(line.slope.value, 1.002_116_818_020_45) > 13.0, "{line:?}");
     assert!(digits(line.intercept.value, -0.262_323_073_774_029) > 11.0, "{line:?}");

@@ -33,14 +33,13 @@ pub fn york(x: &[f64], y: &[f64], errors: Errors<'_>) -> Result<Line, LineError>
     let mut slope = ordinary(x, y)?.slope.value;
     for _ in 0..STEPS {
         let at = Step::at(x, y, errors, slope);
-        let settled = (at.slope - slope).abs() <= 1e-15 * at.slope.abs().max(f64::MIN_POSITIVE);
-        // Sums round in the last digits, so a slope that has stopped moving there has settled as well.
-        let close = (at.slope - slope).abs() <= 1e-13 * at.slope.abs();
+        // Sums round in the last digits: a slope that moves only there has settled.
+        let settled = (at.slope - slope).abs() <= 1e-13 * at.slope.abs();
         slope = at.slope;
         if !slope.is_finite() {
             break;
         }
-        if settled || close {
+        if settled {
             return Ok(Step::at(x, y, errors, slope).line(x, y, errors));
         }
     }

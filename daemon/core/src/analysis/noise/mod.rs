@@ -16,8 +16,9 @@ pub struct PairNoise {
     pub bins: usize,
 }
 
-/// A bin counts as quiet below this multiple of the floor; of pure noise it leaves all but one bin in 8 000.
-const QUIET: f64 = 9.0;
+/// A bin counts as quiet below this multiple of the floor: pure noise passes whole (all but one bin in a million, or
+/// its loud bins would be missing from its power), and what signal passes shows in the cross-spectrum.
+const QUIET: f64 = 14.0;
 /// Fewer quiet bins than this say nothing about the noise (18 % of the variance).
 const ENOUGH_BINS: usize = 64;
 /// Highest frequency looked at, relative to the sample rate: beyond it the interpolator changes the noise.
@@ -70,8 +71,9 @@ pub fn out_of_band(p: &[f64], n: &[f64], gain: f64) -> Result<Option<PairNoise>,
     let total_p = sum(kept.iter().map(|&k| power_p[k])) / count;
     let total_n = sum(kept.iter().map(|&k| power_n[k])) / count;
     let common = sum(kept.iter().map(|&k| (spectrum_p[k].conj() * spectrum_n[k]).re)) / count;
-    // Chance may make the common part too large; it never explains nearly all of the noise of either leg.
-    let rest = |total: f64, common: f64| (total - common.max(0.0)).max(total / 10.0).sqrt();
+    // Chance may make the common part too large; it never explains nearly all of the noise of either leg. Cutting it
+    // off at zero, where chance makes it negative, would bias the noise.
+    let rest = |total: f64, common: f64| (total - common).max(total / 10.0).sqrt();
     Ok(Some(PairNoise { p_v: rest(total_p, common / gain), n_v: rest(total_n, common * gain), bins: kept.len() }))
 }
 

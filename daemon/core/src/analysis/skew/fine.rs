@@ -9,13 +9,13 @@ use super::{Reference, SkewError, SkewEstimate, Warning};
 use nalgebra::{Matrix3, Vector3};
 
 /// Fewest samples of a record that are worth an estimate.
-const LEAST_SAMPLES: usize = 256;
+pub(super) const LEAST_SAMPLES: usize = 256;
 /// Fewest samples left in common after the shift.
 const LEAST_LEFT: usize = 128;
 /// A correlation below this is no common signal whatever its significance (a signal to noise ratio of −2 dB).
-const LEAST_CORRELATION: f64 = 0.4;
+pub(super) const LEAST_CORRELATION: f64 = 0.4;
 /// Gains outside are no pair of like legs.
-const GAINS: std::ops::RangeInclusive<f64> = 0.05..=20.0;
+pub(super) const GAINS: std::ops::RangeInclusive<f64> = 0.05..=20.0;
 /// Gains outside are worth a warning.
 const USUAL_GAINS: std::ops::RangeInclusive<f64> = 0.8..=1.25;
 /// Steps after which the search is given up; it needs three or four from a lag that is right to a sample.
@@ -24,8 +24,12 @@ const STEPS: usize = 40;
 const LONGEST_STEP: f64 = 4.0;
 /// The noise is measured anew in this many first steps, then kept, so that the steps can come to rest.
 const NOISE_STEPS: usize = 3;
+/// Steps after which a template made half a sample off is kept too.
+const PATIENCE: usize = 12;
+/// Samples left out at each end, so that a template still fits when the skew passes a whole sample.
+const MARGIN: usize = 2;
 /// Residual over expected noise, in power, from which the legs' responses are said to differ.
-const DIFFERENT: f64 = 1.3;
+pub(super) const DIFFERENT: f64 = 1.3;
 
 pub(super) fn estimate(
     p: &[f64],
@@ -37,14 +41,23 @@ pub(super) fn estimate(
     let (start, ambiguity) = begin(p, n, interval_s, reference)?;
     let mut at = start;
     let mut noise = None;
+    let mut kept: Option<Kept> = None;
     for step in 0..STEPS {
-        let view = View::at(p, n, at.tau, interval_s)?;
-        if step < NOISE_STEPS {
-            noise = Some(Noise::measure(&view, &at)?);
-        }
-        let Some(noise) = noise else { break };
-        let template = view.template(&at, &noise, reference)?;
-        let solved = Solved::new(&view, &at, &noise, &template);
+        let mut view = View::at(p, n, at.tau, interval_s)?;
+        let measured = match noise {
+            Some(noise) if step >= NOISE_STEPS => noise,
+            _ => Noise::measure(&view, &at)?,
+        };
+        noise = Some(measured);
+        let held = match kept.take().filter(|kept| view.covers(&kept.range)) {
+            Some(kept) => kept,
+            None => {
+                view.narrow(&(view.range.start + MARGIN..view.range.end - MARGIN));
+                Kept { template: view.template(&at, &measured, reference)?, range: view.range.clone() }
+            }
+        };
+        view.narrow(&held.range);
+        let solved = Solved::new(&view, &at, &measured, &held.template);
         let [tau, gain, offset] = solved.step;
         if !(tau.is_finite() && gain.is_finite() && offset.is_finite()) {
             break;
@@ -58,7 +71,13 @@ pub(super) fn estimate(
         let still = |step: f64, u: f64, floor: f64| step.abs() <= (0.01 * u).max(floor);
         let [u_tau, u_gain, _] = solved.u();
         if step + 1 >= NOISE_STEPS && still(tau, u_tau, 1e-9) && still(gain, u_gain, 1e-12) {
-            return Ok(report(&at, &view, &noise, &template, &solved, interval_s, ambiguity));
+            return Ok(report(&at, &view, &measured, &held.template, &solved, interval_s, ambiguity));
+        }
+        // A gate that opens and closes from step to step would never let the search rest, so a template made near
+        // the end is kept; so near, it is as good as uncorrelated with the residual.
+        let near = tau.abs() <= u_tau || (step >= PATIENCE && tau.abs() < 0.5);
+        if step >= NOISE_STEPS && near {
+            kept = Some(held);
         }
     }
     Err(SkewError::NotSettled { steps: STEPS, skew_s: at.tau * interval_s })
@@ -130,11 +149,19 @@ fn begin(p: &[f64], n: &[f64], interval_s: f64, reference: &Reference) -> Result
     Ok((Point { tau: alike.lag as f64, gain, offset: mean_n - gain * mean_p }, ambiguity))
 }
 
+/// A template with the samples that it was made for.
+struct Kept {
+    template: Template,
+    range: std::ops::Range<usize>,
+}
+
 /// Both legs on the samples that are valid at a trial skew, the positive one delayed by it.
 struct View<'a> {
     p: Vec<f64>,
     n: &'a [f64],
     noise_gain: f64,
+    /// Which samples of the record these are.
+    range: std::ops::Range<usize>,
 }
 
 impl<'a> View<'a> {
@@ -144,7 +171,20 @@ impl<'a> View<'a> {
         if range.len() < LEAST_LEFT {
             return Err(SkewError::NothingLeft { skew_s: tau * interval_s, samples: range.len() });
         }
-        Ok(Self { p: interpolator.apply(p), n: &n[range], noise_gain: interpolator.noise_gain() })
+        Ok(Self { p: interpolator.apply(p), n: &n[range.clone()], noise_gain: interpolator.noise_gain(), range })
+    }
+
+    fn covers(&self, range: &std::ops::Range<usize>) -> bool {
+        self.range.start <= range.start && range.end <= self.range.end
+    }
+
+    /// Leaves only `range`, which must be covered.
+    fn narrow(&mut self, range: &std::ops::Range<usize>) {
+        let from = range.start - self.range.start;
+        self.p.truncate(from + range.len());
+        self.p.drain(..from);
+        self.n = &self.n[from..from + range.len()];
+        self.range = range.clone();
     }
 
     /// Denoised best estimate of the common signal: the weighted mean of both legs that the residual does not know.
@@ -167,17 +207,18 @@ impl<'a> View<'a> {
 struct Noise {
     p2: f64,
     n2: f64,
-    split_assumed: bool,
+    /// Bins of the spectrum that it was read from; none if it was split equally by assumption.
+    bins: usize,
 }
 
 impl Noise {
     fn measure(view: &View<'_>, at: &Point) -> Result<Self, SkewError> {
-        let (found, split_assumed) = match out_of_band(&view.p, view.n, at.gain)? {
-            Some(found) => (found, false),
+        let found = match out_of_band(&view.p, view.n, at.gain)? {
+            Some(found) => found,
             None => {
                 let squares: f64 = view.residual(at).map(|e| e * e).sum();
                 let each = (squares / view.n.len() as f64 / (1.0 + at.gain * at.gain)).sqrt();
-                (PairNoise { p_v: each, n_v: each, bins: 0 }, true)
+                PairNoise { p_v: each, n_v: each, bins: 0 }
             }
         };
         // Data without noise, or a leg whose noise is below one step, must not make a weight infinite.
@@ -185,7 +226,7 @@ impl Noise {
         let power = view.n.iter().map(|x| (x - level).powi(2)).sum::<f64>() / view.n.len() as f64;
         let (p2, n2) = (found.p_v.powi(2), found.n_v.powi(2));
         let least = (1e-16 * power).max(1e-4 * p2.max(n2));
-        Ok(Self { p2: p2.max(least), n2: n2.max(least), split_assumed })
+        Ok(Self { p2: p2.max(least), n2: n2.max(least), bins: found.bins })
     }
 }
 
@@ -204,19 +245,39 @@ impl Solved {
         let n = view.n.len() as f64;
         let g = at.gain;
         // Unknowns (τ, g, offset at the signal's mean level): nearly orthogonal.
-        let mut score = Vector3::zeros();
-        let mut own = Matrix3::zeros();
-        let mut cross = Matrix3::zeros();
-        let mut squares = 0.0;
-        for (i, e) in view.residual(at).enumerate() {
-            let z = Vector3::new(-g * template.gated[i], template.signal[i], 1.0);
-            let regressor = Vector3::new(-g * template.slope[i], template.signal[i], 1.0);
-            score += z * e;
-            own += z * z.transpose();
-            cross += z * regressor.transpose();
+        // Plain sums, one pass: Z = [−g·gated, signal, 1], G = [−g·slope, signal, 1].
+        let (mut gated2, mut gated_signal, mut gated1) = (0.0, 0.0, 0.0);
+        let (mut slope_signal, mut slope1, mut signal2, mut signal1) = (0.0, 0.0, 0.0, 0.0);
+        let (mut gated_e, mut signal_e, mut e1, mut squares) = (0.0, 0.0, 0.0, 0.0);
+        let regressors = template.gated.iter().zip(&template.slope).zip(&template.signal);
+        for (e, ((gated, slope), signal)) in view.residual(at).zip(regressors) {
+            gated2 += gated * gated;
+            gated_signal += gated * signal;
+            gated1 += gated;
+            slope_signal += slope * signal;
+            slope1 += slope;
+            signal2 += signal * signal;
+            signal1 += signal;
+            gated_e += gated * e;
+            signal_e += signal * e;
+            e1 += e;
             squares += e * e;
         }
-        let (useful, _) = template.products();
+        let score = Vector3::new(-g * gated_e, signal_e, e1);
+        let own = Matrix3::new(
+            g * g * gated2,
+            -g * gated_signal,
+            -g * gated1,
+            -g * gated_signal,
+            signal2,
+            signal1,
+            -g * gated1,
+            signal1,
+            n,
+        );
+        let mut cross = own;
+        (cross[(1, 0)], cross[(2, 0)]) = (-g * slope_signal, -g * slope1);
+        let useful = template.useful();
         cross[(0, 0)] = g * g * useful;
         cross[(1, 1)] = (cross[(1, 1)] - n * template.signal_noise).max(0.01 * cross[(1, 1)]);
         let residual2 = squares / (n - 3.0);
@@ -266,10 +327,12 @@ fn report(
     if !USUAL_GAINS.contains(&at.gain) {
         warnings.push(Warning::GainFarFromOne { gain: at.gain });
     }
-    if noise.split_assumed {
+    if noise.bins == 0 {
         warnings.push(Warning::NoiseSplitAssumed);
     }
-    if solved.ratio > DIFFERENT {
+    // Few bins make the noise itself uncertain; under the window neighbours share half of theirs.
+    let doubt = 4.0 * (4.0 / noise.bins.max(1) as f64).sqrt();
+    if noise.bins > 0 && solved.ratio > DIFFERENT + doubt {
         let excess_v = (solved.residual2 * (1.0 - 1.0 / solved.ratio)).sqrt();
         warnings.push(Warning::ResponsesDiffer { excess_v });
     }

@@ -2,8 +2,9 @@
 
 use super::super::Estimate;
 use super::super::interpolate::Interpolator;
-use super::super::line::{Line, deming};
+use super::super::line::{Line, deming, mean, sum};
 use super::super::noise::{PairNoise, out_of_band};
+use super::fine::{DIFFERENT, GAINS, LEAST_CORRELATION, LEAST_SAMPLES};
 use super::{SkewError, Warning};
 
 /// Gain and offset at a given skew.
@@ -42,11 +43,19 @@ pub fn gain_and_offset(p: &[f64], n: &[f64], skew_samples: f64) -> Result<LevelE
     }
     let interpolator = Interpolator::new(skew_samples);
     let range = interpolator.support(n.len());
-    if range.len() < 256 {
-        return Err(SkewError::TooShort { samples: range.len(), needed: 256 });
+    if range.len() < LEAST_SAMPLES {
+        return Err(SkewError::TooShort { samples: range.len(), needed: LEAST_SAMPLES });
     }
     let late = interpolator.apply(n);
     let p = &p[range];
+    let correlation = correlation(p, &late);
+    if correlation < -LEAST_CORRELATION {
+        return Err(SkewError::Inverted { correlation });
+    }
+    // Not `<`: the correlation of a flat leg is not a number.
+    if !(correlation >= LEAST_CORRELATION) {
+        return Err(SkewError::NoCommonSignal { correlation, needed: LEAST_CORRELATION });
+    }
     let fit = |noise: PairNoise| {
         let (u_p, u_n) = (noise.p_v, noise.n_v * interpolator.noise_gain().sqrt());
         deming(p, &late, u_p, u_n).map_err(|_| SkewError::NotFinite { what: "a sample, its noise or their spread" })
@@ -56,15 +65,11 @@ pub fn gain_and_offset(p: &[f64], n: &[f64], skew_samples: f64) -> Result<LevelE
     let mut noise = equal;
     let mut assumed = false;
     for _ in 0..PASSES {
-        if !(0.05..=20.0).contains(&line.slope.value) {
+        if !GAINS.contains(&line.slope.value) {
             return Err(SkewError::Gain { gain: line.slope.value });
         }
         (noise, assumed) = measured(p, &late, &line)?;
         line = fit(noise)?;
-    }
-    let spread = line.slope.u / line.slope.value;
-    if !(spread < 0.1) {
-        return Err(SkewError::NoCommonSignal { correlation: 0.0, needed: 0.4 });
     }
     // The scatter about the line, where it is more than the noise explains, counts.
     let scale = line.residual.max(1.0);
@@ -72,7 +77,7 @@ pub fn gain_and_offset(p: &[f64], n: &[f64], skew_samples: f64) -> Result<LevelE
     if assumed {
         warnings.push(Warning::NoiseSplitAssumed);
     }
-    if line.residual.powi(2) > 1.3 {
+    if line.residual.powi(2) > DIFFERENT {
         let expected2 = noise.n_v.powi(2) + (line.slope.value * noise.p_v).powi(2);
         warnings.push(Warning::ResponsesDiffer { excess_v: (expected2 * (line.residual.powi(2) - 1.0)).sqrt() });
     }
@@ -84,6 +89,12 @@ pub fn gain_and_offset(p: &[f64], n: &[f64], skew_samples: f64) -> Result<LevelE
         noise_n_v: noise.n_v,
         warnings,
     })
+}
+
+fn correlation(p: &[f64], n: &[f64]) -> f64 {
+    let (mean_p, mean_n) = (mean(p), mean(n));
+    let moment = |f: fn(f64, f64) -> f64| sum(p.iter().zip(n).map(|(p, n)| f(p - mean_p, n - mean_n)));
+    moment(|p, n| p * n) / (moment(|p, _| p * p) * moment(|_, n| n * n)).sqrt()
 }
 
 fn measured(p: &[f64], late: &[f64], line: &Line) -> Result<(PairNoise, bool), SkewError> {

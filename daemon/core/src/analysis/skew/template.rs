@@ -46,18 +46,14 @@ pub(super) fn build(estimate: &[f64], noise: f64, shape: Shape) -> Result<Templa
     }));
     let spectrum = fourier.forward(&mut bridged)?;
     let per_bin = noise * n as f64;
+    let filtered = |weights: Vec<f64>| Filtered::new(&fourier, &spectrum, &weights, noise);
+    let edges = || Ok(filtered(smooth(&spectrum, per_bin))?.template(n, level, true));
+    let tones = || Ok(filtered(lines(&spectrum, per_bin))?.template(n, level, false));
     match shape {
-        Shape::Edges => {
-            Filtered::new(&fourier, &spectrum, &smooth(&spectrum, per_bin), noise)?.template(n, level, true)
-        }
-        Shape::Sine | Shape::Multitone => {
-            Filtered::new(&fourier, &spectrum, &lines(&spectrum, per_bin), noise)?.template(n, level, false)
-        }
+        Shape::Edges => edges(),
+        Shape::Sine | Shape::Multitone => tones(),
         Shape::Unknown => {
-            let edges =
-                Filtered::new(&fourier, &spectrum, &smooth(&spectrum, per_bin), noise)?.template(n, level, true)?;
-            let tones =
-                Filtered::new(&fourier, &spectrum, &lines(&spectrum, per_bin), noise)?.template(n, level, false)?;
+            let (edges, tones) = (edges()?, tones()?);
             Ok(if edges.information() >= tones.information() { edges } else { tones })
         }
     }
@@ -131,7 +127,7 @@ impl Filtered {
         })
     }
 
-    fn template(mut self, n: usize, level: f64, gate: bool) -> Result<Template, SpectrumError> {
+    fn template(mut self, n: usize, level: f64, gate: bool) -> Template {
         self.slope.truncate(n);
         self.signal.truncate(n);
         let least = GATE * self.slope_noise.sqrt();
@@ -139,7 +135,7 @@ impl Filtered {
         if gate && gated.iter().filter(|d| d.abs() > least).count() >= LEAST_GATE {
             gated.iter_mut().filter(|d| d.abs() <= least).for_each(|d| *d = 0.0);
         }
-        Ok(Template {
+        Template {
             gated,
             slope: self.slope,
             signal: self.signal,
@@ -147,21 +143,25 @@ impl Filtered {
             slope_noise: self.slope_noise,
             signal_noise: self.signal_noise,
             slope_energy: self.slope_energy,
-        })
+        }
     }
 }
 
 impl Template {
-    /// Σ gated·slope with the noise that both share taken off, and Σ gated².
-    pub(super) fn products(&self) -> (f64, f64) {
+    /// Σ gated·s′: Σ gated² with the noise that the template shares with itself taken off.
+    pub(super) fn useful(&self) -> f64 {
         let open = self.gated.iter().filter(|d| **d != 0.0).count() as f64;
-        let own: f64 = self.gated.iter().map(|d| d * d).sum();
-        ((own - open * self.slope_noise).max(own * 1e-3), own)
+        let own = self.own();
+        (own - open * self.slope_noise).max(own * 1e-3)
+    }
+
+    fn own(&self) -> f64 {
+        self.gated.iter().map(|d| d * d).sum()
     }
 
     /// What the template tells about the skew, up to a factor: (Zᵀs′)²/ZᵀZ.
     fn information(&self) -> f64 {
-        let (useful, own) = self.products();
-        if own > 0.0 { useful * useful / own } else { 0.0 }
+        let own = self.own();
+        if own > 0.0 { self.useful().powi(2) / own } else { 0.0 }
     }
 }

@@ -272,8 +272,42 @@ fn little_dither_is_told_and_widens_the_uncertainty() {
     quantise(&mut n, step);
     let plain = estimate(&p, &n, 1.0, &reference(Shape::Edges)).unwrap();
     let found = plain.clone().with_converter(step, step, 1);
-    assert!((found.dither_steps.unwrap() - 0.8).abs() < 0.05, "{found:?}");
+    assert!(found.dither_steps.unwrap() > 0.7, "{found:?}");
     assert_eq!(SkewEstimate { dither_steps: None, ..found }, plain);
+}
+
+#[test]
+fn dither_is_measured_without_bias() {
+    let step = 2.5 / 256.0;
+    let mut dice = Dice::new(27);
+    let mut mean = 0.0;
+    for _ in 0..40 {
+        let signal = square(392.5, 10.0, dice.uniform(0.0, 392.5));
+        let (mut p, mut n) = dice.records(&signal, &Truth::with_noise(0.8 * step), 4000);
+        quantise(&mut p, step);
+        quantise(&mut n, step);
+        let found = estimate(&p, &n, 1.0, &reference(Shape::Edges)).unwrap();
+        let steps = |noise: f64| (noise * noise - step * step / 12.0).sqrt() / step;
+        mean += (steps(found.noise_p_v) + steps(found.noise_n_v)) / 80.0;
+    }
+    // Measured with a standard error of 0.004.
+    assert!((mean - 0.8).abs() < 0.015, "{mean}");
+}
+
+#[test]
+#[ignore = "seconds: a million samples with few edges"]
+fn a_million_samples_keep_the_bound() {
+    let signal = square(100_000.5, 10.0, 1234.5);
+    let mut dice = Dice::new(28);
+    for noise in [0.1, 0.001] {
+        let truth = Truth::with_noise(noise);
+        let (p, n) = dice.records(&signal, &truth, 1_000_000);
+        let begun = std::time::Instant::now();
+        let found = estimate(&p, &n, 1.0, &reference(Shape::Edges)).unwrap();
+        println!("{:?} {found:?} {:?}", begun.elapsed(), truth.bound(&signal, 1_000_000));
+        assert!((found.skew_s.value - truth.tau).abs() < 4.0 * truth.bound(&signal, 1_000_000)[0], "{found:?}");
+        assert!(found.skew_s.u < 1.3 * truth.bound(&signal, 1_000_000)[0], "{found:?}");
+    }
 }
 
 #[test]

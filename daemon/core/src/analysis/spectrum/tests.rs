@@ -39,7 +39,7 @@ fn white_noise_has_its_variance_in_every_part_of_the_spectrum() {
     let noise: Vec<f64> = (0..10_007).map(|_| 5.0 + 0.3 * dice.normal()).collect();
     let (spectrum, length) = hann(&noise).unwrap();
     assert!(length >= noise.len());
-    for part in spectrum[10..5000].chunks(1247) {
+    for part in spectrum[10..5000].chunks_exact(1247) {
         let power = part.iter().map(|bin| bin.norm_sqr()).sum::<f64>() / part.len() as f64;
         // Neighbouring bins share noise under the window: about 640 independent values, 4 % each.
         assert!((power / 0.09 - 1.0).abs() < 0.16, "{power}");
