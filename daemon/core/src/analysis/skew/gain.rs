@@ -52,8 +52,8 @@ pub fn gain_and_offset(p: &[f64], n: &[f64], skew_samples: f64) -> Result<LevelE
     if correlation < -LEAST_CORRELATION {
         return Err(SkewError::Inverted { correlation });
     }
-    // Not `<`: the correlation of a flat leg is not a number.
-    if !(correlation >= LEAST_CORRELATION) {
+    // The correlation of a flat leg is not a number.
+    if correlation.is_nan() || correlation < LEAST_CORRELATION {
         return Err(SkewError::NoCommonSignal { correlation, needed: LEAST_CORRELATION });
     }
     let fit = |noise: PairNoise| {

@@ -47,7 +47,13 @@ pub(super) fn build(estimate: &[f64], noise: f64, shape: Shape) -> Result<Templa
     let spectrum = fourier.forward(&mut bridged)?;
     let per_bin = noise * n as f64;
     let filtered = |weights: Vec<f64>| Filtered::new(&fourier, &spectrum, &weights, noise);
-    let edges = || Ok(filtered(smooth(&spectrum, per_bin))?.template(n, level, true));
+    let edges = || {
+        let first = filtered(smooth(&spectrum, per_bin))?.template(n, level, true);
+        let Some((weights, slope_energy)) = sharpen(&fourier, estimate, &first.gated, noise)? else {
+            return Ok(first);
+        };
+        Ok(Template { slope_energy, ..filtered(weights)?.template(n, level, true) })
+    };
     let tones = || Ok(filtered(lines(&spectrum, per_bin))?.template(n, level, false));
     match shape {
         Shape::Edges => edges(),
@@ -62,13 +68,7 @@ pub(super) fn build(estimate: &[f64], noise: f64, shape: Shape) -> Result<Templa
 /// Wiener weights from the power spectrum smoothed over neighbouring bins: for signals whose spectrum has no gaps.
 fn smooth(spectrum: &[Complex<f64>], per_bin: f64) -> Vec<f64> {
     let half = (spectrum.len() / 128).clamp(8, 64);
-    let mut running = Vec::with_capacity(spectrum.len() + 1);
-    let mut total = 0.0;
-    running.push(0.0);
-    for bin in spectrum {
-        total += bin.norm_sqr();
-        running.push(total);
-    }
+    let running = running_sums(spectrum.iter().map(|bin| bin.norm_sqr()));
     // Below this a smoothed value may be noise alone.
     let least = 1.0 + 3.0 / ((2 * half + 1) as f64).sqrt();
     let line = lines(spectrum, per_bin);
@@ -78,6 +78,75 @@ fn smooth(spectrum: &[Complex<f64>], per_bin: f64) -> Vec<f64> {
         if power > least * per_bin { 1.0 - per_bin / power } else { 0.0 }
     };
     (0..spectrum.len()).map(|k| weigh(k).max(line[k])).collect()
+}
+
+/// Wiener weights from the neighbourhood of the edges alone, and Σ s′² from there. In a long record with few edges the
+/// noise between them hides the upper part of the edges' spectrum; the plateaus have nothing to tell of it.
+///
+/// `gated` is a first template, not zero where the edges are. `None` if they fill most of the record.
+fn sharpen(
+    fourier: &Fourier,
+    estimate: &[f64],
+    gated: &[f64],
+    noise: f64,
+) -> Result<Option<(Vec<f64>, f64)>, SpectrumError> {
+    let edge = |i: usize| gated[i] != 0.0;
+    let starts = (0..gated.len()).filter(|&i| edge(i) && (i == 0 || !edge(i - 1))).count();
+    let inside = (0..gated.len()).filter(|&i| edge(i)).count();
+    if starts == 0 || inside < LEAST_GATE {
+        return Ok(None);
+    }
+    // As wide again to either side as an edge is, and never so narrow that the cut itself has a spectrum.
+    let run = inside.div_ceil(starts);
+    let reach = (2 * run).max(24);
+    let mut window = vec![false; gated.len() - 1];
+    let mut filled = 0;
+    for i in (0..gated.len()).filter(|&i| edge(i)) {
+        // Each sample is filled once, however many edges' samples reach it.
+        let to = (i + reach).min(window.len());
+        if let Some(part) = window.get_mut(i.saturating_sub(reach).max(filled)..to) {
+            part.fill(true);
+        }
+        filled = to;
+    }
+    let mut differences = vec![0.0; fourier.length()];
+    for (i, out) in differences.iter_mut().enumerate().take(window.len()).filter(|(i, _)| window[*i]) {
+        *out = estimate[i + 1] - estimate[i];
+    }
+    let open = window.iter().filter(|open| **open).count();
+    if 2 * open > gated.len() {
+        return Ok(None);
+    }
+    let length = fourier.length();
+    let power: Vec<f64> = fourier.forward(&mut differences)?.iter().map(|bin| bin.norm_sqr()).collect();
+    let half = (length / (8 * run)).clamp(8, (power.len() / 128).max(8));
+    let running = running_sums(power.iter().copied());
+    let least = 1.0 + 3.0 / ((2 * half + 1) as f64).sqrt();
+    let mut energy = 0.0;
+    let mut weights = vec![1.0; power.len()];
+    for (k, weight) in weights.iter_mut().enumerate().skip(1) {
+        let omega = std::f64::consts::TAU * k as f64 / length as f64;
+        let difference = 4.0 * (omega / 2.0).sin().powi(2);
+        let (from, to) = (k.saturating_sub(half), (k + half + 1).min(power.len()));
+        let seen = (running[to] - running[from]) / (to - from) as f64;
+        let expected = noise * open as f64 * difference;
+        *weight = if seen > least * expected { 1.0 - expected / seen } else { 0.0 };
+        if *weight > 0.0 && k as f64 <= BAND * length as f64 {
+            energy += (power[k] - expected) * omega * omega / difference;
+        }
+    }
+    Ok(Some((weights, 2.0 * energy / length as f64)))
+}
+
+/// Sums of the first 0, 1, 2, … values.
+fn running_sums(values: impl Iterator<Item = f64>) -> Vec<f64> {
+    let mut total = 0.0;
+    std::iter::once(0.0)
+        .chain(values.map(|value| {
+            total += value;
+            total
+        }))
+        .collect()
 }
 
 /// Weights that keep the bins which stand out of the noise: for lines.
