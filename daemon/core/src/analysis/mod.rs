@@ -5,9 +5,15 @@
 //! *Offset* o: volts at the tips. The corrected difference is `D(t) = P(t) − (N(t + τ) − o)/g`, the common mode
 //! `C = (P + N_corrected)/2`.
 
+pub mod coarse;
 pub mod correction;
+pub mod deskew;
 pub mod interpolate;
+pub mod line;
+pub mod noise;
 pub mod record;
+pub mod skew;
+pub mod spectrum;
 
 pub use correction::{Correction, Estimate};
 pub use record::{Record, Samples};

@@ -1,0 +1,111 @@
+//! Several acquisitions of a reference become one correction.
+//!
+//! Each quantity is the mean of the repeats, weighted by their uncertainties; its standard uncertainty the larger of
+//! what the single uncertainties promise and what the scatter shows (type A, JCGM 100, 4.2). Repeats are not averaged
+//! down where the converter has too little dither: its error is then the same in all of them.
+
+use super::skew::{SkewEstimate, Warning};
+use super::{Correction, Estimate};
+use statrs::distribution::{ContinuousCDF, StudentsT};
+
+/// The least noise, in converter steps, with which quantisation error behaves like noise.
+pub const LEAST_DITHER: f64 = 0.5;
+
+/// The mean of repeats.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Mean {
+    /// The weighted mean and its standard uncertainty.
+    pub estimate: Estimate,
+    /// The factor k for 95 %: 2, or Student's for the few repeats whose scatter `u` is taken from (JCGM 100, G.3).
+    pub coverage_factor: f64,
+    /// Standard uncertainty that the single estimates promise together.
+    pub promised: f64,
+    /// Standard uncertainty that their scatter shows; `None` for a single one.
+    pub scatter: Option<f64>,
+}
+
+/// Skew, gain and offset from all repeats.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Combined {
+    /// τ in seconds.
+    pub skew_s: Mean,
+    /// g, N relative to P.
+    pub gain: Mean,
+    /// o in volts.
+    pub offset_v: Mean,
+    /// How many repeats there were.
+    pub repeats: usize,
+    /// Each kind of warning once, with the last repeat's values.
+    pub warnings: Vec<Warning>,
+}
+
+impl Combined {
+    /// The estimates as a correction.
+    #[must_use]
+    pub fn correction(&self) -> Correction {
+        Correction { skew_s: self.skew_s.estimate, gain: self.gain.estimate, offset_v: self.offset_v.estimate }
+    }
+}
+
+/// Combines repeats; `None` without any.
+#[must_use]
+pub fn combine(repeats: &[SkewEstimate]) -> Option<Combined> {
+    if repeats.is_empty() {
+        return None;
+    }
+    let dithered = repeats.iter().all(|one| one.dither_steps.is_none_or(|steps| steps >= LEAST_DITHER));
+    let all = |pick: fn(&SkewEstimate) -> Estimate| {
+        let values: Vec<Estimate> = repeats.iter().map(pick).collect();
+        weighted(&values, dithered)
+    };
+    let mut warnings: Vec<Warning> = Vec::new();
+    for warning in repeats.iter().rev().flat_map(|one| &one.warnings) {
+        let kind = std::mem::discriminant(warning);
+        if warnings.iter().all(|known| std::mem::discriminant(known) != kind) {
+            warnings.push(warning.clone());
+        }
+    }
+    Some(Combined {
+        skew_s: all(|one| one.skew_s),
+        gain: all(|one| one.gain),
+        offset_v: all(|one| one.offset_v),
+        repeats: repeats.len(),
+        warnings,
+    })
+}
+
+/// Whether the skew is known to `target_u_skew_s` (standard uncertainty in seconds) by more than one repeat: a single
+/// one shows no scatter.
+#[must_use]
+pub fn enough(combined: &Combined, target_u_skew_s: f64) -> bool {
+    combined.repeats > 1 && combined.skew_s.estimate.u <= target_u_skew_s
+}
+
+/// The weighted mean; `independent` repeats share nothing, others do not get better by their number.
+fn weighted(values: &[Estimate], independent: bool) -> Mean {
+    let count = values.len() as f64;
+    // Without any uncertainty to go by (data without noise) all count alike.
+    let usable = values.iter().all(|one| one.u > 0.0 && one.u.is_finite());
+    let weight = |one: &Estimate| if usable { 1.0 / (one.u * one.u) } else { 1.0 };
+    let total: f64 = values.iter().map(weight).sum();
+    // Differences from the first value keep the digits of small scatter about a large mean.
+    let origin = values[0].value;
+    let value = origin + values.iter().map(|one| weight(one) * (one.value - origin)).sum::<f64>() / total;
+    let shared = if independent { 1.0 } else { count.sqrt() };
+    let promised = if usable { (1.0 / total).sqrt() * shared } else { 0.0 };
+    let scatter = (values.len() > 1).then(|| {
+        let squares: f64 = values.iter().map(|one| weight(one) * (one.value - value).powi(2)).sum();
+        (squares / total / (count - 1.0)).sqrt() * shared
+    });
+    let shows = scatter.filter(|scatter| *scatter > promised);
+    let coverage_factor = shows.map_or(2.0, |_| student(count - 1.0));
+    Mean { estimate: Estimate { value, u: shows.unwrap_or(promised) }, coverage_factor, promised, scatter }
+}
+
+/// Student's two-sided 95.45 % point for `freedom` degrees of freedom (2 in the limit).
+fn student(freedom: f64) -> f64 {
+    StudentsT::new(0.0, 1.0, freedom).map_or(2.0, |t| t.inverse_cdf(0.977_249_868))
+}
+
+#[cfg(test)]
+mod tests;
