@@ -5,15 +5,25 @@
 //! *Offset* o: volts at the tips. The corrected difference is `D(t) = P(t) − (N(t + τ) − o)/g`, the common mode
 //! `C = (P + N_corrected)/2`.
 
+pub mod apply;
+mod band;
+pub mod budget;
 pub mod coarse;
 pub mod correction;
 pub mod deskew;
+pub mod figures;
+pub mod grade;
 pub mod interpolate;
+pub mod leak;
+pub mod levels;
 pub mod line;
 pub mod noise;
+pub mod peaks;
 pub mod record;
+pub mod rejection;
 pub mod skew;
 pub mod spectrum;
+pub mod transition;
 
 pub use correction::{Correction, Estimate};
 pub use record::{Record, Samples};

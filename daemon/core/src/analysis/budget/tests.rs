@@ -1,0 +1,78 @@
+#![allow(clippy::unwrap_used)]
+use super::*;
+
+/// JCGM 100:2008, example H.2: simultaneous resistance and reactance. Table H.2 (five sets of V in volts, I in
+/// milliamperes, φ in radians) and the results of tables H.3 and H.4 are written from memory of the guide.
+#[test]
+fn the_guide_s_example_of_resistance_and_reactance() {
+    let v = [5.007, 4.994, 5.005, 4.990, 4.999];
+    let i = [19.663, 19.639, 19.640, 19.685, 19.678].map(|x: f64| x * 1e-3);
+    let phi = [1.0456, 1.0438, 1.0468, 1.0428, 1.0433];
+    let sets = [v, i, phi];
+    let mean = sets.map(|s| s.iter().sum::<f64>() / 5.0);
+    let covariance = |a: usize, b: usize| {
+        sets[a].iter().zip(&sets[b]).map(|(x, y)| (x - mean[a]) * (y - mean[b])).sum::<f64>() / 20.0
+    };
+    let u: Vec<f64> = (0..3).map(|k| covariance(k, k).sqrt()).collect();
+    for (found, expected) in u.iter().zip([0.0032, 0.0095e-3, 0.00075]) {
+        assert!((found / expected - 1.0).abs() < 0.02, "{found} {expected}");
+    }
+    let correlation = DMatrix::from_fn(3, 3, |a, b| covariance(a, b) / (u[a] * u[b]));
+    for (a, b, r) in [(0, 1, -0.36), (0, 2, 0.86), (1, 2, -0.65)] {
+        assert!((correlation[(a, b)] - r).abs() < 0.005, "r({a},{b}) = {}", correlation[(a, b)]);
+    }
+    let [v, i, phi] = mean;
+    let z = v / i;
+    let (r, x) = (z * phi.cos(), z * phi.sin());
+    for (found, expected) in [(r, 127.732), (x, 219.847), (z, 254.260)] {
+        assert!((found - expected).abs() < 5.1e-4, "{found} {expected}");
+    }
+    #[rustfmt::skip]
+    let sensitivities = DMatrix::from_row_slice(3, 3, &[
+        r / v, -r / i, -x,
+        x / v, -x / i, r,
+        z / v, -z / i, 0.0,
+    ]);
+    let found = propagate(&sensitivities, &u, &correlation).unwrap();
+    for (found, expected) in found.u.iter().zip([0.071, 0.295, 0.236]) {
+        assert!((found - expected).abs() < 5.1e-4, "{found} {expected}");
+    }
+    for (a, b, r) in [(0, 1, -0.588), (0, 2, -0.485), (1, 2, 0.993)] {
+        assert!((found.correlation[(a, b)] - r).abs() < 5.1e-4, "r = {}", found.correlation[(a, b)]);
+    }
+}
+
+#[test]
+fn terms_combine_in_quadrature_and_share_the_variance() {
+    let term = |name, u| Term { name, u, kind: Kind::B, distribution: Distribution::Normal };
+    let terms = [term("noise", 3.0), term("gain", 4.0)];
+    assert!((combined(&terms) - 5.0).abs() < 1e-12);
+    let shares = shares(&terms);
+    assert!((shares[0] - 0.36).abs() < 1e-12 && (shares[1] - 0.64).abs() < 1e-12);
+    assert!(super::shares(&[term("noise", 0.0)])[0].abs() < 1e-300);
+}
+
+#[test]
+fn sizes_that_do_not_fit_are_refused() {
+    let one = DMatrix::identity(1, 1);
+    let error = propagate(&DMatrix::identity(2, 2), &[1.0, 1.0], &one).unwrap_err();
+    assert_eq!(error, PropagateError::Sizes { inputs: 2, sensitivities: 2, correlations: 1 });
+}
+
+/// Against the quantiser itself: the mean error of a level between two codes, as rms over all places between them.
+#[test]
+fn quantisation_matches_the_quantiser() {
+    for noise in [0.2, 0.3, 0.4] {
+        let normal = statrs::distribution::Normal::new(0.0, noise).unwrap();
+        use statrs::distribution::ContinuousCDF;
+        let mean_error = |level: f64| {
+            (-8..=8).map(|code| f64::from(code) * (normal.cdf(f64::from(code) + 0.5 - level)
+                - normal.cdf(f64::from(code) - 0.5 - level))).sum::<f64>() - level
+        };
+        let rms = ((0..200).map(|k| mean_error(f64::from(k) / 200.0 - 0.5).powi(2)).sum::<f64>() / 200.0).sqrt();
+        assert!((quantisation(1.0, noise) / rms - 1.0).abs() < 0.02, "{noise}: {rms}");
+    }
+    // Without noise the error is uniform; its fundamental has 0.225 of the step against the whole's 0.289.
+    assert!((quantisation(2.0, 0.0) - 0.4502).abs() < 1e-4);
+    assert!(quantisation(0.0, 0.1).abs() < 1e-300);
+}

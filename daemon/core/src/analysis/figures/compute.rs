@@ -1,0 +1,388 @@
+//! Computing all figures of a capture with their budgets and grades.
+
+use super::super::transition::{duration_per_part, middle_per_part};
+use super::super::{budget, grade, peaks};
+use super::shape::{Layout, Read, Reading, Shape};
+use super::sources::{Parts, Sources};
+use super::{Figure, FigureInput, FigureKind};
+
+/// A figure before it is graded.
+struct Found {
+    value: f64,
+    parts: Parts,
+    /// What the leak bound can have added to it, in its unit.
+    leak: f64,
+    /// The magnitude the leak is weighed against: the figure's own, for a level the amplitude.
+    size: f64,
+}
+
+/// Every figure of a capture, in the order of [`FigureKind::all`].
+///
+/// The leak bound counts for a figure as follows: its part at zero frequency for the mean and the area; its rms for the
+/// rms and each level, twice for the amplitude; its peak for the extremes, twice from peak to peak; its peak over the
+/// amplitude for overshoot and undershoot; its peak over the slopes for times. The common mode's own figures have none.
+#[must_use]
+pub fn compute(input: &FigureInput<'_>) -> Vec<Figure> {
+    let bench = Bench::of(input);
+    let plain = Plain::of(input);
+    let clipped = input.clipped_p + input.clipped_n;
+    FigureKind::all()
+        .map(|kind| {
+            let found = bench.figure(kind).and_then(|f| {
+                let sum = f.value + budget::combined(&f.parts.budget());
+                if sum.is_finite() { Ok(f) } else { Err("it cannot be computed from these samples".to_owned()) }
+            });
+            let plain = plain.figure(kind).filter(|v| v.is_finite());
+            match found {
+                Ok(found) => {
+                    let budget = found.parts.budget();
+                    let u = budget::combined(&budget);
+                    let why = (clipped > 0).then(|| {
+                        format!(
+                            "{} samples of the positive and {} of the negative leg are clipped; use a larger span",
+                            input.clipped_p, input.clipped_n
+                        )
+                    });
+                    let grade = grade::grade(found.size, u, found.leak);
+                    Figure { kind, value: found.value, u, plain, valid: why.is_none(), why, budget, grade }
+                }
+                Err(why) => Figure {
+                    kind,
+                    value: 0.0,
+                    u: 0.0,
+                    plain,
+                    valid: false,
+                    why: Some(why),
+                    budget: Vec::new(),
+                    grade: grade::Grade::Clean,
+                },
+            }
+        })
+        .collect()
+}
+
+/// The capture, its shape, and its shape with gain and skew moved by their uncertainties.
+struct Bench<'a> {
+    input: &'a FigureInput<'a>,
+    sources: Sources,
+    layout: Layout,
+    shape: Shape,
+    /// N_c', volts per second.
+    slope: Vec<f64>,
+    /// Shapes with the gain a standard uncertainty up and down.
+    by_gain: Option<[Shape; 2]>,
+    /// The same for the skew.
+    by_skew: Option<[Shape; 2]>,
+}
+
+impl<'a> Bench<'a> {
+    fn of(input: &'a FigureInput<'a>) -> Self {
+        let sources = Sources::of(input);
+        let corrected = input.corrected;
+        let d = &corrected.difference_v;
+        let layout = Layout::of(d, sources.noise_v);
+        let shape = layout.read(d, sources.noise_v, layout.between());
+        let slope = corrected.negative_slope();
+        let moved = |derivative: &[f64], step: f64| {
+            (step > 0.0).then(|| {
+                [step, -step].map(|step| {
+                    let signal: Vec<f64> = d.iter().zip(derivative).map(|(d, x)| x.mul_add(step, *d)).collect();
+                    let (mut low, mut high) = layout.between();
+                    if let Ok(levels) = &layout.levels {
+                        low += step * levels.mean_at_low(d, derivative);
+                        high += step * levels.mean_at_high(d, derivative);
+                    }
+                    layout.read(&signal, sources.noise_v, (low, high))
+                })
+            })
+        };
+        let by_gain = moved(&corrected.negative_v, (sources.u_gain / sources.gain).abs());
+        let by_skew = moved(&slope, sources.u_skew_s);
+        Self { input, sources, layout, shape, slope, by_gain, by_skew }
+    }
+
+    fn figure(&self, kind: FigureKind) -> Result<Found, String> {
+        let interval_s = self.input.corrected.interval_s;
+        match kind {
+            FigureKind::Mean => Ok(self.mean()),
+            FigureKind::Area => {
+                let duration_s = self.input.corrected.difference_v.len() as f64 * interval_s;
+                let mean = self.mean();
+                Ok(Found {
+                    value: mean.value * duration_s,
+                    parts: mean.parts.times(duration_s),
+                    leak: mean.leak * duration_s,
+                    size: mean.size * duration_s,
+                })
+            }
+            FigureKind::Rms => Ok(self.rms()),
+            FigureKind::CommonRms => Ok(self.common_rms()),
+            FigureKind::CommonSwing => Ok(self.common_swing()),
+            FigureKind::HighLevel | FigureKind::LowLevel | FigureKind::Amplitude => self.level(kind),
+            FigureKind::Maximum => Ok(self.extreme(|s| Ok(s.maximum), 1.0, 1.0)),
+            FigureKind::Minimum => Ok(self.extreme(|s| Ok(s.minimum), 1.0, 1.0)),
+            FigureKind::PeakToPeak => {
+                let range = |s: &Shape| {
+                    Ok(Read { value: s.maximum.value - s.minimum.value, u: s.maximum.u.hypot(s.minimum.u) })
+                };
+                Ok(self.extreme(range, 2.0, 0.0))
+            }
+            FigureKind::Overshoot => self.ratio(|s| s.overshoot.clone(), |part, _| part),
+            FigureKind::Undershoot => self.ratio(|s| s.undershoot.clone(), |part, _| part),
+            FigureKind::RiseTime => self.time(|s| s.rise.clone(), |part, v| duration_per_part(part) * v),
+            FigureKind::FallTime => self.time(|s| s.fall.clone(), |part, v| duration_per_part(part) * v),
+            FigureKind::Period => self.period(),
+            FigureKind::Frequency => {
+                let period = self.period()?;
+                let value = 1.0 / period.value;
+                let factor = value * value;
+                Ok(Found { value, parts: period.parts.times(factor), leak: period.leak * factor, size: value })
+            }
+            FigureKind::Duty => {
+                let period = self.shape.period.clone()?.value;
+                let per_part = 2.0 * self.shape.slowest / period;
+                self.ratio(|s| s.duty.clone(), move |part, _| per_part * middle_per_part(part))
+            }
+        }
+    }
+
+    fn mean(&self) -> Found {
+        let Sources { mean_noise_v, u_gain, u_skew_s, u_offset_v, scale, gain, quantisation_v, .. } = self.sources;
+        let corrected = self.input.corrected;
+        let value = mean(&corrected.difference_v);
+        let parts = Parts {
+            noise: mean_noise_v / (corrected.difference_v.len().max(1) as f64).sqrt(),
+            gain: u_gain * mean(&corrected.negative_v) / gain,
+            skew: u_skew_s * mean(&self.slope),
+            offset: u_offset_v,
+            scale: scale * value,
+            quantisation: quantisation_v,
+            common_mode: 0.0,
+        };
+        Found { value, parts, leak: self.input.leak.mean_v, size: value }
+    }
+
+    fn rms(&self) -> Found {
+        let s = &self.sources;
+        let corrected = self.input.corrected;
+        let (d, b) = (&corrected.difference_v, &corrected.negative_v);
+        let (value, noise, size) = without_noise(d, s.noise_v);
+        // Second order: what gain, skew and offset errors of this size add to the mean square whatever their sign. The
+        // slope's own noise, (2·8² + 2·1²)/12² per sample interval squared, is not the signal's.
+        let slope_noise = self.input.noise_n_v / s.gain / corrected.interval_s;
+        let steep = (product(&self.slope, &self.slope) - 130.0 / 144.0 * slope_noise * slope_noise).max(0.0);
+        let relative = s.u_gain / s.gain;
+        let second =
+            relative * relative * product(b, b) + s.u_skew_s * s.u_skew_s * steep + s.u_offset_v * s.u_offset_v;
+        let parts = Parts {
+            noise,
+            gain: relative * product(d, b) / size,
+            skew: s.u_skew_s * product(d, &self.slope) / size,
+            offset: s.u_offset_v * mean(d) / size,
+            scale: s.scale * value,
+            quantisation: s.quantisation_v,
+            // The mean square cannot rise by more than its square root does.
+            common_mode: (0.5 * second / size).min(second.sqrt()),
+        };
+        Found { value, parts, leak: self.input.leak.rms_v, size: value }
+    }
+
+    fn common_rms(&self) -> Found {
+        let s = &self.sources;
+        let corrected = self.input.corrected;
+        let (c, b) = (&corrected.common_v, &corrected.negative_v);
+        let (value, noise, size) = without_noise(c, s.common_noise_v);
+        let parts = Parts {
+            noise,
+            gain: 0.5 * s.u_gain / s.gain * product(c, b) / size,
+            skew: 0.5 * s.u_skew_s * product(c, &self.slope) / size,
+            offset: 0.5 * s.u_offset_v * mean(c) / size,
+            scale: s.scale * value,
+            quantisation: 0.5 * s.quantisation_v,
+            common_mode: 0.0,
+        };
+        Found { value, parts, leak: 0.0, size: value }
+    }
+
+    fn common_swing(&self) -> Found {
+        let s = &self.sources;
+        let (low, high) = peaks::extremes(&self.input.corrected.common_v, s.common_noise_v);
+        let value = high.value - low.value;
+        // At the top and the bottom the slope is nil, so that skew does nothing to first order.
+        let parts = Parts {
+            noise: low.u.hypot(high.u),
+            gain: 0.5 * s.u_gain / s.gain * value,
+            scale: s.scale * value,
+            quantisation: s.quantisation_v * std::f64::consts::FRAC_1_SQRT_2,
+            ..Parts::default()
+        };
+        Found { value, parts, leak: 0.0, size: value }
+    }
+
+    fn level(&self, kind: FigureKind) -> Result<Found, String> {
+        let levels = self.layout.levels.as_ref().map_err(ToString::to_string)?;
+        let s = &self.sources;
+        let d = &self.input.corrected.difference_v;
+        // With noise unknown or too small a claim the samples' own spread counts.
+        let noise = |level: &super::super::levels::Level| {
+            s.mean_noise_v.max(level.spread) / (level.count.max(1) as f64).sqrt()
+        };
+        let of = |signal: &[f64]| (levels.mean_at_low(d, signal), levels.mean_at_high(d, signal));
+        let (gain_low, gain_high) = of(&self.input.corrected.negative_v);
+        let (skew_low, skew_high) = of(&self.slope);
+        let (low, high) = (&levels.low, &levels.high);
+        let (value, noise, gain, skew, offset, steps, leak) = match kind {
+            FigureKind::LowLevel => (low.value, noise(low), gain_low, skew_low, 1.0, 1.0, 1.0),
+            FigureKind::HighLevel => (high.value, noise(high), gain_high, skew_high, 1.0, 1.0, 1.0),
+            _ => {
+                let steps = std::f64::consts::SQRT_2;
+                let (gain, skew) = (gain_high - gain_low, skew_high - skew_low);
+                (levels.amplitude(), noise(low).hypot(noise(high)), gain, skew, 0.0, steps, 2.0)
+            }
+        };
+        let parts = Parts {
+            noise,
+            gain: s.u_gain / s.gain * gain,
+            skew: s.u_skew_s * skew,
+            offset: s.u_offset_v * offset,
+            scale: s.scale * value,
+            quantisation: s.quantisation_v * steps,
+            common_mode: 0.0,
+        };
+        Ok(Found { value, parts, leak: leak * self.input.leak.rms_v, size: levels.amplitude() })
+    }
+
+    /// A figure in volts that is read from the shape.
+    fn extreme(&self, read: impl Fn(&Shape) -> Reading, peaks: f64, offset: f64) -> Found {
+        let s = &self.sources;
+        let Read { value, u } = read(&self.shape).unwrap_or(Read { value: 0.0, u: 0.0 });
+        let parts = Parts {
+            noise: u,
+            gain: half_change(self.by_gain.as_ref(), &read),
+            skew: half_change(self.by_skew.as_ref(), &read),
+            offset: s.u_offset_v * offset,
+            scale: s.scale * value,
+            quantisation: s.quantisation_v * peaks.sqrt(),
+            common_mode: 0.0,
+        };
+        Found { value, parts, leak: peaks * self.input.leak.peak_v, size: value }
+    }
+
+    /// A figure without scale and offset. `moves` says how far a disturbance, given in parts of the amplitude, can move
+    /// it.
+    fn ratio(
+        &self,
+        read: impl Fn(&Shape) -> Reading,
+        moves: impl Fn(f64, f64) -> f64,
+    ) -> Result<Found, String> {
+        let Read { value, u } = read(&self.shape)?;
+        let (low, high) = self.layout.between();
+        let amplitude = high - low;
+        let parts = Parts {
+            noise: u,
+            gain: half_change(self.by_gain.as_ref(), &read),
+            skew: half_change(self.by_skew.as_ref(), &read),
+            quantisation: moves(self.sources.quantisation_v / amplitude, value),
+            ..Parts::default()
+        };
+        Ok(Found { value, parts, leak: moves(self.input.leak.peak_v / amplitude, value), size: value })
+    }
+
+    /// As [`Bench::ratio`], from samples to seconds.
+    fn time(
+        &self,
+        read: impl Fn(&Shape) -> Reading,
+        moves: impl Fn(f64, f64) -> f64,
+    ) -> Result<Found, String> {
+        let found = self.ratio(read, moves)?;
+        let interval_s = self.input.corrected.interval_s;
+        Ok(Found {
+            value: found.value * interval_s,
+            parts: found.parts.times(interval_s),
+            leak: found.leak * interval_s,
+            size: found.size * interval_s,
+        })
+    }
+
+    fn period(&self) -> Result<Found, String> {
+        // Both ends of the span can move; they are many periods apart.
+        let per_part = 2.0 * self.shape.slowest / self.shape.periods.max(1.0);
+        self.time(|s| s.period.clone(), move |part, _| per_part * middle_per_part(part))
+    }
+}
+
+/// Half of what a figure changes between two shapes, 0 when it is missing in one.
+fn half_change(shapes: Option<&[Shape; 2]>, read: impl Fn(&Shape) -> Reading) -> f64 {
+    let Some([up, down]) = shapes else { return 0.0 };
+    match (read(up), read(down)) {
+        (Ok(up), Ok(down)) => 0.5 * (up.value - down.value),
+        _ => 0.0,
+    }
+}
+
+/// The figures of plain subtraction, values only.
+struct Plain<'a> {
+    signal: &'a [f64],
+    noise_v: f64,
+    interval_s: f64,
+    layout: Layout,
+    shape: Shape,
+}
+
+impl<'a> Plain<'a> {
+    fn of(input: &'a FigureInput<'a>) -> Self {
+        let noise_v = input.noise_p_v.hypot(input.noise_n_v);
+        let layout = Layout::of(input.plain_v, noise_v);
+        let shape = layout.read(input.plain_v, noise_v, layout.between());
+        Self { signal: input.plain_v, noise_v, interval_s: input.corrected.interval_s, layout, shape }
+    }
+
+    fn figure(&self, kind: FigureKind) -> Option<f64> {
+        let value = |reading: &Reading| reading.as_ref().ok().map(|r| r.value);
+        let time = |reading: &Reading| value(reading).map(|v| v * self.interval_s);
+        let levels = self.layout.levels.as_ref().ok();
+        if self.signal.is_empty() {
+            return None;
+        }
+        match kind {
+            FigureKind::Mean => Some(mean(self.signal)),
+            FigureKind::Area => Some(mean(self.signal) * self.signal.len() as f64 * self.interval_s),
+            FigureKind::Rms => Some(without_noise(self.signal, self.noise_v).0),
+            FigureKind::HighLevel => levels.map(|l| l.high.value),
+            FigureKind::LowLevel => levels.map(|l| l.low.value),
+            FigureKind::Amplitude => levels.map(super::super::levels::Levels::amplitude),
+            FigureKind::Maximum => Some(self.shape.maximum.value),
+            FigureKind::Minimum => Some(self.shape.minimum.value),
+            FigureKind::PeakToPeak => Some(self.shape.maximum.value - self.shape.minimum.value),
+            FigureKind::Overshoot => value(&self.shape.overshoot),
+            FigureKind::Undershoot => value(&self.shape.undershoot),
+            FigureKind::RiseTime => time(&self.shape.rise),
+            FigureKind::FallTime => time(&self.shape.fall),
+            FigureKind::Period => time(&self.shape.period),
+            FigureKind::Frequency => time(&self.shape.period).map(|p| 1.0 / p),
+            FigureKind::Duty => value(&self.shape.duty),
+            FigureKind::CommonRms | FigureKind::CommonSwing => None,
+        }
+    }
+}
+
+fn mean(x: &[f64]) -> f64 {
+    x.iter().sum::<f64>() / x.len().max(1) as f64
+}
+
+/// The mean of a product.
+fn product(x: &[f64], y: &[f64]) -> f64 {
+    x.iter().zip(y).map(|(x, y)| x * y).sum::<f64>() / x.len().max(1) as f64
+}
+
+/// The rms of a signal with its noise power taken away, the standard uncertainty that the noise leaves, and the rms to
+/// divide sensitivities by: never below what noise could fake, so that a difference of nothing has finite ones.
+fn without_noise(x: &[f64], noise: f64) -> (f64, f64, f64) {
+    let n = x.len().max(1) as f64;
+    let power = (product(x, x) - noise * noise).max(0.0);
+    let value = power.sqrt();
+    // Variance of the mean square: 4R²s²/n + 2s⁴/n.
+    let variance = (4.0 * power * noise * noise + 2.0 * noise.powi(4)) / n;
+    let size = value.max(variance.powf(0.25)).max(f64::MIN_POSITIVE.sqrt());
+    (value, 0.5 * variance.sqrt() / size, size)
+}

@@ -1,0 +1,77 @@
+//! The figures of a corrected capture, each with its uncertainty, its grade, and what plain subtraction would have
+//! given. Terms after IEEE Std 181 for pulses and JCGM 100 for uncertainty.
+//!
+//! What every figure has in its budget: *noise* (type A, measured per leg; the interpolation's noise gain is in it),
+//! *gain*, *skew* and *offset* of the correction with sensitivities from the capture itself (`∂D/∂g = N_c/g`,
+//! `∂D/∂τ = −N_c'`, `∂D/∂o = 1/g`), *scale* (the scope's gain specification, rectangular), *quantisation* (what a
+//! converter without enough noise leaves) and, for the rms, *common mode*: the second-order part of gain, skew and offset,
+//! which can only make it larger. The scope's time base is not among them: no specification of it is known here.
+
+use super::apply::Corrected;
+use super::budget::Term;
+use super::grade::Grade;
+use super::leak::LeakBound;
+use super::Correction;
+
+mod compute;
+mod kind;
+mod shape;
+mod sources;
+
+pub use compute::compute;
+pub use kind::FigureKind;
+
+/// What the figures are computed from.
+#[derive(Debug, Clone, Copy)]
+pub struct FigureInput<'a> {
+    /// The corrected capture.
+    pub corrected: &'a Corrected,
+    /// Plain subtraction of the two records, in volts.
+    pub plain_v: &'a [f64],
+    /// The correction that was applied.
+    pub correction: &'a Correction,
+    /// The capture's leak bound.
+    pub leak: &'a LeakBound,
+    /// Rms noise per sample of the positive leg's record in volts, quantisation noise included.
+    pub noise_p_v: f64,
+    /// The same of the negative leg's record, before correction.
+    pub noise_n_v: f64,
+    /// Converter step of the positive leg at the tip in volts.
+    pub step_p_v: f64,
+    /// Converter step of the negative leg at the tip in volts.
+    pub step_n_v: f64,
+    /// Half-width of the scope's gain specification, relative: 0.015 for ±1.5 %.
+    pub scale_spec: f64,
+    /// Clipped samples of the positive leg.
+    pub clipped_p: usize,
+    /// Clipped samples of the negative leg.
+    pub clipped_n: usize,
+    /// How many acquisitions were averaged into each record, at least 1.
+    pub averages: u32,
+}
+
+/// A figure of the corrected difference (or of the common mode).
+#[derive(Debug, Clone, PartialEq)]
+pub struct Figure {
+    /// Which.
+    pub kind: FigureKind,
+    /// Its value in `kind.unit()`; 0 when there is none (then it is not valid either).
+    pub value: f64,
+    /// Its standard uncertainty, in the same unit.
+    pub u: f64,
+    /// What plain subtraction gives, where it has such a figure.
+    pub plain: Option<f64>,
+    /// False when clipping or a missing feature makes it meaningless.
+    pub valid: bool,
+    /// Why it is not valid.
+    pub why: Option<String>,
+    /// The terms of its uncertainty, largest first.
+    pub budget: Vec<Term>,
+    /// How far the common mode could explain it.
+    pub grade: Grade,
+}
+
+#[cfg(test)]
+mod coverage;
+#[cfg(test)]
+mod tests;

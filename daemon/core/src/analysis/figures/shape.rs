@@ -1,0 +1,210 @@
+//! What the shape of one waveform says: levels, transitions, aberrations, period and extremes, each with the
+//! uncertainty that its noise leaves. Times are in samples here.
+//!
+//! Finding the shape and reading it are two steps, so that the same transitions can be read again on a waveform that is
+//! changed a little: that is how the figures' sensitivities are found.
+
+use std::ops::Range;
+
+use super::super::levels::{self, Levels, NoLevels};
+use super::super::peaks;
+use super::super::transition::{self, Edge, Transition};
+
+/// At most about this many transitions are measured, spread over the record.
+const MOST_EDGES: usize = 256;
+
+/// At most this many cycles are searched for their extremes, spread over the record.
+const MOST_CYCLES: usize = 128;
+
+/// From this many repeats on, their scatter is trusted to show what the noise alone does not: jitter.
+const ENOUGH_REPEATS: usize = 5;
+
+/// Cycles that differ by more than this part of the period are none.
+const MOST_IRREGULARITY: f64 = 0.1;
+
+/// A value and its standard uncertainty from noise, or the reason why there is none.
+pub(super) type Reading = Result<Read, String>;
+
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub(super) struct Read {
+    pub(super) value: f64,
+    pub(super) u: f64,
+}
+
+/// Where the features of a waveform are.
+pub(super) struct Layout {
+    pub(super) levels: Result<Levels, NoLevels>,
+    low: f64,
+    high: f64,
+    /// Every transition, and which of them are measured.
+    edges: Vec<Edge>,
+    chosen: Vec<usize>,
+    cycles: Vec<Range<usize>>,
+}
+
+/// What a waveform reads.
+pub(super) struct Shape {
+    pub(super) rise: Reading,
+    pub(super) fall: Reading,
+    pub(super) overshoot: Reading,
+    pub(super) undershoot: Reading,
+    pub(super) period: Reading,
+    pub(super) duty: Reading,
+    pub(super) maximum: Read,
+    pub(super) minimum: Read,
+    /// Longest mean duration of a transition, in samples; 0 without any.
+    pub(super) slowest: f64,
+    /// How many periods lie between the first and the last 50 % point that the period was taken from.
+    pub(super) periods: f64,
+}
+
+impl Layout {
+    /// Of a signal with white noise of `noise` rms.
+    pub(super) fn of(signal: &[f64], noise: f64) -> Self {
+        let levels = levels::find(signal, noise);
+        // A waveform without states (a sine) still has a middle that it crosses.
+        let (low, high) = levels.as_ref().map_or_else(|_| outer(signal), |l| (l.low.value, l.high.value));
+        let edges = match &levels {
+            Ok(levels) => levels.edges.clone(),
+            Err(_) if high - low > 6.0 * noise && high > low => transition::edges(signal, low, high),
+            Err(_) => Vec::new(),
+        };
+        let group = (3 * edges.len()).div_ceil(2 * MOST_EDGES).max(1);
+        // Three in a row make a whole period.
+        let chosen = (0..edges.len()).filter(|i| i % (2 * group) < 3).collect();
+        let starts: Vec<usize> = edges.iter().filter(|e| e.rising).map(Edge::middle).collect();
+        let step = starts.len().div_ceil(MOST_CYCLES).max(1);
+        let mut cycles: Vec<Range<usize>> = starts.windows(2).step_by(step).map(|w| w[0]..w[1]).collect();
+        if cycles.len() < 2 {
+            cycles = vec![0..signal.len()];
+        }
+        Self { levels, low, high, edges, chosen, cycles }
+    }
+
+    /// The levels between which transitions are measured.
+    pub(super) fn between(&self) -> (f64, f64) {
+        (self.low, self.high)
+    }
+
+    /// Reads a signal that has its features at the same places, between the levels given.
+    pub(super) fn read(&self, signal: &[f64], noise: f64, (low, high): (f64, f64)) -> Shape {
+        let middle = |i: usize| self.edges.get(i).map(Edge::middle);
+        let measured: Vec<(usize, Transition)> = self
+            .chosen
+            .iter()
+            .filter_map(|&i| {
+                let from = i.checked_sub(1).and_then(middle).unwrap_or(0);
+                let to = middle(i + 1).unwrap_or(signal.len());
+                let found = transition::measure(signal, self.edges[i], from..to, (low, high), noise)?;
+                Some((i, found))
+            })
+            .collect();
+        let states = self.levels.as_ref().map(|_| ()).map_err(ToString::to_string);
+        let duration = |rising: bool| {
+            let all = measured.iter().filter(|(_, t)| t.rising == rising);
+            mean(all.map(|(_, t)| Read { value: t.duration, u: t.duration_u }))
+                .ok_or_else(|| format!("the record holds no whole {} transition", if rising { "rising" } else { "falling" }))
+        };
+        let (rise, fall) = (duration(true), duration(false));
+        let aberration = |rising: bool| {
+            let found = measured.iter().filter(|(_, t)| t.rising == rising).take(MOST_CYCLES).filter_map(|(i, t)| {
+                let next = middle(i + 1).unwrap_or(signal.len()) as f64;
+                // The post-transition region: ten durations, but no further than half-way to the next transition.
+                let to = (t.end + (10.0 * t.duration).max(16.0)).min(0.5 * (t.end + next));
+                let range = t.end.ceil() as usize..(to.ceil() as usize).min(signal.len());
+                let top = if rising { peaks::highest } else { peaks::lowest };
+                (range.len() >= 3).then(|| {
+                    let top = top(signal, range, noise);
+                    let beyond = if rising { top.value - high } else { low - top.value };
+                    Read { value: beyond / (high - low), u: top.u / (high - low) }
+                })
+            });
+            let found = mean(found).ok_or_else(|| "the record holds no transition with room after it".to_owned())?;
+            Ok(Read { value: found.value.max(0.0), ..found })
+        };
+        let (period, periods) = period(&measured);
+        let duty = states.clone().and(period.clone()).and_then(|period| duty(&measured, period));
+        let extreme = |of: fn(&[f64], Range<usize>, f64) -> peaks::Extreme| {
+            let found = self.cycles.iter().map(|r| of(signal, r.clone(), noise));
+            mean(found.map(|e| Read { value: e.value, u: e.u })).unwrap_or(Read { value: 0.0, u: 0.0 })
+        };
+        let duration_of = |r: &Reading| r.as_ref().map_or(0.0, |r| r.value);
+        Shape {
+            slowest: duration_of(&rise).max(duration_of(&fall)),
+            overshoot: states.clone().and_then(|()| aberration(true)),
+            undershoot: states.clone().and_then(|()| aberration(false)),
+            rise: states.clone().and(rise),
+            fall: states.and(fall),
+            period,
+            duty,
+            maximum: extreme(peaks::highest),
+            minimum: extreme(peaks::lowest),
+            periods,
+        }
+    }
+}
+
+/// The values below and above which 5 % of the samples lie.
+fn outer(signal: &[f64]) -> (f64, f64) {
+    let mut sorted = signal.to_vec();
+    let last = sorted.len().saturating_sub(1);
+    if last == 0 {
+        return (0.0, 0.0);
+    }
+    let low = *sorted.select_nth_unstable_by(last / 20, f64::total_cmp).1;
+    let high = *sorted.select_nth_unstable_by(last - last / 20, f64::total_cmp).1;
+    (low, high)
+}
+
+/// Mean of repeats; its uncertainty is the larger of what noise and what scatter say.
+fn mean(reads: impl Iterator<Item = Read>) -> Option<Read> {
+    let reads: Vec<Read> = reads.collect();
+    if reads.is_empty() {
+        return None;
+    }
+    let n = reads.len() as f64;
+    let value = reads.iter().map(|r| r.value).sum::<f64>() / n;
+    let noise = reads.iter().map(|r| r.u * r.u).sum::<f64>().sqrt() / n;
+    let scatter = if reads.len() >= ENOUGH_REPEATS {
+        (reads.iter().map(|r| (r.value - value).powi(2)).sum::<f64>() / (n - 1.0) / n).sqrt()
+    } else {
+        0.0
+    };
+    Some(Read { value, u: noise.max(scatter) })
+}
+
+/// The slope of a straight line through the 50 % points of one direction, and how many periods they span.
+fn period(measured: &[(usize, Transition)]) -> (Reading, f64) {
+    let of = |rising: bool| measured.iter().filter(move |(_, t)| t.rising == rising);
+    let rising = of(true).count() >= of(false).count();
+    // Transitions alternate, so every second one begins a cycle.
+    let points: Vec<(f64, f64, f64)> = of(rising).map(|(i, t)| ((i / 2) as f64, t.middle, t.middle_u)).collect();
+    let (Some(first), Some(last)) = (points.first(), points.last()) else {
+        return (Err("the record holds no transition".to_owned()), 0.0);
+    };
+    let spanned = last.0 - first.0;
+    if spanned < 1.0 {
+        return (Err("the record holds less than one period".to_owned()), 0.0);
+    }
+    let n = points.len() as f64;
+    let (cx, cy) = (points.iter().map(|p| p.0).sum::<f64>() / n, points.iter().map(|p| p.1).sum::<f64>() / n);
+    let sxx: f64 = points.iter().map(|p| (p.0 - cx).powi(2)).sum();
+    let value = points.iter().map(|p| (p.0 - cx) * (p.1 - cy)).sum::<f64>() / sxx;
+    let residual: f64 = points.iter().map(|p| (p.1 - cy - value * (p.0 - cx)).powi(2)).sum();
+    let scatter = if points.len() > 2 { residual / (n - 2.0) } else { 0.0 };
+    if scatter.sqrt() > MOST_IRREGULARITY * value {
+        return (Err("the waveform does not repeat: its transitions have no constant distance".to_owned()), 0.0);
+    }
+    let noise = points.iter().map(|p| p.2 * p.2).sum::<f64>() / n;
+    let variance = if points.len() >= ENOUGH_REPEATS { noise.max(scatter) } else { noise };
+    (Ok(Read { value, u: (variance / sxx).sqrt() }), spanned)
+}
+
+/// Mean time from a rising to the falling 50 % point after it, per period.
+fn duty(measured: &[(usize, Transition)], period: Read) -> Reading {
+    let highs = measured.windows(2).filter(|w| w[0].0 + 1 == w[1].0 && w[0].1.rising).map(|w| Read {
+        value: (w[1].1.middle - w[0].1.middle) / period.value,
+        u: w[0].1.middle_u.hypot(w[1].1.middle_u) / period.value,
+    });
+    mean(highs).ok_or_else(|| "the record holds no whole stay in the high state".to_owned())
+}

@@ -1,0 +1,159 @@
+//! The neighbourhood of one transition: brought to a handy number of samples, smoothed, and searched for crossings.
+
+use std::ops::Range;
+
+use super::super::interpolate::Interpolator;
+use super::Edge;
+
+/// Long transitions are averaged in blocks so that 30 % to 70 % takes about this many.
+const SPAN: usize = 32;
+
+/// Points per sample when a fast edge is interpolated, and the taps for it.
+const UPSAMPLING: usize = 8;
+const TAPS: usize = 16;
+
+/// Smoothing wider than this leaves nothing between the samples that straight lines miss.
+const SMOOTH_ENOUGH: f64 = 2.0;
+
+/// Ratio of the 10–90 % duration to the standard deviation of a Gaussian edge: 2·1.2816.
+const DURATION_PER_SIGMA: f64 = 2.5631;
+
+/// A transition as a rise from 0 to 1.
+pub(super) struct Local {
+    values: Vec<f64>,
+    /// Position of the first value in samples of the record.
+    origin: f64,
+    /// Samples of the record per value.
+    pub(super) pitch: f64,
+    /// 30 % to 70 %, in values.
+    pub(super) span: f64,
+    /// Rms of the noise per value, in parts of the amplitude.
+    noise: f64,
+    /// The values that belong to this transition and no other.
+    room: Range<f64>,
+    centre: f64,
+    /// Variance that the block averages added to the width, in values squared.
+    block_variance: f64,
+}
+
+/// What a search found; positions and widths in values of [`Local`].
+#[derive(Debug, Clone, Copy)]
+pub(super) struct Crossings {
+    /// 10 % to 90 % as found.
+    pub(super) raw: f64,
+    /// The same with the smoothing's width taken out.
+    pub(super) duration: f64,
+    pub(super) middle: f64,
+    pub(super) end: f64,
+    /// Rms of the noise after smoothing, in parts of the amplitude.
+    pub(super) noise: f64,
+}
+
+impl Local {
+    pub(super) fn around(
+        signal: &[f64],
+        edge: Edge,
+        room: &Range<usize>,
+        span: usize,
+        noise: f64,
+        (low, amplitude): (f64, f64),
+    ) -> Option<Self> {
+        let block = (span / SPAN).max(1);
+        // Eight times 30–70 % is four times 10–90 %; the rest is for the filters.
+        let reach = 8 * span + 32 * block;
+        let from = edge.from.saturating_sub(reach);
+        let to = (edge.to + reach).min(signal.len());
+        let scale = if edge.rising { 1.0 / amplitude } else { -1.0 / amplitude };
+        let zero = if edge.rising { low } else { low + amplitude };
+        let values: Vec<f64> = signal
+            .get(from..to)?
+            .chunks_exact(block)
+            .map(|c| (c.iter().sum::<f64>() / block as f64 - zero) * scale)
+            .collect();
+        let size = block as f64;
+        let origin = from as f64 + 0.5 * (size - 1.0);
+        let place = |i: usize| (i as f64 - origin) / size;
+        Some(Self {
+            values,
+            origin,
+            pitch: size,
+            span: span as f64 / size,
+            noise: noise / amplitude / size.sqrt(),
+            room: place(room.start)..place(room.end),
+            centre: 0.5 * (place(edge.from) + place(edge.to)),
+            block_variance: (size * size - 1.0) / (12.0 * size * size),
+        })
+    }
+
+    pub(super) fn position(&self, place: f64) -> f64 {
+        place.mul_add(self.pitch, self.origin)
+    }
+
+    /// Noise in parts of the amplitude after smoothing with a Gaussian of `width` values.
+    pub(super) fn noise_after(&self, width: f64) -> f64 {
+        self.noise * kernel(width).iter().map(|h| h * h).sum::<f64>().sqrt()
+    }
+
+    /// Smooths with a Gaussian of `width` values and looks for the crossings nearest to the 50 % point.
+    pub(super) fn crossings(&self, width: f64) -> Option<Crossings> {
+        let kernel = kernel(width);
+        let half = kernel.len() / 2;
+        let last = self.values.len().checked_sub(1)?;
+        let smooth: Vec<f64> = (0..=last)
+            .map(|i| {
+                let at = |k: usize| self.values[(i + k).saturating_sub(half).min(last)];
+                kernel.iter().enumerate().map(|(k, h)| h * at(k)).sum()
+            })
+            .collect();
+        let (fine, factor) = if width >= SMOOTH_ENOUGH { (smooth, 1) } else { (upsample(&smooth), UPSAMPLING) };
+        let factor = factor as f64;
+        let place = |i: f64| i / factor;
+        // The 50 % crossing upwards that is nearest to the middle of the edge.
+        let up = |w: &[f64]| w[0] < 0.5 && w[1] >= 0.5;
+        let inside = |i: usize| self.room.contains(&place(i as f64));
+        let distance = |i: usize| (place(i as f64) - self.centre).abs();
+        let middle = (0..fine.len().saturating_sub(1))
+            .filter(|&i| up(&fine[i..i + 2]) && inside(i))
+            .min_by(|&a, &b| distance(a).total_cmp(&distance(b)))?;
+        let between = |i: usize, level: f64| i as f64 + (level - fine[i]) / (fine[i + 1] - fine[i]);
+        let start = (0..=middle).rev().take_while(|&i| inside(i)).find(|&i| fine[i] < 0.1)?;
+        let end = (middle + 1..fine.len()).take_while(|&i| inside(i)).find(|&i| fine[i] >= 0.9)? - 1;
+        let variance: f64 =
+            kernel.iter().enumerate().map(|(k, h)| h * (k as f64 - half as f64).powi(2)).sum::<f64>()
+                + self.block_variance;
+        let raw = place(between(end, 0.9) - between(start, 0.1));
+        let duration = (raw * raw - DURATION_PER_SIGMA * DURATION_PER_SIGMA * variance).max(0.25 * raw * raw).sqrt();
+        Some(Crossings {
+            raw,
+            duration,
+            middle: place(between(middle, 0.5)),
+            end: place(between(end, 0.9)),
+            noise: self.noise_after(width),
+        })
+    }
+}
+
+/// A sampled Gaussian with a sum of one; a single 1 when it would be narrower than that.
+fn kernel(width: f64) -> Vec<f64> {
+    if width < 0.2 {
+        return vec![1.0];
+    }
+    let half = (4.0 * width).ceil() as i32;
+    let weights: Vec<f64> = (-half..=half).map(|k| (-0.5 * (f64::from(k) / width).powi(2)).exp()).collect();
+    let sum: f64 = weights.iter().sum();
+    weights.into_iter().map(|w| w / sum).collect()
+}
+
+/// Band-limited interpolation to [`UPSAMPLING`] points per sample. Where the taps lack support the nearest sample is
+/// repeated; the transition is far from there.
+fn upsample(values: &[f64]) -> Vec<f64> {
+    let mut fine: Vec<f64> = values.iter().flat_map(|&v| std::iter::repeat_n(v, UPSAMPLING)).collect();
+    for part in 1..UPSAMPLING {
+        let interpolator = Interpolator::with_taps(part as f64 / UPSAMPLING as f64, TAPS);
+        let support = interpolator.support(values.len());
+        for (i, v) in support.zip(interpolator.apply(values)) {
+            fine[i * UPSAMPLING + part] = v;
+        }
+    }
+    fine
+}
