@@ -2,7 +2,7 @@
 //! `{ instrument = "supply", call = "output.set", channel = 1, state = false }`.
 
 use super::field;
-use crate::dialect::{ArgKind, Call, Intent, Value};
+use crate::dialect::{ArgKind, Call, HIGHEST_CHANNEL, Intent, Value};
 use crate::document::Table;
 use crate::units::Unit;
 
@@ -63,6 +63,13 @@ pub(super) fn read(table: &mut Table<'_>, instruments: &[String], without: Optio
             None => whole = false,
         }
     }
+    if whole
+        && without.is_none()
+        && let Err(error) = call.check()
+    {
+        table.mistakes().add(table.span(), error.to_string(), "see the calls and their arguments in configs/README.md");
+        whole = false;
+    }
     let call = instrument.filter(|_| whole).map(|instrument| BenchCall { instrument, call });
     Reading { call, intent_known: true }
 }
@@ -81,12 +88,11 @@ pub(super) fn unit_of(intent: Intent, argument: &str) -> Unit {
 
 fn argument(table: &mut Table<'_>, intent: Intent, name: &str, kind: ArgKind) -> Option<Value> {
     match kind {
+        ArgKind::Channel | ArgKind::Whole(..) => table.whole(name).map(|item| Value::Whole(item.value)),
+        ArgKind::Channels => list(table, name),
         ArgKind::Flag => table.flag(name).map(|item| Value::Flag(item.value)),
-        ArgKind::Keyword => table.text(name).map(|item| Value::Keyword(item.value)),
-        ArgKind::List => list(table, name),
+        ArgKind::Keyword(_) => table.text(name).map(|item| Value::Keyword(item.value)),
         ArgKind::Number => table.amount(name, unit_of(intent, name)).map(|item| Value::Number(item.value)),
-        ArgKind::Text => table.text(name).map(|item| Value::Text(item.value)),
-        ArgKind::Whole => table.whole(name).map(|item| Value::Whole(item.value)),
     }
 }
 
@@ -94,8 +100,7 @@ fn list(table: &mut Table<'_>, name: &str) -> Option<Value> {
     let items = table.amounts(name, Unit::One)?;
     let mut whole = Vec::with_capacity(items.len());
     for item in items {
-        // Channel numbers are small; the bound keeps the conversion exact.
-        if item.value.fract() != 0.0 || !(0.0..=1e6).contains(&item.value) {
+        if item.value.fract() != 0.0 || !(0.0..=HIGHEST_CHANNEL as f64).contains(&item.value) {
             table.mistakes().add(
                 item.span,
                 format!("`{name}` holds {}, which is no channel", item.value),

@@ -156,12 +156,21 @@ pub enum Coupling {
 }
 
 impl Coupling {
-    /// As SCPI-99's `INPut:COUPling` writes it.
+    /// The word for it in files and in the API.
     #[must_use]
-    pub fn keyword(self) -> &'static str {
+    pub fn name(self) -> &'static str {
         match self {
             Self::Ac => "AC",
             Self::Dc => "DC",
+        }
+    }
+
+    /// The keyword of the intent `coupling.set`.
+    #[must_use]
+    pub fn keyword(self) -> &'static str {
+        match self {
+            Self::Ac => "ac",
+            Self::Dc => "dc",
         }
     }
 }
@@ -357,7 +366,7 @@ impl SettingSpec {
     pub fn call(&self, value: f64) -> BenchCall {
         BenchCall {
             instrument: self.call.instrument.clone(),
-            call: self.call.call.clone().with(&self.argument, Value::Number(value)),
+            call: self.call.call.clone().with(&*self.argument, Value::Number(value)),
         }
     }
 

@@ -68,7 +68,8 @@ const SAME_SKEW_S: f64 = 1e-13;
 pub fn differences(made: &Conditions, now: &Conditions) -> Vec<String> {
     let mut reasons = Vec::new();
     if made.scope_identity != now.scope_identity {
-        reasons.push(format!("it was made with the scope `{}`, now it is `{}`", made.scope_identity, now.scope_identity));
+        reasons
+            .push(format!("it was made with the scope `{}`, now it is `{}`", made.scope_identity, now.scope_identity));
     }
     for (leg, made, now) in [("positive", &made.positive, &now.positive), ("negative", &made.negative, &now.negative)] {
         leg_differences(leg, made, now, &mut reasons);
@@ -116,7 +117,8 @@ pub fn too_old(age_s: f64, max_age_s: f64) -> Option<String> {
     if age_s < 0.0 {
         return Some("it seems to have been made in the future: the clock was set back".to_owned());
     }
-    (age_s > max_age_s).then(|| format!("it is {} old, the pair allows {}", span_of_time(age_s), span_of_time(max_age_s)))
+    (age_s > max_age_s)
+        .then(|| format!("it is {} old, the pair allows {}", span_of_time(age_s), span_of_time(max_age_s)))
 }
 
 /// `12.5 h`, `3 min`, `40 s`.

@@ -37,10 +37,7 @@ fn equal_conditions_hold_through_rounded_replies_and_other_references() {
 fn each_condition_that_differs_is_named() {
     type Change = fn(&mut Conditions);
     let table: [(Change, &str); 8] = [
-        (
-            |c| c.scope_identity = "other".to_owned(),
-            "it was made with the scope `bench,scope,1,1`, now it is `other`",
-        ),
+        (|c| c.scope_identity = "other".to_owned(), "it was made with the scope `bench,scope,1,1`, now it is `other`"),
         (|c| c.positive.channel = 3, "the positive leg's channel was 1, now it is 3"),
         (|c| c.negative.probe = "p10b".to_owned(), "the negative leg's probe was `p10a`, now it is `p10b`"),
         (|c| c.negative.attenuation = 1.0, "the negative leg's attenuation was 10, now it is 1"),

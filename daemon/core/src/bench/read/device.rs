@@ -46,17 +46,18 @@ pub(super) fn setting(name: String, table: &mut Table<'_>, instruments: &[String
     let argument_span = argument.as_ref().map_or_else(|| table.span(), |item| item.span.clone());
     let argument = argument.map_or_else(|| "value".to_owned(), |item| item.value);
     let reading = call::read(table, instruments, Some(&argument));
-    let unit = table.text("unit").or_else(|| table.missing("unit", "the value's unit, such as `\"V\"`")).and_then(|item| {
-        let unit = Unit::from_symbol(&item.value);
-        if unit.is_none() {
-            table.mistakes().add(
-                item.span,
-                format!("`{}` is no unit that is understood", item.value),
-                "one of A, dB, F, Hz, Ω, 1, s, V, without a prefix",
-            );
-        }
-        unit
-    });
+    let unit =
+        table.text("unit").or_else(|| table.missing("unit", "the value's unit, such as `\"V\"`")).and_then(|item| {
+            let unit = Unit::from_symbol(&item.value);
+            if unit.is_none() {
+                table.mistakes().add(
+                    item.span,
+                    format!("`{}` is no unit that is understood", item.value),
+                    "one of A, dB, F, Hz, Ω, 1, s, V, without a prefix",
+                );
+            }
+            unit
+        });
     let mut end = |key: &str| match unit {
         Some(unit) => table.amount(key, unit).or_else(|| table.missing(key, "the end of what this bench allows")),
         None => {
@@ -97,7 +98,9 @@ pub(super) fn setting(name: String, table: &mut Table<'_>, instruments: &[String
         } else if unit.is_some_and(|unit| unit != wanted) {
             table.mistakes().add(
                 table.span(),
-                format!("`{name}` has another unit than the argument `{argument}` of `{call_name}`, which is in {wanted}"),
+                format!(
+                    "`{name}` has another unit than the argument `{argument}` of `{call_name}`, which is in {wanted}"
+                ),
                 format!("write `unit = \"{wanted}\"`"),
             );
         }
@@ -105,7 +108,7 @@ pub(super) fn setting(name: String, table: &mut Table<'_>, instruments: &[String
     if reading.intent_known {
         table.refuse_others();
     }
-    Some(SettingSpec {
+    let setting = SettingSpec {
         name,
         call: reading.call?,
         argument,
@@ -115,5 +118,9 @@ pub(super) fn setting(name: String, table: &mut Table<'_>, instruments: &[String
         settle_s,
         at_tip: at_tip.is_some_and(|item| item.value),
         headroom_v,
-    })
+    };
+    if let Err(error) = setting.call(setting.min).call.check() {
+        table.mistakes().add(table.span(), error.to_string(), "see the calls and their arguments in configs/README.md");
+    }
+    Some(setting)
 }

@@ -29,7 +29,10 @@ pub(super) fn instrument(name: String, table: &mut Table<'_>) -> Option<Instrume
         .text("resource")
         .or_else(|| table.missing("resource", "write its VISA resource string, such as `TCPIP::host::5025::SOCKET`"))
         .and_then(|item| {
-            item.value.parse::<Resource>().map_err(|error| table.mistakes().add(item.span, error.to_string(), HELP)).ok()
+            item.value
+                .parse::<Resource>()
+                .map_err(|error| table.mistakes().add(item.span, error.to_string(), HELP))
+                .ok()
         });
     let dialect =
         table.text("dialect").or_else(|| table.missing("dialect", "name a dialect; `scpi-99` comes with the program"));
@@ -37,14 +40,7 @@ pub(super) fn instrument(name: String, table: &mut Table<'_>) -> Option<Instrume
     let free_commands = table.flag("free_commands").is_some_and(|item| item.value);
     let timeout_s = field::amount(table, "timeout", Unit::Second, &(0.01..=3600.0)).unwrap_or(DEFAULT_TIMEOUT_S);
     table.refuse_others();
-    Some(InstrumentSpec {
-        name,
-        resource: resource?,
-        dialect: dialect?.value,
-        scale_spec,
-        free_commands,
-        timeout_s,
-    })
+    Some(InstrumentSpec { name, resource: resource?, dialect: dialect?.value, scale_spec, free_commands, timeout_s })
 }
 
 const HELP: &str = "a resource string after VPP-4.3, such as `TCPIP::192.0.2.7::5025::SOCKET`";
