@@ -16,6 +16,7 @@ pub mod spec;
 
 pub use call::BenchCall;
 pub use fit::Role;
+pub(crate) use read::overrides;
 pub use read::read;
 pub use spec::{
     Acquisition, Bench, Coupling, InstrumentSpec, LegSpec, Overrides, PairSpec, ProbeSpec, ReferenceKind,
