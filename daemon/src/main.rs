@@ -1,2 +1,4 @@
 //! Placeholder.
+#![allow(dead_code, unused_imports)]
+mod store;
 fn main() {}
