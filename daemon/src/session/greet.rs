@@ -1,0 +1,77 @@
+//! What happens on a new connection before anything else: who is there, what went wrong, and setting again.
+
+use evenpair_core::dialect::{Call, Intent, Message};
+use tokio::io::{AsyncRead, AsyncWrite};
+
+use super::error::Trouble;
+use super::link::{Entry, Failure, Link, Work};
+use super::memory::Memory;
+use super::spec::SessionSpec;
+
+/// What was learned by greeting.
+#[derive(Debug, Default)]
+pub(super) struct Greeting {
+    /// Who answers; `None` when the dialect cannot ask.
+    pub(super) identity: Option<String>,
+    /// What was in the error queue, from before.
+    pub(super) leftovers: Vec<Entry>,
+}
+
+/// Asks who is there and compares with `expected`, empties the error queue, makes every setting of `memory` again.
+///
+/// # Cancel safety
+/// Not safe: the link must be closed when this is dropped.
+pub(super) async fn greet<S: AsyncRead + AsyncWrite + Unpin>(
+    link: &mut Link<S>,
+    spec: &SessionSpec,
+    expected: Option<&str>,
+    memory: &Memory,
+) -> Result<Greeting, Trouble> {
+    let dialect = &spec.dialect;
+    let mut greeting = Greeting::default();
+    if dialect.supports(Intent::Identify) {
+        let messages = perform(link, spec, Call::new(Intent::Identify), false).await?;
+        if let Some(Message::Line(line)) = messages.first() {
+            let found = line.trim().to_owned();
+            if let Some(expected) = expected.filter(|expected| *expected != found) {
+                return Err(Trouble::Stranger { expected: expected.to_owned(), found });
+            }
+            greeting.identity = Some(found);
+        }
+    }
+    greeting.leftovers = link.drain_errors(dialect, spec.timing.reply).await?;
+    if !greeting.leftovers.is_empty() {
+        tracing::info!(instrument = %spec.instrument, entries = ?greeting.leftovers, "the error queue was not empty");
+    }
+    if dialect.supports(Intent::Clear) {
+        perform(link, spec, Call::new(Intent::Clear), false).await?;
+    }
+    for call in memory.calls() {
+        perform(link, spec, call, true).await?;
+    }
+    Ok(greeting)
+}
+
+async fn perform<S: AsyncRead + AsyncWrite + Unpin>(
+    link: &mut Link<S>,
+    spec: &SessionSpec,
+    call: Call,
+    check_errors: bool,
+) -> Result<Vec<Message>, Trouble> {
+    let work = Work {
+        what: call.intent.to_string(),
+        exchanges: spec.dialect.plan(&call).map_err(Trouble::Greeting)?,
+        call: Some(call),
+        check_errors,
+        most_bytes: spec.caps.block_bytes,
+        timeout: spec.timing.reply,
+        repeat: false,
+    };
+    match link.perform(&work, &spec.dialect).await {
+        Ok(reply) => Ok(reply.messages),
+        Err(Failure::Broken { trouble, .. }) => Err(trouble),
+        Err(Failure::Refused { first, .. }) => {
+            Err(Trouble::NotRestored { command: work.command(), number: first.number, text: first.text })
+        }
+    }
+}
