@@ -23,7 +23,7 @@ impl Instruments {
     /// # Errors
     /// When the bench has none of this name; a checked bench and a checked sequence name only what there is.
     pub(crate) fn handle(&self, name: &str) -> Result<&Handle, SessionError> {
-        self.0.get(name).ok_or_else(|| SessionError::Closed { instrument: name.to_owned() })
+        self.0.get(name).ok_or_else(|| SessionError::Closed { instrument: name.to_owned(), what: "a call".to_owned() })
     }
 
     /// Carries out one call.

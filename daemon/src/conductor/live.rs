@@ -11,7 +11,6 @@ use uuid::Uuid;
 use crate::store::{Store, StoreError};
 
 /// A run that is waiting or running.
-#[derive(Debug)]
 pub(crate) struct LiveRun {
     id: Uuid,
     face: Mutex<Run>,

@@ -14,7 +14,7 @@ use super::tell::Tell;
 use super::trouble::Trouble;
 use super::workshop::Workshop;
 use super::{capture, deskew, limits, verify};
-use crate::session::Message;
+use evenpair_core::dialect::Message;
 
 use std::sync::Arc;
 

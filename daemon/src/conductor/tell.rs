@@ -8,7 +8,7 @@ use super::live::LiveRun;
 use crate::store::StoreError;
 
 /// The run's ear.
-#[derive(Debug, Clone)]
+#[derive(Clone)]
 pub(crate) struct Tell(Arc<LiveRun>);
 
 impl Tell {

@@ -1,6 +1,6 @@
 //! Why a stage could not be completed: what was being done, to what, and what to try.
 
-use evenpair_core::analysis::ApplyError;
+use evenpair_core::analysis::apply::ApplyError;
 use evenpair_core::analysis::skew::SkewError;
 use evenpair_core::dialect::DialectError;
 

@@ -11,21 +11,25 @@ use super::problem::Fault;
 /// Refuses a request whose `Host` is no loopback name (a name that was rebound to this machine) or whose `Origin` is
 /// another site. The daemon listens on loopback only, so nobody honest comes by another name.
 pub(crate) async fn check_host_and_origin(request: Request, next: Next) -> Response {
-    let text = |name| request.headers().get(name).map(|value| value.to_str().unwrap_or("?").to_owned());
-    let host = text(header::HOST).or_else(|| request.uri().authority().map(ToString::to_string));
-    match (host, text(header::ORIGIN)) {
-        (Some(host), _) if !is_loopback(&host) => refuse(&format!("the Host `{host}` is not a loopback name")),
-        (None, _) => refuse("the request has no Host"),
-        (Some(host), Some(origin)) if origin != format!("http://{host}") => {
-            refuse(&format!("the Origin `{origin}` is not this daemon"))
+    match objection(&request) {
+        Some(what) => {
+            let detail = format!("{what}; ask by http://127.0.0.1 or http://localhost");
+            Fault::new(ProblemCode::InvalidRequest, detail).into_response()
         }
-        _ => next.run(request).await,
+        None => next.run(request).await,
     }
 }
 
-fn refuse(what: &str) -> Response {
-    Fault::new(ProblemCode::InvalidRequest, format!("{what}; ask by http://127.0.0.1 or http://localhost"))
-        .into_response()
+/// What speaks against a request.
+fn objection(request: &Request) -> Option<String> {
+    let text = |name| request.headers().get(name).map(|value| value.to_str().unwrap_or("?").to_owned());
+    let host = text(header::HOST).or_else(|| request.uri().authority().map(ToString::to_string));
+    let Some(host) = host else { return Some("the request has no Host".to_owned()) };
+    if !is_loopback(&host) {
+        return Some(format!("the Host `{host}` is not a loopback name"));
+    }
+    let origin = text(header::ORIGIN).filter(|origin| *origin != format!("http://{host}"));
+    origin.map(|origin| format!("the Origin `{origin}` is not this daemon"))
 }
 
 fn is_loopback(host: &str) -> bool {

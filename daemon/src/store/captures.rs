@@ -12,7 +12,7 @@ use super::disk::{Disk, write_durably};
 use super::error::{Fault, StoreError};
 use super::folder::{Folder, waveform_name};
 use super::rows::{insert_capture, read_capture};
-use super::waveform::{Waveform, parquet};
+use super::waveform::{Waveform, csv, parquet};
 use super::{LARGEST_PAGE, Store};
 
 impl Store {
@@ -113,6 +113,20 @@ impl Store {
         tokio::task::spawn_blocking(move || parquet::read(&path))
             .await
             .map_err(|_| StoreError::Closed { doing: "read a waveform" })?
+    }
+
+    /// A capture's waveform as comma-separated text.
+    ///
+    /// # Errors
+    /// As [`Store::read_waveform`].
+    pub(crate) async fn waveform_csv(&self, run: Uuid, number: u32) -> Result<Vec<u8>, StoreError> {
+        let waveform = self.read_waveform(run, number).await?;
+        let written = tokio::task::spawn_blocking(move || {
+            let mut text = Vec::new();
+            // Writing to memory does not fail.
+            csv::write(&waveform, &mut text).map(|()| text)
+        });
+        written.await.ok().and_then(Result::ok).ok_or(StoreError::Closed { doing: "write a waveform as text" })
     }
 }
 

@@ -183,13 +183,13 @@ fn insert_leg(connection: &Connection, correction: Uuid, name: &str, leg: &LegCo
     let (span_v, span_u) = numbers("a leg's span", &leg.span, "V")?;
     let (offset_v, offset_u) = numbers("a leg's offset", &leg.offset, "V")?;
     let sql = "insert into correction_legs (correction, leg, channel, span_v, span_u, offset_v, offset_u, coupling, \
-               attenuation) values (?1, ?2, ?3, ?4, ?5, ?6, ?7, ?8, ?9)";
+               attenuation, probe) values (?1, ?2, ?3, ?4, ?5, ?6, ?7, ?8, ?9, ?10)";
     let id = correction.to_string();
-    let (coupling, attenuation) = (&leg.coupling, leg.attenuation);
+    let (coupling, attenuation, probe) = (&leg.coupling, leg.attenuation, &leg.probe);
     change(
         connection,
         sql,
-        params![id, name, leg.channel, span_v, span_u, offset_v, offset_u, coupling, attenuation],
+        params![id, name, leg.channel, span_v, span_u, offset_v, offset_u, coupling, attenuation, probe],
     )?;
     Ok(())
 }
@@ -258,6 +258,7 @@ fn read_leg(row: &Row<'_>) -> Result<LegConditions, Fault> {
         offset: quantity(row, "offset_v", "offset_u", "V")?,
         coupling: row.get("coupling")?,
         attenuation: number(row, "attenuation")?,
+        probe: row.get("probe")?,
     })
 }
 

@@ -53,6 +53,7 @@ pub(super) fn a_correction(pair: &str, second: i64) -> Correction {
         offset: Quantity::exact(offset, "V"),
         coupling: "DC".to_owned(),
         attenuation: 10.0,
+        probe: "p10a".to_owned(),
     };
     Correction {
         id: Uuid::now_v7(),

@@ -84,6 +84,7 @@ create table correction_legs (
     offset_u    real,                                      -- its standard uncertainty in volts
     coupling    text not null,                             -- DC or AC
     attenuation real,                                      -- volts at the tip per volt at the scope's input
+    probe       text not null,                             -- the probe's name in the bench file
     primary key (correction, leg)
 ) strict, without rowid;
 

@@ -66,8 +66,13 @@ fn quantisation_matches_the_quantiser() {
         let normal = statrs::distribution::Normal::new(0.0, noise).unwrap();
         use statrs::distribution::ContinuousCDF;
         let mean_error = |level: f64| {
-            (-8..=8).map(|code| f64::from(code) * (normal.cdf(f64::from(code) + 0.5 - level)
-                - normal.cdf(f64::from(code) - 0.5 - level))).sum::<f64>() - level
+            (-8..=8)
+                .map(|code| {
+                    f64::from(code)
+                        * (normal.cdf(f64::from(code) + 0.5 - level) - normal.cdf(f64::from(code) - 0.5 - level))
+                })
+                .sum::<f64>()
+                - level
         };
         let rms = ((0..200).map(|k| mean_error(f64::from(k) / 200.0 - 0.5).powi(2)).sum::<f64>() / 200.0).sqrt();
         assert!((quantisation(1.0, noise) / rms - 1.0).abs() < 0.02, "{noise}: {rms}");

@@ -102,8 +102,9 @@ impl Layout {
         let states = self.levels.as_ref().map(|_| ()).map_err(ToString::to_string);
         let duration = |rising: bool| {
             let all = measured.iter().filter(|(_, t)| t.rising == rising);
-            mean(all.map(|(_, t)| Read { value: t.duration, u: t.duration_u }))
-                .ok_or_else(|| format!("the record holds no whole {} transition", if rising { "rising" } else { "falling" }))
+            mean(all.map(|(_, t)| Read { value: t.duration, u: t.duration_u })).ok_or_else(|| {
+                format!("the record holds no whole {} transition", if rising { "rising" } else { "falling" })
+            })
         };
         let (rise, fall) = (duration(true), duration(false));
         let aberration = |rising: bool| {

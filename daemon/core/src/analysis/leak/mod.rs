@@ -36,12 +36,7 @@ pub struct LeakBound {
 /// The leak bound of a capture whose common mode is `common_v`, corrected with `correction`, for which `rejection` was
 /// found (may be empty).
 #[must_use]
-pub fn bound(
-    common_v: &[f64],
-    interval_s: f64,
-    correction: &Correction,
-    rejection: &[RejectionBand],
-) -> LeakBound {
+pub fn bound(common_v: &[f64], interval_s: f64, correction: &Correction, rejection: &[RejectionBand]) -> LeakBound {
     let n = common_v.len();
     if n == 0 {
         return LeakBound { rms_v: 0.0, peak_v: 0.0, mean_v: 0.0, common_rms_v: 0.0, common_swing_v: 0.0 };
