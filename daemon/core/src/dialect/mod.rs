@@ -160,6 +160,13 @@ impl Dialect {
         }
         match (call.intent, &self.reading) {
             (Intent::RecordPreamble, Some(reading)) => reading.complete(&mut fields)?,
+            (Intent::AverageGet, _) => {
+                // Switched off, whatever count stands by.
+                let off = fields.take("state") == Some(Value::Flag(false));
+                if off {
+                    fields.set("count", 1);
+                }
+            }
             (Intent::SkewGet, _) if self.shifts_later() => {
                 let delay_s = fields.number("delay_s")?;
                 fields.set("delay_s", 0.0 - delay_s);

@@ -2,6 +2,7 @@
 
 use std::collections::BTreeMap;
 
+use super::intent::BESIDES;
 use super::template::{Refusal, Spelling};
 use super::words::Words;
 use super::{DialectError, Fields, Intent, ReplyKind, Value};
@@ -143,8 +144,9 @@ fn field(place: &str, intent: Intent, words: &BTreeMap<String, Words>) -> Result
         return Ok(Field { name: None, spelling: Spelling::Text });
     }
     let spec = intent.spec();
-    let kind = match spec.reply.iter().find(|(known, _)| *known == name) {
-        Some((_, kind)) => *kind,
+    let besides = BESIDES.iter().filter(|(known, ..)| *known == intent).map(|(_, name, kind)| (*name, *kind));
+    let kind = match spec.reply.iter().copied().chain(besides).find(|(known, _)| *known == name) {
+        Some((_, kind)) => kind,
         // A preamble may hold numbers of the instrument's own, for the expressions of `[record]`.
         None if intent == Intent::RecordPreamble && is_name(name) => ReplyKind::Number,
         None => {

@@ -3,7 +3,7 @@
 use super::{DialectError, Value};
 use crate::scpi::value;
 
-/// The key that stands for every whole number without a key of its own.
+/// The key that stands for every whole number from 1 without a key of its own: the others are no suffixes.
 const ANY: &str = "*";
 /// Where the number goes in the word of [`ANY`].
 const HOLE: &str = "{}";
@@ -28,7 +28,7 @@ impl Words {
         keys.iter().copied().filter(|key| self.of(key).is_none()).collect()
     }
 
-    /// Whether it has a word for every whole number.
+    /// Whether it has a word for every whole number from 1.
     pub(super) fn takes_any(&self) -> bool {
         self.of(ANY).is_some()
     }
@@ -58,7 +58,7 @@ impl Words {
             Value::Number(number) => number.to_string(),
             Value::List(_) => return Err(self.missing(value.kind())),
         };
-        let any = || matches!(value, Value::Whole(_)).then(|| self.of(ANY)).flatten();
+        let any = || matches!(value, Value::Whole(1..)).then(|| self.of(ANY)).flatten();
         // `*` itself is no value that somebody could ask for.
         let word = if key == ANY { None } else { self.of(&key).or_else(any) };
         word.map(|word| word.replace(HOLE, &key)).ok_or_else(|| self.missing(&key))

@@ -58,6 +58,11 @@ fn table() -> Vec<Row> {
             vec![channel(0), number("level_v", 0.0), ("slope", word("negative"))],
             "TRIGger:SOURce EXTernal\nTRIGger:LEVel 0E0\nTRIGger:SLOPe NEGative\n",
         ),
+        (
+            TriggerSet,
+            vec![channel(-1), number("level_v", 0.0), ("slope", word("negative"))],
+            "TRIGger:SOURce IMMediate\nTRIGger:LEVel 0E0\nTRIGger:SLOPe NEGative\n",
+        ),
         (TriggerGet, vec![], "~TRIGger:SOURce?\n~TRIGger:LEVel?\n~TRIGger:SLOPe?\n"),
         (AverageSet, vec![("count", Value::Whole(64))], "SENSe:AVERage:COUNt 64\nSENSe:AVERage:STATe ON\n"),
         (AverageSet, vec![("count", Value::Whole(1))], "SENSe:AVERage:COUNt 1\nSENSe:AVERage:STATe OFF\n"),
@@ -158,7 +163,8 @@ fn every_query_reads_literal_replies() {
             &["EXTERNAL", "0", "POSITIVE"],
             vec![("channel", Value::Whole(0)), ("level_v", Value::Number(0.0)), ("slope", word("positive"))],
         ),
-        (AverageGet, &["1", "+16"], vec![("state", Value::Flag(true)), ("count", Value::Whole(16))]),
+        (AverageGet, &["1", "+16"], vec![("count", Value::Whole(16))]),
+        (AverageGet, &["0", "+16"], vec![("count", Value::Whole(1))]),
         (SkewGet, &["2.3E-9"], vec![("delay_s", Value::Number(2.3e-9))]),
         (OutputGet, &["0"], vec![("state", Value::Flag(false))]),
         (MeasureVoltage, &["47.98"], vec![("value", Value::Number(47.98))]),
@@ -230,4 +236,23 @@ fn settings_replace_one_another_by_intent_and_channel() {
     assert_eq!(key(Call::new(Intent::TriggerSet).with("channel", 2)), Some("trigger.set".to_owned()));
     assert_eq!(key(Call::new(Intent::FormatSet)), Some("format.set".to_owned()));
     assert_eq!(key(Call::new(Intent::AcquireStart)), None);
+}
+
+#[test]
+fn what_is_read_can_be_set_again() {
+    // A scope's settings are asked for and given back: the reply's fields and the channel are all the arguments.
+    for (get, set) in [
+        (Intent::VerticalGet, Intent::VerticalSet),
+        (Intent::CouplingGet, Intent::CouplingSet),
+        (Intent::TimebaseGet, Intent::TimebaseSet),
+        (Intent::TriggerGet, Intent::TriggerSet),
+        (Intent::AverageGet, Intent::AverageSet),
+        (Intent::SkewGet, Intent::SkewSet),
+        (Intent::OutputGet, Intent::OutputSet),
+    ] {
+        let mut read: Vec<&str> = get.spec().args.iter().map(|(name, _)| *name).collect();
+        read.extend(get.spec().reply.iter().map(|(name, _)| *name));
+        let wanted: Vec<&str> = set.spec().args.iter().map(|(name, _)| *name).collect();
+        assert_eq!(read, wanted, "{get}");
+    }
 }

@@ -183,3 +183,24 @@ fn a_dialect_can_be_shared_between_tasks() {
     fn shared<T: Send + Sync>(_: &T) {}
     shared(&scpi_99());
 }
+
+#[test]
+fn only_numbers_from_one_are_suffixes() {
+    let text = r#"
+name = "x"
+[words.from]
+"*" = "CHAN{}"
+[intent."trigger.set"]
+send = ["SOUR {channel:from}"]
+ignore = ["level_v", "slope"]
+"#;
+    let dialect = dialect(text);
+    let call = |channel: i64| {
+        let slope = Value::Keyword("positive".to_owned());
+        Call::new(Intent::TriggerSet).with("channel", channel).with("level_v", 0.0).with("slope", slope)
+    };
+    assert_eq!(said(&dialect, &call(3)), "SOUR CHAN3\n");
+    for channel in [0, -1] {
+        assert!(matches!(dialect.plan(&call(channel)), Err(DialectError::NoWord { words, .. }) if words == "from"));
+    }
+}
