@@ -1,10 +1,10 @@
 //! What happens on a new connection before anything else: who is there, what went wrong, and setting again.
 
-use evenpair_core::dialect::{Call, Intent, Message};
+use evenpair_core::dialect::{Call, Intent};
 use tokio::io::{AsyncRead, AsyncWrite};
 
 use super::error::Trouble;
-use super::link::{Entry, Failure, Link, Work};
+use super::link::{Entry, Failure, Link, Reply, Work};
 use super::memory::Memory;
 use super::spec::SessionSpec;
 
@@ -29,17 +29,18 @@ pub(super) async fn greet<S: AsyncRead + AsyncWrite + Unpin>(
 ) -> Result<Greeting, Trouble> {
     let dialect = &spec.dialect;
     let mut greeting = Greeting::default();
-    if dialect.supports(Intent::Identify) {
-        let messages = perform(link, spec, Call::new(Intent::Identify), false).await?;
-        if let Some(Message::Line(line)) = messages.first() {
-            let found = line.trim().to_owned();
-            if let Some(expected) = expected.filter(|expected| *expected != found) {
-                return Err(Trouble::Stranger { expected: expected.to_owned(), found });
-            }
-            greeting.identity = Some(found);
-        }
+    if dialect.greeting() {
+        link.take_greeting(spec.caps, spec.timing.reply).await?;
     }
-    greeting.leftovers = link.drain_errors(dialect, spec.timing.reply).await?;
+    if dialect.supports(Intent::Identify) {
+        let reply = perform(link, spec, Call::new(Intent::Identify), false).await?;
+        let found = reply.fields.text("identity").map_err(Trouble::Garbled)?.trim().to_owned();
+        if let Some(expected) = expected.filter(|expected| *expected != found) {
+            return Err(Trouble::Stranger { expected: expected.to_owned(), found });
+        }
+        greeting.identity = Some(found);
+    }
+    greeting.leftovers = link.drain_errors(dialect, spec.caps, spec.timing.reply).await?;
     if !greeting.leftovers.is_empty() {
         tracing::info!(instrument = %spec.instrument, entries = ?greeting.leftovers, "the error queue was not empty");
     }
@@ -57,18 +58,18 @@ async fn perform<S: AsyncRead + AsyncWrite + Unpin>(
     spec: &SessionSpec,
     call: Call,
     check_errors: bool,
-) -> Result<Vec<Message>, Trouble> {
+) -> Result<Reply, Trouble> {
     let work = Work {
         what: call.intent.to_string(),
         exchanges: spec.dialect.plan(&call).map_err(Trouble::Greeting)?,
         call: Some(call),
         check_errors,
-        most_bytes: spec.caps.block_bytes,
+        caps: spec.caps,
         timeout: spec.timing.reply,
         repeat: false,
     };
     match link.perform(&work, &spec.dialect).await {
-        Ok(reply) => Ok(reply.messages),
+        Ok(reply) => Ok(reply),
         Err(Failure::Broken { trouble, .. }) => Err(trouble),
         Err(Failure::Refused { first, .. }) => {
             Err(Trouble::NotRestored { command: work.command(), number: first.number, text: first.text })

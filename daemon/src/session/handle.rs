@@ -96,9 +96,11 @@ impl Handle {
     /// As [`Handle::call`].
     pub(crate) async fn data(&self, call: Call, points: u64) -> Result<Message, SessionError> {
         let work = self.plan(call, self.shared.timing.reply)?;
-        let most_bytes = self.shared.dialect.most_block_bytes(points).min(self.shared.caps.block_bytes);
+        // Samples may be in a block or, as text, in a line.
+        let most = self.shared.dialect.most_block_bytes(points).min(self.shared.caps.block_bytes);
+        let caps = Caps { line_bytes: most, block_bytes: most };
         let what = work.what.clone();
-        let reply = self.ask(Work { most_bytes, ..work }).await?;
+        let reply = self.ask(Work { caps, ..work }).await?;
         // The dialect has planned this, so a record without a reply is the dialect's mistake.
         reply.messages.into_iter().next_back().ok_or_else(|| {
             let source = DialectError::Missing { name: "block".to_owned() };
@@ -115,8 +117,10 @@ impl Handle {
     pub(crate) async fn complete(&self, within: Duration) -> Result<(), SessionError> {
         let late = || SessionError::NotComplete { instrument: self.shared.instrument.clone(), after: within };
         let deadline = Instant::now() + within;
-        match *self.shared.dialect.completion() {
-            Completion::Answer => {
+        match self.shared.dialect.completion() {
+            // Its commands are complete as soon as they are taken.
+            None => Ok(()),
+            Some(Completion::Answer) => {
                 let work = Work { repeat: false, ..self.plan(Call::new(Intent::Complete), within)? };
                 match self.ask(work).await {
                     Err(SessionError::TimedOut { .. }) => Err(late()),
@@ -124,7 +128,7 @@ impl Handle {
                     Ok(_) => Ok(()),
                 }
             }
-            Completion::Poll { every_s } => loop {
+            Some(&Completion::Poll { every_s }) => loop {
                 let work = Work { repeat: false, ..self.plan(Call::new(Intent::Complete), self.shared.timing.reply)? };
                 let what = work.what.clone();
                 let done = self.ask(work).await?.fields.flag("done");
@@ -159,7 +163,7 @@ impl Handle {
             call: None,
             exchanges: vec![exchange],
             check_errors: true,
-            most_bytes: self.shared.caps.block_bytes,
+            caps: self.shared.caps,
             timeout: self.shared.timing.reply,
             repeat: false,
         };
@@ -181,7 +185,7 @@ impl Handle {
             exchanges,
             // A query that was refused shows by its silence; reading the queue after each would double its time.
             check_errors: !matches!(kind, IntentKind::Query | IntentKind::Data),
-            most_bytes: self.shared.caps.block_bytes,
+            caps: self.shared.caps,
             timeout,
             repeat: kind.idempotent(),
         })

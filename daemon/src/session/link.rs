@@ -27,8 +27,8 @@ pub(super) struct Work {
     pub(super) exchanges: Vec<Exchange>,
     /// Whether the error queue is read afterwards.
     pub(super) check_errors: bool,
-    /// The longest block that is taken.
-    pub(super) most_bytes: usize,
+    /// The longest line and block that are taken.
+    pub(super) caps: Caps,
     /// How long each reply may take.
     pub(super) timeout: Duration,
     /// Whether it may be done once more after a lost connection.
@@ -85,15 +85,13 @@ pub(super) const MOST_ENTRIES: usize = 64;
 #[derive(Debug)]
 pub(super) struct Link<S> {
     framed: Framed<S, Codec>,
-    most_block_bytes: usize,
     /// A request was begun and did not come to an orderly end.
     in_flight: bool,
 }
 
 impl<S: AsyncRead + AsyncWrite + Unpin> Link<S> {
-    pub(super) fn new(stream: S, caps: Caps) -> Self {
-        let limits = Limits { most_line_bytes: caps.line_bytes, ..Limits::default() };
-        Self { framed: Framed::new(stream, Codec::new(limits)), most_block_bytes: caps.block_bytes, in_flight: false }
+    pub(super) fn new(stream: S) -> Self {
+        Self { framed: Framed::new(stream, Codec::new()), in_flight: false }
     }
 
     /// Whether a request was begun that did not come to an orderly end: its reply may still come.
@@ -127,17 +125,16 @@ impl<S: AsyncRead + AsyncWrite + Unpin> Link<S> {
         self.quiet().map_err(broken)?;
         let mut reply = Reply::default();
         for exchange in &work.exchanges {
-            let got = self.exchange(exchange, work.most_bytes, work.timeout).await;
+            let got = self.exchange(exchange, work.caps, dialect.most_lead_bytes(), work.timeout).await;
             let got = got.map_err(|trouble| Failure::Broken { command: shown(&exchange.send), trouble })?;
             reply.messages.extend(got);
         }
         if let Some(call) = work.call.as_ref().filter(|call| has_fields(call)) {
             // A reply that cannot be read may be the reply to something else.
-            reply.fields =
-                dialect.parse(call, &reply.messages).map_err(|error| broken(Trouble::Garbled(error)))?;
+            reply.fields = dialect.parse(call, &reply.messages).map_err(|error| broken(Trouble::Garbled(error)))?;
         }
         if work.check_errors {
-            let mut entries = self.drain_errors(dialect, work.timeout).await.map_err(broken)?.into_iter();
+            let mut entries = self.drain_errors(dialect, work.caps, work.timeout).await.map_err(broken)?.into_iter();
             if let Some(first) = entries.next() {
                 return Err(Failure::Refused { first, more: entries.len() });
             }
@@ -145,17 +142,31 @@ impl<S: AsyncRead + AsyncWrite + Unpin> Link<S> {
         Ok(reply)
     }
 
+    /// Takes the line that some instruments send by themselves on a new connection.
+    ///
+    /// # Cancel safety
+    /// Not safe, as [`Link::perform`].
+    pub(super) async fn take_greeting(&mut self, caps: Caps, timeout: Duration) -> Result<(), Trouble> {
+        let greeting = Exchange { send: Vec::new(), expect: Expect::Line, pause_after_s: 0.0 };
+        self.exchange(&greeting, caps, 0, timeout).await.map(drop)
+    }
+
     /// Reads the error queue until it is empty, at most [`MOST_ENTRIES`]. A dialect without one has none.
     ///
     /// # Cancel safety
     /// Not safe, as [`Link::perform`]; entries that were read are lost.
-    pub(super) async fn drain_errors(&mut self, dialect: &Dialect, timeout: Duration) -> Result<Vec<Entry>, Trouble> {
+    pub(super) async fn drain_errors(
+        &mut self,
+        dialect: &Dialect,
+        caps: Caps,
+        timeout: Duration,
+    ) -> Result<Vec<Entry>, Trouble> {
         let mut entries = Vec::new();
         let Some(query) = dialect.error_query() else { return Ok(entries) };
         while entries.len() < MOST_ENTRIES {
-            let message = self.exchange(&query, self.most_block_bytes, timeout).await?;
+            let message = self.exchange(&query, caps, 0, timeout).await?;
             let Some(Message::Line(line)) = message else { break };
-            match dialect.parse_error(&line) {
+            match dialect.parse_error(&line).map_err(Trouble::Garbled)? {
                 Some((number, text)) => entries.push(Entry { number, text }),
                 None => break,
             }
@@ -167,12 +178,13 @@ impl<S: AsyncRead + AsyncWrite + Unpin> Link<S> {
     async fn exchange(
         &mut self,
         exchange: &Exchange,
-        most_bytes: usize,
+        caps: Caps,
+        most_lead_bytes: usize,
         timeout: Duration,
     ) -> Result<Option<Message>, Trouble> {
         self.in_flight = true;
         let deadline = Instant::now() + timeout;
-        let message = timeout_at(deadline, self.send_and_await(exchange, most_bytes))
+        let message = timeout_at(deadline, self.send_and_await(exchange, caps, most_lead_bytes))
             .await
             .map_err(|_elapsed| Trouble::Silent { command: shown(&exchange.send), after: timeout })??;
         if exchange.pause_after_s > 0.0 {
@@ -188,14 +200,17 @@ impl<S: AsyncRead + AsyncWrite + Unpin> Link<S> {
         Ok(message)
     }
 
-    async fn send_and_await(&mut self, exchange: &Exchange, most_bytes: usize) -> Result<Option<Message>, Trouble> {
+    async fn send_and_await(
+        &mut self,
+        exchange: &Exchange,
+        caps: Caps,
+        most_lead_bytes: usize,
+    ) -> Result<Option<Message>, Trouble> {
+        let limits = Limits { most_line_bytes: caps.line_bytes, most_lead_bytes };
         match exchange.expect {
             Expect::Nothing => {}
-            Expect::Line => self.framed.codec_mut().await_one(Want::Line),
-            Expect::Block => {
-                let most_bytes = most_bytes.min(self.most_block_bytes);
-                self.framed.codec_mut().await_one(Want::Block { most_bytes });
-            }
+            Expect::Line => self.framed.codec_mut().await_one(Want::Line, limits),
+            Expect::Block => self.framed.codec_mut().await_one(Want::Block { most_bytes: caps.block_bytes }, limits),
         }
         self.framed.send(exchange.send.as_slice()).await?;
         match exchange.expect {

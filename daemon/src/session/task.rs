@@ -192,7 +192,13 @@ impl<C: Connect> Task<C> {
             // Waiting brings nobody back who was replaced.
             if let Some(Trouble::Stranger { expected, found }) = self.trouble.clone() {
                 let (instrument, what) = (self.spec.instrument.clone(), work.what.clone());
-                return Err(SessionError::Stranger { instrument, what, place: self.connector.place(), expected, found });
+                return Err(SessionError::Stranger {
+                    instrument,
+                    what,
+                    place: self.connector.place(),
+                    expected,
+                    found,
+                });
             }
             sleep_until(self.next_attempt.min(deadline)).await;
             let in_time = Instant::now() < deadline && timeout_at(deadline, self.attempt()).await.is_ok();
@@ -240,7 +246,7 @@ impl<C: Connect> Task<C> {
             Ok(Err(error)) => return Err(Trouble::Connect { place, reason: error.to_string() }),
             Err(_elapsed) => return Err(Trouble::Connect { place, reason: format!("no answer within {limit:?}") }),
         };
-        let mut link = Link::new(stream, self.spec.caps);
+        let mut link = Link::new(stream);
         let greeting = greet(&mut link, &self.spec, self.identity.as_deref(), &self.memory).await?;
         self.identity = self.identity.take().or(greeting.identity);
         self.leftovers = greeting.leftovers;

@@ -47,21 +47,20 @@ impl From<io::Error> for CodecError {
 /// Cuts the stream into the one message that is awaited.
 #[derive(Debug)]
 pub(crate) struct Codec {
-    limits: Limits,
-    want: Option<Want>,
+    want: Option<(Want, Limits)>,
     progress: ScanState,
 }
 
 impl Codec {
     /// Awaits nothing yet.
     #[must_use]
-    pub(crate) fn new(limits: Limits) -> Self {
-        Self { limits, want: None, progress: ScanState::new() }
+    pub(crate) fn new() -> Self {
+        Self { want: None, progress: ScanState::new() }
     }
 
-    /// Says what the next message must be.
-    pub(crate) fn await_one(&mut self, want: Want) {
-        self.want = Some(want);
+    /// Says what the next message must be, and how long it may be.
+    pub(crate) fn await_one(&mut self, want: Want, limits: Limits) {
+        self.want = Some((want, limits));
         self.progress = ScanState::new();
     }
 }
@@ -71,13 +70,13 @@ impl Decoder for Codec {
     type Error = CodecError;
 
     fn decode(&mut self, buffer: &mut BytesMut) -> Result<Option<Message>, CodecError> {
-        let Some(want) = self.want else {
+        let Some((want, limits)) = self.want else {
             return match buffer.is_empty() {
                 true => Ok(None),
                 false => Err(CodecError::Unsolicited { shown: shown(buffer) }),
             };
         };
-        match scan(buffer, &mut self.progress, want, &self.limits)? {
+        match scan(buffer, &mut self.progress, want, &limits)? {
             Scan::NeedMore { at_least } => {
                 // The hint is bounded by the scanner (`MOST_HINT`): no declared length sets memory aside.
                 buffer.reserve(at_least);

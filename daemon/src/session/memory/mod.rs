@@ -39,8 +39,8 @@ impl Memory {
     /// What to send to bring the instrument back to where it was. Closing a closed channel changes nothing, so an
     /// instrument that kept its routes does not open them for a moment.
     pub(super) fn calls(&self) -> Vec<Call> {
-        let routes = (!self.closed.is_empty())
-            .then(|| Call::new(Intent::RouteClose).with("channels", self.closed.clone()));
+        let routes =
+            (!self.closed.is_empty()).then(|| Call::new(Intent::RouteClose).with("channels", self.closed.clone()));
         self.settings.iter().map(|(_, call)| call.clone()).chain(routes).collect()
     }
 }
