@@ -71,6 +71,12 @@ pub enum DialectError {
         /// Why.
         source: WriteError,
     },
+    /// Text as it was typed cannot be sent.
+    #[error("the text cannot be sent: {source}")]
+    Raw {
+        /// Why.
+        source: WriteError,
+    },
     /// A reply's field cannot be read.
     #[error("the reply to `{command}` was `{reply}`: `{name}` cannot be read: {source}")]
     Read {

@@ -30,7 +30,7 @@ pub enum Intent {
     TimebaseSet,
     /// Tells the time base.
     TimebaseGet,
-    /// Trigger source (a channel, 0 for the external input), level in volts at the input, and slope.
+    /// Trigger source (a channel, 0 for the external input, −1 for none: at once), level in volts at the input, slope.
     TriggerSet,
     /// Tells the trigger settings.
     TriggerGet,
@@ -212,7 +212,7 @@ const TABLE: &[(Intent, &str, IntentSpec)] = &[
     (
         Intent::TriggerSet,
         "trigger.set",
-        spec(Setting, &[("channel", Whole(0, HIGHEST_CHANNEL)), ("level_v", Number), ("slope", Keyword(SLOPES))], &[]),
+        spec(Setting, &[("channel", Whole(-1, HIGHEST_CHANNEL)), ("level_v", Number), ("slope", Keyword(SLOPES))], &[]),
     ),
     (
         Intent::TriggerGet,
@@ -224,7 +224,7 @@ const TABLE: &[(Intent, &str, IntentSpec)] = &[
         ),
     ),
     (Intent::AverageSet, "average.set", spec(Setting, &[("count", Whole(1, MANY))], &[])),
-    (Intent::AverageGet, "average.get", spec(Query, &[], &[("state", ReplyKind::Flag), ("count", ReplyKind::Whole)])),
+    (Intent::AverageGet, "average.get", spec(Query, &[], &[("count", ReplyKind::Whole)])),
     (Intent::FormatSet, "format.set", spec(Setting, &[], &[])),
     (Intent::AcquireStart, "acquire.start", spec(Acquire, &[], &[])),
     (Intent::AcquireAbort, "acquire.abort", spec(Action, &[], &[])),
@@ -270,6 +270,10 @@ pub(super) const PREAMBLE: &[(&str, ReplyKind)] = &[
     ("averages", ReplyKind::Whole),
     ("acquisition", ReplyKind::Whole),
 ];
+
+/// Fields that a reply may have besides those of the specification: a scope that switches averaging and sets its count
+/// apart says both, and [`Intent::AverageGet`] makes one count of them.
+pub(super) const BESIDES: &[(Intent, &str, ReplyKind)] = &[(Intent::AverageGet, "state", ReplyKind::Flag)];
 
 /// What stands for an intent that the table lacks; a test shows that it lacks none.
 const NOTHING: IntentSpec = spec(Action, &[], &[]);

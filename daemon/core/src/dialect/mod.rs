@@ -6,128 +6,64 @@
 
 mod call;
 mod error;
+mod exchange;
+mod expression;
 mod intent;
+mod read;
+mod record;
+mod reply;
+mod samples;
+mod step;
+mod template;
 mod value;
+mod words;
+
+use std::collections::BTreeMap;
 
 pub use call::{Call, MOST_CHANNELS};
 pub use error::DialectError;
+pub use exchange::{Completion, Exchange, Expect, Message, RawRecord, SkewSetting};
 pub use intent::{ArgKind, COUPLINGS, HIGHEST_CHANNEL, Intent, IntentKind, IntentSpec, ReplyKind, SLOPES};
 pub use value::{Args, Fields, Value};
 
-use crate::analysis::record::Samples;
-use crate::document::Mistake;
+use record::Reading;
+use reply::Manner;
+use step::{Errors, Step, Waiting, Wanted};
+use words::Words;
 
-/// What comes back for one exchange.
-#[derive(Debug, Clone, Copy, PartialEq, Eq)]
-pub enum Expect {
-    /// Nothing.
-    Nothing,
-    /// One line.
-    Line,
-    /// One definite-length block. How long it may be: [`Dialect::most_block_bytes`].
-    Block,
-}
-
-/// Something to send, and what to wait for.
-#[derive(Debug, Clone, PartialEq)]
-pub struct Exchange {
-    /// The bytes, with the line ending.
-    pub send: Vec<u8>,
-    /// What comes back.
-    pub expect: Expect,
-    /// How long to wait after it (after the reply, if there is one) before anything else is sent, in seconds.
-    pub pause_after_s: f64,
-}
-
-impl Exchange {
-    /// The command without its line ending, for messages and logs.
-    #[must_use]
-    pub fn command(&self) -> String {
-        String::from_utf8_lossy(&self.send).trim_end().to_owned()
-    }
-}
-
-/// Something that came back.
-#[derive(Debug, Clone, PartialEq, Eq)]
-pub enum Message {
-    /// A line of text, without its ending.
-    Line(String),
-    /// The data of a block.
-    Block(Vec<u8>),
-}
-
-impl Message {
-    /// A line out of bytes; what is not UTF-8 is replaced, for a stray byte in a name is no reason to fail.
-    #[must_use]
-    pub fn line(bytes: &[u8]) -> Self {
-        Self::Line(String::from_utf8_lossy(bytes).into_owned())
-    }
-}
-
-/// How an instrument tells that what it was doing is complete.
-#[derive(Debug, Clone, PartialEq)]
-pub enum Completion {
-    /// It answers only when everything is complete, as `*OPC?` does: ask once and wait.
-    Answer,
-    /// It answers at once: ask again every so many seconds until the reply says that it is complete.
-    Poll {
-        /// How long to wait between two questions, in seconds.
-        every_s: f64,
-    },
-}
-
-/// The scope's own skew setting.
-#[derive(Debug, Clone, Copy, PartialEq)]
-pub struct SkewSetting {
-    /// Its step in seconds.
-    pub step_s: f64,
-    /// The largest delay either way, in seconds.
-    pub range_s: f64,
-}
-
-impl SkewSetting {
-    /// The delay nearest to `delay_s` that the scope can set.
-    #[must_use]
-    pub fn round(&self, delay_s: f64) -> f64 {
-        let steps = (self.range_s / self.step_s).floor();
-        (delay_s / self.step_s).round().clamp(-steps, steps) * self.step_s
-    }
-}
-
-/// One leg's record at the scope's input, before the probe's attenuation is applied.
-#[derive(Debug, Clone, PartialEq)]
-pub struct RawRecord {
-    /// Raw samples.
-    pub samples: Samples,
-    /// Volts at the input per code.
-    pub volts_per_code: f64,
-    /// Volts at the input at code 0.
-    pub zero_v: f64,
-    /// Seconds between two samples.
-    pub interval_s: f64,
-    /// Time of sample 0 relative to the trigger, in seconds.
-    pub start_s: f64,
-    /// The converter's lowest and highest code.
-    pub end_codes: (f64, f64),
-    /// One converter step in volts at the input.
-    pub step_v: f64,
-    /// How many acquisitions were averaged into it, at least 1.
-    pub averages: u32,
-    /// Which acquisition it is from: equal for both channels of one acquisition, different for the next.
-    pub acquisition: i64,
-}
+use crate::document::{self, Mistake};
+use crate::scpi::write;
 
 /// A checked dialect.
 #[derive(Debug)]
 pub struct Dialect {
     name: String,
+    about: String,
+    ending: &'static str,
+    greeting: bool,
+    manner: Manner,
+    words: BTreeMap<String, Words>,
+    intents: BTreeMap<Intent, Vec<Step>>,
+    errors: Option<Errors>,
+    completion: Option<Waiting>,
+    /// The setting, and whether a positive value shifts a record later.
+    skew: Option<(SkewSetting, bool)>,
+    reading: Option<Reading>,
+    pause_s: f64,
 }
+
+/// The dialects that come with the program.
+const BUNDLED: [(&str, &str); 1] = [("scpi-99", include_str!("../../../../configs/dialects/scpi-99.toml"))];
 
 /// The text of a dialect that comes with the program, by name.
 #[must_use]
 pub fn bundled(name: &str) -> Option<&'static str> {
-    let _ = name;
-    None
+    BUNDLED.iter().find(|(known, _)| *known == name).map(|(_, text)| *text)
+}
+
+/// The names of the dialects that come with the program.
+pub fn bundled_names() -> impl Iterator<Item = &'static str> {
+    BUNDLED.iter().map(|(name, _)| *name)
 }
 
 impl Dialect {
@@ -136,7 +72,7 @@ impl Dialect {
     /// # Errors
     /// Every mistake in it.
     pub fn read(text: &str) -> Result<Self, Vec<Mistake>> {
-        crate::document::read(text, |top| Some(Self { name: top.text("name")?.value }))
+        document::read(text, read::dialect)
     }
 
     /// Its name.
@@ -145,11 +81,20 @@ impl Dialect {
         &self.name
     }
 
+    /// What it is for, in a sentence; empty when the file does not say.
+    #[must_use]
+    pub fn about(&self) -> &str {
+        &self.about
+    }
+
     /// Whether it has words for this intent.
     #[must_use]
     pub fn supports(&self, intent: Intent) -> bool {
-        let _ = intent;
-        false
+        match intent {
+            Intent::Complete => self.completion.is_some(),
+            Intent::Error => self.errors.is_some(),
+            other => self.intents.contains_key(&other),
+        }
     }
 
     /// What to send for a call, in order.
@@ -158,16 +103,77 @@ impl Dialect {
     /// When the call is wrong, or the dialect has no words for it.
     pub fn plan(&self, call: &Call) -> Result<Vec<Exchange>, DialectError> {
         call.check()?;
-        Err(DialectError::Unsupported { dialect: self.name.clone(), intent: call.intent })
+        match call.intent {
+            Intent::Complete => {
+                self.completion_query().map(|exchange| vec![exchange]).ok_or_else(|| self.unsupported(call.intent))
+            }
+            Intent::Error => {
+                self.error_query().map(|exchange| vec![exchange]).ok_or_else(|| self.unsupported(call.intent))
+            }
+            intent => {
+                let args = self.turned(call)?;
+                let exchange = |step: &Step| {
+                    let command = step.template.render(intent, &args, &self.words)?;
+                    Ok(self.exchange(&command, step.wanted.expect(), step.pause_s))
+                };
+                self.steps(intent)?.iter().map(exchange).collect()
+            }
+        }
     }
 
     /// Reads the replies to a call: one message for each exchange that expects one, in order.
     ///
+    /// The samples of `record.data` are no field: see [`Dialect::record`].
+    ///
     /// # Errors
     /// When a reply is not what the dialect says.
     pub fn parse(&self, call: &Call, replies: &[Message]) -> Result<Fields, DialectError> {
-        let _ = replies;
-        Err(DialectError::Unsupported { dialect: self.name.clone(), intent: call.intent })
+        let planned = self.plan(call)?;
+        let asked: Vec<&Exchange> = planned.iter().filter(|exchange| exchange.expect != Expect::Nothing).collect();
+        if asked.len() != replies.len() {
+            return Err(DialectError::Replies { intent: call.intent, wanted: asked.len(), found: replies.len() });
+        }
+        let mut pairs = Vec::with_capacity(replies.len());
+        for (exchange, reply) in asked.into_iter().zip(replies) {
+            pairs.push((exchange.command(), reply.fitting(exchange)?));
+        }
+        let mut fields = Fields::new();
+        match (call.intent, &self.errors, &self.completion, pairs.as_slice()) {
+            (Intent::Error, Some(errors), _, [(command, Some(line))]) => {
+                let (number, text) = errors.read(line, command, self.manner)?.unwrap_or_default();
+                fields.set("number", number);
+                fields.set("text", Value::Text(text));
+            }
+            (Intent::Complete, _, Some(waiting), [(command, Some(line))]) => {
+                fields.set("done", waiting.done(line, command, self.manner)?);
+            }
+            (intent, ..) => {
+                let wanted = self.steps(intent)?.iter().map(|step| &step.wanted);
+                let asking = wanted.filter(|wanted| !matches!(wanted, Wanted::Nothing));
+                for (wanted, (command, line)) in asking.zip(&pairs) {
+                    // Megabytes of samples in text are not copied into a field.
+                    if let (Wanted::Line(shape), Some(line), true) = (wanted, line, intent != Intent::RecordData) {
+                        shape.read(line, command, self.manner, &self.words, &mut fields)?;
+                    }
+                }
+            }
+        }
+        match (call.intent, &self.reading) {
+            (Intent::RecordPreamble, Some(reading)) => reading.complete(&mut fields)?,
+            (Intent::AverageGet, _) => {
+                // Switched off, whatever count stands by.
+                let off = fields.take("state") == Some(Value::Flag(false));
+                if off {
+                    fields.set("count", 1);
+                }
+            }
+            (Intent::SkewGet, _) if self.shifts_later() => {
+                let delay_s = fields.number("delay_s")?;
+                fields.set("delay_s", 0.0 - delay_s);
+            }
+            _ => {}
+        }
+        Ok(fields)
     }
 
     /// Reads a record out of its preamble's fields and the reply to `record.data`.
@@ -175,48 +181,105 @@ impl Dialect {
     /// # Errors
     /// When they do not fit each other or the dialect.
     pub fn record(&self, preamble: &Fields, data: &Message) -> Result<RawRecord, DialectError> {
-        let _ = (preamble, data);
-        Err(DialectError::Unsupported { dialect: self.name.clone(), intent: Intent::RecordData })
+        let reading = self.reading.as_ref().ok_or_else(|| self.unsupported(Intent::RecordData))?;
+        reading.record(preamble, data, Intent::RecordData.name(), self.manner)
     }
 
     /// The most bytes that a block of so many samples may have.
     #[must_use]
     pub fn most_block_bytes(&self, points: u64) -> usize {
-        usize::try_from(points).unwrap_or(usize::MAX).saturating_mul(2)
+        let each = self.reading.as_ref().map_or(0, |reading| reading.format.bytes());
+        usize::try_from(points).unwrap_or(usize::MAX).saturating_mul(each)
     }
 
     /// The question that takes one entry out of the error queue; `None` when the instrument has no such queue.
     #[must_use]
     pub fn error_query(&self) -> Option<Exchange> {
-        None
+        self.errors.as_ref().and_then(|errors| self.plain(&errors.ask, Intent::Error))
     }
 
     /// Reads one reply to [`Dialect::error_query`]: number and text, or `None` when the queue is empty.
-    #[must_use]
-    pub fn parse_error(&self, line: &str) -> Option<(i64, String)> {
-        let _ = line;
-        None
+    ///
+    /// # Errors
+    /// When the reply holds no number, so that it cannot be a reply to this question.
+    pub fn parse_error(&self, line: &str) -> Result<Option<(i64, String)>, DialectError> {
+        match &self.errors {
+            Some(errors) => errors.read(line, Intent::Error.name(), self.manner),
+            None => Err(self.unsupported(Intent::Error)),
+        }
     }
 
-    /// How it tells that something is complete. The question is planned from [`Intent::Complete`], whose reply has
-    /// `done`.
+    /// How it tells that something is complete; `None` when its commands are complete as soon as they are taken. The
+    /// question is planned from [`Intent::Complete`], whose reply has `done`.
     #[must_use]
-    pub fn completion(&self) -> &Completion {
-        &Completion::Answer
+    pub fn completion(&self) -> Option<&Completion> {
+        self.completion.as_ref().map(|waiting| &waiting.how)
     }
 
     /// The scope's own skew setting, if it has one.
     #[must_use]
     pub fn skew(&self) -> Option<SkewSetting> {
-        None
+        self.skew.map(|(setting, _)| setting)
     }
 
-    /// Text as bytes with the line ending, for commands that a bench allows to be typed in.
+    /// Whether the instrument sends a line by itself when a connection is made.
+    #[must_use]
+    pub fn greeting(&self) -> bool {
+        self.greeting
+    }
+
+    /// The most bytes of text that may stand before a block: the repeated header, where replies have one.
+    #[must_use]
+    pub fn most_lead_bytes(&self) -> usize {
+        // A header is no longer than the longest command that a dialect may hold.
+        if self.manner.header { template::LONGEST } else { 0 }
+    }
+
+    /// Text as it was typed, for benches that allow it. It is one line; what it does is its author's business.
     ///
     /// # Errors
-    /// When it holds a line end or what cannot be sent.
+    /// When it holds a character that cannot be sent, such as a line end.
     pub fn raw(&self, text: &str, expects_reply: bool) -> Result<Exchange, DialectError> {
-        let _ = (text, expects_reply);
-        Err(DialectError::Unsupported { dialect: self.name.clone(), intent: Intent::Clear })
+        write::printable(text).map_err(|source| DialectError::Raw { source })?;
+        let expect = if expects_reply { Expect::Line } else { Expect::Nothing };
+        Ok(self.exchange(text, expect, self.pause_s))
+    }
+
+    fn completion_query(&self) -> Option<Exchange> {
+        self.completion.as_ref().and_then(|waiting| self.plain(&waiting.ask, Intent::Complete))
+    }
+
+    fn plain(&self, template: &template::Template, intent: Intent) -> Option<Exchange> {
+        // A template without places cannot fail.
+        let command = template.render(intent, &Args::new(), &self.words).ok()?;
+        Some(self.exchange(&command, Expect::Line, self.pause_s))
+    }
+
+    fn exchange(&self, command: &str, expect: Expect, pause_after_s: f64) -> Exchange {
+        Exchange { send: format!("{command}{}", self.ending).into_bytes(), expect, pause_after_s }
+    }
+
+    fn steps(&self, intent: Intent) -> Result<&[Step], DialectError> {
+        self.intents.get(&intent).map(Vec::as_slice).ok_or_else(|| self.unsupported(intent))
+    }
+
+    fn shifts_later(&self) -> bool {
+        self.skew.is_some_and(|(_, later)| later)
+    }
+
+    /// The arguments as the instrument means them: its skew may count the other way.
+    fn turned(&self, call: &Call) -> Result<Args, DialectError> {
+        let mut args = call.args.clone();
+        if call.intent == Intent::SkewSet && self.shifts_later() {
+            args.set("delay_s", 0.0 - args.number("delay_s")?);
+        }
+        Ok(args)
+    }
+
+    fn unsupported(&self, intent: Intent) -> DialectError {
+        DialectError::Unsupported { dialect: self.name.clone(), intent }
     }
 }
+
+#[cfg(test)]
+mod tests;

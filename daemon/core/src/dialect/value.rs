@@ -103,6 +103,11 @@ macro_rules! named_values {
                 self.0.insert(name.into(), value.into());
             }
 
+            /// Takes one out.
+            pub fn take(&mut self, name: &str) -> Option<Value> {
+                self.0.remove(name)
+            }
+
             /// The value of this name, if there is one.
             #[must_use]
             pub fn value(&self, name: &str) -> Option<&Value> {

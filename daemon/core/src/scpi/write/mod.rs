@@ -26,7 +26,8 @@ pub enum WriteError {
 /// # Errors
 /// When it is not finite.
 pub fn number(value: f64) -> Result<String, WriteError> {
-    if value.is_finite() { Ok(format!("{value:E}")) } else { Err(WriteError::NotFinite(value.to_string())) }
+    // Adding 0 turns −0, which some instruments do not know, into 0.
+    if value.is_finite() { Ok(format!("{:E}", value + 0.0)) } else { Err(WriteError::NotFinite(value.to_string())) }
 }
 
 /// A fraction as a percentage, rounded to 15 digits so that 0.07 becomes 7 and not 7.000000000000001.
@@ -68,10 +69,19 @@ pub fn keyword(word: &str) -> Result<String, WriteError> {
 /// # Errors
 /// When a character has no place in a message.
 pub fn quoted(text: &str) -> Result<String, WriteError> {
-    if let Some(bad) = text.chars().find(|c| !matches!(c, ' '..='~')) {
-        return Err(WriteError::BadCharacter(bad));
-    }
+    printable(text)?;
     Ok(format!("\"{}\"", text.replace('"', "\"\"")))
+}
+
+/// Whether every character is printable ASCII, so that the text is one line of a message and no more.
+///
+/// # Errors
+/// With the first character that is not.
+pub fn printable(text: &str) -> Result<(), WriteError> {
+    match text.chars().find(|c| !matches!(c, ' '..='~')) {
+        Some(bad) => Err(WriteError::BadCharacter(bad)),
+        None => Ok(()),
+    }
 }
 
 /// A channel list such as `(@101,102)` (SCPI-99 volume 1, 8.3.2).

@@ -1,0 +1,225 @@
+//! Commands with places for arguments, such as `SENSe{channel}:VOLTage:RANGe:PTPeak {span_v}`.
+
+use std::collections::BTreeMap;
+
+use super::words::Words;
+use super::{ArgKind, Args, DialectError, Intent};
+use crate::scpi::write;
+
+/// How a value is spelled.
+#[derive(Debug, Clone, PartialEq)]
+pub(super) enum Spelling {
+    /// `1` or `0`.
+    Flag,
+    /// A channel list.
+    List,
+    /// A decimal number.
+    Number,
+    /// A fraction as a percentage.
+    Percent,
+    /// A text in quotes, or without them when read.
+    Text,
+    /// A whole number.
+    Whole,
+    /// A word of this map.
+    Words(String),
+}
+
+impl Spelling {
+    /// The spelling of this name; every other name is that of a map of words.
+    pub(super) fn parse(name: &str) -> Self {
+        match name {
+            "flag" => Self::Flag,
+            "list" => Self::List,
+            "number" => Self::Number,
+            "percent" => Self::Percent,
+            "text" => Self::Text,
+            "whole" => Self::Whole,
+            other => Self::Words(other.to_owned()),
+        }
+    }
+
+    /// The spelling for an argument that says none; a keyword has to say its map.
+    fn usual(kind: ArgKind) -> Option<Self> {
+        match kind {
+            ArgKind::Channel | ArgKind::Whole(..) => Some(Self::Whole),
+            ArgKind::Channels => Some(Self::List),
+            ArgKind::Flag => Some(Self::Flag),
+            ArgKind::Keyword(_) => None,
+            ArgKind::Number => Some(Self::Number),
+        }
+    }
+
+    /// Why a value of this kind cannot be spelled so; `None` if it can.
+    fn refuse(&self, kind: ArgKind, words: &BTreeMap<String, Words>) -> Option<String> {
+        let lacks = |map: &Words, keys: &[&str]| {
+            let lacking = map.lacks(keys);
+            (!lacking.is_empty()).then(|| format!("its words have nothing for {}", lacking.join(", ")))
+        };
+        match (self, kind) {
+            (Self::Words(name), _) => {
+                let Some(map) = words.get(name) else {
+                    return Some(format!("`{name}` is neither a spelling nor a map of words"));
+                };
+                match kind {
+                    ArgKind::Keyword(keys) => lacks(map, keys),
+                    ArgKind::Flag => lacks(map, &["true", "false"]),
+                    ArgKind::Channel | ArgKind::Whole(..) if map.takes_any() => None,
+                    ArgKind::Channel | ArgKind::Whole(..) => {
+                        Some("its words lack `*` for every other number".to_owned())
+                    }
+                    ArgKind::Channels | ArgKind::Number => {
+                        Some("numbers and lists are not spelled in words".to_owned())
+                    }
+                }
+            }
+            (Self::Flag, ArgKind::Flag)
+            | (Self::List, ArgKind::Channels)
+            | (Self::Number, ArgKind::Number | ArgKind::Channel | ArgKind::Whole(..))
+            | (Self::Percent, ArgKind::Number)
+            | (Self::Whole, ArgKind::Channel | ArgKind::Whole(..)) => None,
+            _ => Some("it is of another kind".to_owned()),
+        }
+    }
+}
+
+#[derive(Debug, Clone, PartialEq)]
+enum Part {
+    Argument { name: &'static str, spelling: Spelling },
+    Literal(String),
+}
+
+/// A command with places for arguments.
+#[derive(Debug, Clone, PartialEq)]
+pub(super) struct Template(Vec<Part>);
+
+/// Why a text is no template: what is wrong, and what to try.
+pub(super) type Refusal = (String, String);
+
+/// The longest command that a dialect may hold: the shortest input buffer in use is larger (common practice, no source).
+pub(super) const LONGEST: usize = 512;
+
+impl Template {
+    /// Reads a template of this intent's arguments.
+    pub(super) fn parse(text: &str, intent: Intent, words: &BTreeMap<String, Words>) -> Result<Self, Refusal> {
+        Self::parse_with(text, intent.spec().args, words)
+    }
+
+    /// Reads a command without arguments.
+    pub(super) fn plain(text: &str) -> Result<Self, Refusal> {
+        Self::parse_with(text, &[], &BTreeMap::new())
+    }
+
+    fn parse_with(
+        text: &str,
+        args: &'static [(&'static str, ArgKind)],
+        words: &BTreeMap<String, Words>,
+    ) -> Result<Self, Refusal> {
+        if text.trim().is_empty() || text.len() > LONGEST {
+            return Err((format!("a command must have 1 to {LONGEST} characters"), "write the command".to_owned()));
+        }
+        if let Some(bad) = text.chars().find(|c| !matches!(c, ' '..='~')) {
+            let help = "commands are printable ASCII; the line ending is added by itself".to_owned();
+            return Err((format!("{bad:?} cannot stand in a command"), help));
+        }
+        let (mut parts, mut rest) = (Vec::new(), text.trim());
+        while let Some((literal, tail)) = rest.split_once('{') {
+            let Some((place, tail)) = tail.split_once('}') else {
+                return Err(("a `{` has no `}`".to_owned(), "write a place as `{name}`".to_owned()));
+            };
+            parts.push(Part::Literal(literal.to_owned()));
+            parts.push(argument(place, args, words)?);
+            rest = tail;
+        }
+        parts.push(Part::Literal(rest.to_owned()));
+        let stray = parts.iter().any(|part| matches!(part, Part::Literal(literal) if literal.contains('}')));
+        if stray {
+            return Err(("a `}` has no `{`".to_owned(), "write a place as `{name}`".to_owned()));
+        }
+        Ok(Self(parts))
+    }
+
+    /// The arguments that it uses.
+    pub(super) fn uses(&self) -> impl Iterator<Item = &'static str> {
+        self.0.iter().filter_map(|part| match part {
+            Part::Argument { name, .. } => Some(*name),
+            Part::Literal(_) => None,
+        })
+    }
+
+    /// Whether its own text asks for a reply.
+    pub(super) fn asks(&self) -> bool {
+        self.0.iter().any(|part| matches!(part, Part::Literal(literal) if literal.contains('?')))
+    }
+
+    /// The command with these arguments.
+    pub(super) fn render(
+        &self,
+        intent: Intent,
+        args: &Args,
+        words: &BTreeMap<String, Words>,
+    ) -> Result<String, DialectError> {
+        let mut command = String::new();
+        for part in &self.0 {
+            match part {
+                Part::Literal(literal) => command.push_str(literal),
+                Part::Argument { name, spelling } => command.push_str(&spell(intent, name, spelling, args, words)?),
+            }
+        }
+        Ok(command)
+    }
+}
+
+fn argument(
+    place: &str,
+    args: &'static [(&'static str, ArgKind)],
+    words: &BTreeMap<String, Words>,
+) -> Result<Part, Refusal> {
+    let (name, spelling) = place.split_once(':').map_or((place, None), |(name, spelling)| (name, Some(spelling)));
+    let known = || args.iter().map(|(name, _)| *name).collect::<Vec<_>>().join(", ");
+    let Some((name, kind)) = args.iter().find(|(known, _)| *known == name.trim()) else {
+        let help =
+            if args.is_empty() { "there are no arguments here".to_owned() } else { format!("known here: {}", known()) };
+        return Err((format!("`{{{place}}}` names no argument"), help));
+    };
+    let help = "spellings are flag, list, number, percent, text, whole, or the name of a `[words.…]`";
+    let spelling = match spelling {
+        Some(spelling) => Spelling::parse(spelling.trim()),
+        None => Spelling::usual(*kind).ok_or_else(|| {
+            (format!("`{name}` is a keyword"), format!("say its map of words: `{{{name}:MAP}}` and `[words.MAP]`"))
+        })?,
+    };
+    match spelling.refuse(*kind, words) {
+        Some(why) => Err((format!("`{{{place}}}` cannot be spelled so: {why}"), help.to_owned())),
+        None => Ok(Part::Argument { name, spelling }),
+    }
+}
+
+fn spell(
+    intent: Intent,
+    name: &str,
+    spelling: &Spelling,
+    args: &Args,
+    words: &BTreeMap<String, Words>,
+) -> Result<String, DialectError> {
+    let written = match spelling {
+        Spelling::Flag => Ok(write::boolean(args.flag(name)?)),
+        Spelling::List => write::channels(args.list(name)?),
+        Spelling::Number => write::number(args.number(name)?),
+        Spelling::Percent => write::percent(args.number(name)?),
+        Spelling::Text => write::quoted(args.text(name)?),
+        Spelling::Whole => Ok(write::whole(args.whole(name)?)),
+        Spelling::Words(map) => {
+            let value = args.value(name).ok_or_else(|| DialectError::Missing { name: name.to_owned() })?;
+            let map = words
+                .get(map)
+                .ok_or_else(|| DialectError::NoWord { words: map.clone(), value: value.kind().to_owned() })?;
+            // A channel given as `1.0` is looked up as 1.
+            return match args.whole(name) {
+                Ok(whole) => map.write(&whole.into()),
+                Err(_) => map.write(value),
+            };
+        }
+    };
+    written.map_err(|source| DialectError::Write { intent, name: name.to_owned(), source })
+}
