@@ -4,6 +4,7 @@
 
 use super::signals::{Dice, Signal, Truth, quantise};
 use super::{Reference, Shape, estimate};
+use std::f64::consts::TAU;
 
 fn reference(shape: Shape) -> Reference {
     Reference { shape, period_s: None }
@@ -94,9 +95,9 @@ impl Case {
 
 fn cases() -> Vec<(Case, f64)> {
     let square10: fn(f64) -> Signal = |u| square(392.5, 10.0, 392.5 * u);
-    let sine: fn(f64) -> Signal = |u| Signal::sine(79.4, 6.28 * u);
+    let sine: fn(f64) -> Signal = |u| Signal::sine(79.4, TAU * u);
     let pulse: fn(f64) -> Signal = |u| Signal::Pulse { start: 1800.0 + u, width: 300.0, rise: 5.0 };
-    let tones: fn(f64) -> Signal = |u| Signal::twenty(6.28 * u);
+    let tones: fn(f64) -> Signal = |u| Signal::twenty(TAU * u);
     let base = |case: Case, change: fn(&mut Case)| {
         let mut case = case;
         change(&mut case);
