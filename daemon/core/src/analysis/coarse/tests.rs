@@ -1,4 +1,6 @@
-#![allow(clippy::unwrap_used)]
+//! Against scipy and the plain sum.
+
+#![allow(clippy::unwrap_used, clippy::float_cmp)]
 
 use super::*;
 use crate::analysis::skew::signals::{Dice, Signal, Truth};

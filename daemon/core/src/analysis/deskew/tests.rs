@@ -1,3 +1,5 @@
+//! Means by hand, and repeats of simulated acquisitions.
+
 #![allow(clippy::unwrap_used)]
 
 use super::*;

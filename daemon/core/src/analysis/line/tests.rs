@@ -1,4 +1,6 @@
-#![allow(clippy::unwrap_used)]
+//! Against NIST, York's paper and scipy.
+
+#![allow(clippy::unwrap_used, clippy::float_cmp)]
 
 use super::*;
 

@@ -1,3 +1,5 @@
+//! Noise of known size under signals of every kind.
+
 #![allow(clippy::unwrap_used)]
 
 use super::*;

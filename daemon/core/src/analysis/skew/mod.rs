@@ -14,6 +14,7 @@
 mod error;
 mod fine;
 mod gain;
+mod score;
 mod template;
 
 pub use error::{SkewError, Warning};
@@ -161,6 +162,8 @@ pub fn estimate_records(p: &Record, n: &Record, reference: &Reference) -> Result
     Ok(found.with_converter(p.step_v, n.step_v, p.averages.min(n.averages)))
 }
 
+#[cfg(test)]
+mod quality;
 #[cfg(test)]
 pub(crate) mod signals;
 #[cfg(test)]

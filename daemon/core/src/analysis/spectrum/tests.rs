@@ -1,3 +1,5 @@
+//! Against numpy, and white noise.
+
 #![allow(clippy::unwrap_used)]
 
 use super::*;
