@@ -34,8 +34,9 @@ fn the_guide_s_example_of_resistance_and_reactance() {
         z / v, -z / i, 0.0,
     ]);
     let found = propagate(&sensitivities, &u, &correlation).unwrap();
+    // The guide goes on from rounded u and r and cuts off: a unit of its last digit, where the data give 0.2956.
     for (found, expected) in found.u.iter().zip([0.071, 0.295, 0.236]) {
-        assert!((found - expected).abs() < 5.1e-4, "{found} {expected}");
+        assert!((found - expected).abs() < 1e-3, "{found} {expected}");
     }
     for (a, b, r) in [(0, 1, -0.588), (0, 2, -0.485), (1, 2, 0.993)] {
         assert!((found.correlation[(a, b)] - r).abs() < 5.1e-4, "r = {}", found.correlation[(a, b)]);
@@ -66,8 +67,13 @@ fn quantisation_matches_the_quantiser() {
         let normal = statrs::distribution::Normal::new(0.0, noise).unwrap();
         use statrs::distribution::ContinuousCDF;
         let mean_error = |level: f64| {
-            (-8..=8).map(|code| f64::from(code) * (normal.cdf(f64::from(code) + 0.5 - level)
-                - normal.cdf(f64::from(code) - 0.5 - level))).sum::<f64>() - level
+            (-8..=8)
+                .map(|code| {
+                    f64::from(code)
+                        * (normal.cdf(f64::from(code) + 0.5 - level) - normal.cdf(f64::from(code) - 0.5 - level))
+                })
+                .sum::<f64>()
+                - level
         };
         let rms = ((0..200).map(|k| mean_error(f64::from(k) / 200.0 - 0.5).powi(2)).sum::<f64>() / 200.0).sqrt();
         assert!((quantisation(1.0, noise) / rms - 1.0).abs() < 0.02, "{noise}: {rms}");

@@ -80,8 +80,8 @@ impl<'a> Bench<'a> {
         let sources = Sources::of(input);
         let corrected = input.corrected;
         let d = &corrected.difference_v;
-        let layout = Layout::of(d, sources.noise_v);
-        let shape = layout.read(d, sources.noise_v, layout.between());
+        let layout = Layout::of(d, sources.mean_noise_v);
+        let shape = layout.read(d, sources.mean_noise_v, layout.between());
         let slope = corrected.negative_slope();
         let moved = |derivative: &[f64], step: f64| {
             (step > 0.0).then(|| {
@@ -92,7 +92,7 @@ impl<'a> Bench<'a> {
                         low += step * levels.mean_at_low(d, derivative);
                         high += step * levels.mean_at_high(d, derivative);
                     }
-                    layout.read(&signal, sources.noise_v, (low, high))
+                    layout.read(&signal, sources.mean_noise_v, (low, high))
                 })
             })
         };
@@ -224,9 +224,8 @@ impl<'a> Bench<'a> {
         let s = &self.sources;
         let d = &self.input.corrected.difference_v;
         // With noise unknown or too small a claim the samples' own spread counts.
-        let noise = |level: &super::super::levels::Level| {
-            s.mean_noise_v.max(level.spread) / (level.count.max(1) as f64).sqrt()
-        };
+        let noise =
+            |level: &super::super::levels::Level| s.mean_noise_v.max(level.spread) / (level.count.max(1) as f64).sqrt();
         let of = |signal: &[f64]| (levels.mean_at_low(d, signal), levels.mean_at_high(d, signal));
         let (gain_low, gain_high) = of(&self.input.corrected.negative_v);
         let (skew_low, skew_high) = of(&self.slope);
@@ -270,11 +269,7 @@ impl<'a> Bench<'a> {
 
     /// A figure without scale and offset. `moves` says how far a disturbance, given in parts of the amplitude, can move
     /// it.
-    fn ratio(
-        &self,
-        read: impl Fn(&Shape) -> Reading,
-        moves: impl Fn(f64, f64) -> f64,
-    ) -> Result<Found, String> {
+    fn ratio(&self, read: impl Fn(&Shape) -> Reading, moves: impl Fn(f64, f64) -> f64) -> Result<Found, String> {
         let Read { value, u } = read(&self.shape)?;
         let (low, high) = self.layout.between();
         let amplitude = high - low;
@@ -289,11 +284,7 @@ impl<'a> Bench<'a> {
     }
 
     /// As [`Bench::ratio`], from samples to seconds.
-    fn time(
-        &self,
-        read: impl Fn(&Shape) -> Reading,
-        moves: impl Fn(f64, f64) -> f64,
-    ) -> Result<Found, String> {
+    fn time(&self, read: impl Fn(&Shape) -> Reading, moves: impl Fn(f64, f64) -> f64) -> Result<Found, String> {
         let found = self.ratio(read, moves)?;
         let interval_s = self.input.corrected.interval_s;
         Ok(Found {

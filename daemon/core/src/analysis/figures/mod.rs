@@ -7,11 +7,11 @@
 //! converter without enough noise leaves) and, for the rms, *common mode*: the second-order part of gain, skew and offset,
 //! which can only make it larger. The scope's time base is not among them: no specification of it is known here.
 
+use super::Correction;
 use super::apply::Corrected;
 use super::budget::Term;
 use super::grade::Grade;
 use super::leak::LeakBound;
-use super::Correction;
 
 mod compute;
 mod kind;

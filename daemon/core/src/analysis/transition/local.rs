@@ -118,9 +118,8 @@ impl Local {
         let between = |i: usize, level: f64| i as f64 + (level - fine[i]) / (fine[i + 1] - fine[i]);
         let start = (0..=middle).rev().take_while(|&i| inside(i)).find(|&i| fine[i] < 0.1)?;
         let end = (middle + 1..fine.len()).take_while(|&i| inside(i)).find(|&i| fine[i] >= 0.9)? - 1;
-        let variance: f64 =
-            kernel.iter().enumerate().map(|(k, h)| h * (k as f64 - half as f64).powi(2)).sum::<f64>()
-                + self.block_variance;
+        let variance: f64 = kernel.iter().enumerate().map(|(k, h)| h * (k as f64 - half as f64).powi(2)).sum::<f64>()
+            + self.block_variance;
         let raw = place(between(end, 0.9) - between(start, 0.1));
         let duration = (raw * raw - DURATION_PER_SIGMA * DURATION_PER_SIGMA * variance).max(0.25 * raw * raw).sqrt();
         Some(Crossings {
