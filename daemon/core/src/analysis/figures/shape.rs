@@ -80,7 +80,8 @@ impl Layout {
         let step = starts.len().div_ceil(MOST_CYCLES).max(1);
         let mut cycles: Vec<Range<usize>> = starts.windows(2).step_by(step).map(|w| w[0]..w[1]).collect();
         if cycles.len() < 2 {
-            cycles = vec![0..signal.len()];
+            cycles.clear();
+            cycles.push(0..signal.len());
         }
         Self { levels, low, high, edges, chosen, cycles }
     }
@@ -128,7 +129,7 @@ impl Layout {
             Ok(Read { value: found.value.max(0.0), ..found })
         };
         let (period, periods) = period(&measured);
-        let duty = states.clone().and(period.clone()).and_then(|period| duty(&measured, period));
+        let duty = states.clone().and_then(|()| duty(&measured, period.clone()?));
         let extreme = |of: fn(&[f64], Range<usize>, f64) -> peaks::Extreme| {
             let found = self.cycles.iter().map(|r| of(signal, r.clone(), noise));
             let mean = mean(found.clone().map(|e| Read { value: e.value, u: e.u }));
@@ -214,5 +215,6 @@ fn duty(measured: &[(usize, Transition)], period: Read) -> Reading {
         value: (w[1].1.middle - w[0].1.middle) / period.value,
         u: w[0].1.middle_u.hypot(w[1].1.middle_u) / period.value,
     });
-    mean(highs).ok_or_else(|| "the record holds no whole stay in the high state".to_owned())
+    let found = mean(highs).ok_or_else(|| "the record holds no whole stay in the high state".to_owned())?;
+    Ok(Read { u: found.u.hypot(found.value * period.u / period.value), ..found })
 }

@@ -52,7 +52,7 @@ fn noisy_edges_come_near_the_bound_and_know_their_uncertainty() {
         (200.0, 0.005, 0.15, 0.5),
     ] {
         let points = (20.0 * duration) as usize + 200;
-        let (mut values, mut own) = (Vec::new(), 0.0);
+        let (mut values, mut own, mut middles, mut middle_u) = (Vec::new(), 0.0, 0.0, 0.0);
         for seed in 0..200 {
             let mut rng = ChaCha8Rng::seed_from_u64(seed);
             let normal = Normal::new(0.0, noise).unwrap();
@@ -62,6 +62,8 @@ fn noisy_edges_come_near_the_bound_and_know_their_uncertainty() {
             let found = first(&signal, noise).unwrap();
             values.push(100.0 * found.duration / duration);
             own += found.duration_u / duration / 2.0;
+            middles += (found.middle - middle).powi(2) / 200.0;
+            middle_u += found.middle_u / 200.0;
         }
         let mean = values.iter().sum::<f64>() / 200.0;
         let sd = (values.iter().map(|v| (v - mean).powi(2)).sum::<f64>() / 199.0).sqrt();
@@ -69,6 +71,8 @@ fn noisy_edges_come_near_the_bound_and_know_their_uncertainty() {
         assert!((mean - 100.0).abs() <= most_bias + 3.0 * sd / 200.0f64.sqrt(), "{case}");
         assert!(sd <= 1.4 * bound * 1.15, "{case}");
         assert!((own / sd - 1.0).abs() < 0.3, "{case}");
+        let ratio = middle_u / middles.sqrt();
+        assert!((ratio - 1.0).abs() < 0.15, "{case}: middle {ratio}");
     }
 }
 
