@@ -22,6 +22,27 @@ pub(super) fn window(points: usize) -> Vec<f64> {
         .collect()
 }
 
+/// The largest length up to `points` whose only prime factors are 2, 3 and 5: transforms of such lengths are several
+/// times faster than those of others, and there is one within about a percent.
+pub(super) fn fast_up_to(points: usize) -> usize {
+    (1..=points).rev().find(|&n| is_fast(n)).unwrap_or(points)
+}
+
+/// The smallest such length from `points` on.
+pub(super) fn fast_from(points: usize) -> usize {
+    (points.max(1)..).find(|&n| is_fast(n)).unwrap_or(points)
+}
+
+fn is_fast(points: usize) -> bool {
+    let mut rest = points;
+    for prime in [2, 3, 5] {
+        while rest > 0 && rest.is_multiple_of(prime) {
+            rest /= prime;
+        }
+    }
+    rest == 1
+}
+
 /// The spectrum of a real signal, bins 0 to n/2, not normalised (`X_k = Σ x_i·e^{−j2πik/n}`).
 pub(super) fn forward(mut signal: Vec<f64>) -> Vec<Complex<f64>> {
     let plan = RealFftPlanner::<f64>::new().plan_fft_forward(signal.len());

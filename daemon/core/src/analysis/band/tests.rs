@@ -24,3 +24,10 @@ fn the_window_leaks_less_than_92_db_and_has_its_noise_bandwidth() {
         }
     }
 }
+
+#[test]
+fn fast_lengths_have_small_factors_and_are_near() {
+    assert_eq!((fast_up_to(1000), fast_from(1000)), (1000, 1000));
+    assert_eq!((fast_up_to(999_957), fast_from(999_957)), (995_328, 1_000_000));
+    assert_eq!((fast_up_to(7), fast_from(7)), (6, 8));
+}

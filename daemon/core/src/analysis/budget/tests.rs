@@ -34,8 +34,9 @@ fn the_guide_s_example_of_resistance_and_reactance() {
         z / v, -z / i, 0.0,
     ]);
     let found = propagate(&sensitivities, &u, &correlation).unwrap();
+    // The guide goes on from rounded u and r and cuts off: a unit of its last digit, where the data give 0.2956.
     for (found, expected) in found.u.iter().zip([0.071, 0.295, 0.236]) {
-        assert!((found - expected).abs() < 5.1e-4, "{found} {expected}");
+        assert!((found - expected).abs() < 1e-3, "{found} {expected}");
     }
     for (a, b, r) in [(0, 1, -0.588), (0, 2, -0.485), (1, 2, 0.993)] {
         assert!((found.correlation[(a, b)] - r).abs() < 5.1e-4, "r = {}", found.correlation[(a, b)]);

@@ -2,8 +2,10 @@
 
 use super::super::transition::{duration_per_part, middle_per_part};
 use super::super::{budget, grade, peaks};
+use super::plain::Plain;
 use super::shape::{Layout, Read, Reading, Shape};
 use super::sources::{Parts, Sources};
+use super::sums::{mean, product, without_noise};
 use super::{Figure, FigureInput, FigureKind};
 
 /// A figure before it is graded.
@@ -80,8 +82,8 @@ impl<'a> Bench<'a> {
         let sources = Sources::of(input);
         let corrected = input.corrected;
         let d = &corrected.difference_v;
-        let layout = Layout::of(d, sources.noise_v);
-        let shape = layout.read(d, sources.noise_v, layout.between());
+        let layout = Layout::of(d, sources.mean_noise_v);
+        let shape = layout.read(d, sources.mean_noise_v, layout.between());
         let slope = corrected.negative_slope();
         let moved = |derivative: &[f64], step: f64| {
             (step > 0.0).then(|| {
@@ -92,7 +94,7 @@ impl<'a> Bench<'a> {
                         low += step * levels.mean_at_low(d, derivative);
                         high += step * levels.mean_at_high(d, derivative);
                     }
-                    layout.read(&signal, sources.noise_v, (low, high))
+                    layout.read(&signal, sources.mean_noise_v, (low, high))
                 })
             })
         };
@@ -309,71 +311,4 @@ fn half_change(shapes: Option<&[Shape; 2]>, read: impl Fn(&Shape) -> Reading) ->
         (Ok(up), Ok(down)) => 0.5 * (up.value - down.value),
         _ => 0.0,
     }
-}
-
-/// The figures of plain subtraction, values only.
-struct Plain<'a> {
-    signal: &'a [f64],
-    noise_v: f64,
-    interval_s: f64,
-    layout: Layout,
-    shape: Shape,
-}
-
-impl<'a> Plain<'a> {
-    fn of(input: &'a FigureInput<'a>) -> Self {
-        let noise_v = input.noise_p_v.hypot(input.noise_n_v);
-        let layout = Layout::of(input.plain_v, noise_v);
-        let shape = layout.read(input.plain_v, noise_v, layout.between());
-        Self { signal: input.plain_v, noise_v, interval_s: input.corrected.interval_s, layout, shape }
-    }
-
-    fn figure(&self, kind: FigureKind) -> Option<f64> {
-        let value = |reading: &Reading| reading.as_ref().ok().map(|r| r.value);
-        let time = |reading: &Reading| value(reading).map(|v| v * self.interval_s);
-        let levels = self.layout.levels.as_ref().ok();
-        if self.signal.is_empty() {
-            return None;
-        }
-        match kind {
-            FigureKind::Mean => Some(mean(self.signal)),
-            FigureKind::Area => Some(mean(self.signal) * self.signal.len() as f64 * self.interval_s),
-            FigureKind::Rms => Some(without_noise(self.signal, self.noise_v).0),
-            FigureKind::HighLevel => levels.map(|l| l.high.value),
-            FigureKind::LowLevel => levels.map(|l| l.low.value),
-            FigureKind::Amplitude => levels.map(super::super::levels::Levels::amplitude),
-            FigureKind::Maximum => Some(self.shape.maximum.value),
-            FigureKind::Minimum => Some(self.shape.minimum.value),
-            FigureKind::PeakToPeak => Some(self.shape.maximum.value - self.shape.minimum.value),
-            FigureKind::Overshoot => value(&self.shape.overshoot),
-            FigureKind::Undershoot => value(&self.shape.undershoot),
-            FigureKind::RiseTime => time(&self.shape.rise),
-            FigureKind::FallTime => time(&self.shape.fall),
-            FigureKind::Period => time(&self.shape.period),
-            FigureKind::Frequency => time(&self.shape.period).map(|p| 1.0 / p),
-            FigureKind::Duty => value(&self.shape.duty),
-            FigureKind::CommonRms | FigureKind::CommonSwing => None,
-        }
-    }
-}
-
-fn mean(x: &[f64]) -> f64 {
-    x.iter().sum::<f64>() / x.len().max(1) as f64
-}
-
-/// The mean of a product.
-fn product(x: &[f64], y: &[f64]) -> f64 {
-    x.iter().zip(y).map(|(x, y)| x * y).sum::<f64>() / x.len().max(1) as f64
-}
-
-/// The rms of a signal with its noise power taken away, the standard uncertainty that the noise leaves, and the rms to
-/// divide sensitivities by: never below what noise could fake, so that a difference of nothing has finite ones.
-fn without_noise(x: &[f64], noise: f64) -> (f64, f64, f64) {
-    let n = x.len().max(1) as f64;
-    let power = (product(x, x) - noise * noise).max(0.0);
-    let value = power.sqrt();
-    // Variance of the mean square: 4R²s²/n + 2s⁴/n.
-    let variance = (4.0 * power * noise * noise + 2.0 * noise.powi(4)) / n;
-    let size = value.max(variance.powf(0.25)).max(f64::MIN_POSITIVE.sqrt());
-    (value, 0.5 * variance.sqrt() / size, size)
 }

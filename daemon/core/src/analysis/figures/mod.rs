@@ -15,8 +15,10 @@ use super::leak::LeakBound;
 
 mod compute;
 mod kind;
+mod plain;
 mod shape;
 mod sources;
+mod sums;
 
 pub use compute::compute;
 pub use kind::FigureKind;

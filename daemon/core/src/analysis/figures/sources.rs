@@ -7,7 +7,8 @@ use super::FigureInput;
 pub(super) struct Sources {
     /// Rms noise per sample of the difference.
     pub(super) noise_v: f64,
-    /// Rms noise that counts in means over many samples: interpolation passes slow noise whole.
+    /// Rms noise that counts wherever many samples are averaged, smoothed or fitted: interpolation passes slow noise
+    /// whole.
     pub(super) mean_noise_v: f64,
     /// Rms noise per sample of the common mode.
     pub(super) common_noise_v: f64,

@@ -11,7 +11,8 @@
 //! all phases that are common to all frequencies, which is the peak of the envelope (analytic signal) of the
 //! common mode weighted by the residual.
 //!
-//! The record is mirrored before the transform: a record whose ends differ then makes no jump that was never there.
+//! The record is mirrored before the transform: a record whose ends differ then makes no jump that was never there. Its
+//! last value is held for up to a percent of its length, to one that transforms fast.
 
 use realfft::num_complex::Complex;
 
@@ -48,18 +49,23 @@ pub fn bound(common_v: &[f64], interval_s: f64, correction: &Correction, rejecti
     let offset_v = 2.0 * (correction.offset_v.u / correction.gain.value).abs();
     let mean_v = (mean * residual(0.0)).abs() + offset_v;
 
-    let points = 2 * n;
+    let half = band::fast_from(n);
+    let points = 2 * half;
     let bin_hz = 1.0 / (points as f64 * interval_s);
-    let mirrored = common_v.iter().chain(common_v.iter().rev()).map(|c| c - mean).collect();
+    let last = common_v[n - 1] - mean;
+    let held = common_v.iter().map(|c| c - mean).chain(std::iter::repeat_n(last, half - n));
+    let mut mirrored: Vec<f64> = held.collect();
+    mirrored.extend_from_within(..);
+    mirrored[half..].reverse();
     let mut spectrum = band::forward(mirrored);
     let mut power = 0.0;
     for (k, x) in spectrum.iter_mut().enumerate() {
         *x *= residual(k as f64 * bin_hz);
-        // Bins stand for both signs of frequency, but for the last, at half the sample rate.
-        power += x.norm_sqr() * if k == n { 1.0 } else { 2.0 };
+        // Bins stand for both signs of frequency, but for the first and the last, at half the sample rate.
+        power += x.norm_sqr() * if k == 0 || k == half { 1.0 } else { 2.0 };
     }
-    spectrum[0] = Complex::default();
-    let alternating = power.sqrt() / points as f64;
+    // All of the power is put down to the record itself, none to the part that was held.
+    let alternating = (power / points as f64 / (2 * n) as f64).sqrt();
     let quarter = spectrum.iter().map(|x| x * Complex::i()).collect();
     let in_phase = band::inverse(spectrum, points);
     let in_quadrature = band::inverse(quarter, points);

@@ -19,7 +19,8 @@ use histogram::Histogram;
 /// The fewest samples for which levels mean anything.
 const LEAST_POINTS: usize = 32;
 
-/// The states must be this many standard deviations of their noise apart.
+/// The states must be this many robust standard deviations of the samples round them apart. Noise halved in the middle
+/// reaches 2, a sine or a triangle 3 to 4: half of their samples lie far from the would-be levels.
 const LEAST_SEPARATION: f64 = 6.0;
 
 /// One state's level.
@@ -54,24 +55,16 @@ pub struct Levels {
 /// Why a waveform has no two levels.
 #[derive(Debug, Clone, PartialEq, thiserror::Error)]
 pub enum NoLevels {
-    /// More samples lie between the levels than at them.
-    #[error("the waveform has no two states: {between} samples lie between the levels, only {at_level} at one of them")]
-    NoStates {
-        /// Samples between 20 % and 80 %.
-        between: usize,
-        /// Samples at the level with fewer of them.
-        at_level: usize,
-    },
     /// There is no transition.
     #[error("the waveform has no transition between two states")]
     NoTransition,
-    /// The two groups are not further apart than noise explains.
-    #[error("the waveform has no two states: its levels would be {apart} apart, with a noise of {noise}")]
+    /// The two groups are not far enough apart for their spread: DC, noise, a sine, a triangle.
+    #[error("the waveform has no two states: its levels would be {apart} apart, in a spread of {spread}")]
     NotApart {
         /// Distance of the would-be levels.
         apart: f64,
         /// Robust standard deviation round them.
-        noise: f64,
+        spread: f64,
     },
     /// There are too few samples, or they are all equal.
     #[error("the waveform has no two states: it is flat or too short")]
@@ -114,9 +107,8 @@ pub fn find(signal: &[f64], noise: f64) -> Result<Levels, NoLevels> {
     let apart = high.value - low.value;
     let spread = low.spread.max(high.spread);
     if apart.is_nan() || apart < LEAST_SEPARATION * spread {
-        return Err(NoLevels::NotApart { apart, noise: spread });
+        return Err(NoLevels::NotApart { apart, spread });
     }
-    check_states(signal, &low, &high)?;
     let edges = transition::edges(signal, low.value, high.value);
     if edges.is_empty() {
         return Err(NoLevels::NoTransition);
@@ -152,22 +144,6 @@ fn settle(group: &[f64], centre: f64, least: f64) -> Level {
         level.value = level.centre + sum / count.max(1) as f64;
     }
     level
-}
-
-/// A sine's values crowd at its ends too, but more of them lie between. A pulse waveform has at each level at least as
-/// many samples as between 20 % and 80 %.
-fn check_states(signal: &[f64], low: &Level, high: &Level) -> Result<(), NoLevels> {
-    let apart = high.value - low.value;
-    let near = (0.1 * apart).max(2.0 * low.spread.max(high.spread));
-    let (mut at_low, mut at_high, mut between) = (0, 0, 0);
-    for x in signal {
-        at_low += usize::from((x - low.value).abs() <= near);
-        at_high += usize::from((x - high.value).abs() <= near);
-        let share = (x - low.value) / apart;
-        between += usize::from(share > 0.2 && share < 0.8);
-    }
-    let at_level = at_low.min(at_high);
-    if between > at_level { Err(NoLevels::NoStates { between, at_level }) } else { Ok(()) }
 }
 
 /// The stretches between the transitions, low and high, without their neighbourhoods.

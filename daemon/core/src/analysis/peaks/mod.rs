@@ -2,13 +2,16 @@
 //!
 //! The highest sample of a million is several standard deviations of noise too high. Here a parabola is fitted by least
 //! squares round the highest place, in a window that grows for as long as the parabola fits within the noise and its
-//! top does not move by more than twice its own uncertainty: a broad top is averaged over many samples, a sharp one
+//! top does not move further than its uncertainty explains: a broad top is averaged over many samples, a sharp one
 //! over few, and the top of a flat stretch is its level.
 
 use std::ops::Range;
 
 /// Half-widths of the window in samples begin here.
 const LEAST_HALF: usize = 2;
+
+/// How many windows before the first that did not fit the result is taken from, beside the last that did.
+const STEPS_BACK: usize = 2;
 
 /// Misfits below this part of the record's range do not stop the window from growing when there is no noise.
 const RELATIVE_FLOOR: f64 = 1e-5;
@@ -65,20 +68,32 @@ fn extreme(signal: &[f64], range: Range<usize>, noise: f64, sign: f64) -> Extrem
         return Extreme { value: 0.0, u: 0.0, position: 0.0 };
     };
     let tolerance = noise.max(RELATIVE_FLOOR * spread);
-    let mut best = Extreme { value: sign * signal[top], u: noise, position: top as f64 };
+    let mut accepted = vec![Extreme { value: sign * signal[top], u: noise, position: top as f64 }];
     let mut half = LEAST_HALF;
-    while let Some(fit) = Fit::of(signal, &range, best.position, half, sign) {
-        let limit = tolerance * tolerance * (1.0 + 3.0 * (2.0 / fit.freedom).sqrt());
-        let moved = (fit.value - best.value).abs();
-        // The first window replaces a single sample, which was chosen for being high: it may move far.
-        let steady = half == LEAST_HALF || moved <= 2.0 * best.u.max(tolerance * fit.weight.sqrt());
-        if fit.residual_variance > limit || !steady {
+    let mut misfit = false;
+    while let Some(last) = accepted.last()
+        && let Some(fit) = Fit::of(signal, &range, last.position, half, sign)
+    {
+        // The place was chosen for being high: of the m windows that could have been chosen, noise lifts the highest by
+        // √(2·ln m) standard deviations. Falling back by that much is no misfit, nor is one sample that stands out so.
+        let choice = 2.0 * (range.len() as f64 / (fit.freedom + 3.0)).ln().max(0.0);
+        let limit = tolerance * tolerance * (1.0 + 3.0 * (2.0 / fit.freedom).sqrt() + choice / fit.freedom);
+        let moved = (fit.value - last.value).abs();
+        let u = last.u.max(tolerance * fit.weight.sqrt());
+        let steady = half == LEAST_HALF || moved <= (1.0 + choice.sqrt()) * u;
+        misfit = fit.residual_variance > limit || !steady;
+        if misfit {
             break;
         }
-        best = Extreme { value: fit.value, u: noise * fit.weight.sqrt(), position: fit.position };
+        accepted.push(Extreme { value: fit.value, u: noise * fit.weight.sqrt(), position: fit.position });
         half = (half + half / 2).max(half + 1);
     }
-    best
+    // A misfit shows only when it is as large as the noise in the result. It falls with the fourth power of the width,
+    // so that a few windows further back it is far below.
+    if misfit && accepted.len() > STEPS_BACK + 1 {
+        accepted.truncate(accepted.len() - STEPS_BACK);
+    }
+    accepted.pop().unwrap_or(Extreme { value: 0.0, u: 0.0, position: 0.0 })
 }
 
 /// Where the mean of five neighbours is highest, and the range's spread.

@@ -25,8 +25,7 @@ const LEAST_NOISE_BINS: usize = 16;
 
 /// Rejection per band, from one or more acquisitions of both tips on the same node; `bands` are frequencies in hertz.
 ///
-/// A band reaches half-way (on a logarithmic scale) to its neighbours, the outermost as far outwards as inwards, a
-/// single one half an octave to each side. Bands without signal, or above 0.4 of the sample rate, are left out. The
+/// A band reaches half an octave to each side, or half-way (on a logarithmic scale) to a nearer neighbour. Bands without signal, or above 0.4 of the sample rate, are left out. The
 /// acquisitions must share sample interval and length; the rest is counted by the shortest.
 ///
 /// # Errors
@@ -78,19 +77,15 @@ fn db(power: f64) -> f64 {
 
 /// Lower and upper end of each band.
 fn edges(centres: &[f64]) -> Vec<(f64, f64)> {
-    let n = centres.len();
-    let between = |i: usize| (centres[i] * centres[i + 1]).sqrt();
-    (0..n)
-        .map(|i| {
-            let low = (i > 0).then(|| between(i - 1));
-            let high = (i + 1 < n).then(|| between(i));
-            let square = centres[i] * centres[i];
-            match (low, high) {
-                (Some(low), Some(high)) => (low, high),
-                (Some(low), None) => (low, square / low),
-                (None, Some(high)) => (square / high, high),
-                (None, None) => (centres[i] / std::f64::consts::SQRT_2, centres[i] * std::f64::consts::SQRT_2),
-            }
+    let half_octave = std::f64::consts::SQRT_2;
+    let between = |a: f64, b: f64| (a * b).sqrt();
+    centres
+        .iter()
+        .enumerate()
+        .map(|(i, &f)| {
+            let low = i.checked_sub(1).map_or(0.0, |i| between(centres[i], f));
+            let high = centres.get(i + 1).map_or(f64::INFINITY, |&next| between(f, next));
+            (low.max(f / half_octave), high.min(f * half_octave))
         })
         .collect()
 }
@@ -120,7 +115,8 @@ struct Residual {
 
 impl Spectra {
     fn of(waveforms: &[(Vec<f64>, Vec<f64>)], interval_s: f64) -> Option<Self> {
-        let points = waveforms.iter().map(|(d, _)| d.len()).min()?;
+        // What is cut off is where the window ends anyway.
+        let points = band::fast_up_to(waveforms.iter().map(|(d, _)| d.len()).min()?);
         let window = band::window(points);
         let bins = points / 2 + 1;
         let mut cross = vec![Complex::default(); bins];
