@@ -1,0 +1,79 @@
+//! What every instrument has: its status and the knowledge whether an operation is pending.
+
+use std::sync::Mutex;
+
+use tokio::sync::watch;
+
+use super::bench::lock;
+use crate::status::{Fault, Status, event};
+
+/// Status and pending operation of one instrument, shared by its connections and its background work.
+#[derive(Debug)]
+pub(crate) struct Core {
+    /// Registers and error queue.
+    pub(crate) status: Mutex<Status>,
+    pending: watch::Sender<Pending>,
+}
+
+#[derive(Debug, Clone, Copy, Default)]
+struct Pending {
+    busy: bool,
+    /// `*OPC` was sent while busy: its bit is due at the end (the operation complete command active state, IEEE 488.2
+    /// 12.5.2, from memory).
+    armed: bool,
+}
+
+impl Core {
+    /// An idle instrument just switched on.
+    pub(crate) fn new() -> Self {
+        Self { status: Mutex::new(Status::new()), pending: watch::Sender::new(Pending::default()) }
+    }
+
+    /// Puts an error into the queue.
+    pub(crate) fn report(&self, fault: Fault) {
+        lock(&self.status).report(fault);
+    }
+
+    /// An overlapped operation begins or goes on in another condition.
+    pub(crate) fn begin(&self, condition: u16) {
+        lock(&self.status).operation.set_condition(condition);
+        self.pending.send_modify(|pending| pending.busy = true);
+    }
+
+    /// The overlapped operation has ended, one way or another.
+    pub(crate) fn finish(&self) {
+        let mut status = lock(&self.status);
+        status.operation.set_condition(0);
+        self.pending.send_modify(|pending| {
+            if std::mem::take(pending).armed {
+                status.raise(event::OPERATION_COMPLETE);
+            }
+        });
+    }
+
+    /// `*OPC`: sets the bit when nothing is pending any more (IEEE 488.2 10.18).
+    pub(crate) fn arm(&self) {
+        let mut status = lock(&self.status);
+        self.pending.send_modify(|pending| {
+            if pending.busy {
+                pending.armed = true;
+            } else {
+                status.raise(event::OPERATION_COMPLETE);
+            }
+        });
+    }
+
+    /// `*CLS` and `*RST` forget an `*OPC` (IEEE 488.2 10.3 and 10.32).
+    pub(crate) fn disarm(&self) {
+        self.pending.send_modify(|pending| pending.armed = false);
+    }
+
+    /// Waits until nothing is pending: `*OPC?` and `*WAI`.
+    ///
+    /// # Cancel safety
+    /// Holds nothing; may be dropped at any time.
+    pub(crate) async fn idle(&self) {
+        // The sender lives in `self`, so the wait cannot fail.
+        let _ = self.pending.subscribe().wait_for(|pending| !pending.busy).await;
+    }
+}
