@@ -1,7 +1,8 @@
 //! Whether a reference suits a pair: one set of rules for the bench file, for a sequence and for a request.
 
+use super::Acquisition;
 use super::field::plain;
-use super::spec::{Acquisition, Bench, PairSpec, ReferenceSpec};
+use super::spec::{Bench, PairSpec, ReferenceSpec};
 use crate::units::Unit;
 
 /// What a reference is used for.

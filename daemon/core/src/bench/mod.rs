@@ -7,6 +7,7 @@
 //! Voltages of pairs, references and at-tip settings are at the probe's tip; the daemon divides by the attenuation on
 //! the way to the scope.
 
+mod acquisition;
 mod call;
 pub mod conditions;
 pub(crate) mod field;
@@ -14,13 +15,13 @@ pub mod fit;
 mod read;
 pub mod spec;
 
+pub use acquisition::{Acquisition, Overrides, Slope, Trigger};
 pub use call::BenchCall;
 pub use fit::Role;
 pub(crate) use read::overrides;
 pub use read::read;
 pub use spec::{
-    Acquisition, Bench, Coupling, InstrumentSpec, LegSpec, Overrides, PairSpec, ProbeSpec, ReferenceKind,
-    ReferenceSpec, RouteSpec, SettingSpec, Slope, Trigger,
+    Bench, Coupling, InstrumentSpec, LegSpec, PairSpec, ProbeSpec, ReferenceKind, ReferenceSpec, RouteSpec, SettingSpec,
 };
 
 #[cfg(test)]

@@ -1,3 +1,7 @@
+//! The bundled bench file is right, and each mistake is named at its place.
+
+#![allow(clippy::unwrap_used, clippy::float_cmp)]
+
 use super::*;
 use crate::dialect::Value;
 use crate::document::line_and_column;
@@ -198,5 +202,18 @@ proptest::proptest! {
         if let Err(mistakes) = read(&text) {
             proptest::prop_assert!(!mistakes.is_empty());
         }
+    }
+}
+
+#[test]
+fn the_bundled_dialect_has_words_for_all_that_the_bundled_bench_does() {
+    let bench = read(GREENHOUSE).unwrap();
+    let dialect = crate::dialect::Dialect::read(crate::dialect::bundled("scpi-99").unwrap()).unwrap();
+    assert!(bench.instruments.iter().all(|instrument| instrument.dialect == dialect.name()));
+    let settings: Vec<BenchCall> = bench.settings.iter().map(|setting| setting.call(setting.max)).collect();
+    let routes = bench.routes.iter().flat_map(|route| &route.calls);
+    let references = bench.references.iter().flat_map(|reference| reference.start.iter().chain(&reference.stop));
+    for entry in settings.iter().chain(routes).chain(references).chain(&bench.prepare).chain(&bench.safe) {
+        assert!(dialect.plan(&entry.call).is_ok(), "{entry:?}: {:?}", dialect.plan(&entry.call));
     }
 }

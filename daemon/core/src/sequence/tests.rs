@@ -1,3 +1,7 @@
+//! Sequences are unrolled in order, and each mistake is named at its place.
+
+#![allow(clippy::unwrap_used, clippy::float_cmp)]
+
 use super::*;
 use crate::bench::tests::GREENHOUSE;
 use crate::bench::{self, Bench};
@@ -275,6 +279,59 @@ fn a_deskew_or_a_verification_alone_is_a_sequence_too() {
     assert!(matches!(DeskewPlan::of(&bench, "bus", None, None), Err(PlanError::UnknownPair { .. })));
     assert!(matches!(DeskewPlan::of(&bench, "gate", Some("x"), None), Err(PlanError::UnknownReference { .. })));
     assert!(matches!(DeskewPlan::of(&bench, "gate", None, Some("fast")), Err(PlanError::Misfit { .. })));
+}
+
+/// The configuration guide names every key that the readers of benches and sequences ask for, every kind of stage and
+/// every call that has an effect: a key that nobody can find is as good as none.
+#[test]
+fn every_key_and_call_is_documented() {
+    let guide = include_str!(concat!(env!("CARGO_MANIFEST_DIR"), "/../../configs/README.md"));
+    let sources = [
+        include_str!("../bench/call.rs"),
+        include_str!("../bench/read/mod.rs"),
+        include_str!("../bench/read/parts.rs"),
+        include_str!("../bench/read/pair.rs"),
+        include_str!("../bench/read/reference.rs"),
+        include_str!("../bench/read/device.rs"),
+        include_str!("read/mod.rs"),
+        include_str!("read/axis.rs"),
+        include_str!("read/stage.rs"),
+    ];
+    let mut seen = 0;
+    for source in sources {
+        // A key is asked for as `table.text("key")`, or `field::name(table, "key", …)`, whatever the table is called.
+        for (at, _) in source.match_indices('"') {
+            let before = source[..at].trim_end();
+            let getter = ["text(", "texts(", "number(", "whole(", "flag(", "amount(", "amounts(", "table(", "tables("]
+                .iter()
+                .any(|getter| before.ends_with(getter));
+            let helper = ["(table,", "(top,", "(&mut inner,", "(&mut entry,", "entries(top,"]
+                .iter()
+                .any(|helper| before.ends_with(helper));
+            let key = source[at + 1..].split('"').next().unwrap_or_default();
+            if (getter || helper) && key.chars().all(|c| c.is_ascii_lowercase() || c == '_') && !key.is_empty() {
+                seen += 1;
+                let named = [
+                    format!("`{key}`"),
+                    format!("`[{key}."),
+                    format!("`[[{key}]]`"),
+                    format!("`{{ {key} ="),
+                    format!(".{key}]]`"),
+                ];
+                assert!(
+                    named.iter().any(|name| guide.contains(name.as_str())) || guide.contains(&format!(", {key} = ")),
+                    "`{key}` is not in configs/README.md"
+                );
+            }
+        }
+    }
+    assert!(seen > 60, "the search itself works: {seen}");
+    for intent in crate::dialect::Intent::all() {
+        let kind = intent.spec().kind;
+        let asks = matches!(kind, crate::dialect::IntentKind::Query | crate::dialect::IntentKind::Data);
+        let internal = ["error", "acquire.start", "acquire.abort", "format.set"].contains(&intent.name());
+        assert!(asks || internal || guide.contains(&format!("`{intent}`")), "`{intent}` is not in configs/README.md");
+    }
 }
 
 #[test]

@@ -1,3 +1,7 @@
+//! Each condition that differs is named, and rounding is not a difference.
+
+#![allow(clippy::unwrap_used, clippy::float_cmp)]
+
 use super::*;
 
 fn leg(channel: u32) -> LegConditions {

@@ -1,8 +1,8 @@
 //! Pairs and their legs.
 
 use super::{Declared, overrides};
-use crate::bench::field;
-use crate::bench::spec::{Acquisition, Coupling, LegSpec, PairSpec, ProbeSpec};
+use crate::bench::spec::{Coupling, LegSpec, PairSpec, ProbeSpec};
+use crate::bench::{Acquisition, field};
 use crate::document::Table;
 use crate::units::Unit;
 

@@ -1,8 +1,8 @@
 //! References, and what they and captures may acquire differently from the pair.
 
 use super::Declared;
-use crate::bench::spec::{Overrides, ReferenceKind, ReferenceSpec, SettingSpec, Slope, Trigger};
-use crate::bench::{call, field};
+use crate::bench::spec::{ReferenceKind, ReferenceSpec, SettingSpec};
+use crate::bench::{Overrides, Slope, Trigger, call, field};
 use crate::document::Table;
 use crate::units::Unit;
 

@@ -319,4 +319,6 @@ impl Machine {
 }
 
 #[cfg(test)]
+mod properties;
+#[cfg(test)]
 mod tests;
