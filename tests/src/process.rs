@@ -9,7 +9,7 @@ use tokio::process::{Child, ChildStdout, Command};
 
 /// The longest that anything a test waits for may take; far above what it takes on a slow machine, so that only a hang
 /// reaches it.
-pub const PATIENCE: Duration = Duration::from_secs(120);
+pub(crate) const PATIENCE: Duration = Duration::from_secs(120);
 
 /// The path of a binary of this workspace, built with the profile that the tests run in.
 ///

@@ -5,7 +5,7 @@ use comfy_table::{CellAlignment, ContentArrangement, Table, presets};
 /// A table with this head; the columns in `right` are set to the right.
 pub(crate) fn table(head: &[&str], right: &[usize]) -> Table {
     let mut table = Table::new();
-    table.load_preset(presets::NOTHING);
+    table.load_style(presets::NOTHING);
     table.set_content_arrangement(ContentArrangement::Dynamic);
     table.set_width(78);
     table.set_header(head.iter().copied());

@@ -150,7 +150,7 @@ pub(crate) fn judge_by_bench(workshop: &Workshop, correction: &mut api::Correcti
         LegSettings {
             span_v: if same_request { made.span.value } else { span_v },
             offset_v: if (offset_v - made.offset.value).abs() < 0.01 * made.span.value { made.offset.value } else { offset_v },
-            coupling: pair.coupling.keyword().to_owned(),
+            coupling: pair.coupling.name().to_owned(),
             delay_s: 0.0,
         }
     };

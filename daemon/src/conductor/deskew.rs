@@ -24,6 +24,8 @@ pub(crate) struct Wish<'b> {
     pub(crate) plan: &'b DeskewPlan,
     pub(crate) skew_reference: &'b ReferenceSpec,
     pub(crate) gain_reference: &'b ReferenceSpec,
+    /// What the run had set before: a reference that sets something else gives it back.
+    pub(crate) set: &'b [(String, f64)],
 }
 
 /// The standard uncertainty of the gain at which its reference is content: 2·10⁻⁵ leaves the common mode 94 dB down,
@@ -35,9 +37,6 @@ const LEAST_ACQUISITIONS: u32 = 4;
 
 /// How often the span may be doubled when the skew reference clips.
 const WIDENINGS: u32 = 3;
-
-/// The largest part of the span that a reference with known levels fills when the span is chosen here.
-const FILL: f64 = 0.8;
 
 /// Deskews a pair. Whatever comes of it, the scope gets its settings back.
 pub(crate) async fn deskew(
@@ -117,7 +116,7 @@ async fn make(
         acquisitions: u32::try_from(acquisitions).unwrap_or(u32::MAX),
         warnings,
     };
-    let bands = verify::on_range(workshop, scope, &correction, wish.gain_reference, on_gain.acquisition, tell, stop).await?;
+    let bands = verify::on_reference(workshop, scope, &correction, wish.gain_reference, wish.set, tell, stop).await?;
     correction.rejection = super::correction::rejection_points(&bands);
     workshop.store.put_correction(&correction).await?;
     tell.corrected(&correction).await?;
@@ -141,9 +140,11 @@ async fn on_reference(
     tell: &Tell,
     stop: &CancellationToken,
 ) -> Result<OnReference, Trouble> {
+    let acquisition = workshop.bench.reference_acquisition(scope.pair, reference);
+    scope.prepare(&acquisition).await?;
     workshop.start_reference(reference, stop).await?;
-    let outcome = acquire_until_enough(scope, wish, reference, tell, stop).await;
-    let ended = workshop.stop_reference(reference).await;
+    let outcome = acquire_until_enough(scope, wish, reference, acquisition, tell, stop).await;
+    let ended = workshop.stop_reference(reference, wish.set, stop).await;
     let found = outcome?;
     ended?;
     Ok(found)
@@ -153,12 +154,11 @@ async fn acquire_until_enough(
     scope: &Scope<'_>,
     wish: &Wish<'_>,
     reference: &ReferenceSpec,
+    mut acquisition: Acquisition,
     tell: &Tell,
     stop: &CancellationToken,
 ) -> Result<OnReference, Trouble> {
     let is_gain_reference = reference.name == wish.gain_reference.name;
-    let mut acquisition = acquisition_of(scope.pair, reference, is_gain_reference);
-    scope.prepare(&acquisition).await?;
     let known = Reference { shape: shape_of(reference.kind), period_s: Some(1.0 / reference.frequency_hz) };
     let mut repeats: Vec<SkewEstimate> = Vec::new();
     let mut widenings = 0;
@@ -194,20 +194,6 @@ async fn acquire_until_enough(
             return Ok(OnReference { combined, acquisition });
         }
     }
-}
-
-/// How a reference is acquired: the gain reference on the pair's measuring range; another one, where the bench file
-/// does not say, on the smallest span that its levels fill well.
-fn acquisition_of(pair: &PairSpec, reference: &ReferenceSpec, is_gain_reference: bool) -> Acquisition {
-    let mut acquisition = pair.acquisition.with(&reference.overrides);
-    if is_gain_reference {
-        acquisition.span_v = pair.acquisition.span_v;
-        acquisition.offset_v = pair.acquisition.offset_v;
-    } else if reference.overrides.span_v.is_none() {
-        acquisition.span_v = (reference.high_v - reference.low_v) / FILL;
-        acquisition.offset_v = (reference.high_v + reference.low_v) / 2.0;
-    }
-    acquisition
 }
 
 fn shape_of(kind: ReferenceKind) -> Shape {

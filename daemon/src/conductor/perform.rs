@@ -51,7 +51,7 @@ async fn act(workshop: &Workshop, step: &Step, live: &Arc<LiveRun>, stop: &Cance
         }
         Action::Capture(plan) => act_capture(workshop, step, plan, live, &tell, stop).await,
         Action::Deskew(plan) => {
-            let correction = act_deskew(workshop, plan, &tell, stop).await?;
+            let correction = act_deskew(workshop, step, plan, &tell, stop).await?;
             done(Some(in_words(&correction)))
         }
         Action::Prepare => {
@@ -67,14 +67,14 @@ async fn act(workshop: &Workshop, step: &Step, live: &Arc<LiveRun>, stop: &Cance
             done(None)
         }
         Action::Set { setting, value } => {
-            workshop.set(setting, *value, stop).await?;
+            workshop.set(setting, *value).await?;
             done(None)
         }
         Action::Verify(plan) => {
             let Some((pair, reference)) = workshop.bench.pair(&plan.pair).zip(workshop.bench.reference(&plan.reference)) else {
                 return Err(Trouble::NoCorrection { pair: plan.pair.clone() });
             };
-            let correction = verify::verify(workshop, pair, reference, &tell, stop).await?;
+            let correction = verify::verify(workshop, pair, reference, &step.conditions, &tell, stop).await?;
             done(Some(rejection_in_words(&correction)))
         }
         Action::Wait => done(None),
@@ -83,6 +83,7 @@ async fn act(workshop: &Workshop, step: &Step, live: &Arc<LiveRun>, stop: &Cance
 
 async fn act_deskew(
     workshop: &Workshop,
+    step: &Step,
     plan: &DeskewPlan,
     tell: &Tell,
     stop: &CancellationToken,
@@ -93,7 +94,7 @@ async fn act_deskew(
     let Some((pair, (skew_reference, gain_reference))) = bench.pair(&plan.pair).zip(references) else {
         return Err(Trouble::NoCorrection { pair: plan.pair.clone() });
     };
-    deskew::deskew(workshop, pair, &Wish { plan, skew_reference, gain_reference }, tell, stop).await
+    deskew::deskew(workshop, pair, &Wish { plan, skew_reference, gain_reference, set: &step.conditions }, tell, stop).await
 }
 
 async fn act_capture(

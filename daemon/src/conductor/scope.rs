@@ -133,7 +133,7 @@ impl Scope<'_> {
         Ok(LegSettings {
             span_v: self.number(&vertical, "span_v")? * leg.probe.attenuation,
             offset_v: self.number(&vertical, "offset_v")? * leg.probe.attenuation,
-            coupling: coupling.keyword("coupling").map_err(|source| self.unreadable(source))?.to_owned(),
+            coupling: coupling.keyword("coupling").map_err(|source| self.unreadable(source))?.to_uppercase(),
             delay_s,
         })
     }

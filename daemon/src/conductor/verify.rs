@@ -23,6 +23,7 @@ pub(crate) async fn verify(
     workshop: &Workshop,
     pair: &PairSpec,
     reference: &ReferenceSpec,
+    set: &[(String, f64)],
     tell: &Tell,
     stop: &CancellationToken,
 ) -> Result<api::Correction, Trouble> {
@@ -30,11 +31,7 @@ pub(crate) async fn verify(
     let mut correction = latest.ok_or_else(|| Trouble::NoCorrection { pair: pair.name.clone() })?;
     let scope = workshop.scope(pair)?;
     let remembered = scope.remember().await?;
-    // On the measuring range, where the correction is to hold.
-    let mut acquisition = pair.acquisition.with(&reference.overrides);
-    acquisition.span_v = pair.acquisition.span_v;
-    acquisition.offset_v = pair.acquisition.offset_v;
-    let outcome = on_range(workshop, &scope, &correction, reference, acquisition, tell, stop).await;
+    let outcome = on_reference(workshop, &scope, &correction, reference, set, tell, stop).await;
     let returned = scope.give_back(remembered, false).await;
     correction.rejection = rejection_points(&outcome?);
     returned?;
@@ -44,19 +41,21 @@ pub(crate) async fn verify(
     Ok(correction)
 }
 
-/// Measures rejection on a reference, acquired as `acquisition` says.
-pub(crate) async fn on_range(
+/// Measures rejection on a reference. A checked plan has it on the measuring range, where the correction is to hold.
+pub(crate) async fn on_reference(
     workshop: &Workshop,
     scope: &Scope<'_>,
     correction: &api::Correction,
     reference: &ReferenceSpec,
-    acquisition: Acquisition,
+    set: &[(String, f64)],
     tell: &Tell,
     stop: &CancellationToken,
 ) -> Result<Vec<RejectionBand>, Trouble> {
+    let acquisition = workshop.bench.reference_acquisition(scope.pair, reference);
+    scope.prepare(&acquisition).await?;
     workshop.start_reference(reference, stop).await?;
     let outcome = acquire_and_measure(scope, correction, acquisition, tell, stop).await;
-    let ended = workshop.stop_reference(reference).await;
+    let ended = workshop.stop_reference(reference, set, stop).await;
     let bands = outcome?;
     ended?;
     if bands.is_empty() {
@@ -72,7 +71,6 @@ async fn acquire_and_measure(
     tell: &Tell,
     stop: &CancellationToken,
 ) -> Result<Vec<RejectionBand>, Trouble> {
-    scope.prepare(&acquisition).await?;
     let [positive, negative] = scope.settings().await?;
     let software = for_software(correction, negative.delay_s - positive.delay_s);
     let (mut all_p, mut all_n) = (Vec::new(), Vec::new());

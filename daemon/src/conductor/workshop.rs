@@ -35,27 +35,45 @@ impl Workshop {
         self.instruments.perform_all(calls).await
     }
 
-    /// Sets a setting of the bench and waits until the device has followed.
-    pub(crate) async fn set(&self, name: &str, value: f64, stop: &CancellationToken) -> Result<(), Trouble> {
-        let Some(setting) = self.bench.setting(name) else { return Ok(()) };
-        self.instruments.perform(&setting.call(value)).await?;
-        wait(setting.settle_s, stop).await
+    /// Sets a setting of the bench. Whoever asks waits until the device has followed.
+    pub(crate) async fn set(&self, name: &str, value: f64) -> Result<(), SessionError> {
+        match self.bench.setting(name) {
+            Some(setting) => self.instruments.perform(&setting.call(value)).await.map(|_| ()),
+            None => Ok(()),
+        }
     }
 
-    /// Brings a reference to both tips and starts it.
+    /// Brings a reference to both tips and starts it. The scope has to be prepared before: the reference's levels may be
+    /// more than the range that it is on now can bear.
     pub(crate) async fn start_reference(&self, reference: &ReferenceSpec, stop: &CancellationToken) -> Result<(), Trouble> {
         if let Some(route) = &reference.route {
             self.route(route).await?;
         }
-        for (setting, value) in &reference.settings {
-            self.set(setting, *value, stop).await?;
-        }
+        self.set_and_wait(&reference.settings, stop).await?;
         Ok(self.instruments.perform_all(&reference.start).await?)
     }
 
-    /// Ends a reference.
-    pub(crate) async fn stop_reference(&self, reference: &ReferenceSpec) -> Result<(), Trouble> {
-        Ok(self.instruments.perform_all(&reference.stop).await?)
+    /// Ends a reference and gives back what it had set, as far as the run itself had `set` it before.
+    pub(crate) async fn stop_reference(
+        &self,
+        reference: &ReferenceSpec,
+        set: &[(String, f64)],
+        stop: &CancellationToken,
+    ) -> Result<(), Trouble> {
+        self.instruments.perform_all(&reference.stop).await?;
+        let touched = |name: &String| reference.settings.iter().any(|(touched, _)| touched == name);
+        let back: Vec<(String, f64)> = set.iter().filter(|(name, _)| touched(name)).cloned().collect();
+        self.set_and_wait(&back, stop).await
+    }
+
+    /// Sets settings one after the other and waits until the device has followed all of them.
+    async fn set_and_wait(&self, settings: &[(String, f64)], stop: &CancellationToken) -> Result<(), Trouble> {
+        let mut longest_s = 0.0f64;
+        for (name, value) in settings {
+            self.set(name, *value).await?;
+            longest_s = longest_s.max(self.bench.setting(name).map_or(0.0, |setting| setting.settle_s));
+        }
+        wait(longest_s, stop).await
     }
 
     /// Who the scope of a pair says it is.
