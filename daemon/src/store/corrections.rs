@@ -4,12 +4,12 @@ use evenpair_api::{Carried, Correction, CorrectionConditions, LegConditions, Rej
 use rusqlite::{Connection, Row, named_params, params};
 use uuid::Uuid;
 
+use super::Store;
 use super::convert::{
     all, change, first, from_id, from_json, from_time, from_word, json, number, numbers, quantity, time, unless_there,
     word,
 };
 use super::error::{Fault, StoreError};
-use super::Store;
 
 impl Store {
     /// Stores a new correction.
@@ -186,11 +186,7 @@ fn insert_leg(connection: &Connection, correction: Uuid, name: &str, leg: &LegCo
                attenuation) values (?1, ?2, ?3, ?4, ?5, ?6, ?7, ?8, ?9)";
     let id = correction.to_string();
     let (coupling, attenuation) = (&leg.coupling, leg.attenuation);
-    change(
-        connection,
-        sql,
-        params![id, name, leg.channel, span_v, span_u, offset_v, offset_u, coupling, attenuation],
-    )?;
+    change(connection, sql, params![id, name, leg.channel, span_v, span_u, offset_v, offset_u, coupling, attenuation])?;
     Ok(())
 }
 
