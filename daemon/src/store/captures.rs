@@ -159,9 +159,8 @@ fn store(
     disk.make_folder(of_run)
         .and_then(|()| disk.sync_folder(&folder.waveforms()))
         .map_err(|source| StoreError::file(doing, of_run, source))?;
-    let bytes = write_durably(disk, doing, &target, |output| {
-        parquet::write(output, waveform, capture, correction.as_ref())
-    })?;
+    let bytes =
+        write_durably(disk, doing, &target, |output| parquet::write(output, waveform, capture, correction.as_ref()))?;
     let transaction = connection.transaction()?;
     insert_capture(&transaction, capture, bytes)?;
     Ok(transaction.commit()?)

@@ -26,7 +26,8 @@ pub(super) fn from_word<T: DeserializeOwned>(what: &'static str, word: String) -
 
 /// A list or an entry as JSON text.
 pub(super) fn json<T: Serialize + ?Sized>(value: &T) -> Result<String, Fault> {
-    serde_json::to_string(value).map_err(|error| Fault::Damaged { what: "what is to be stored", why: error.to_string() })
+    serde_json::to_string(value)
+        .map_err(|error| Fault::Damaged { what: "what is to be stored", why: error.to_string() })
 }
 
 /// The list or entry that JSON text stands for.

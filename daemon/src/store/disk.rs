@@ -81,15 +81,15 @@ pub(super) fn write_durably(
     disk: &dyn Disk,
     doing: &'static str,
     target: &Path,
-    write: impl FnOnce(Box<dyn Output>) -> Result<Box<dyn Output>, ParquetError>,
+    write: impl FnOnce(&mut dyn Output) -> Result<(), ParquetError>,
 ) -> Result<u64, StoreError> {
     let part = part_of(target);
     let fail = |source| StoreError::file(doing, target, source);
     let steps = || {
-        let empty = disk.create(&part).map_err(fail)?;
-        let mut whole = write(empty).map_err(|source| StoreError::waveform(doing, target, source))?;
-        whole.sync().map_err(fail)?;
-        drop(whole);
+        let mut output = disk.create(&part).map_err(fail)?;
+        write(output.as_mut()).map_err(|source| StoreError::waveform(doing, target, source))?;
+        output.sync().map_err(fail)?;
+        drop(output);
         let bytes = fs::metadata(&part).map_err(fail)?.len();
         disk.rename(&part, target).map_err(fail)?;
         Ok(bytes)

@@ -4,7 +4,7 @@ use evenpair_api::{Event, EventKind, Run};
 use rusqlite::{Connection, Row, named_params};
 use uuid::Uuid;
 
-use super::convert::{all, change, from_json, from_integer, integer, json, number, owned_by, unless_there};
+use super::convert::{all, change, from_integer, from_json, integer, json, number, owned_by, unless_there};
 use super::error::{Fault, StoreError};
 use super::rows::read_capture;
 use super::runs::write_run;
@@ -47,7 +47,8 @@ impl Store {
             .reader
             .ask("read a run's events", move |connection| {
                 let transaction = connection.transaction()?;
-                let sql = "select * from events where run = :run and generation > :after order by generation limit :limit";
+                let sql =
+                    "select * from events where run = :run and generation > :after order by generation limit :limit";
                 let params = named_params! {
                     ":run": run.to_string(), ":after": integer(after), ":limit": limit.min(LARGEST_PAGE),
                 };

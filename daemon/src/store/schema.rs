@@ -24,7 +24,8 @@ pub(super) fn upgrade(connection: &mut Connection, path: &Path, steps: &[&str]) 
     let failed = |source| StoreError::database("bring the schema up to date", path, source);
     let found: i64 = connection.query_row("pragma user_version", [], |row| row.get(0)).map_err(failed)?;
     let application: i64 = connection.query_row("pragma application_id", [], |row| row.get(0)).map_err(failed)?;
-    let objects: i64 = connection.query_row("select count(*) from sqlite_schema", [], |row| row.get(0)).map_err(failed)?;
+    let objects: i64 =
+        connection.query_row("select count(*) from sqlite_schema", [], |row| row.get(0)).map_err(failed)?;
     let untouched = application == 0 && found == 0 && objects == 0;
     if application != APPLICATION && !untouched {
         return Err(StoreError::Foreign { path: path.to_owned() });

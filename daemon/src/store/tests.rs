@@ -13,6 +13,7 @@ use evenpair_api::{
     StageReport, UncertaintyTerm,
 };
 use evenpair_core::analysis::{Record, Samples};
+use rusqlite::types::Value;
 use tempfile::TempDir;
 use uuid::Uuid;
 
@@ -78,10 +79,7 @@ pub(super) fn a_correction(pair: &str, second: i64) -> Correction {
             negative: leg(2, 20.0),
             skew_reference: "square".to_owned(),
             gain_reference: "node".to_owned(),
-            carried: Some(Carried {
-                from_span: Quantity::exact(8.0, "V"),
-                added: Quantity::exact(20e-12, "s"),
-            }),
+            carried: Some(Carried { from_span: Quantity::exact(8.0, "V"), added: Quantity::exact(20e-12, "s") }),
         },
         acquisitions: 12,
         warnings: vec!["little dither".to_owned()],
@@ -185,12 +183,7 @@ impl FaultyDisk {
     }
 }
 
-fn step(
-    steps: &AtomicUsize,
-    fail_at: usize,
-    name: &'static str,
-    names: &Mutex<Vec<&'static str>>,
-) -> io::Result<()> {
+fn step(steps: &AtomicUsize, fail_at: usize, name: &'static str, names: &Mutex<Vec<&'static str>>) -> io::Result<()> {
     if steps.fetch_add(1, Ordering::SeqCst) >= fail_at {
         return Err(io::ErrorKind::StorageFull.into());
     }
@@ -297,13 +290,10 @@ async fn the_writer_is_set_up_to_survive_a_loss_of_power() {
     let ask = |pragma: &'static str| {
         let store = store.clone();
         async move {
-            let job = move |c: &mut Connection| {
-                Ok(c.query_row(pragma, [], |row| row.get::<_, rusqlite::types::Value>(0))?)
-            };
+            let job = move |c: &mut Connection| Ok(c.query_row(pragma, [], |row| row.get::<_, Value>(0))?);
             store.inner.writer.ask("ask", job).await.unwrap()
         }
     };
-    use rusqlite::types::Value;
     assert_eq!(ask("pragma journal_mode").await, Value::Text("wal".to_owned()));
     // SQLite's documentation of the pragma: 2 is FULL.
     assert_eq!(ask("pragma synchronous").await, Value::Integer(2));

@@ -22,8 +22,10 @@ async fn a_stream_is_taken_up_where_it_broke_off() {
         EventKind::Captured { capture: Box::new(capture) },
         EventKind::Progressed { progress: run.progress.clone() },
     ];
-    let events: Vec<_> =
-        (1_u64..).zip(kinds).map(|(generation, kind)| Event { generation, at_s: generation as f64 * 0.5, kind }).collect();
+    let events: Vec<_> = (1_u64..)
+        .zip(kinds)
+        .map(|(generation, kind)| Event { generation, at_s: generation as f64 * 0.5, kind })
+        .collect();
     for event in &events[..3] {
         store.append_event(run.id, event).await.unwrap();
     }

@@ -15,7 +15,8 @@ fn look(connection: &Connection) -> (i64, Vec<(String, String)>) {
 
 #[test]
 fn an_upgraded_database_equals_a_fresh_one() {
-    let later = [STEPS, &["create table extra (id integer) strict;", "alter table extra add column more text;"]].concat();
+    let later =
+        [STEPS, &["create table extra (id integer) strict;", "alter table extra add column more text;"]].concat();
     let path = Path::new("memory");
     let mut fresh = Connection::open_in_memory().unwrap();
     upgrade(&mut fresh, path, &later).unwrap();

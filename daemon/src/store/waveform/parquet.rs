@@ -43,11 +43,11 @@ const LEGS: [&str; 2] = ["positive", "negative"];
 /// # Errors
 /// What the encoder or the output says.
 pub(in crate::store) fn write(
-    output: Box<dyn Output>,
+    output: &mut dyn Output,
     waveform: &Waveform,
     capture: &Capture,
     correction: Option<&Correction>,
-) -> Result<Box<dyn Output>, ParquetError> {
+) -> Result<(), ParquetError> {
     let legs = [&waveform.positive, &waveform.negative];
     let schema = Arc::new(Schema::new(vec![
         Field::new(LEGS[0], kind(legs[0]), false),
@@ -78,7 +78,7 @@ pub(in crate::store) fn write(
         writer.write(&RecordBatch::try_new(schema.clone(), columns)?)?;
     }
     writer.finish()?;
-    writer.into_inner()
+    Ok(())
 }
 
 /// Reads a waveform.

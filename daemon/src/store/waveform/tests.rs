@@ -2,7 +2,6 @@
 #![allow(clippy::unwrap_used, clippy::float_cmp)]
 
 use std::fs::File;
-use std::io::Write;
 
 use ::parquet::basic::Encoding;
 use ::parquet::file::reader::{FileReader, SerializedFileReader};
@@ -19,9 +18,8 @@ fn through_a_file(waveform: &Waveform, folder: &TempDir) -> (Waveform, std::path
     let correction = a_correction("gate", 0);
     let capture = a_capture(Uuid::now_v7(), 3, Some(&correction), waveform.points());
     let path = folder.path().join("w.parquet");
-    let mut output = parquet::write(RealDisk.create(&path).unwrap(), waveform, &capture, Some(&correction)).unwrap();
-    output.flush().unwrap();
-    drop(output);
+    let mut output = RealDisk.create(&path).unwrap();
+    parquet::write(output.as_mut(), waveform, &capture, Some(&correction)).unwrap();
     (parquet::read(&path).unwrap(), path)
 }
 

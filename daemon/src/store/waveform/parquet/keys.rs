@@ -20,11 +20,7 @@ const ABOUT: &str = "One acquisition of two legs. Volts at the probe tip = volts
 const FORMAT: &str = "1";
 
 /// Every key of a file. The store's own go over what the caller put under the same name.
-pub(super) fn of(
-    waveform: &Waveform,
-    capture: &Capture,
-    correction: Option<&Correction>,
-) -> BTreeMap<String, String> {
+pub(super) fn of(waveform: &Waveform, capture: &Capture, correction: Option<&Correction>) -> BTreeMap<String, String> {
     let mut keys = waveform.metadata.clone();
     let mut put = |key: &str, value: String| {
         keys.insert(key.to_owned(), value);
@@ -54,8 +50,7 @@ pub(super) fn of(
         put("correction.id", correction.id.to_string());
         put("correction.made_at", correction.made_at.to_string());
         put("correction.scope_skew_s", text(correction.scope_skew.value));
-        let parts =
-            [("skew_s", &correction.skew), ("gain", &correction.gain), ("offset_v", &correction.offset)];
+        let parts = [("skew_s", &correction.skew), ("gain", &correction.gain), ("offset_v", &correction.offset)];
         for (name, quantity) in parts {
             put(&format!("correction.{name}"), text(quantity.value));
             if let Some(u) = quantity.u {
