@@ -60,6 +60,15 @@ enum StartError {
     System { doing: &'static str, source: std::io::Error },
 }
 
+/// The line that tells where an instrument listens.
+#[derive(Debug, serde::Serialize)]
+struct Announcement<'a> {
+    name: &'a str,
+    kind: &'static str,
+    /// VISA resource string (VPP-4.3).
+    resource: String,
+}
+
 fn main() -> ExitCode {
     let arguments = Arguments::parse();
     let filter = EnvFilter::try_new(&arguments.log).unwrap_or_else(|_| EnvFilter::new("warn"));
@@ -108,12 +117,14 @@ async fn run(scenario: &Scenario, arguments: &Arguments) -> Result<(), StartErro
         };
         let listener = TcpListener::bind((arguments.host.as_str(), spec.port)).await.map_err(failed)?;
         let address = listener.local_addr().map_err(failed)?;
-        let line = serde_json::json!({
-            "name": spec.name,
-            "kind": kind_name(spec.kind),
-            "resource": format!("TCPIP::{}::{}::SOCKET", address.ip(), address.port()),
-        });
-        lines.push_str(&format!("{line}\n"));
+        let line = Announcement {
+            name: &spec.name,
+            kind: kind_name(spec.kind),
+            resource: format!("TCPIP::{}::{}::SOCKET", address.ip(), address.port()),
+        };
+        let line = serde_json::to_string(&line).map_err(|error| failed(error.into()))?;
+        lines.push_str(&line);
+        lines.push('\n');
         let device = Arc::new(Device::new(spec, &bench));
         tokio::spawn(server::serve(listener, device, spec.name.clone()));
     }

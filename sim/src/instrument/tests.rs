@@ -1,6 +1,7 @@
 //! Devices told literal program messages (IEEE 488.2 and SCPI-99 clauses from memory). No connection is involved.
 
 use super::*;
+use crate::scenario::Scenario;
 
 /// The demo's scenario: these tests use none of its physics.
 const SCENARIO: &str = include_str!("../../../configs/scenarios/greenhouse-fan.toml");
@@ -26,8 +27,6 @@ fn rack() -> Rack {
         switch: device(Kind::Switch, None),
     }
 }
-
-use crate::scenario::Scenario;
 
 /// What a device answers, as text without its NL.
 async fn ask(device: &Device, message: &str) -> String {

@@ -173,7 +173,7 @@ impl<M: Model> Bound<M> {
         call.args.finish()?;
         let value = asked.clamp(limits.min, limits.max);
         // The last bits of a product such as 100 x 1e-9 put nobody out of range.
-        if (asked - value).abs() > 1e-12 * asked.abs() {
+        if (asked - value).abs() > 1e-12 * value.abs() {
             call.core.report(Fault::OutOfRange);
         }
         let value = (number.snap)(value) / number.scale;
@@ -184,7 +184,7 @@ impl<M: Model> Bound<M> {
 
 impl<M: Model> Number<M> {
     fn limits(&self, index: usize) -> Result<Limits, Fault> {
-        self.limits.get(index).or(self.limits.last()).copied().ok_or(Fault::System)
+        self.limits.get(index).or_else(|| self.limits.last()).copied().ok_or(Fault::System)
     }
 }
 

@@ -85,10 +85,10 @@ impl Pattern {
     pub(crate) fn suffixes(&self, sent: &[Mnemonic]) -> Option<Result<Vec<u32>, Fault>> {
         let mut suffixes = Vec::new();
         let mut fault = None;
-        // Chosen node by node from the right end of the search, so the list is turned round at the end.
         if !walk(&self.nodes, sent, &mut suffixes, &mut fault) {
             return None;
         }
+        // `walk` pushes them on its way back, the last node first.
         suffixes.reverse();
         Some(fault.map_or(Ok(suffixes), Err))
     }
