@@ -16,13 +16,15 @@ use std::sync::{Arc, Mutex};
 use std::time::Duration;
 
 use evenpair_core::dialect::{Call, Dialect, Fields, Intent, bundled};
-use tokio::io::{AsyncBufReadExt, AsyncReadExt, AsyncWriteExt, BufReader, DuplexStream, duplex};
+use tokio::io::{AsyncBufReadExt, AsyncRead, AsyncReadExt, AsyncWrite, AsyncWriteExt, BufReader, DuplexStream, duplex};
 use tokio::sync::mpsc;
 use tokio::task::JoinHandle;
 use tokio::time::Instant;
 use tokio_util::sync::CancellationToken;
 use tokio_util::task::TaskTracker;
 
+use super::codec::CodecError;
+use super::error::Trouble;
 use super::*;
 
 /// The time that a reply may take in these tests.
@@ -119,11 +121,11 @@ impl Bench {
 }
 
 /// The instrument's end of a connection.
-struct Peer {
-    stream: BufReader<DuplexStream>,
+struct Peer<S = DuplexStream> {
+    stream: BufReader<S>,
 }
 
-impl Peer {
+impl<S: AsyncRead + AsyncWrite + Unpin> Peer<S> {
     /// The next line that arrives must be this one.
     async fn hear(&mut self, line: &str) {
         let mut heard = String::new();
@@ -169,6 +171,6 @@ fn output(state: bool) -> Call {
     Call::new(Intent::OutputSet).with("channel", 1_i64).with("state", state)
 }
 
-fn value(fields: &Fields) -> f64 {
-    fields.number("value").unwrap()
+fn value(fields: &Fields) -> i64 {
+    fields.whole("value").unwrap()
 }
