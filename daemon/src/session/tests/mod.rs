@@ -98,7 +98,7 @@ impl Bench {
 
     /// The next connection that the session makes.
     async fn peer(&mut self) -> Peer {
-        Peer { stream: BufReader::new(self.peers.recv().await.unwrap()) }
+        Peer { stream: BufReader::new(in_time(self.peers.recv()).await.unwrap()) }
     }
 
     /// The next connection, with everything that comes first on it, when nothing had been set.
@@ -129,7 +129,7 @@ impl<S: AsyncRead + AsyncWrite + Unpin> Peer<S> {
     /// The next line that arrives must be this one.
     async fn hear(&mut self, line: &str) {
         let mut heard = String::new();
-        self.stream.read_line(&mut heard).await.unwrap();
+        in_time(self.stream.read_line(&mut heard)).await.unwrap();
         assert_eq!(heard, format!("{line}\n"));
     }
 
@@ -156,9 +156,14 @@ impl<S: AsyncRead + AsyncWrite + Unpin> Peer<S> {
     /// The session must close the connection without having sent anything more.
     async fn closed(&mut self) {
         let mut rest = String::new();
-        self.stream.read_to_string(&mut rest).await.unwrap();
+        in_time(self.stream.read_to_string(&mut rest)).await.unwrap();
         assert_eq!(rest, "");
     }
+}
+
+/// A test that waits for what never comes fails instead of standing still: no session is patient for a minute.
+async fn in_time<F: Future>(awaited: F) -> F::Output {
+    tokio::time::timeout(Duration::from_secs(60), awaited).await.unwrap()
 }
 
 fn measure() -> Call {

@@ -17,6 +17,7 @@ async fn a_reply_one_millisecond_before_its_time_is_up_is_taken() {
 #[tokio::test(start_paused = true)]
 async fn a_missing_reply_is_an_error_when_its_time_is_up_and_not_a_millisecond_before() {
     let (bench, mut peer) = Bench::up().await;
+    let started = Instant::now();
     let call = bench.call(Call::new(Intent::AcquireAbort));
     peer.hear("ABORt").await;
     peer.hear("SYSTem:ERRor?").await;
@@ -25,6 +26,7 @@ async fn a_missing_reply_is_an_error_when_its_time_is_up_and_not_a_millisecond_b
     assert!(!call.is_finished());
     advance(MS).await;
     peer.closed().await;
+    assert_eq!(started.elapsed(), REPLY);
     let error = call.await.unwrap().unwrap_err();
     let (instrument, what) = ("supply".to_owned(), "`acquire.abort`".to_owned());
     let command = "SYSTem:ERRor?".to_owned();
