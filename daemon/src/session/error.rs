@@ -92,7 +92,7 @@ pub(crate) enum SessionError {
         /// What was to be done.
         what: String,
         /// Why.
-        source: DialectError,
+        source: Box<DialectError>,
     },
     /// The connection broke while the request was under way; it is not known whether it took effect.
     #[error(
@@ -107,7 +107,7 @@ pub(crate) enum SessionError {
         /// The command.
         command: String,
         /// What broke it.
-        reason: Trouble,
+        reason: Box<Trouble>,
     },
     /// What was started did not come to its end.
     #[error(
@@ -179,7 +179,7 @@ pub(crate) enum SessionError {
         /// What was being done.
         what: String,
         /// Why.
-        source: DialectError,
+        source: Box<DialectError>,
     },
     /// There is no connection.
     #[error(

@@ -103,7 +103,7 @@ impl Handle {
         let reply = self.ask(Work { caps, ..work }).await?;
         // The dialect has planned this, so a record without a reply is the dialect's mistake.
         reply.messages.into_iter().next_back().ok_or_else(|| {
-            let source = DialectError::Missing { name: "block".to_owned() };
+            let source = Box::new(DialectError::Missing { name: "block".to_owned() });
             SessionError::Dialect { instrument: self.shared.instrument.clone(), what, source }
         })
     }
@@ -133,7 +133,11 @@ impl Handle {
                 let what = work.what.clone();
                 let done = self.ask(work).await?.fields.flag("done");
                 let instrument = || self.shared.instrument.clone();
-                if done.map_err(|source| SessionError::Unreadable { instrument: instrument(), what, source })? {
+                if done.map_err(|error| SessionError::Unreadable {
+                    instrument: instrument(),
+                    what,
+                    source: Box::new(error),
+                })? {
                     return Ok(());
                 }
                 let next = Instant::now() + Duration::try_from_secs_f64(every_s).unwrap_or_default().max(LEAST_POLL);
@@ -154,8 +158,9 @@ impl Handle {
         let what = format!("`{}`", shown(text.as_bytes()));
         let exchange = match self.shared.dialect.raw(text, expects_reply) {
             Ok(exchange) => exchange,
-            Err(source) => {
-                return Err(SessionError::Dialect { instrument: self.shared.instrument.clone(), what, source });
+            Err(error) => {
+                let (instrument, source) = (self.shared.instrument.clone(), Box::new(error));
+                return Err(SessionError::Dialect { instrument, what, source });
             }
         };
         let work = Work {
@@ -175,8 +180,9 @@ impl Handle {
         let what = format!("`{}`", call.intent);
         let exchanges = match self.shared.dialect.plan(&call) {
             Ok(exchanges) => exchanges,
-            Err(source) => {
-                return Err(SessionError::Dialect { instrument: self.shared.instrument.clone(), what, source });
+            Err(error) => {
+                let (instrument, source) = (self.shared.instrument.clone(), Box::new(error));
+                return Err(SessionError::Dialect { instrument, what, source });
             }
         };
         Ok(Work {

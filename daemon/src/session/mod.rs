@@ -21,12 +21,11 @@ mod memory;
 mod spec;
 mod task;
 
-pub(crate) use codec::CodecError;
-pub(crate) use connect::{Connect, Tcp};
-pub(crate) use error::{SessionError, Trouble};
+pub(crate) use error::SessionError;
 pub(crate) use handle::{Handle, LinkReport};
 pub(crate) use spec::{Caps, SessionSpec, Timing};
 
+use connect::{Connect, Tcp};
 use handle::Shared;
 use tokio::sync::{mpsc, watch};
 use tokio_util::sync::CancellationToken;

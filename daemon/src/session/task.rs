@@ -291,8 +291,8 @@ impl<C: Connect> Task<C> {
         let (instrument, what) = (self.spec.instrument.clone(), work.what.clone());
         match trouble {
             Trouble::Silent { command, after } => SessionError::TimedOut { instrument, what, command, after },
-            Trouble::Garbled(source) => SessionError::Unreadable { instrument, what, source },
-            reason => SessionError::Lost { instrument, what, command, reason },
+            Trouble::Garbled(source) => SessionError::Unreadable { instrument, what, source: Box::new(source) },
+            reason => SessionError::Lost { instrument, what, command, reason: Box::new(reason) },
         }
     }
 

@@ -13,11 +13,11 @@ async fn too_many_waiting_requests_are_turned_away() {
     let (instrument, what) = ("supply".to_owned(), "`measure.voltage`".to_owned());
     assert_eq!(error, SessionError::Busy { instrument, what, waiting: QUEUE });
     peer.say("0\n").await;
-    assert_eq!(value(&first.await.unwrap().unwrap()), 0.0);
+    assert_eq!(value(&first.await.unwrap().unwrap()), 0);
     for (call, volts) in waiting.into_iter().zip(1..) {
         peer.hear(MEASURE).await;
         peer.say(format!("{volts}\n")).await;
-        assert_eq!(value(&call.await.unwrap().unwrap()), f64::from(volts));
+        assert_eq!(value(&call.await.unwrap().unwrap()), volts);
     }
 }
 
@@ -64,6 +64,36 @@ async fn a_call_that_the_dialect_cannot_say_sends_nothing() {
     let error = bench.handle.call(call).await.unwrap_err();
     assert!(matches!(error, SessionError::Dialect { .. }), "{error}");
     drop(bench.handle);
+    peer.closed().await;
+}
+
+/// Real sockets, real time: waits on events only.
+#[tokio::test]
+async fn a_session_over_tcp_connects_asks_and_closes() {
+    let listener = tokio::net::TcpListener::bind("127.0.0.1:0").await.unwrap();
+    let spec = SessionSpec {
+        instrument: "supply".to_owned(),
+        host: "127.0.0.1".to_owned(),
+        port: listener.local_addr().unwrap().port(),
+        dialect: Arc::new(Dialect::read(bundled("scpi-99").unwrap()).unwrap()),
+        timing: Timing::default(),
+        caps: Caps::default(),
+    };
+    let tracker = TaskTracker::new();
+    let handle = spawn(spec, CancellationToken::new(), &tracker);
+    tracker.close();
+    let (stream, _) = listener.accept().await.unwrap();
+    let mut peer = Peer { stream: BufReader::new(stream) };
+    peer.greet().await;
+    handle.watch().wait_for(|report| report.up).await.unwrap();
+    assert_eq!((handle.instrument(), handle.dialect().name()), ("supply", "scpi-99"));
+    let asking = handle.clone();
+    let call = tokio::spawn(async move { asking.call(measure()).await });
+    peer.hear(MEASURE).await;
+    peer.say("48\n").await;
+    assert_eq!(value(&call.await.unwrap().unwrap()), 48);
+    drop(handle);
+    tracker.wait().await;
     peer.closed().await;
 }
 

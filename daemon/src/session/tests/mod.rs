@@ -16,13 +16,15 @@ use std::sync::{Arc, Mutex};
 use std::time::Duration;
 
 use evenpair_core::dialect::{Call, Dialect, Fields, Intent, bundled};
-use tokio::io::{AsyncBufReadExt, AsyncReadExt, AsyncWriteExt, BufReader, DuplexStream, duplex};
+use tokio::io::{AsyncBufReadExt, AsyncRead, AsyncReadExt, AsyncWrite, AsyncWriteExt, BufReader, DuplexStream, duplex};
 use tokio::sync::mpsc;
 use tokio::task::JoinHandle;
 use tokio::time::Instant;
 use tokio_util::sync::CancellationToken;
 use tokio_util::task::TaskTracker;
 
+use super::codec::CodecError;
+use super::error::Trouble;
 use super::*;
 
 /// The time that a reply may take in these tests.
@@ -96,7 +98,7 @@ impl Bench {
 
     /// The next connection that the session makes.
     async fn peer(&mut self) -> Peer {
-        Peer { stream: BufReader::new(self.peers.recv().await.unwrap()) }
+        Peer { stream: BufReader::new(in_time(self.peers.recv()).await.unwrap()) }
     }
 
     /// The next connection, with everything that comes first on it, when nothing had been set.
@@ -119,15 +121,15 @@ impl Bench {
 }
 
 /// The instrument's end of a connection.
-struct Peer {
-    stream: BufReader<DuplexStream>,
+struct Peer<S = DuplexStream> {
+    stream: BufReader<S>,
 }
 
-impl Peer {
+impl<S: AsyncRead + AsyncWrite + Unpin> Peer<S> {
     /// The next line that arrives must be this one.
     async fn hear(&mut self, line: &str) {
         let mut heard = String::new();
-        self.stream.read_line(&mut heard).await.unwrap();
+        in_time(self.stream.read_line(&mut heard)).await.unwrap();
         assert_eq!(heard, format!("{line}\n"));
     }
 
@@ -154,9 +156,14 @@ impl Peer {
     /// The session must close the connection without having sent anything more.
     async fn closed(&mut self) {
         let mut rest = String::new();
-        self.stream.read_to_string(&mut rest).await.unwrap();
+        in_time(self.stream.read_to_string(&mut rest)).await.unwrap();
         assert_eq!(rest, "");
     }
+}
+
+/// A test that waits for what never comes fails instead of standing still: no session is patient for a minute.
+async fn in_time<F: Future>(awaited: F) -> F::Output {
+    tokio::time::timeout(Duration::from_secs(60), awaited).await.unwrap()
 }
 
 fn measure() -> Call {
@@ -169,6 +176,6 @@ fn output(state: bool) -> Call {
     Call::new(Intent::OutputSet).with("channel", 1_i64).with("state", state)
 }
 
-fn value(fields: &Fields) -> f64 {
-    fields.number("value").unwrap()
+fn value(fields: &Fields) -> i64 {
+    fields.whole("value").unwrap()
 }
