@@ -41,7 +41,9 @@ pub(crate) enum StartError {
     Dialect { instrument: String, dialect: String, why: String },
     #[error("listening on {address}: {source}; is another daemon there? choose another address with --listen")]
     Listen { address: std::net::SocketAddr, source: std::io::Error },
-    #[error("{address} is not a loopback address; the daemon listens on loopback only, since whoever reaches it drives the bench")]
+    #[error(
+        "{address} is not a loopback address; the daemon listens on loopback only, since whoever reaches it drives the bench"
+    )]
     NotLoopback { address: std::net::SocketAddr },
     #[error("reading {}: {source}", path.display())]
     Read { path: PathBuf, source: std::io::Error },
@@ -53,6 +55,8 @@ pub(crate) enum StartError {
     Signals(std::io::Error),
     #[error(transparent)]
     Store(#[from] StoreError),
+    #[error("the data folder {} does not keep its promises; see above", path.display())]
+    Unsound { path: PathBuf },
 }
 
 /// Runs the daemon until it is told to end.
@@ -60,15 +64,16 @@ pub(crate) async fn serve(arguments: Arguments) -> Result<(), StartError> {
     if !arguments.listen.ip().is_loopback() {
         return Err(StartError::NotLoopback { address: arguments.listen });
     }
+    let Some(bench_file) = &arguments.bench else { return check(&arguments.data).await };
     let mut signals = Signals::new(arguments.exit_with_stdin).map_err(StartError::Signals)?;
-    let bench = read_bench(&arguments.bench)?;
+    let bench = read_bench(bench_file)?;
     let dialects = read_dialects(&bench)?;
-    let sequences = bench.sequences.as_ref().map(|folder| beside(&arguments.bench, folder));
-    let store = {
-        let data = arguments.data.clone();
-        let opened = tokio::task::spawn_blocking(move || Store::open(&data)).await;
-        opened.map_err(|error| StartError::Serve(std::io::Error::other(error)))??
-    };
+    let sequences = bench.sequences.as_ref().map(|folder| beside(bench_file, folder));
+    let store = open(&arguments.data).await?;
+    let swept = store.swept();
+    if swept.parts + swept.orphans > 0 {
+        tracing::warn!(parts = swept.parts, orphans = swept.orphans, "swept up what a crash left in the data folder");
+    }
     let listener = tokio::net::TcpListener::bind(arguments.listen)
         .await
         .map_err(|source| StartError::Listen { address: arguments.listen, source })?;
@@ -117,6 +122,29 @@ pub(crate) async fn serve(arguments: Arguments) -> Result<(), StartError> {
             std::process::exit(1)
         }
     }
+}
+
+/// Opens the data folder where it does not keep the runtime from its work.
+async fn open(data: &Path) -> Result<Store, StartError> {
+    let data = data.to_owned();
+    let opened = tokio::task::spawn_blocking(move || Store::open(&data)).await;
+    Ok(opened.map_err(|error| StartError::Serve(std::io::Error::other(error)))??)
+}
+
+/// Checks the data folder and says what was found.
+async fn check(data: &Path) -> Result<(), StartError> {
+    if !data.is_dir() {
+        let source = std::io::Error::new(std::io::ErrorKind::NotFound, "there is no such folder");
+        return Err(StartError::Read { path: data.to_owned(), source });
+    }
+    let store = open(data).await?;
+    let report = store.check().await?;
+    store.close().await?;
+    for broken in &report.broken {
+        eprintln!("{broken}");
+    }
+    println!("{} runs, {} captures: {} broken promise(s)", report.runs, report.captures, report.broken.len());
+    if report.broken.is_empty() { Ok(()) } else { Err(StartError::Unsound { path: data.to_owned() }) }
 }
 
 fn read_bench(path: &Path) -> Result<Bench, StartError> {
@@ -187,7 +215,11 @@ struct Signals {
 
 impl Signals {
     fn new(with_stdin: bool) -> std::io::Result<Self> {
-        Ok(Self { terminate: signal(SignalKind::terminate())?, interrupt: signal(SignalKind::interrupt())?, with_stdin })
+        Ok(Self {
+            terminate: signal(SignalKind::terminate())?,
+            interrupt: signal(SignalKind::interrupt())?,
+            with_stdin,
+        })
     }
 
     /// The first of them, in words.

@@ -12,11 +12,14 @@ use clap::{Parser, ValueEnum};
 #[command(name = "evenpaird", version)]
 pub(crate) struct Arguments {
     /// The bench file.
-    #[arg(long, value_name = "FILE")]
-    pub(crate) bench: PathBuf,
+    #[arg(long, value_name = "FILE", required_unless_present = "check")]
+    pub(crate) bench: Option<PathBuf>,
     /// The folder for everything that is measured; made if it is not there.
     #[arg(long, value_name = "DIR")]
     pub(crate) data: PathBuf,
+    /// Check the data folder instead of serving: whether everything that the store promises holds.
+    #[arg(long, conflicts_with = "bench")]
+    pub(crate) check: bool,
     /// The address to listen on; port 0 is any free one.
     #[arg(long, value_name = "ADDR", default_value = evenpair_api::DEFAULT_LISTEN)]
     pub(crate) listen: SocketAddr,

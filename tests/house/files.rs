@@ -11,7 +11,7 @@ const LONGEST_FILE: usize = 400;
 pub(crate) fn below(folder: &Path, ending: &str) -> Vec<PathBuf> {
     let mut found = Vec::new();
     for entry in std::fs::read_dir(folder).unwrap_or_else(|error| panic!("{}: {error}", folder.display())) {
-        let path = entry.unwrap().path();
+        let path = entry.expect("a folder's entry").path();
         let name = path.file_name().unwrap_or_default().to_string_lossy().into_owned();
         if path.is_dir() && name != "target" && !name.starts_with('.') {
             found.extend(below(&path, ending));
@@ -38,7 +38,7 @@ pub(crate) fn is_test(path: &Path) -> bool {
 fn sources() -> Vec<(String, String)> {
     let files = below(&project(), ".rs");
     assert!(files.len() > 50, "the walk over the project must find its sources");
-    files.iter().map(|path| (show(path), std::fs::read_to_string(path).unwrap())).collect()
+    files.iter().map(|path| (show(path), std::fs::read_to_string(path).expect("a readable file"))).collect()
 }
 
 #[test]
@@ -46,7 +46,7 @@ fn every_module_says_what_it_holds() {
     let silent: Vec<String> = below(&project(), ".rs")
         .into_iter()
         .filter(|path| path.file_name().is_some_and(|name| name != "tests.rs"))
-        .filter(|path| !std::fs::read_to_string(path).unwrap().starts_with("//!"))
+        .filter(|path| !std::fs::read_to_string(path).expect("a readable file").starts_with("//!"))
         .map(|path| show(&path))
         .collect();
     assert!(silent.is_empty(), "begin these with `//!` and what they hold: {silent:#?}");
@@ -68,7 +68,7 @@ fn no_test_sleeps() {
         .into_iter()
         .filter(|path| is_test(path) && !path.ends_with("house/files.rs"))
         .filter(|path| {
-            let text = std::fs::read_to_string(path).unwrap();
+            let text = std::fs::read_to_string(path).expect("a readable file");
             text.contains("thread::sleep") || text.contains("time::sleep(") || text.contains(" sleep(")
         })
         .map(|path| show(&path))
@@ -111,7 +111,7 @@ fn the_top_level_is_as_designed() {
         "tests",
     ];
     for entry in std::fs::read_dir(project()).unwrap() {
-        let name = entry.unwrap().file_name().to_string_lossy().into_owned();
+        let name = entry.expect("a folder's entry").file_name().to_string_lossy().into_owned();
         assert!(name.starts_with('.') || known.contains(&name.as_str()), "`{name}` has no place at the top level");
     }
 }

@@ -13,7 +13,7 @@ fn must_not_know(folder: &str, words: &[&str]) {
     assert!(!files.is_empty(), "{folder} has no sources");
     let mut found = Vec::new();
     for path in files.iter().filter(|path| !is_test(path)) {
-        let text = std::fs::read_to_string(path).unwrap();
+        let text = std::fs::read_to_string(path).expect("a readable file");
         let code = text.split("#[cfg(test)]").next().unwrap_or(&text);
         for line in code.lines().filter(|line| !line.trim_start().starts_with("//")) {
             found.extend(
@@ -25,8 +25,8 @@ fn must_not_know(folder: &str, words: &[&str]) {
 }
 
 fn dependencies(package: &str) -> Vec<String> {
-    let text = std::fs::read_to_string(project().join(package).join("Cargo.toml")).unwrap();
-    let manifest: toml::Table = toml::from_str(&text).unwrap();
+    let text = std::fs::read_to_string(project().join(package).join("Cargo.toml")).expect("a manifest");
+    let manifest: toml::Table = toml::from_str(&text).expect("a manifest is TOML");
     let table = manifest.get("dependencies").and_then(toml::Value::as_table).cloned().unwrap_or_default();
     table.keys().cloned().collect()
 }
@@ -108,9 +108,9 @@ fn the_client_is_light() {
 #[test]
 fn unsafe_code_is_forbidden_everywhere() {
     for package in ["daemon", "daemon/core", "daemon/api", "client", "sim", "tests"] {
-        let text = std::fs::read_to_string(project().join(package).join("Cargo.toml")).unwrap();
+        let text = std::fs::read_to_string(project().join(package).join("Cargo.toml")).expect("a manifest");
         assert!(text.contains("[lints]\nworkspace = true"), "{package} does not take the workspace's lints");
     }
-    let text = std::fs::read_to_string(Path::new(&project()).join("Cargo.toml")).unwrap();
+    let text = std::fs::read_to_string(Path::new(&project()).join("Cargo.toml")).expect("a manifest");
     assert!(text.contains("unsafe_code = \"forbid\""));
 }

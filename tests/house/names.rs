@@ -29,7 +29,7 @@ fn keys(value: &toml::Value, chosen: &[&str], found: &mut BTreeSet<String>) {
 fn every_configuration_key_is_documented() {
     let documents: String = below(&project().join("configs"), "README.md")
         .iter()
-        .map(|path| std::fs::read_to_string(path).unwrap())
+        .map(|path| std::fs::read_to_string(path).expect("a readable file"))
         .collect();
     let files = below(&project().join("configs"), ".toml");
     assert!(files.len() >= 4, "benches, sequences, scenarios and dialects have an example each");

@@ -2,6 +2,9 @@
 
 #![allow(clippy::unwrap_used)]
 
+use jiff::SignedDuration;
+
+use super::hand::HandClock;
 use super::*;
 
 fn evening() -> Timestamp {

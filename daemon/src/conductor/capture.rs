@@ -122,7 +122,8 @@ fn work(
         }
     }
     if scale_spec.is_none() {
-        warnings.push("the bench file states no `scale_spec`: the scope's own gain error is in no uncertainty".to_owned());
+        warnings
+            .push("the bench file states no `scale_spec`: the scope's own gain error is in no uncertainty".to_owned());
     }
     let corrected = apply::correct(&positive, &negative, correction)?;
     let plain_v = apply::plain(&positive, &negative)?;
@@ -160,7 +161,10 @@ fn measured_noise(positive: &Record, negative: &Record, gain: f64, warnings: &mu
     if let Ok(Some(noise)) = noise::out_of_band(&positive.volts(), &negative.volts(), gain) {
         return (noise.p_v, noise.n_v);
     }
-    warnings.push("noise could not be measured: the record's whole spectrum holds signal; the converter's own is taken".to_owned());
+    warnings.push(
+        "noise could not be measured: the record's whole spectrum holds signal; the converter's own is taken"
+            .to_owned(),
+    );
     let own = |record: &Record| record.step_v / (12.0 * f64::from(record.averages.max(1))).sqrt();
     (own(positive), own(negative))
 }

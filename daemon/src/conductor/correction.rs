@@ -149,7 +149,11 @@ pub(crate) fn judge_by_bench(workshop: &Workshop, correction: &mut api::Correcti
         let same_request = span_v <= made.span.value * (1.0 + 1e-6) && span_v > made.span.value * 0.35;
         LegSettings {
             span_v: if same_request { made.span.value } else { span_v },
-            offset_v: if (offset_v - made.offset.value).abs() < 0.01 * made.span.value { made.offset.value } else { offset_v },
+            offset_v: if (offset_v - made.offset.value).abs() < 0.01 * made.span.value {
+                made.offset.value
+            } else {
+                offset_v
+            },
             coupling: pair.coupling.name().to_owned(),
             delay_s: 0.0,
         }

@@ -168,7 +168,8 @@ async fn acquire_until_enough(
             return Err(Trouble::Stopped);
         }
         let (positive, negative) = scope.acquire(&acquisition, stop).await?;
-        let estimate = compute("estimating skew and gain", move || estimate_records(&positive, &negative, &known)).await?;
+        let estimate =
+            compute("estimating skew and gain", move || estimate_records(&positive, &negative, &known)).await?;
         match estimate {
             Ok(estimate) => repeats.push(estimate),
             // The gain reference has to be seen on the measuring range, which is not ours to widen.
@@ -180,7 +181,11 @@ async fn acquire_until_enough(
                 continue;
             }
             Err(source) => {
-                return Err(Trouble::Estimate { pair: scope.pair.name.clone(), reference: reference.name.clone(), source });
+                return Err(Trouble::Estimate {
+                    pair: scope.pair.name.clone(),
+                    reference: reference.name.clone(),
+                    source,
+                });
             }
         }
         let Some(combined) = combine(&repeats) else { continue };

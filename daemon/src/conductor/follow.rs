@@ -14,12 +14,7 @@ const BATCH: u32 = 32;
 ///
 /// The store is the only source, so a reader that was away, one that is slow, and one that comes after a restart all see
 /// the same events in the same order.
-pub(crate) fn follow(
-    store: Store,
-    run: Uuid,
-    after: u64,
-    live: Option<watch::Receiver<u64>>,
-) -> ReceiverStream<Event> {
+pub(crate) fn follow(store: Store, run: Uuid, after: u64, live: Option<watch::Receiver<u64>>) -> ReceiverStream<Event> {
     let (sender, receiver) = mpsc::channel(BATCH as usize);
     tokio::spawn(async move {
         tokio::select! {

@@ -72,7 +72,11 @@ impl LiveRun {
     }
 
     /// Changes the run and tells it. With no event given, the run's progress is told.
-    pub(crate) async fn change(&self, change: impl FnOnce(&mut Run), event: Option<EventKind>) -> Result<(), StoreError> {
+    pub(crate) async fn change(
+        &self,
+        change: impl FnOnce(&mut Run),
+        event: Option<EventKind>,
+    ) -> Result<(), StoreError> {
         let (run, event) = {
             let mut face = self.face.lock().unwrap_or_else(PoisonError::into_inner);
             change(&mut face);

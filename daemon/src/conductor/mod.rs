@@ -108,7 +108,11 @@ impl Conductor {
 
     /// The bench as it is now.
     pub(crate) fn bench(&self) -> api::Bench {
-        plan::describe(&self.0.workshop, &self.0.rest.now(), *self.0.current.lock().unwrap_or_else(PoisonError::into_inner))
+        plan::describe(
+            &self.0.workshop,
+            &self.0.rest.now(),
+            *self.0.current.lock().unwrap_or_else(PoisonError::into_inner),
+        )
     }
 
     /// A person has looked at the bench: apply the safe state again.

@@ -22,7 +22,12 @@ use std::sync::Arc;
 const END_WITHIN: Duration = Duration::from_secs(10);
 
 /// Carries out a step. `stop` abandons it; what it had set on the scope is given back if that works in time.
-pub(crate) async fn perform(workshop: &Workshop, step: &Step, live: &Arc<LiveRun>, stop: &CancellationToken) -> Outcome {
+pub(crate) async fn perform(
+    workshop: &Workshop,
+    step: &Step,
+    live: &Arc<LiveRun>,
+    stop: &CancellationToken,
+) -> Outcome {
     let overdue = async {
         stop.cancelled().await;
         tokio::time::sleep(END_WITHIN).await;
@@ -38,46 +43,54 @@ pub(crate) async fn perform(workshop: &Workshop, step: &Step, live: &Arc<LiveRun
     }
 }
 
-async fn act(workshop: &Workshop, step: &Step, live: &Arc<LiveRun>, stop: &CancellationToken) -> Result<Outcome, Trouble> {
+async fn act(
+    workshop: &Workshop,
+    step: &Step,
+    live: &Arc<LiveRun>,
+    stop: &CancellationToken,
+) -> Result<Outcome, Trouble> {
     let tell = Tell::new(Arc::clone(live));
-    let done = |text: Option<String>| Ok(Outcome::Done { text });
     match &step.action {
         Action::Ask { instrument, command } => {
             let reply = workshop.instruments.handle(instrument)?.exchange_raw(command, true).await?;
-            done(reply.map(|reply| match reply {
-                Message::Line(line) => line,
-                Message::Block(bytes) => format!("a block of {} bytes", bytes.len()),
-            }))
+            Ok(Outcome::Done {
+                text: reply.map(|reply| match reply {
+                    Message::Line(line) => line,
+                    Message::Block(bytes) => format!("a block of {} bytes", bytes.len()),
+                }),
+            })
         }
         Action::Capture(plan) => act_capture(workshop, step, plan, live, &tell, stop).await,
         Action::Deskew(plan) => {
             let correction = act_deskew(workshop, step, plan, &tell, stop).await?;
-            done(Some(in_words(&correction)))
+            Ok(Outcome::Done { text: Some(in_words(&correction)) })
         }
         Action::Prepare => {
             workshop.instruments.perform_all(&workshop.bench.prepare).await?;
-            done(None)
+            Ok(Outcome::Done { text: None })
         }
         Action::Route { route } => {
             workshop.route(route).await?;
-            done(None)
+            Ok(Outcome::Done { text: None })
         }
         Action::Send { instrument, command } => {
             workshop.instruments.handle(instrument)?.exchange_raw(command, false).await?;
-            done(None)
+            Ok(Outcome::Done { text: None })
         }
         Action::Set { setting, value } => {
             workshop.set(setting, *value).await?;
-            done(None)
+            Ok(Outcome::Done { text: None })
         }
         Action::Verify(plan) => {
-            let Some((pair, reference)) = workshop.bench.pair(&plan.pair).zip(workshop.bench.reference(&plan.reference)) else {
+            let Some((pair, reference)) =
+                workshop.bench.pair(&plan.pair).zip(workshop.bench.reference(&plan.reference))
+            else {
                 return Err(Trouble::NoCorrection { pair: plan.pair.clone() });
             };
             let correction = verify::verify(workshop, pair, reference, &step.conditions, &tell, stop).await?;
-            done(Some(rejection_in_words(&correction)))
+            Ok(Outcome::Done { text: Some(rejection_in_words(&correction)) })
         }
-        Action::Wait => done(None),
+        Action::Wait => Ok(Outcome::Done { text: None }),
     }
 }
 
@@ -94,7 +107,8 @@ async fn act_deskew(
     let Some((pair, (skew_reference, gain_reference))) = bench.pair(&plan.pair).zip(references) else {
         return Err(Trouble::NoCorrection { pair: plan.pair.clone() });
     };
-    deskew::deskew(workshop, pair, &Wish { plan, skew_reference, gain_reference, set: &step.conditions }, tell, stop).await
+    deskew::deskew(workshop, pair, &Wish { plan, skew_reference, gain_reference, set: &step.conditions }, tell, stop)
+        .await
 }
 
 async fn act_capture(
@@ -142,7 +156,12 @@ async fn act_capture(
 
 fn in_words(correction: &api::Correction) -> String {
     let seconds = |value| evenpair_core::units::show(value, Unit::Second, 4);
-    format!("skew {}, gain {:.5}; {}", seconds(correction.skew.value), correction.gain.value, rejection_in_words(correction))
+    format!(
+        "skew {}, gain {:.5}; {}",
+        seconds(correction.skew.value),
+        correction.gain.value,
+        rejection_in_words(correction)
+    )
 }
 
 /// The rejection at the frequency nearest to 1 MHz.

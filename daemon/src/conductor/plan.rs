@@ -133,7 +133,11 @@ pub(super) async fn sequences(bench: &Bench, folder: Option<&Path>) -> api::Sequ
                     Refusal::SequenceMistakes { mistakes } => mistakes,
                     other => vec![MistakeReport { line: 1, column: 1, what: other.to_string(), help: String::new() }],
                 };
-                api::SequenceInfo { title: name.clone(), name, check: api::CheckReport { steps: 0, captures: 0, mistakes } }
+                api::SequenceInfo {
+                    title: name.clone(),
+                    name,
+                    check: api::CheckReport { steps: 0, captures: 0, mistakes },
+                }
             }
         });
     }

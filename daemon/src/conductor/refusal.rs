@@ -37,6 +37,8 @@ pub(crate) enum Refusal {
     #[error("there is no sequence `{name}`; there are: {}", known.join(", "))]
     UnknownSequence { name: String, known: Vec<String> },
     /// The safe state is not known to have worked.
-    #[error("the bench is unsettled: {why}; look at the bench, mend it, then bring it to rest (`evenpair settle`, POST /api/v1/bench/settle)")]
+    #[error(
+        "the bench is unsettled: {why}; look at the bench, mend it, then bring it to rest (`evenpair settle`, POST /api/v1/bench/settle)"
+    )]
     Unsettled { why: String },
 }

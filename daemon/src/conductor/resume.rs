@@ -31,8 +31,11 @@ async fn end_one(workshop: &Workshop, rest: &RestKeeper, open: Run) -> Result<()
     let live = Arc::new(LiveRun::again(open, workshop.store.clone()));
     // A deskew by itself has no text; and a bench file that was changed meanwhile may no longer take the sequence. Then
     // there is no `always` part to carry out, and only the safe state is left.
-    let sequence = plan::read(&workshop.bench, &source)
-        .unwrap_or_else(|_| Sequence { title: String::new(), steps: Vec::new(), always: Vec::new() });
+    let sequence = plan::read(&workshop.bench, &source).unwrap_or_else(|_| Sequence {
+        title: String::new(),
+        steps: Vec::new(),
+        always: Vec::new(),
+    });
     match entries {
         Ok(entries) if !sequence.steps.is_empty() => {
             let machine = Machine::replay(sequence.plan(), &entries);

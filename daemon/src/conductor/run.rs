@@ -139,7 +139,8 @@ impl<'r> Book<'r> {
 
     async fn started(&self, place: Place, at_s: f64) -> Result<(), StoreError> {
         let Some((number, step)) = self.step(place) else { return Ok(()) };
-        let stage = StageReport { step: number, text: step.text.clone(), started_s: at_s, ended_s: None, outcome: None };
+        let stage =
+            StageReport { step: number, text: step.text.clone(), started_s: at_s, ended_s: None, outcome: None };
         self.workshop.store.put_stage(self.live.id(), &stage).await?;
         let begin = |run: &mut evenpair_api::Run| {
             run.progress.doing.clone_from(&step.text);

@@ -80,7 +80,10 @@ impl Scope<'_> {
 
     /// Asks by `get` and makes of the answer the call `set` that brings it about again.
     async fn copy(&self, get: Intent, set: Intent, channel: Option<i64>) -> Result<Call, Trouble> {
-        let with_channel = |call: Call| channel.map_or(call.clone(), |channel| call.with("channel", channel));
+        let with_channel = |call: Call| match channel {
+            Some(channel) => call.with("channel", channel),
+            None => call,
+        };
         let fields = self.handle.call(with_channel(Call::new(get))).await?;
         let mut call = with_channel(Call::new(set));
         for (name, value) in fields.iter() {
@@ -100,7 +103,9 @@ impl Scope<'_> {
                 .with("span_v", acquisition.span_v / attenuation)
                 .with("offset_v", acquisition.offset_v / attenuation);
             self.handle.call(vertical).await?;
-            self.handle.call(Call::new(Intent::CouplingSet).with("channel", channel).with("coupling", coupling)).await?;
+            self.handle
+                .call(Call::new(Intent::CouplingSet).with("channel", channel).with("coupling", coupling))
+                .await?;
         }
         let timebase = Call::new(Intent::TimebaseSet)
             .with("interval_s", acquisition.interval_s)
@@ -256,6 +261,6 @@ impl Scope<'_> {
     }
 
     fn unreadable(&self, source: evenpair_core::dialect::DialectError) -> Trouble {
-        Trouble::Dialect { instrument: self.pair.scope.clone(), source }
+        Trouble::Dialect { instrument: self.pair.scope.clone(), source: Box::new(source) }
     }
 }

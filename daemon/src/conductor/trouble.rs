@@ -24,7 +24,7 @@ pub(crate) enum Trouble {
     CorrectionVoid { pair: String, reasons: Vec<String> },
     /// The scope said something that the dialect cannot read.
     #[error("reading what `{instrument}` answered: {source}")]
-    Dialect { instrument: String, source: DialectError },
+    Dialect { instrument: String, source: Box<DialectError> },
     /// The legs show no common signal.
     #[error("deskewing the pair `{pair}` on the reference `{reference}`: {source}")]
     Estimate { pair: String, reference: String, source: SkewError },

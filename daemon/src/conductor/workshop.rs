@@ -45,7 +45,11 @@ impl Workshop {
 
     /// Brings a reference to both tips and starts it. The scope has to be prepared before: the reference's levels may be
     /// more than the range that it is on now can bear.
-    pub(crate) async fn start_reference(&self, reference: &ReferenceSpec, stop: &CancellationToken) -> Result<(), Trouble> {
+    pub(crate) async fn start_reference(
+        &self,
+        reference: &ReferenceSpec,
+        stop: &CancellationToken,
+    ) -> Result<(), Trouble> {
         if let Some(route) = &reference.route {
             self.route(route).await?;
         }
@@ -78,7 +82,8 @@ impl Workshop {
 
     /// Who the scope of a pair says it is.
     pub(crate) fn scope_identity(&self, pair: &PairSpec) -> String {
-        let identity = self.instruments.handle(&pair.scope).ok().and_then(|handle| handle.watch().borrow().identity.clone());
+        let identity =
+            self.instruments.handle(&pair.scope).ok().and_then(|handle| handle.watch().borrow().identity.clone());
         identity.unwrap_or_default()
     }
 }

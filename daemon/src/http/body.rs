@@ -28,7 +28,7 @@ impl<S: Send + Sync, T: DeserializeOwned> FromRequest<S> for Body<T> {
             return parse(b"{}");
         }
         // A form or a plain text is what a foreign page could send without asking first; JSON it cannot.
-        if !kind.as_deref().is_some_and(|kind| kind.split(';').next().unwrap_or(kind).trim() == "application/json") {
+        if kind.as_deref().is_none_or(|kind| kind.split(';').next().unwrap_or(kind).trim() != "application/json") {
             let found = kind.unwrap_or_else(|| "none".to_owned());
             return Err(Fault::new(
                 ProblemCode::UnsupportedMediaType,

@@ -1,5 +1,7 @@
 //! `/runs/{id}/captures`: what a run measured, as figures and as waveforms.
 
+#![expect(unused_qualifications, reason = "utoipa's macro writes the path of the query's type out")]
+
 use axum::Json;
 use axum::body::Body;
 use axum::extract::{Path, Query, State};
@@ -67,19 +69,23 @@ async fn waveform(
     Path((id, n)): Path<(String, String)>,
     headers: HeaderMap,
 ) -> Result<Response, Fault> {
-    let number: u32 = n
-        .parse()
-        .map_err(|_| Fault::new(ProblemCode::UnknownCapture, format!("`{n}` is not a capture's number; they count from 1")))?;
+    let number: u32 = n.parse().map_err(|_| {
+        Fault::new(ProblemCode::UnknownCapture, format!("`{n}` is not a capture's number; they count from 1"))
+    })?;
     let accept = headers.get(header::ACCEPT).and_then(|accept| accept.to_str().ok()).unwrap_or("*/*");
     match choose(accept) {
         Some(PARQUET) => {
             let path = desk.conductor.waveform_file(&id, number).await?;
             let name = format!("attachment; filename=\"{id}-{number}.parquet\"");
             let file = tokio::fs::File::open(&path).await.map_err(|error| {
-                Fault::new(ProblemCode::StoreFailed, format!("opening the capture's waveform {}: {error}", path.display()))
+                Fault::new(
+                    ProblemCode::StoreFailed,
+                    format!("opening the capture's waveform {}: {error}", path.display()),
+                )
             })?;
             let body = Body::from_stream(ReaderStream::new(file));
-            Ok(([(header::CONTENT_TYPE, PARQUET.to_owned()), (header::CONTENT_DISPOSITION, name)], body).into_response())
+            Ok(([(header::CONTENT_TYPE, PARQUET.to_owned()), (header::CONTENT_DISPOSITION, name)], body)
+                .into_response())
         }
         Some(_) => {
             let text = desk.conductor.waveform_csv(&id, number).await?;

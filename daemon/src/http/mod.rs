@@ -37,9 +37,8 @@ pub(crate) struct Desk {
 
 /// The whole API, ready to serve.
 pub(crate) fn router(conductor: Conductor, shutdown: CancellationToken) -> Router {
-    let (router, description) = OpenApiRouter::with_openapi(describe::head())
-        .nest(evenpair_api::PREFIX, resources())
-        .split_for_parts();
+    let (router, description) =
+        OpenApiRouter::with_openapi(describe::head()).nest(evenpair_api::PREFIX, resources()).split_for_parts();
     router
         .merge(describe::route(description))
         .fallback(async || Fault::new(ProblemCode::UnknownPath, "no resource has this path; see /api/v1/openapi.json"))

@@ -12,7 +12,11 @@ use super::body::Body;
 use super::problem::Fault;
 
 pub(super) fn routes() -> OpenApiRouter<Desk> {
-    OpenApiRouter::new().routes(routes!(pairs)).routes(routes!(correction)).routes(routes!(deskew)).routes(routes!(verify))
+    OpenApiRouter::new()
+        .routes(routes!(pairs))
+        .routes(routes!(correction))
+        .routes(routes!(deskew))
+        .routes(routes!(verify))
 }
 
 /// Every pair of the bench.

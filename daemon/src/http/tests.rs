@@ -8,7 +8,8 @@ use super::*;
 
 #[test]
 fn the_description_names_every_route() {
-    let (_, description) = OpenApiRouter::with_openapi(describe::head()).nest(evenpair_api::PREFIX, resources()).split_for_parts();
+    let (_, description) =
+        OpenApiRouter::with_openapi(describe::head()).nest(evenpair_api::PREFIX, resources()).split_for_parts();
     let paths: BTreeSet<&str> = description.paths.paths.keys().map(String::as_str).collect();
     for path in [
         "/bench",

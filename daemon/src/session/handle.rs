@@ -56,6 +56,7 @@ impl Handle {
 
     /// The instrument's name in the bench file.
     #[must_use]
+    #[cfg(test)]
     pub(crate) fn instrument(&self) -> &str {
         &self.shared.instrument
     }

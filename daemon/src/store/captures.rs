@@ -74,6 +74,7 @@ impl Store {
     ///
     /// # Errors
     /// [`StoreError::Damaged`] when a row cannot be understood, or what the database says.
+    #[cfg(test)]
     pub(crate) async fn capture(&self, run: Uuid, number: u32) -> Result<Option<Capture>, StoreError> {
         self.inner
             .reader

@@ -4,12 +4,12 @@ use evenpair_api::{Carried, Correction, CorrectionConditions, LegConditions, Rej
 use rusqlite::{Connection, Row, named_params, params};
 use uuid::Uuid;
 
+use super::Store;
 use super::convert::{
     all, change, first, from_id, from_json, from_time, from_word, json, number, numbers, quantity, time, unless_there,
     word,
 };
 use super::error::{Fault, StoreError};
-use super::Store;
 
 impl Store {
     /// Stores a new correction.
@@ -39,6 +39,7 @@ impl Store {
     ///
     /// # Errors
     /// [`StoreError::Unknown`] when it is not stored, or what the database says.
+    #[cfg(test)]
     pub(crate) async fn update_correction(&self, correction: &Correction) -> Result<(), StoreError> {
         let correction = correction.clone();
         self.inner
@@ -82,6 +83,7 @@ impl Store {
     ///
     /// # Errors
     /// [`StoreError::Damaged`] when a row cannot be understood, or what the database says.
+    #[cfg(test)]
     pub(crate) async fn correction(&self, id: Uuid) -> Result<Option<Correction>, StoreError> {
         self.inner
             .reader

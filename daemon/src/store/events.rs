@@ -16,6 +16,7 @@ impl Store {
     /// # Errors
     /// [`StoreError::AlreadyThere`] when the run has an event of this generation, [`StoreError::Unknown`] when the run
     /// or the capture is not stored, or what the database says.
+    #[cfg(test)]
     pub(crate) async fn append_event(&self, run: Uuid, event: &Event) -> Result<(), StoreError> {
         let event = event.clone();
         self.inner.writer.ask("store an event", move |connection| insert_event(connection, run, &event)).await

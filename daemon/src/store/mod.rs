@@ -44,10 +44,9 @@ use desk::Desk;
 use disk::{Disk, RealDisk};
 use folder::Folder;
 
-pub(crate) use check::{Broken, CheckReport};
 pub(crate) use error::StoreError;
 pub(crate) use sweep::Swept;
-pub(crate) use waveform::{Waveform, csv};
+pub(crate) use waveform::Waveform;
 
 /// The most items that one call returns. A capture with its figures takes some 10 kB as JSON, so a page stays below
 /// 5 MB.

@@ -37,6 +37,7 @@ impl Store {
     ///
     /// # Errors
     /// [`StoreError::Unknown`] when the run is not stored, or what the database says.
+    #[cfg(test)]
     pub(crate) async fn update_run(&self, run: &Run) -> Result<(), StoreError> {
         let run = run.clone();
         self.inner.writer.ask("store a run's state", move |connection| write_run(connection, &run)).await

@@ -144,7 +144,7 @@ impl<'t> Table<'t> {
     }
 
     /// A table within this one.
-    pub fn table(&mut self, key: &str) -> Option<Table<'t>> {
+    pub fn table(&mut self, key: &str) -> Option<Self> {
         let path = self.path_of(key);
         let found = self.find(key)?;
         let DeValue::Table(entries) = found.get_ref() else {
@@ -159,7 +159,7 @@ impl<'t> Table<'t> {
     }
 
     /// An array of tables within this one, written `[[key]]` or `key = [{…}, {…}]`.
-    pub fn tables(&mut self, key: &str) -> Option<Vec<Table<'t>>> {
+    pub fn tables(&mut self, key: &str) -> Option<Vec<Self>> {
         let path = self.path_of(key);
         let found = self.find(key)?;
         let DeValue::Array(items) = found.get_ref() else {
@@ -187,7 +187,7 @@ impl<'t> Table<'t> {
     }
 
     /// Every entry of a table whose keys are names that the person chose, such as `[pair.gate]`.
-    pub fn named_tables(&mut self, key: &str) -> Vec<(Item<String>, Table<'t>)> {
+    pub fn named_tables(&mut self, key: &str) -> Vec<(Item<String>, Self)> {
         let Some(mut outer) = self.table(key) else { return Vec::new() };
         outer.keys().into_iter().filter_map(|name| outer.table(&name.value).map(|table| (name, table))).collect()
     }
