@@ -9,7 +9,7 @@ use std::sync::Arc;
 use std::time::Duration;
 
 use evenpair_core::bench::{self, Bench};
-use evenpair_core::dialect::{self, Dialect};
+use evenpair_core::dialect::Dialect;
 use evenpair_core::scpi::address::Resource;
 use tokio::io::AsyncReadExt;
 use tokio::signal::unix::{Signal, SignalKind, signal};
@@ -19,6 +19,7 @@ use tokio_util::task::TaskTracker;
 use crate::arguments::Arguments;
 use crate::clock::RealClock;
 use crate::conductor::{Conductor, Instruments, Refusal, Workshop};
+use crate::dialects::{self, DialectTrouble};
 use crate::http;
 use crate::mistakes;
 use crate::session::{self, Caps, SessionSpec, Timing};
@@ -37,8 +38,8 @@ pub(crate) enum StartError {
     Bench { path: PathBuf, count: usize },
     #[error(transparent)]
     Conductor(#[from] Refusal),
-    #[error("the instrument `{instrument}` speaks the dialect `{dialect}`, {why}")]
-    Dialect { instrument: String, dialect: String, why: String },
+    #[error(transparent)]
+    Dialect(#[from] DialectTrouble),
     #[error("listening on {address}: {source}; is another daemon there? choose another address with --listen")]
     Listen { address: std::net::SocketAddr, source: std::io::Error },
     #[error(
@@ -67,7 +68,7 @@ pub(crate) async fn serve(arguments: Arguments) -> Result<(), StartError> {
     let Some(bench_file) = &arguments.bench else { return check(&arguments.data).await };
     let mut signals = Signals::new(arguments.exit_with_stdin).map_err(StartError::Signals)?;
     let bench = read_bench(bench_file)?;
-    let dialects = read_dialects(&bench)?;
+    let dialects = dialects::read(&bench, bench_file)?;
     let sequences = bench.sequences.as_ref().map(|folder| beside(bench_file, folder));
     let store = open(&arguments.data).await?;
     let swept = store.swept();
@@ -158,26 +159,6 @@ fn read_bench(path: &Path) -> Result<Bench, StartError> {
 /// A path in the bench file is relative to the bench file.
 fn beside(bench: &Path, path: &str) -> PathBuf {
     bench.parent().unwrap_or_else(|| Path::new(".")).join(path)
-}
-
-/// Every dialect that the bench's instruments speak, each read once.
-fn read_dialects(bench: &Bench) -> Result<BTreeMap<String, Arc<Dialect>>, StartError> {
-    let mut dialects = BTreeMap::new();
-    for instrument in &bench.instruments {
-        if dialects.contains_key(&instrument.dialect) {
-            continue;
-        }
-        let wrong = |why: String| StartError::Dialect {
-            instrument: instrument.name.clone(),
-            dialect: instrument.dialect.clone(),
-            why,
-        };
-        let text = dialect::bundled(&instrument.dialect)
-            .ok_or_else(|| wrong("which does not come with this daemon; `scpi-99` does".to_owned()))?;
-        let read = Dialect::read(text).map_err(|found| wrong(format!("which has {} mistakes", found.len())))?;
-        dialects.insert(instrument.dialect.clone(), Arc::new(read));
-    }
-    Ok(dialects)
 }
 
 fn connect(

@@ -7,6 +7,7 @@ mod app;
 mod arguments;
 mod clock;
 mod conductor;
+mod dialects;
 mod http;
 mod mistakes;
 mod session;

@@ -31,6 +31,13 @@ fn every_configuration_key_is_documented() {
         .iter()
         .map(|path| std::fs::read_to_string(path).expect("a readable file"))
         .collect();
+    // Every word of what stands in backquotes.
+    let words: BTreeSet<&str> = documents
+        .split('`')
+        .skip(1)
+        .step_by(2)
+        .flat_map(|code| code.split(|c: char| !(c.is_alphanumeric() || c == '_')))
+        .collect();
     let files = below(&project().join("configs"), ".toml");
     assert!(files.len() >= 4, "benches, sequences, scenarios and dialects have an example each");
     let mut missing = Vec::new();
@@ -57,11 +64,10 @@ fn every_configuration_key_is_documented() {
         ];
         let mut found = BTreeSet::new();
         keys(&value, &chosen, &mut found);
+        // What is no word is a value that a person chose, such as a channel in a map.
+        found.retain(|key| key.starts_with(|c: char| c.is_ascii_lowercase()));
         missing.extend(
-            found
-                .iter()
-                .filter(|key| !documents.contains(&format!("`{key}`")))
-                .map(|key| format!("{}: {key}", show(&path))),
+            found.iter().filter(|key| !words.contains(key.as_str())).map(|key| format!("{}: {key}", show(&path))),
         );
     }
     assert!(missing.is_empty(), "describe these in configs/README.md or configs/dialects/README.md: {missing:#?}");

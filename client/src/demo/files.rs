@@ -118,6 +118,6 @@ mod tests {
             .collect();
         write_bench(&place, &addresses).unwrap();
         let bench = evenpair_core::bench::read(&std::fs::read_to_string(&place.bench).unwrap()).unwrap();
-        assert_eq!(bench.instrument("supply").unwrap().resource.to_string(), "TCPIP0::127.0.0.1::6002::SOCKET");
+        assert_eq!(bench.instrument("supply").unwrap().resource.to_string(), "TCPIP::127.0.0.1::6002::SOCKET");
     }
 }

@@ -14,11 +14,11 @@ pub(crate) fn bench(bench: &Bench) -> String {
     let mut parts = vec![format!("bench {}: {rest}", bench.name)];
     parts.extend(bench.cautions.iter().map(|caution| wrap(&format!("! {caution}"), 2)));
 
-    let mut instruments = table(&["instrument", "link", "address", "says it is"], &[]);
+    let mut instruments = table(&["instrument", "link", "address, and who it says it is"], &[]);
     for instrument in &bench.instruments {
         let link = if instrument.link == LinkState::Up { "up" } else { "down" };
         let says = instrument.identity.as_deref().or(instrument.trouble.as_deref()).unwrap_or("");
-        instruments.add_row([&instrument.name, link, &instrument.resource, says]);
+        instruments.add_row([&instrument.name, link, &format!("{}\n{says}", instrument.resource)]);
     }
     parts.push(lines(&instruments));
 
