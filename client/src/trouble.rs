@@ -28,7 +28,7 @@ pub(crate) enum Trouble {
     #[error("nobody reads the output")]
     NoReader,
     /// The daemon refused.
-    #[error("{}: {}", .0.title, .0.detail)]
+    #[error("{}", .0.detail)]
     Problem(Box<Problem>),
     /// No daemon answers.
     #[error(

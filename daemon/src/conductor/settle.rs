@@ -7,6 +7,7 @@ use evenpair_core::bench::{Bench, BenchCall};
 use futures_util::future::join_all;
 
 use super::instruments::Instruments;
+use crate::session::SessionError;
 
 /// The most that bringing one instrument to rest may take: a reconnection and a handful of commands.
 pub(crate) const WITHIN: Duration = Duration::from_secs(10);
@@ -25,8 +26,11 @@ pub(crate) async fn apply(bench: &Bench, instruments: &Instruments) -> Result<()
         let mut failures = Vec::new();
         let all = async {
             for call in calls {
-                if let Err(error) = instruments.perform(call).await {
-                    failures.push(error.to_string());
+                match instruments.perform(call).await {
+                    Ok(_) => {}
+                    // Nothing that follows can reach it either, and each would be waited for.
+                    Err(error @ SessionError::Unreachable { .. }) => return failures.push(error.to_string()),
+                    Err(error) => failures.push(error.to_string()),
                 }
             }
         };

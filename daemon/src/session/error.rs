@@ -183,16 +183,14 @@ pub(crate) enum SessionError {
     },
     /// There is no connection.
     #[error(
-        "{instrument}: {what} was not sent: there has been no connection to {place} for {waited:?}: {reason}; check \
-         that it is on, its address in the bench file, and that its port is open"
+        "{instrument}: {what} was not sent: {reason} (waited {waited:?}); check that it is on, its address in the \
+         bench file, and that its port is open"
     )]
     Unreachable {
         /// The instrument.
         instrument: String,
         /// What was to be done.
         what: String,
-        /// Host and port.
-        place: String,
         /// For how long was waited.
         waited: Duration,
         /// What stood in the way at the last attempt.

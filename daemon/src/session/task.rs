@@ -301,12 +301,11 @@ impl<C: Connect> Task<C> {
         SessionError::Unreachable {
             instrument: self.spec.instrument.clone(),
             what: work.what.clone(),
-            place: self.connector.place(),
             waited,
-            reason: self
-                .trouble
-                .as_ref()
-                .map_or_else(|| "the first attempt to connect is still under way".to_owned(), ToString::to_string),
+            reason: match &self.trouble {
+                Some(trouble) => trouble.to_string(),
+                None => format!("the first attempt to reach {} is still under way", self.connector.place()),
+            },
         }
     }
 }
