@@ -14,8 +14,8 @@ use crate::trouble::Trouble;
 /// The longest that a process may take to become ready.
 const READY_WITHIN: Duration = Duration::from_secs(20);
 
-/// The longest that a process may take to end by itself; the daemon brings the bench to rest in that time.
-const END_WITHIN: Duration = Duration::from_secs(15);
+/// The longest that a process may take to end by itself: more than the daemon gives itself to bring the bench to rest.
+const END_WITHIN: Duration = Duration::from_secs(35);
 
 /// A process of the demo. It ends when its standard input closes.
 pub(super) struct Child {
@@ -73,6 +73,9 @@ impl Child {
         let mut command = Command::new(&binary);
         arguments(&mut command);
         command.arg("--exit-with-stdin").stdin(Stdio::piped()).stdout(Stdio::piped()).stderr(log).kill_on_drop(true);
+        // Ctrl-C in a terminal goes to its whole process group. The simulated bench must not be gone before the daemon has
+        // brought it to rest, so both end when we say so.
+        command.process_group(0);
         let mut process =
             command.spawn().map_err(|source| Trouble::File { doing: "starting", path: binary.clone(), source })?;
         let stdout = process.stdout.take().ok_or_else(|| Trouble::Demo(format!("{name} has no standard output")))?;
