@@ -107,7 +107,20 @@ impl Conductor {
     }
 
     /// The bench as it is now.
-    pub(crate) fn bench(&self) -> api::Bench {
+    pub(crate) async fn bench(&self) -> Result<api::Bench, Refusal> {
+        let mut bench = self.bench_itself();
+        for pair in &mut bench.pairs {
+            pair.correction = match self.correction(&pair.name).await {
+                Ok(correction) => Some(correction.state),
+                Err(Refusal::NoCorrection { .. }) => None,
+                Err(refusal) => return Err(refusal),
+            };
+        }
+        Ok(bench)
+    }
+
+    /// The bench without the state of its corrections, which only the store knows.
+    pub(crate) fn bench_itself(&self) -> api::Bench {
         plan::describe(
             &self.0.workshop,
             &self.0.rest.now(),
@@ -117,13 +130,13 @@ impl Conductor {
 
     /// A person has looked at the bench: apply the safe state again.
     pub(crate) async fn settle(&self) -> Result<api::Bench, Refusal> {
-        self.admit_any().await?;
+        self.admit_any()?;
         let unsettled = |why| Refusal::Unsettled { why };
         let _permit = Arc::clone(&self.0.bench)
             .try_acquire_owned()
             .map_err(|_| unsettled("a run has the bench; stop it first".to_owned()))?;
         self.0.rest.settle(&self.0.workshop.bench, &self.0.workshop.instruments).await.map_err(unsettled)?;
-        Ok(self.bench())
+        self.bench().await
     }
 
     /// A pair's correction, judged by what a measurement would be set to now.
@@ -234,13 +247,13 @@ impl Conductor {
     }
 
     /// Whether anything may be started at all.
-    async fn admit_any(&self) -> Result<(), Refusal> {
+    fn admit_any(&self) -> Result<(), Refusal> {
         if self.0.closing.is_cancelled() { Err(Refusal::ShuttingDown) } else { Ok(()) }
     }
 
     /// Takes a checked sequence as a new run and lets it begin as soon as the bench is free.
     async fn accept(&self, kind: RunKind, sequence: Sequence, source: String) -> Result<Run, Refusal> {
-        self.admit_any().await?;
+        self.admit_any()?;
         if let RestState::Unsettled(why) = self.0.rest.now() {
             return Err(Refusal::Unsettled { why });
         }
@@ -297,7 +310,9 @@ async fn live_through(inner: Arc<Inner>, live: Arc<LiveRun>, sequence: Sequence)
         permit = Arc::clone(&inner.bench).acquire_owned() => permit.ok(),
     };
     carry(&inner, &live, sequence, permit.as_ref()).await;
-    *inner.current.lock().unwrap_or_else(PoisonError::into_inner) = None;
+    if permit.is_some() {
+        *inner.current.lock().unwrap_or_else(PoisonError::into_inner) = None;
+    }
     drop(permit);
     // A run whose end the store does not have stays visible from memory.
     if *live.generations().borrow() == live.run().generation {

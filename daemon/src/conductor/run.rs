@@ -109,10 +109,18 @@ impl<'r> Book<'r> {
         })
     }
 
-    /// Makes an entry durable, then tells what it means.
+    /// Makes an entry durable, then tells what it means. That telling fails is no reason to end the run: what counts is in
+    /// the journal.
     async fn persist(&self, entry: &Entry) -> Result<(), StoreError> {
         let value = serde_json::to_value(entry).unwrap_or_default();
         self.workshop.store.append(self.live.id(), &value).await?;
+        if let Err(error) = self.tell(entry).await {
+            tracing::error!(run = %self.live.id(), %error, "telling how a run goes on");
+        }
+        Ok(())
+    }
+
+    async fn tell(&self, entry: &Entry) -> Result<(), StoreError> {
         match &entry.what {
             What::Begun => self.begun().await,
             What::Started { place, .. } => self.started(*place, entry.at_s).await,

@@ -28,7 +28,7 @@ struct Health {
 /// Whether the daemon serves, and whether all instruments answer.
 #[utoipa::path(get, path = "/health", tag = "health", responses((status = 200, body = Health)))]
 async fn health(State(desk): State<Desk>) -> Json<Health> {
-    let bench = desk.conductor.bench();
+    let bench = desk.conductor.bench_itself();
     Json(Health {
         version: env!("CARGO_PKG_VERSION").to_owned(),
         links_up: bench.instruments.iter().all(|instrument| instrument.link == LinkState::Up),

@@ -15,8 +15,8 @@ pub(super) fn routes() -> OpenApiRouter<Desk> {
 
 /// The bench: instruments and their links, pairs, settings, routes, references.
 #[utoipa::path(get, path = "/bench", tag = "bench", responses((status = 200, body = Bench)))]
-async fn bench(State(desk): State<Desk>) -> Json<Bench> {
-    Json(desk.conductor.bench())
+async fn bench(State(desk): State<Desk>) -> Result<Json<Bench>, Fault> {
+    Ok(Json(desk.conductor.bench().await?))
 }
 
 /// A person has looked at the bench: apply the safe state again. Refused while a run has the bench.

@@ -21,8 +21,8 @@ pub(super) fn routes() -> OpenApiRouter<Desk> {
 
 /// Every pair of the bench.
 #[utoipa::path(get, path = "/pairs", tag = "pairs", responses((status = 200, body = Vec<Pair>)))]
-async fn pairs(State(desk): State<Desk>) -> Json<Vec<Pair>> {
-    Json(desk.conductor.bench().pairs)
+async fn pairs(State(desk): State<Desk>) -> Result<Json<Vec<Pair>>, Fault> {
+    Ok(Json(desk.conductor.bench().await?.pairs))
 }
 
 /// The pair's correction and whether it holds now.
