@@ -62,6 +62,7 @@ impl Scene {
             skew_s: Estimate { value: self.skew_s, u: u_skew_s },
             gain: Estimate { value: self.gain, u: u_gain },
             offset_v: Estimate { value: self.offset_v, u: u_offset_v },
+            gain_offset: 0.0,
         }
     }
 
@@ -81,6 +82,7 @@ impl Scene {
             clipped_p: 0,
             clipped_n: 0,
             averages: 1,
+            allowance: Allowance::default(),
         })
     }
 }
@@ -215,6 +217,7 @@ fn clipping_makes_every_figure_invalid_and_says_how_much() {
         clipped_p: 3,
         clipped_n: 0,
         averages: 1,
+        allowance: Allowance::default(),
     };
     for f in compute(&input) {
         assert!(!f.valid && f.why.is_some() && f.plain.is_none());
