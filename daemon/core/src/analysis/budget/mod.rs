@@ -36,6 +36,17 @@ pub enum Distribution {
     Rectangular,
 }
 
+impl Distribution {
+    /// `normal` or `rectangular`.
+    #[must_use]
+    pub fn name(self) -> &'static str {
+        match self {
+            Self::Normal => "normal",
+            Self::Rectangular => "rectangular",
+        }
+    }
+}
+
 /// How a term's source is correlated with another term's.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct Correlated {

@@ -74,6 +74,19 @@ fn correlated_terms_add_their_covariance_once() {
     assert!((combined(&gone[..1]) - 2.0).abs() < 1e-12);
 }
 
+/// Against scipy.integrate.quad of the convolution, `tests/reference/uncertainty.py`.
+#[test]
+fn the_half_width_is_the_quadrature_s() {
+    let text = include_str!("../../../../../tests/reference/vectors/half_width.json");
+    let file: serde_json::Value = serde_json::from_str(text).unwrap();
+    let cases = file["cases"].as_array().unwrap();
+    assert_eq!(cases.len(), 8);
+    for case in cases {
+        let [u, a, expected] = [0, 1, 2].map(|k| case[k].as_f64().unwrap());
+        assert!((half_width(u, a) / expected - 1.0).abs() < 1e-9, "{u} {a}: {} {expected}", half_width(u, a));
+    }
+}
+
 #[test]
 fn the_half_width_has_its_limits() {
     assert!((half_width(2.0, 0.0) - 2.0 * 1.959_963_984_540_054).abs() < 1e-12);

@@ -110,4 +110,6 @@ pub struct Figure {
 #[cfg(test)]
 mod coverage;
 #[cfg(test)]
+mod gtc;
+#[cfg(test)]
 mod tests;
