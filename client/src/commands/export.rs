@@ -72,7 +72,7 @@ fn figures_csv(captures: &[Capture]) -> String {
     }
     let mut text = String::from("capture,made_at,");
     settings.iter().for_each(|setting| text.push_str(&format!("{setting},")));
-    text.push_str("figure,value,u,unit,plain,grade,valid\n");
+    text.push_str("figure,value,u,low,high,unit,plain,grade,valid\n");
     for capture in captures {
         for figure in &capture.figures {
             text.push_str(&format!("{},{},", capture.number, capture.made_at));
@@ -85,10 +85,12 @@ fn figures_csv(captures: &[Capture]) -> String {
             let quantity = &figure.quantity;
             let grade = format!("{:?}", figure.grade).to_lowercase();
             text.push_str(&format!(
-                "{},{},{},{},{},{grade},{}\n",
+                "{},{},{},{},{},{},{},{grade},{}\n",
                 figure.name,
                 quantity.value,
                 number(quantity.u),
+                number(figure.coverage.as_ref().map(|c| c.low)),
+                number(figure.coverage.as_ref().map(|c| c.high)),
                 quantity.unit,
                 number(figure.plain),
                 figure.valid

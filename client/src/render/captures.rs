@@ -1,9 +1,9 @@
 //! Captures and their figures.
 
-use evenpair_api::{Capture, Figure, Grade};
+use evenpair_api::{Capture, CoverageBasis, Figure, Grade};
 use evenpair_core::units::{Unit, show};
 
-use super::quantity::with_uncertainty;
+use super::quantity::{self, with_uncertainty};
 use super::table::{lines, table};
 
 /// The word for a grade.
@@ -34,7 +34,7 @@ pub(crate) fn captures(captures: &[Capture], figure_name: &str) -> String {
         let figure = capture.figures.iter().find(|figure| figure.name == figure_name);
         let (value, plain, grade) = match figure {
             Some(figure) if figure.valid => {
-                (with_uncertainty(&figure.quantity), plain(figure), grade_word(figure.grade).to_owned())
+                (quantity::figure(figure), plain(figure), grade_word(figure.grade).to_owned())
             }
             Some(figure) => ("not valid".to_owned(), plain(figure), String::new()),
             None => ("none".to_owned(), String::new(), String::new()),
@@ -54,9 +54,14 @@ pub(crate) fn captures(captures: &[Capture], figure_name: &str) -> String {
 pub(crate) fn figures(capture: &Capture) -> String {
     let mut list = table(&["figure", "corrected", "plain", "grade", ""], &[1, 2]);
     for figure in &capture.figures {
-        let value = if figure.valid { with_uncertainty(&figure.quantity) } else { "not valid".to_owned() };
+        let value = if figure.valid { quantity::figure(figure) } else { "not valid".to_owned() };
         let grade = if figure.valid { grade_word(figure.grade) } else { "" };
-        let note = figure.why.clone().unwrap_or_default();
+        let limited = figure.coverage.as_ref().is_some_and(|c| c.basis == CoverageBasis::CommonMode);
+        let note = match &figure.why {
+            Some(why) => why.clone(),
+            None if limited => "common-mode limited".to_owned(),
+            None => String::new(),
+        };
         list.add_row([figure.name.clone(), value, plain(figure), grade.to_owned(), note]);
     }
     let leak = format!(

@@ -1,9 +1,10 @@
-//! A quantity for people: value ± expanded uncertainty, to the digit that the uncertainty reaches.
+//! A quantity for people: value ± expanded uncertainty, to the digit that the uncertainty reaches; a figure with the
+//! interval that it states, also where that is not symmetric.
 
-use evenpair_api::Quantity;
+use evenpair_api::{Figure, Quantity};
 use evenpair_core::units::{Unit, show};
 
-/// The coverage factor of every ± that is printed (JCGM 100, 6.2).
+/// The coverage factor of a ± for which no interval is stated (JCGM 100, 6.2).
 const COVERAGE: f64 = 2.0;
 
 /// Prefixes by power of ten.
@@ -17,12 +18,40 @@ pub(crate) fn with_uncertainty(quantity: &Quantity) -> String {
     let Some(u) = quantity.u.filter(|u| *u > 0.0 && u.is_finite() && quantity.value.is_finite()) else {
         return show(quantity.value, unit, 4);
     };
-    let expanded = COVERAGE * u;
-    let (power, prefix) = prefix_for(quantity.value.abs().max(expanded), unit);
+    symmetric(quantity.value, COVERAGE * u, unit)
+}
+
+/// A figure with its interval of 95 %: `±` where that is symmetric, `+…/−…` where not; as [`with_uncertainty`] where
+/// it states none.
+pub(crate) fn figure(figure: &Figure) -> String {
+    let quantity = &figure.quantity;
+    let unit = Unit::from_symbol(&quantity.unit).unwrap_or(Unit::One);
+    let Some(interval) = figure.coverage.as_ref().filter(|_| quantity.value.is_finite()) else {
+        return with_uncertainty(quantity);
+    };
+    let (up, down) = (interval.high - quantity.value, quantity.value - interval.low);
+    if !(up >= 0.0 && down >= 0.0 && up.max(down) > 0.0 && up.is_finite() && down.is_finite()) {
+        return with_uncertainty(quantity);
+    }
+    let larger = up.max(down);
+    // Two digits of the larger half do not show a smaller difference.
+    if (up - down).abs() < 0.02 * larger {
+        return symmetric(quantity.value, larger, unit);
+    }
+    let (power, prefix) = prefix_for(quantity.value.abs().max(larger), unit);
+    let scale = 10f64.powi(power);
+    let decimals = decimals_for(larger / scale);
+    let symbol = if unit == Unit::One { String::new() } else { format!(" {prefix}{unit}") };
+    let (value, up, down) = (quantity.value / scale, up / scale, down / scale);
+    format!("{value:.decimals$} +{up:.decimals$}/−{down:.decimals$}{symbol}")
+}
+
+fn symmetric(value: f64, expanded: f64, unit: Unit) -> String {
+    let (power, prefix) = prefix_for(value.abs().max(expanded), unit);
     let scale = 10f64.powi(power);
     let decimals = decimals_for(expanded / scale);
     let symbol = if unit == Unit::One { String::new() } else { format!(" {prefix}{unit}") };
-    let (value, expanded) = (quantity.value / scale, expanded / scale);
+    let (value, expanded) = (value / scale, expanded / scale);
     format!("{value:.decimals$}{symbol} ± {expanded:.decimals$}{symbol}")
 }
 
@@ -45,6 +74,8 @@ fn decimals_for(expanded: f64) -> usize {
 
 #[cfg(test)]
 mod tests {
+    use evenpair_api::{Coverage, CoverageBasis, Grade};
+
     use super::*;
 
     #[test]
@@ -56,6 +87,25 @@ mod tests {
         assert_eq!(text(-0.0352, 0.00055, "V"), "-35.2 mV ± 1.1 mV");
         assert_eq!(text(1e-12, 1e-9, "s"), "0.0 ns ± 2.0 ns");
         assert_eq!(text(99_987.0, 600.0, "Hz"), "100.0 kHz ± 1.2 kHz");
+    }
+
+    #[test]
+    fn a_figure_prints_the_interval_that_it_states() {
+        let text = |value, coverage: Option<(f64, f64)>| {
+            figure(&Figure {
+                name: "rms".to_owned(),
+                quantity: Quantity::new(value, 0.05, "V"),
+                coverage: coverage.map(|(low, high)| Coverage { low, high, basis: CoverageBasis::Normal }),
+                plain: None,
+                grade: Grade::Clean,
+                valid: true,
+                why: None,
+                budget: vec![],
+            })
+        };
+        assert_eq!(text(12.0, Some((11.9, 12.1))), "12.00 V ± 0.10 V");
+        assert_eq!(text(0.3536, Some((0.3486, 0.4506))), "354 +97/−5 mV");
+        assert_eq!(text(12.0, None), "12.00 V ± 0.10 V");
     }
 
     #[test]

@@ -60,6 +60,9 @@ pub struct Figure {
     /// The figure with its standard uncertainty.
     #[serde(flatten)]
     pub quantity: Quantity,
+    /// The interval that holds the true value with 95 %; absent where the figure is not valid.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub coverage: Option<Coverage>,
     /// What plain subtraction of the two records would have given; absent where that has no such figure.
     #[serde(default, skip_serializing_if = "Option::is_none")]
     pub plain: Option<f64>,
@@ -89,14 +92,60 @@ pub enum Grade {
 /// One term of an uncertainty budget (JCGM 100, 5.1).
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize, ToSchema)]
 pub struct UncertaintyTerm {
-    /// What it comes from: `noise`, `gain`, `skew`, `offset`, `scale`, `quantisation`, `common mode`.
+    /// What it comes from: `noise`, `gain`, `skew`, `offset` (and their `drift`), `scale`, `calibration`,
+    /// `quantisation`, `common mode`.
     pub name: String,
     /// Its contribution to the figure's standard uncertainty, in the figure's unit.
     pub u: f64,
+    /// What the figure changes per unit of the source (1, s or V), sign included; absent where the source is no single
+    /// number, as for noise.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub sensitivity: Option<f64>,
+    /// `normal` or `rectangular`.
+    pub distribution: String,
+    /// The term that this one is correlated with; both say it.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub correlated: Option<CorrelatedTerm>,
     /// `A` (from repeats) or `B` (from other knowledge).
     pub kind: String,
-    /// Its share of the variance, 0 to 1.
+    /// Its share of the variance, half of the covariance with its partner included; all shares sum to 1.
     pub share: f64,
+}
+
+/// How a term is correlated with another.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize, ToSchema)]
+pub struct CorrelatedTerm {
+    /// The other term's name.
+    pub with: String,
+    /// Correlation coefficient of the two contributions, −1 to 1.
+    pub coefficient: f64,
+}
+
+/// An interval that holds the true value with a probability of 95 % (JCGM 100, 6.2; JCGM 101, 7.7).
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize, ToSchema)]
+pub struct Coverage {
+    /// Lower end, in the figure's unit.
+    pub low: f64,
+    /// Upper end, in the figure's unit.
+    pub high: f64,
+    /// Where it comes from.
+    pub basis: CoverageBasis,
+}
+
+/// Where a coverage interval comes from.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize, ToSchema)]
+#[serde(rename_all = "snake_case")]
+pub enum CoverageBasis {
+    /// Common-mode limited: what the correction leaves of the common mode adds to the figure in second order. The
+    /// interval is propagated by Monte Carlo and reaches down to where the common mode is taken off as far as the
+    /// correction's uncertainty allows.
+    CommonMode,
+    /// All terms as normal ones.
+    Normal,
+    /// Propagated by Monte Carlo, because the figure is hardly more than its uncertainty.
+    Propagated,
+    /// The largest rectangular term convolved with the others.
+    Rectangular,
 }
 
 /// The most that the common mode can have added to the difference.

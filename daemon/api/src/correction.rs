@@ -23,6 +23,9 @@ pub struct Correction {
     pub gain: Quantity,
     /// o: volts at the tips that the negative leg has too much.
     pub offset: Quantity,
+    /// Correlation coefficient of the errors of `gain` and `offset`, −1 to 1; absent where it is not known.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub gain_offset_correlation: Option<f64>,
     /// The part of `skew` that was written into the scope's own skew setting; 0 s where none was.
     pub scope_skew: Quantity,
     /// Whether it holds now.

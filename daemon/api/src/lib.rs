@@ -16,7 +16,10 @@ mod run;
 mod sequence;
 
 pub use bench::{Bench, Instrument, Leg, LinkState, Pair, Probe, Reference, Rest, Route, Setting};
-pub use capture::{Capture, Captures, Condition, Figure, Grade, LeakBound, LimitVerdict, UncertaintyTerm};
+pub use capture::{
+    Capture, Captures, Condition, CorrelatedTerm, Coverage, CoverageBasis, Figure, Grade, LeakBound, LimitVerdict,
+    UncertaintyTerm,
+};
 pub use correction::{
     Carried, Correction, CorrectionConditions, CorrectionState, DeskewRequest, LegConditions, RejectionPoint,
     VerifyRequest,

@@ -3,11 +3,13 @@
 use std::collections::BTreeMap;
 
 use evenpair_api::{self as api, CorrectionState, Quantity};
-use evenpair_core::analysis::figures::{Figure, FigureInput, compute as compute_figures};
+use evenpair_core::analysis::budget::{self, Basis};
+use evenpair_core::analysis::figures::{Allowance, Figure, FigureInput, FigureKind, compute as compute_figures};
 use evenpair_core::analysis::grade::Grade;
 use evenpair_core::analysis::leak::LeakBound;
+use evenpair_core::analysis::noise::{self, PairNoise};
 use evenpair_core::analysis::rejection::RejectionBand;
-use evenpair_core::analysis::{Correction, Record, apply, budget, leak, noise};
+use evenpair_core::analysis::{Correction, Record, apply, leak};
 use evenpair_core::bench::PairSpec;
 use evenpair_core::sequence::{CapturePlan, OnVoid};
 use tokio_util::sync::CancellationToken;
@@ -127,22 +129,30 @@ fn work(
     }
     let corrected = apply::correct(&positive, &negative, correction)?;
     let plain_v = apply::plain(&positive, &negative)?;
-    let (noise_p_v, noise_n_v) = measured_noise(&positive, &negative, correction.gain.value, &mut warnings);
+    let noise = measured_noise(&positive, &negative, correction.gain.value, &mut warnings);
     let leak = leak::bound(&corrected.common_v, corrected.interval_s, correction, bands);
     let figures = compute_figures(&FigureInput {
         corrected: &corrected,
         plain_v: &plain_v,
         correction,
         leak: &leak,
-        noise_p_v,
-        noise_n_v,
+        noise_p_v: noise.p_v,
+        noise_n_v: noise.n_v,
         step_p_v: positive.step_v,
         step_n_v: negative.step_v,
         scale_spec: scale_spec.unwrap_or(0.0),
         clipped_p: clipped.0,
         clipped_n: clipped.1,
         averages: positive.averages,
+        allowance: Allowance { noise_bins: noise.bins, ..Allowance::default() },
     });
+    if figures.iter().any(|f| f.kind == FigureKind::Rms && f.coverage.is_some_and(|c| c.basis == Basis::CommonMode)) {
+        warnings.push(
+            "the rms is common-mode limited: what the correction may leave of the common mode is as large as the \
+             difference shows; deskew more closely, or read the interval and not the value"
+                .to_owned(),
+        );
+    }
     Ok(Worked {
         // Single precision holds a converter's codes and a hundred times more.
         difference_v: corrected.difference_v.iter().map(|&volts| volts as f32).collect(),
@@ -157,16 +167,16 @@ fn work(
 
 /// The noise of each leg in volts rms per sample, from the part of the spectrum that holds nothing else; where there is
 /// none, the converter's own.
-fn measured_noise(positive: &Record, negative: &Record, gain: f64, warnings: &mut Vec<String>) -> (f64, f64) {
+fn measured_noise(positive: &Record, negative: &Record, gain: f64, warnings: &mut Vec<String>) -> PairNoise {
     if let Ok(Some(noise)) = noise::out_of_band(&positive.volts(), &negative.volts(), gain) {
-        return (noise.p_v, noise.n_v);
+        return noise;
     }
     warnings.push(
         "noise could not be measured: the record's whole spectrum holds signal; the converter's own is taken"
             .to_owned(),
     );
     let own = |record: &Record| record.step_v / (12.0 * f64::from(record.averages.max(1))).sqrt();
-    (own(positive), own(negative))
+    PairNoise { p_v: own(positive), n_v: own(negative), bins: 0 }
 }
 
 fn figure_to_api(figure: &Figure) -> api::Figure {
@@ -174,12 +184,27 @@ fn figure_to_api(figure: &Figure) -> api::Figure {
     let term = |(term, share): (&budget::Term, f64)| api::UncertaintyTerm {
         name: term.name.to_owned(),
         u: term.u,
+        sensitivity: term.sensitivity,
+        distribution: term.distribution.name().to_owned(),
+        correlated: term
+            .correlated
+            .map(|c| api::CorrelatedTerm { with: c.with.to_owned(), coefficient: c.coefficient }),
         kind: term.kind.name().to_owned(),
         share,
     };
     api::Figure {
         name: figure.kind.name().to_owned(),
         quantity: Quantity::new(figure.value, figure.u, figure.kind.unit().symbol()),
+        coverage: figure.coverage.map(|c| api::Coverage {
+            low: c.low,
+            high: c.high,
+            basis: match c.basis {
+                Basis::CommonMode => api::CoverageBasis::CommonMode,
+                Basis::Normal => api::CoverageBasis::Normal,
+                Basis::Propagated => api::CoverageBasis::Propagated,
+                Basis::Rectangular => api::CoverageBasis::Rectangular,
+            },
+        }),
         plain: figure.plain,
         grade: match figure.grade {
             Grade::Clean => api::Grade::Clean,

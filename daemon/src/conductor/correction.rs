@@ -18,6 +18,7 @@ pub(crate) fn for_software(correction: &api::Correction, scope_skew_s: f64) -> C
         skew_s: Estimate { value: skew.value - scope_skew_s, u: skew.u },
         gain: estimate(&correction.gain),
         offset_v: estimate(&correction.offset),
+        gain_offset: correction.gain_offset_correlation.unwrap_or(0.0),
     }
 }
 

@@ -108,6 +108,7 @@ async fn make(
         skew: Quantity::new(skew.value, skew.u, "s"),
         gain: Quantity::new(gain.value, gain.u, "1"),
         offset: Quantity::new(offset.value, offset.u, "V"),
+        gain_offset_correlation: Some(on_gain.combined.gain_offset),
         scope_skew: Quantity::exact(scope_skew_s, "s"),
         state: api::CorrectionState::Fresh,
         reasons: Vec::new(),

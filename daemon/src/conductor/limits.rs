@@ -11,12 +11,13 @@ pub(crate) fn judge(limits: &[Limit], figures: &[Figure]) -> Vec<LimitVerdict> {
 
 fn judge_one(limit: &Limit, figure: Option<&Figure>) -> LimitVerdict {
     let valid = figure.filter(|figure| figure.valid && figure.quantity.value.is_finite());
-    // Where the limit lies within the expanded uncertainty (k = 2), the verdict could be either.
+    // Where the limit lies within the figure's interval of 95 %, the verdict could be either.
     let (passed, uncertain) = valid.map_or((false, false), |figure| {
         let value = figure.quantity.value;
         let reach = 2.0 * figure.quantity.u.unwrap_or(0.0);
+        let (low, high) = figure.coverage.as_ref().map_or((value - reach, value + reach), |c| (c.low, c.high));
         let within = limit.min.is_none_or(|min| value >= min) && limit.max.is_none_or(|max| value <= max);
-        let near = |bound: Option<f64>| bound.is_some_and(|bound| (value - bound).abs() < reach);
+        let near = |bound: Option<f64>| bound.is_some_and(|bound| low < bound && bound < high);
         (within, near(limit.min) || near(limit.max))
     });
     LimitVerdict { figure: limit.figure.clone(), min: limit.min, max: limit.max, passed, uncertain }
@@ -43,13 +44,22 @@ pub(crate) fn in_words(verdict: &LimitVerdict, figures: &[Figure]) -> String {
 
 #[cfg(test)]
 mod tests {
-    use evenpair_api::{Grade, Quantity};
+    use evenpair_api::{Coverage, CoverageBasis, Grade, Quantity};
 
     use super::*;
 
     fn figure(value: f64, u: f64, valid: bool) -> Figure {
         let quantity = Quantity::new(value, u, "V");
-        Figure { name: "mean".into(), quantity, plain: None, grade: Grade::Clean, valid, why: None, budget: vec![] }
+        Figure {
+            name: "mean".into(),
+            quantity,
+            coverage: None,
+            plain: None,
+            grade: Grade::Clean,
+            valid,
+            why: None,
+            budget: vec![],
+        }
     }
 
     fn limit(min: Option<f64>, max: Option<f64>) -> Limit {
@@ -66,6 +76,15 @@ mod tests {
         assert_eq!(verdict(1.9, 0.1), (true, true));
         assert_eq!(verdict(2.1, 0.1), (false, true));
         assert_eq!(verdict(2.5, 0.1), (false, false));
+    }
+
+    #[test]
+    fn the_interval_decides_what_is_uncertain_where_there_is_one() {
+        let mut found = figure(1.5, 1.0, true);
+        found.coverage = Some(Coverage { low: 0.9, high: 1.6, basis: CoverageBasis::CommonMode });
+        let verdict = |min, max| judge(&[limit(min, max)], std::slice::from_ref(&found)).remove(0).uncertain;
+        assert!(verdict(Some(1.0), None));
+        assert!(!verdict(None, Some(1.7)) && !verdict(Some(0.8), None));
     }
 
     #[test]

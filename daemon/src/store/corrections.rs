@@ -146,10 +146,10 @@ fn insert(connection: &Connection, correction: &Correction) -> Result<(), Fault>
     let from_span = conditions.carried.as_ref().map(|c| numbers("the span", &c.from_span, "V")).transpose()?;
     let added = conditions.carried.as_ref().map(|c| numbers("the added uncertainty", &c.added, "s")).transpose()?;
     let sql = "insert into corrections (id, pair, made_at, state, skew_s, skew_u, gain, gain_u, offset_v, offset_u, \
-               scope_skew_s, scope_skew_u, acquisitions, scope_identity, skew_reference, gain_reference, carried, \
+               gain_offset_r, scope_skew_s, scope_skew_u, acquisitions, scope_identity, skew_reference, gain_reference, carried, \
                carried_from_span_v, carried_from_span_u, carried_added_s, carried_added_u, reasons_json, \
                warnings_json) values (:id, :pair, :made_at, :state, :skew_s, :skew_u, :gain, :gain_u, :offset_v, \
-               :offset_u, :scope_skew_s, :scope_skew_u, :acquisitions, :scope_identity, :skew_reference, \
+               :offset_u, :gain_offset_r, :scope_skew_s, :scope_skew_u, :acquisitions, :scope_identity, :skew_reference, \
                :gain_reference, :carried, :from_span_v, :from_span_u, :added_s, :added_u, :reasons, :warnings)";
     let params = named_params! {
         ":id": correction.id.to_string(),
@@ -162,6 +162,7 @@ fn insert(connection: &Connection, correction: &Correction) -> Result<(), Fault>
         ":gain_u": gain_u,
         ":offset_v": offset_v,
         ":offset_u": offset_u,
+        ":gain_offset_r": correction.gain_offset_correlation,
         ":scope_skew_s": scope_skew_s,
         ":scope_skew_u": scope_skew_u,
         ":acquisitions": correction.acquisitions,
@@ -235,6 +236,7 @@ fn read_head(
         skew: quantity(row, "skew_s", "skew_u", "s")?,
         gain: quantity(row, "gain", "gain_u", "1")?,
         offset: quantity(row, "offset_v", "offset_u", "V")?,
+        gain_offset_correlation: row.get("gain_offset_r")?,
         scope_skew: quantity(row, "scope_skew_s", "scope_skew_u", "s")?,
         state: from_word("a correction's state", row.get("state")?)?,
         reasons: from_json("a correction's reasons", &row.get::<_, String>("reasons_json")?)?,

@@ -1,6 +1,6 @@
 //! The rows of a capture: itself, its conditions, figures with their terms, and limits.
 
-use evenpair_api::{Capture, Condition, Figure, LeakBound, LimitVerdict, UncertaintyTerm};
+use evenpair_api::{Capture, Condition, CorrelatedTerm, Coverage, Figure, LeakBound, LimitVerdict, UncertaintyTerm};
 use rusqlite::{Connection, Row, named_params, params};
 use uuid::Uuid;
 
@@ -96,8 +96,8 @@ fn insert_head(connection: &Connection, capture: &Capture, bytes: u64) -> Result
 
 /// Inserts a figure and its terms.
 fn insert_figure(connection: &Connection, run: &str, capture: u32, place: u32, figure: &Figure) -> Result<(), Fault> {
-    let sql = "insert into figures (run, capture, place, name, value, u, unit, plain, grade, valid, why) values \
-               (:run, :capture, :place, :name, :value, :u, :unit, :plain, :grade, :valid, :why)";
+    let sql = "insert into figures (run, capture, place, name, value, u, unit, low, high, basis, plain, grade, valid, why) values \
+               (:run, :capture, :place, :name, :value, :u, :unit, :low, :high, :basis, :plain, :grade, :valid, :why)";
     let params = named_params! {
         ":run": run,
         ":capture": capture,
@@ -106,6 +106,9 @@ fn insert_figure(connection: &Connection, run: &str, capture: u32, place: u32, f
         ":value": figure.quantity.value,
         ":u": figure.quantity.u,
         ":unit": figure.quantity.unit,
+        ":low": figure.coverage.as_ref().map(|c| c.low),
+        ":high": figure.coverage.as_ref().map(|c| c.high),
+        ":basis": figure.coverage.as_ref().map(|c| word(&c.basis)).transpose()?,
         ":plain": figure.plain,
         ":grade": word(&figure.grade)?,
         ":valid": figure.valid,
@@ -113,9 +116,26 @@ fn insert_figure(connection: &Connection, run: &str, capture: u32, place: u32, f
     };
     change(connection, sql, params)?;
     for (term_place, term) in (0_u32..).zip(&figure.budget) {
-        let sql = "insert into terms (run, capture, figure, place, name, u, kind, share) \
-                   values (?1, ?2, ?3, ?4, ?5, ?6, ?7, ?8)";
-        change(connection, sql, params![run, capture, place, term_place, term.name, term.u, term.kind, term.share])?;
+        let sql = "insert into terms (run, capture, figure, place, name, u, kind, share, sensitivity, \
+                   distribution, correlated_with, correlation) \
+                   values (?1, ?2, ?3, ?4, ?5, ?6, ?7, ?8, ?9, ?10, ?11, ?12)";
+        let UncertaintyTerm { name, u, sensitivity, distribution, correlated, kind, share } = term;
+        let (with, coefficient) = (correlated.as_ref().map(|c| &c.with), correlated.as_ref().map(|c| c.coefficient));
+        let params = params![
+            run,
+            capture,
+            place,
+            term_place,
+            name,
+            u,
+            kind,
+            share,
+            sensitivity,
+            distribution,
+            with,
+            coefficient
+        ];
+        change(connection, sql, params)?;
     }
     Ok(())
 }
@@ -147,6 +167,16 @@ fn read_head(row: &Row<'_>) -> Result<Capture, Fault> {
     })
 }
 
+/// A figure's interval, where it has one.
+fn read_coverage(row: &Row<'_>) -> Result<Option<Coverage>, Fault> {
+    let basis = row.get::<_, Option<String>>("basis")?;
+    let whole = |word| -> Result<Coverage, Fault> {
+        let basis = from_word("a figure's interval", word)?;
+        Ok(Coverage { low: number(row, "low")?, high: number(row, "high")?, basis })
+    };
+    basis.map(whole).transpose()
+}
+
 /// A capture's figures with their terms.
 fn read_figures(connection: &Connection, run: &str, capture: u32) -> Result<Vec<Figure>, Fault> {
     let sql = "select * from figures where run = ?1 and capture = ?2 order by place";
@@ -155,6 +185,7 @@ fn read_figures(connection: &Connection, run: &str, capture: u32) -> Result<Vec<
         Ok(Figure {
             name: row.get("name")?,
             quantity: quantity(row, "value", "u", &unit)?,
+            coverage: read_coverage(row)?,
             plain: row.get("plain")?,
             grade: from_word("a figure's grade", row.get("grade")?)?,
             valid: row.get("valid")?,
@@ -167,6 +198,12 @@ fn read_figures(connection: &Connection, run: &str, capture: u32) -> Result<Vec<
         let term = UncertaintyTerm {
             name: row.get("name")?,
             u: number(row, "u")?,
+            sensitivity: row.get("sensitivity")?,
+            distribution: row.get("distribution")?,
+            correlated: match row.get::<_, Option<String>>("correlated_with")? {
+                Some(with) => Some(CorrelatedTerm { with, coefficient: number(row, "correlation")? }),
+                None => None,
+            },
             kind: row.get("kind")?,
             share: number(row, "share")?,
         };

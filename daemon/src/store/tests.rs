@@ -8,9 +8,9 @@ use std::sync::Mutex;
 use std::sync::atomic::{AtomicUsize, Ordering};
 
 use evenpair_api::{
-    Capture, Carried, Condition, Correction, CorrectionConditions, CorrectionState, Figure, Grade, LeakBound,
-    LegConditions, LimitFailure, LimitVerdict, Quantity, RejectionPoint, Run, RunKind, RunProgress, RunState,
-    StageReport, UncertaintyTerm,
+    Capture, Carried, Condition, Correction, CorrectionConditions, CorrectionState, CorrelatedTerm, Coverage,
+    CoverageBasis, Figure, Grade, LeakBound, LegConditions, LimitFailure, LimitVerdict, Quantity, RejectionPoint, Run,
+    RunKind, RunProgress, RunState, StageReport, UncertaintyTerm,
 };
 use evenpair_core::analysis::{Record, Samples};
 use rusqlite::types::Value;
@@ -63,6 +63,7 @@ pub(super) fn a_correction(pair: &str, second: i64) -> Correction {
         skew: Quantity::new(1.234_567_890_123e-9, 4.5e-12, "s"),
         gain: Quantity::new(0.987_654_321, 1.0 / 3.0e4, "1"),
         offset: Quantity::new(-0.1 - 0.2, 1e-3, "V"),
+        gain_offset_correlation: Some(-0.7),
         scope_skew: Quantity::exact(1.2e-9, "s"),
         state: CorrectionState::Fresh,
         reasons: Vec::new(),
@@ -87,7 +88,20 @@ pub(super) fn a_correction(pair: &str, second: i64) -> Correction {
 }
 
 pub(super) fn a_capture(run: Uuid, number: u32, correction: Option<&Correction>, points: usize) -> Capture {
-    let term = |name: &str, u, share| UncertaintyTerm { name: name.to_owned(), u, kind: "B".to_owned(), share };
+    let term = |name: &str, u, share| UncertaintyTerm {
+        name: name.to_owned(),
+        u,
+        sensitivity: None,
+        distribution: "normal".to_owned(),
+        correlated: None,
+        kind: "B".to_owned(),
+        share,
+    };
+    let correlated = |term: UncertaintyTerm, with: &str| UncertaintyTerm {
+        sensitivity: Some(-48.0 / 7.0),
+        correlated: Some(CorrelatedTerm { with: with.to_owned(), coefficient: -0.7 }),
+        ..term
+    };
     Capture {
         run,
         number,
@@ -103,15 +117,17 @@ pub(super) fn a_capture(run: Uuid, number: u32, correction: Option<&Correction>,
             Figure {
                 name: "high_level".to_owned(),
                 quantity: Quantity::new(12.1 + f64::from(number) / 3.0, 0.011, "V"),
+                coverage: Some(Coverage { low: 12.0, high: 12.2, basis: CoverageBasis::CommonMode }),
                 plain: Some(12.9),
                 grade: Grade::Shaded,
                 valid: true,
                 why: None,
-                budget: vec![term("noise", 0.01, 0.8), term("gain", 0.005, 0.2)],
+                budget: vec![term("noise", 0.01, 0.8), correlated(term("gain", 0.005, 0.2), "offset")],
             },
             Figure {
                 name: "rise_time".to_owned(),
                 quantity: Quantity::exact(0.0, "s"),
+                coverage: None,
                 plain: None,
                 grade: Grade::Clean,
                 valid: false,

@@ -1,4 +1,4 @@
-use evenpair_api::{Condition, LeakBound, LimitVerdict, Quantity};
+use evenpair_api::{Condition, Coverage, LeakBound, LimitVerdict, Quantity};
 
 use super::*;
 use crate::render::WIDTH;
@@ -8,6 +8,7 @@ fn capture() -> Capture {
     let figure = |name: &str, value: f64, unit: &str| Figure {
         name: name.to_owned(),
         quantity: Quantity::new(value, value.abs() * 0.004, unit),
+        coverage: Some(Coverage { low: value * 0.992, high: value * 1.008, basis: CoverageBasis::Normal }),
         plain: Some(value * 0.93),
         grade: Grade::Shaded,
         valid: true,
@@ -54,5 +55,10 @@ fn tables_fit_the_terminal_and_hold_what_they_say() {
         assert!(text.contains(word), "{word} is missing in\n{text}");
     }
     assert!(figures(&capture()).contains("not valid"));
+    let mut limited = capture();
+    limited.figures[0].coverage = Some(Coverage { low: 11.0, high: 11.9, basis: CoverageBasis::CommonMode });
+    let text = figures(&limited);
+    assert!(text.contains("11.87 +0.03/−0.87 V") && text.contains("common-mode limited"), "{text}");
+    assert!(text.lines().all(|line| line.chars().count() <= WIDTH), "{text}");
     assert!(capture_summary(&capture()).contains("1 limit(s) exceeded"));
 }

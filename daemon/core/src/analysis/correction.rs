@@ -11,9 +11,10 @@ pub struct Estimate {
 
 /// A correction of the negative leg, in the sense of JCGM 200, 2.53.
 ///
-/// The three estimates are treated as uncorrelated: skew comes from edges, gain from levels, and the offset is
-/// referred to the middle of the reference's levels, where it does not depend on the gain (findings of the
-/// estimator's covariance; the correlation that remains is far below the other terms of a figure's budget).
+/// Skew comes from edges, gain and offset from levels, so that skew is taken as uncorrelated with the other two. Gain
+/// and offset are not: on a reference whose levels are not balanced about 0 V a gain read too high goes with an offset
+/// read too low. Their correlation is carried along; without it the mean of a capture on a node that swings between 0
+/// and 48 V would seem less certain than it is.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct Correction {
     /// τ in seconds, positive when the negative leg arrives late.
@@ -22,6 +23,8 @@ pub struct Correction {
     pub gain: Estimate,
     /// o in volts at the tips: what the negative leg reads too much when both tips are at 0 V.
     pub offset_v: Estimate,
+    /// Correlation coefficient of the errors of `gain` and `offset_v`, −1 to 1; 0 where it is not known.
+    pub gain_offset: f64,
 }
 
 impl Correction {
@@ -32,6 +35,7 @@ impl Correction {
             skew_s: Estimate { value: 0.0, u: 0.0 },
             gain: Estimate { value: 1.0, u: 0.0 },
             offset_v: Estimate { value: 0.0, u: 0.0 },
+            gain_offset: 0.0,
         }
     }
 }

@@ -17,6 +17,7 @@ pub mod interpolate;
 pub mod leak;
 pub mod levels;
 pub mod line;
+pub mod montecarlo;
 pub mod noise;
 pub mod peaks;
 pub mod record;

@@ -57,6 +57,7 @@ create table corrections (
     gain_u              real,                      -- its standard uncertainty
     offset_v            real,                      -- o: volts at the tips that the negative leg has too much
     offset_u            real,                      -- its standard uncertainty in volts
+    gain_offset_r       real,                      -- correlation coefficient of gain and offset; null where not known
     scope_skew_s        real,                      -- the part of skew_s that the scope itself takes off
     scope_skew_u        real,                      -- its standard uncertainty in seconds
     acquisitions        integer not null,          -- acquisitions of the pair that went into it
@@ -146,7 +147,10 @@ create table figures (
     name    text not null,    -- rms, high_level, rise_time, …
     value   real,             -- the figure
     u       real,             -- its standard uncertainty
-    unit    text not null,    -- unit of value, u and plain
+    unit    text not null,    -- unit of value, u, low, high and plain
+    low     real,             -- lower end of the interval that holds the true value with 95 %; null for none
+    high    real,             -- its upper end
+    basis   text,             -- where the interval comes from: common_mode, normal, propagated or rectangular
     plain   real,             -- what plain subtraction of the two records would have given; null for none
     grade   text not null,    -- clean, shaded or swamped: how far the common mode could explain it
     valid   integer not null, -- 0 when clipping, overload or a missing feature makes it meaningless, else 1
@@ -162,10 +166,14 @@ create table terms (
     capture integer not null, -- the capture's number
     figure  integer not null, -- the figure's place
     place   integer not null, -- order, from 0
-    name    text not null,    -- noise, gain, skew, offset, scale, quantisation, common mode
+    name    text not null,    -- noise, gain, skew, offset (or their drift), scale, calibration, quantisation, common mode
     u       real,             -- contribution to the figure's standard uncertainty, in the figure's unit
+    sensitivity     real,     -- what the figure changes per unit of the source (1, s or V); null where it has none
+    distribution    text not null, -- normal or rectangular
+    correlated_with text,     -- name of the term that it is correlated with; null for none
+    correlation     real,     -- correlation coefficient of the two contributions
     kind    text not null,    -- A (from repeats) or B (from other knowledge)
-    share   real,             -- share of the variance, 0 to 1
+    share   real,             -- share of the variance, half of a covariance included; all sum to 1
     primary key (run, capture, figure, place),
     foreign key (run, capture, figure) references figures (run, capture, place)
 ) strict, without rowid;

@@ -17,7 +17,7 @@ fn record(values: impl Iterator<Item = f64>, start_s: f64) -> Record {
 
 fn correction(skew_s: f64, gain: f64, offset_v: f64) -> Correction {
     let exact = |value| Estimate { value, u: 0.0 };
-    Correction { skew_s: exact(skew_s), gain: exact(gain), offset_v: exact(offset_v) }
+    Correction { skew_s: exact(skew_s), gain: exact(gain), offset_v: exact(offset_v), gain_offset: 0.0 }
 }
 
 /// Band-limited common signal plus a difference that only the positive leg sees.

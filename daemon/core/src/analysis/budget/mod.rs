@@ -3,6 +3,10 @@
 
 use nalgebra::{DMatrix, DVector};
 
+mod coverage;
+
+pub use coverage::{Basis, Coverage, PROBABILITY, expanded, half_width};
+
 /// How a term was evaluated (JCGM 100, 4.2 and 4.3).
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub enum Kind {
@@ -32,10 +36,32 @@ pub enum Distribution {
     Rectangular,
 }
 
+impl Distribution {
+    /// `normal` or `rectangular`.
+    #[must_use]
+    pub fn name(self) -> &'static str {
+        match self {
+            Self::Normal => "normal",
+            Self::Rectangular => "rectangular",
+        }
+    }
+}
+
+/// How a term's source is correlated with another term's.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Correlated {
+    /// Name of the other term.
+    pub with: &'static str,
+    /// Correlation coefficient of the two *contributions*, −1 to 1: that of the sources times the signs of both
+    /// sensitivities.
+    pub coefficient: f64,
+}
+
 /// One term of a figure's budget.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct Term {
-    /// What it comes from: `noise`, `gain`, `skew`, `offset`, `scale`, `quantisation`, `common mode`.
+    /// What it comes from: `noise`, `gain`, `skew`, `offset`, `scale`, `quantisation`, `common mode`; with ` drift`
+    /// behind it, what the correction's estimate may have moved since it was made.
     pub name: &'static str,
     /// Its contribution to the figure's standard uncertainty, in the figure's unit, not negative.
     pub u: f64,
@@ -43,19 +69,39 @@ pub struct Term {
     pub kind: Kind,
     /// Its distribution.
     pub distribution: Distribution,
+    /// What the figure changes per unit of the source (figure's unit per 1, s or V), sign included; `None` where the
+    /// source is no single number, as for noise.
+    pub sensitivity: Option<f64>,
+    /// The other term that it is correlated with. Both of a pair say it.
+    pub correlated: Option<Correlated>,
 }
 
-/// The combined standard uncertainty of uncorrelated terms (JCGM 100, equation 10).
+impl Term {
+    /// What correlation adds to the variance on this term's account: half of `2·r·u_a·u_b` (JCGM 100, equation 16).
+    fn covariance(&self, terms: &[Self]) -> f64 {
+        self.correlated
+            .and_then(|c| terms.iter().find(|t| t.name == c.with).map(|t| c.coefficient * self.u * t.u))
+            .unwrap_or(0.0)
+    }
+}
+
+/// The combined standard uncertainty, correlations counted (JCGM 100, equations 10 and 16).
 #[must_use]
 pub fn combined(terms: &[Term]) -> f64 {
-    terms.iter().map(|t| t.u * t.u).sum::<f64>().sqrt()
+    variance(terms).sqrt()
 }
 
-/// Each term's share of the combined variance, 0 to 1, in the order of the terms.
+fn variance(terms: &[Term]) -> f64 {
+    terms.iter().map(|t| t.u.mul_add(t.u, t.covariance(terms))).sum::<f64>().max(0.0)
+}
+
+/// Each term's share of the combined variance, in the order of the terms. They sum to 1; each of two correlated terms
+/// has half of their covariance in its share, which makes it negative where the two cancel.
 #[must_use]
 pub fn shares(terms: &[Term]) -> Vec<f64> {
-    let variance: f64 = terms.iter().map(|t| t.u * t.u).sum();
-    terms.iter().map(|t| if variance > 0.0 { t.u * t.u / variance } else { 0.0 }).collect()
+    let variance = variance(terms);
+    let share = |t: &Term| t.u.mul_add(t.u, t.covariance(terms)) / variance;
+    terms.iter().map(|t| if variance > 0.0 { share(t) } else { 0.0 }).collect()
 }
 
 /// Why a propagation is impossible.

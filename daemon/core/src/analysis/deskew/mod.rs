@@ -33,6 +33,8 @@ pub struct Combined {
     pub gain: Mean,
     /// o in volts.
     pub offset_v: Mean,
+    /// Correlation coefficient of gain and offset: the mean of the repeats', which differ by chance only.
+    pub gain_offset: f64,
     /// How many repeats there were.
     pub repeats: usize,
     /// Each kind of warning once, with the last repeat's values.
@@ -43,7 +45,12 @@ impl Combined {
     /// The estimates as a correction.
     #[must_use]
     pub fn correction(&self) -> Correction {
-        Correction { skew_s: self.skew_s.estimate, gain: self.gain.estimate, offset_v: self.offset_v.estimate }
+        Correction {
+            skew_s: self.skew_s.estimate,
+            gain: self.gain.estimate,
+            offset_v: self.offset_v.estimate,
+            gain_offset: self.gain_offset,
+        }
     }
 }
 
@@ -69,6 +76,7 @@ pub fn combine(repeats: &[SkewEstimate]) -> Option<Combined> {
         skew_s: all(|one| one.skew_s),
         gain: all(|one| one.gain),
         offset_v: all(|one| one.offset_v),
+        gain_offset: repeats.iter().map(SkewEstimate::gain_offset).sum::<f64>() / repeats.len() as f64,
         repeats: repeats.len(),
         warnings,
     })

@@ -1,8 +1,10 @@
 //! Computing all figures of a capture with their budgets and grades.
 
+use super::super::budget::{self, Coverage};
 use super::super::transition::{duration_per_part, middle_per_part};
-use super::super::{budget, grade, peaks};
+use super::super::{grade, peaks};
 use super::plain::Plain;
+use super::power;
 use super::shape::{Layout, Read, Reading, Shape};
 use super::sources::{Parts, Sources};
 use super::sums::{mean, product, without_noise};
@@ -31,13 +33,13 @@ pub fn compute(input: &FigureInput<'_>) -> Vec<Figure> {
     FigureKind::all()
         .map(|kind| {
             let found = bench.figure(kind).and_then(|f| {
-                let sum = f.value + budget::combined(&f.parts.budget());
+                let sum = f.value + budget::combined(&f.parts.budget(&bench.sources));
                 if sum.is_finite() { Ok(f) } else { Err("it cannot be computed from these samples".to_owned()) }
             });
             let plain = plain.figure(kind).filter(|v| v.is_finite());
             match found {
                 Ok(found) => {
-                    let budget = found.parts.budget();
+                    let budget = found.parts.budget(&bench.sources);
                     let u = budget::combined(&budget);
                     let why = (clipped > 0).then(|| {
                         format!(
@@ -46,12 +48,18 @@ pub fn compute(input: &FigureInput<'_>) -> Vec<Figure> {
                         )
                     });
                     let grade = grade::grade(found.size, u, found.leak);
-                    Figure { kind, value: found.value, u, plain, valid: why.is_none(), why, budget, grade }
+                    let valid = why.is_none();
+                    let coverage = valid.then(|| match kind {
+                        FigureKind::Rms => power::coverage(input, &bench.sources, &bench.slope, found.value, &budget),
+                        _ => Coverage::of(found.value, &budget),
+                    });
+                    Figure { kind, value: found.value, u, coverage, plain, valid, why, budget, grade }
                 }
                 Err(why) => Figure {
                     kind,
                     value: 0.0,
                     u: 0.0,
+                    coverage: None,
                     plain,
                     valid: false,
                     why: Some(why),
@@ -98,8 +106,8 @@ impl<'a> Bench<'a> {
                 })
             })
         };
-        let by_gain = moved(&corrected.negative_v, (sources.u_gain / sources.gain).abs());
-        let by_skew = moved(&slope, sources.u_skew_s);
+        let by_gain = moved(&corrected.negative_v, sources.step(0));
+        let by_skew = moved(&slope, sources.step(1));
         Self { input, sources, layout, shape, slope, by_gain, by_skew }
     }
 
@@ -149,15 +157,15 @@ impl<'a> Bench<'a> {
     }
 
     fn mean(&self) -> Found {
-        let Sources { mean_noise_v, u_gain, u_skew_s, u_offset_v, scale, gain, quantisation_v, .. } = self.sources;
+        let Sources { mean_noise_v, quantisation_v, .. } = self.sources;
         let corrected = self.input.corrected;
         let value = mean(&corrected.difference_v);
         let parts = Parts {
             noise: mean_noise_v / (corrected.difference_v.len().max(1) as f64).sqrt(),
-            gain: u_gain * mean(&corrected.negative_v) / gain,
-            skew: u_skew_s * mean(&self.slope),
-            offset: u_offset_v,
-            scale: scale * value,
+            gain: mean(&corrected.negative_v),
+            skew: -mean(&self.slope),
+            offset: 1.0,
+            scale: value,
             quantisation: quantisation_v,
             common_mode: 0.0,
         };
@@ -167,21 +175,18 @@ impl<'a> Bench<'a> {
     fn rms(&self) -> Found {
         let s = &self.sources;
         let corrected = self.input.corrected;
-        let (d, b) = (&corrected.difference_v, &corrected.negative_v);
-        let (value, noise, size) = without_noise(d, s.noise_v);
-        // Second order: what gain, skew and offset errors of this size add to the mean square whatever their sign. The
-        // slope's own noise, (2·8² + 2·1²)/12² per sample interval squared, is not the signal's.
-        let slope_noise = self.input.noise_n_v / s.gain / corrected.interval_s;
-        let steep = (product(&self.slope, &self.slope) - 130.0 / 144.0 * slope_noise * slope_noise).max(0.0);
-        let relative = s.u_gain / s.gain;
-        let second =
-            relative * relative * product(b, b) + s.u_skew_s * s.u_skew_s * steep + s.u_offset_v * s.u_offset_v;
+        let (value, noise, size) = without_noise(&corrected.difference_v, s.noise_v);
+        let model = power::model(self.input, s, &self.slope);
+        // Second order: what gain, skew and offset errors of this size add to the mean square whatever their sign.
+        let second = model.second_order(&s.errors);
+        // The noise power that is taken away is not known exactly itself.
+        let own = 0.5 * model.u_noise * model.noise / size;
         let parts = Parts {
-            noise,
-            gain: relative * product(d, b) / size,
-            skew: s.u_skew_s * product(d, &self.slope) / size,
-            offset: s.u_offset_v * mean(d) / size,
-            scale: s.scale * value,
+            noise: noise.hypot(own),
+            gain: model.linear[0] / size,
+            skew: model.linear[1] / size,
+            offset: model.linear[2] / size,
+            scale: value,
             quantisation: s.quantisation_v,
             // The mean square cannot rise by more than its square root does.
             common_mode: (0.5 * second / size).min(second.sqrt()),
@@ -196,10 +201,10 @@ impl<'a> Bench<'a> {
         let (value, noise, size) = without_noise(c, s.common_noise_v);
         let parts = Parts {
             noise,
-            gain: 0.5 * s.u_gain / s.gain * product(c, b) / size,
-            skew: 0.5 * s.u_skew_s * product(c, &self.slope) / size,
-            offset: 0.5 * s.u_offset_v * mean(c) / size,
-            scale: s.scale * value,
+            gain: -0.5 * product(c, b) / size,
+            skew: 0.5 * product(c, &self.slope) / size,
+            offset: -0.5 * mean(c) / size,
+            scale: value,
             quantisation: 0.5 * s.quantisation_v,
             common_mode: 0.0,
         };
@@ -213,8 +218,8 @@ impl<'a> Bench<'a> {
         // At the top and the bottom the slope is nil, so that skew does nothing to first order.
         let parts = Parts {
             noise: low.u.hypot(high.u),
-            gain: 0.5 * s.u_gain / s.gain * value,
-            scale: s.scale * value,
+            gain: -0.5 * value,
+            scale: value,
             quantisation: s.quantisation_v * std::f64::consts::FRAC_1_SQRT_2,
             ..Parts::default()
         };
@@ -243,10 +248,10 @@ impl<'a> Bench<'a> {
         };
         let parts = Parts {
             noise,
-            gain: s.u_gain / s.gain * gain,
-            skew: s.u_skew_s * skew,
-            offset: s.u_offset_v * offset,
-            scale: s.scale * value,
+            gain,
+            skew: -skew,
+            offset,
+            scale: value,
             quantisation: s.quantisation_v * steps,
             common_mode: 0.0,
         };
@@ -259,10 +264,10 @@ impl<'a> Bench<'a> {
         let Read { value, u } = read(&self.shape).unwrap_or(Read { value: 0.0, u: 0.0 });
         let parts = Parts {
             noise: u,
-            gain: half_change(self.by_gain.as_ref(), &read),
-            skew: half_change(self.by_skew.as_ref(), &read),
-            offset: s.u_offset_v * offset,
-            scale: s.scale * value,
+            gain: half_change(self.by_gain.as_ref(), &read) / s.step(0).max(f64::MIN_POSITIVE),
+            skew: -half_change(self.by_skew.as_ref(), &read) / s.step(1).max(f64::MIN_POSITIVE),
+            offset,
+            scale: value,
             quantisation: s.quantisation_v * peaks.sqrt(),
             common_mode: 0.0,
         };
@@ -277,8 +282,8 @@ impl<'a> Bench<'a> {
         let amplitude = high - low;
         let parts = Parts {
             noise: u,
-            gain: half_change(self.by_gain.as_ref(), &read),
-            skew: half_change(self.by_skew.as_ref(), &read),
+            gain: half_change(self.by_gain.as_ref(), &read) / self.sources.step(0).max(f64::MIN_POSITIVE),
+            skew: -half_change(self.by_skew.as_ref(), &read) / self.sources.step(1).max(f64::MIN_POSITIVE),
             quantisation: moves(self.sources.quantisation_v / amplitude, value),
             ..Parts::default()
         };

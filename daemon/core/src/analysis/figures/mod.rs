@@ -3,19 +3,26 @@
 //!
 //! What every figure has in its budget: *noise* (type A, measured per leg; the interpolation's noise gain is in it),
 //! *gain*, *skew* and *offset* of the correction with sensitivities from the capture itself (`∂D/∂g = N_c/g`,
-//! `∂D/∂τ = −N_c'`, `∂D/∂o = 1/g`), *scale* (the scope's gain specification, rectangular), *quantisation* (what a
-//! converter without enough noise leaves) and, for the rms, *common mode*: the second-order part of gain, skew and offset,
-//! which can only make it larger. The scope's time base is not among them: no specification of it is known here.
+//! `∂D/∂τ = −N_c'`, `∂D/∂o = 1/g`) and the correlation of gain and offset, what each of them may have drifted since
+//! (rectangular), *scale* (the scope's gain specification, rectangular) or *calibration* (a scale that was measured,
+//! normal), *quantisation* (what a converter without enough noise leaves) and, for the rms, *common mode*: the
+//! second-order part of gain, skew and offset, which can only make it larger. The scope's time base is not among them: no
+//! specification of it is known here.
+//!
+//! Every valid figure has an interval of 95 % ([`Coverage`]): from the budget, its largest rectangular term convolved with
+//! the rest; for an rms that the common mode limits, or that is hardly more than its uncertainty, by propagation
+//! ([`super::montecarlo`]).
 
 use super::Correction;
 use super::apply::Corrected;
-use super::budget::Term;
+use super::budget::{Coverage, Term};
 use super::grade::Grade;
 use super::leak::LeakBound;
 
 mod compute;
 mod kind;
 mod plain;
+mod power;
 mod shape;
 mod sources;
 mod sums;
@@ -50,6 +57,31 @@ pub struct FigureInput<'a> {
     pub clipped_n: usize,
     /// How many acquisitions were averaged into each record, at least 1.
     pub averages: u32,
+    /// What the budget allows for beside that.
+    pub allowance: Allowance,
+}
+
+/// What a budget allows for beside the correction's own uncertainty and the scope's specification. The default allows
+/// for nothing.
+#[derive(Debug, Clone, Copy, Default, PartialEq)]
+pub struct Allowance {
+    /// Relative standard uncertainty of the scale, where it was calibrated against a known amplitude.
+    pub scale_u: f64,
+    /// How many bins of the spectrum the noise was read from ([`super::noise::PairNoise`]); 0 for noise that is known.
+    pub noise_bins: usize,
+    /// How far the correction may have drifted since it was made.
+    pub drift: Drift,
+}
+
+/// How far a correction may have moved, as half-widths of rectangular distributions (JCGM 100, 4.3.7).
+#[derive(Debug, Clone, Copy, Default, PartialEq)]
+pub struct Drift {
+    /// Of the gain, relative: 0.002 for ±0.2 %.
+    pub gain: f64,
+    /// Of the skew in seconds.
+    pub skew_s: f64,
+    /// Of the offset in volts at the tips of the negative leg.
+    pub offset_v: f64,
 }
 
 /// A figure of the corrected difference (or of the common mode).
@@ -61,6 +93,8 @@ pub struct Figure {
     pub value: f64,
     /// Its standard uncertainty, in the same unit.
     pub u: f64,
+    /// The interval that holds the true value with 95 %; `None` when the figure is not valid.
+    pub coverage: Option<Coverage>,
     /// What plain subtraction gives, where it has such a figure.
     pub plain: Option<f64>,
     /// False when clipping or a missing feature makes it meaningless.
@@ -75,5 +109,7 @@ pub struct Figure {
 
 #[cfg(test)]
 mod coverage;
+#[cfg(test)]
+mod gtc;
 #[cfg(test)]
 mod tests;

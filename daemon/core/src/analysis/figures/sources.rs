@@ -1,6 +1,7 @@
 //! Where a figure's uncertainty comes from, and the budget made of it.
 
-use super::super::budget::{self, Distribution, Kind, Term};
+use super::super::budget::{self, Correlated, Distribution, Kind, Term};
+use super::super::montecarlo::Errors;
 use super::FigureInput;
 
 /// The sources that all figures of a capture share.
@@ -16,28 +17,36 @@ pub(super) struct Sources {
     pub(super) quantisation_v: f64,
     /// Standard uncertainty of the scale, relative.
     pub(super) scale: f64,
+    /// Relative standard uncertainty of a scale that was calibrated.
+    pub(super) scale_u: f64,
     pub(super) gain: f64,
-    pub(super) u_gain: f64,
-    pub(super) u_skew_s: f64,
-    /// Standard uncertainty of the offset as it appears in the difference.
-    pub(super) u_offset_v: f64,
+    /// The correction's errors as they appear in the difference: gain relative, skew in seconds, offset over g.
+    pub(super) errors: Errors,
 }
 
-/// A figure's contributions, each as a standard uncertainty of either sign; see [`Sources::budget`].
+/// What moves a figure: for the correction's errors sensitivities of either sign, for the rest standard uncertainties.
 #[derive(Debug, Clone, Copy, Default)]
 pub(super) struct Parts {
+    /// Standard uncertainty from noise.
     pub(super) noise: f64,
+    /// What the figure changes per relative error of the gain.
     pub(super) gain: f64,
+    /// What it changes per second of skew.
     pub(super) skew: f64,
+    /// What it changes per volt in the difference.
     pub(super) offset: f64,
+    /// What it changes per relative error of the scale.
     pub(super) scale: f64,
+    /// Standard uncertainty from quantisation without enough noise.
     pub(super) quantisation: f64,
+    /// Standard uncertainty from the correction's errors in second order.
     pub(super) common_mode: f64,
 }
 
 impl Sources {
     pub(super) fn of(input: &FigureInput<'_>) -> Self {
-        let gain = input.correction.gain.value;
+        let (correction, drift) = (input.correction, &input.allowance.drift);
+        let gain = correction.gain.value;
         let negative = input.noise_n_v / gain.abs();
         let noise_v = input.noise_p_v.hypot(negative * input.corrected.noise_gain.sqrt());
         let leg = |step_v: f64, noise_v: f64| {
@@ -53,11 +62,20 @@ impl Sources {
             quantisation_v: leg(input.step_p_v, input.noise_p_v)
                 .hypot(leg(input.step_n_v, input.noise_n_v) / gain.abs()),
             scale: input.scale_spec / 3.0f64.sqrt(),
+            scale_u: input.allowance.scale_u,
             gain,
-            u_gain: input.correction.gain.u,
-            u_skew_s: input.correction.skew_s.u,
-            u_offset_v: (input.correction.offset_v.u / gain).abs(),
+            errors: Errors {
+                u: [correction.gain.u / gain.abs(), correction.skew_s.u, correction.offset_v.u / gain.abs()],
+                drift: [drift.gain, drift.skew_s, drift.offset_v / gain.abs()],
+                gain_offset: correction.gain_offset.clamp(-1.0, 1.0),
+            },
         }
+    }
+
+    /// Standard uncertainty of one of the correction's errors, drift included: the step by which sensitivities are
+    /// found.
+    pub(super) fn step(&self, error: usize) -> f64 {
+        self.errors.u[error].hypot(self.errors.drift[error] / 3.0f64.sqrt())
     }
 }
 
@@ -77,17 +95,41 @@ impl Parts {
 
     /// The terms that contribute anything, largest first. The correction's estimates count as type B: they were made
     /// before and elsewhere (JCGM 100, 4.3.1).
-    pub(super) fn budget(self) -> Vec<Term> {
-        let term = |name, u: f64, kind, distribution| Term { name, u: u.abs(), kind, distribution };
+    pub(super) fn budget(self, sources: &Sources) -> Vec<Term> {
+        let Errors { u, drift, gain_offset } = sources.errors;
+        let term = |name, u: f64, kind, distribution, sensitivity| Term {
+            name,
+            u: u.abs(),
+            kind,
+            distribution,
+            sensitivity,
+            correlated: None,
+        };
+        let own = |name, u, kind| term(name, u, kind, Distribution::Normal, None);
+        // As sensitivities to g, τ and o themselves.
+        let per = [self.gain / sources.gain.abs(), self.skew, self.offset / sources.gain.abs()];
+        let normal = |name, part: f64, u: f64, per| term(name, part * u, Kind::B, Distribution::Normal, Some(per));
+        let within = |name, part: f64, half: f64, per| {
+            term(name, part * half / 3.0f64.sqrt(), Kind::B, Distribution::Rectangular, Some(per))
+        };
         let mut terms = vec![
-            term("noise", self.noise, Kind::A, Distribution::Normal),
-            term("gain", self.gain, Kind::B, Distribution::Normal),
-            term("skew", self.skew, Kind::B, Distribution::Normal),
-            term("offset", self.offset, Kind::B, Distribution::Normal),
-            term("scale", self.scale, Kind::B, Distribution::Rectangular),
-            term("quantisation", self.quantisation, Kind::B, Distribution::Normal),
-            term("common mode", self.common_mode, Kind::B, Distribution::Normal),
+            own("noise", self.noise, Kind::A),
+            normal("gain", self.gain, u[0], per[0]),
+            normal("skew", self.skew, u[1], per[1]),
+            normal("offset", self.offset, u[2], per[2]),
+            within("gain drift", self.gain, drift[0], per[0]),
+            within("skew drift", self.skew, drift[1], per[1]),
+            within("offset drift", self.offset, drift[2], per[2]),
+            term("scale", self.scale * sources.scale, Kind::B, Distribution::Rectangular, Some(self.scale)),
+            normal("calibration", self.scale, sources.scale_u, self.scale),
+            own("quantisation", self.quantisation, Kind::B),
+            own("common mode", self.common_mode, Kind::B),
         ];
+        let coefficient = gain_offset * (self.gain * self.offset).signum();
+        if gain_offset != 0.0 && terms[1].u > 0.0 && terms[3].u > 0.0 {
+            terms[1].correlated = Some(Correlated { with: "offset", coefficient });
+            terms[3].correlated = Some(Correlated { with: "gain", coefficient });
+        }
         terms.retain(|t| t.u > 0.0);
         terms.sort_by(|a, b| b.u.total_cmp(&a.u));
         terms

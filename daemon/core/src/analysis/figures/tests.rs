@@ -1,5 +1,6 @@
 #![allow(clippy::unwrap_used, clippy::float_cmp)]
 use super::*;
+use crate::analysis::budget::Basis;
 use crate::analysis::{Correction, Estimate, Record, Samples, apply, leak};
 use crate::units::Unit;
 use rand::SeedableRng;
@@ -62,6 +63,7 @@ impl Scene {
             skew_s: Estimate { value: self.skew_s, u: u_skew_s },
             gain: Estimate { value: self.gain, u: u_gain },
             offset_v: Estimate { value: self.offset_v, u: u_offset_v },
+            gain_offset: 0.0,
         }
     }
 
@@ -81,6 +83,7 @@ impl Scene {
             clipped_p: 0,
             clipped_n: 0,
             averages: 1,
+            allowance: Allowance::default(),
         })
     }
 }
@@ -165,6 +168,31 @@ fn grades_follow_the_leak_bound() {
     assert_eq!(of(&hopeless, FigureKind::Rms).grade, Grade::Swamped);
 }
 
+/// Where the difference is next to nothing the rms's interval is propagated: it contains the truth, does not go below
+/// zero, and says whether the common mode or the noise is what limits it.
+#[test]
+fn a_small_rms_has_an_interval_that_is_not_symmetric() {
+    let scene = scene();
+    let quiet = scene.acquire(4, |_| 0.05);
+    let figures = scene.figures(&quiet, &scene.correction(1e-12, 5e-3, 1e-2), 0.0);
+    let rms = of(&figures, FigureKind::Rms);
+    let limited = rms.coverage.unwrap();
+    assert_eq!(limited.basis, Basis::CommonMode);
+    assert!(limited.low >= 0.0 && limited.low <= 0.05 && limited.high >= 0.05, "{limited:?}");
+    assert!(limited.high - rms.value > 2.0 * (rms.value - limited.low), "{limited:?}");
+    // 0.5 % of the node's 48 V for two fifths of the time, 30 V rms: the upper end knows it.
+    assert!(limited.high > 0.15 && limited.high < 0.5, "{limited:?}");
+    let nothing = scene.acquire(5, |_| 0.0);
+    let noisy = scene.figures(&nothing, &scene.correction(0.0, 0.0, 0.0), 0.0);
+    let noise = of(&noisy, FigureKind::Rms).coverage.unwrap();
+    assert_eq!(noise.basis, Basis::Propagated);
+    assert!(noise.low.abs() < 1e-12 && noise.high < 0.02, "{noise:?}");
+    let sure = of(&scene.figures(&scene.acquire(3, gate), &scene.correction(1e-12, 1e-5, 1e-4), 0.02), FigureKind::Rms)
+        .coverage
+        .unwrap();
+    assert_eq!(sure.basis, Basis::Rectangular);
+}
+
 #[test]
 fn a_sine_has_a_frequency_but_no_levels() {
     let scene = scene();
@@ -215,15 +243,17 @@ fn clipping_makes_every_figure_invalid_and_says_how_much() {
         clipped_p: 3,
         clipped_n: 0,
         averages: 1,
+        allowance: Allowance::default(),
     };
     for f in compute(&input) {
-        assert!(!f.valid && f.why.is_some() && f.plain.is_none());
+        assert!(!f.valid && f.why.is_some() && f.plain.is_none() && f.coverage.is_none());
     }
     // Noise of an eighth of a step leaves a quantisation that no averaging takes away.
     let figures = compute(&FigureInput { clipped_p: 0, ..input });
     let mean = of(&figures, FigureKind::Mean);
     let term = mean.budget.iter().find(|t| t.name == "quantisation").unwrap();
     assert!(term.u > 0.09 && term.u < 0.13, "{mean:?}");
+    assert!(mean.coverage.unwrap().half_width() > 1.9 * mean.u);
     let scale = mean.budget.iter().find(|t| t.name == "scale").unwrap();
     assert!((scale.u - 0.01 / 3.0f64.sqrt() * mean.value).abs() < 1e-9);
 }

@@ -6,6 +6,7 @@ fn correction(u_gain: f64, u_skew_s: f64, u_offset_v: f64) -> Correction {
         skew_s: Estimate { value: 0.0, u: u_skew_s },
         gain: Estimate { value: 1.0, u: u_gain },
         offset_v: Estimate { value: 0.0, u: u_offset_v },
+        gain_offset: 0.0,
     }
 }
 

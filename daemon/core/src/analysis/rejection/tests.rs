@@ -8,7 +8,7 @@ use statrs::function::erf::erf;
 
 fn correction(skew_s: f64, gain: f64, offset_v: f64) -> Correction {
     let exact = |value| Estimate { value, u: 0.0 };
-    Correction { skew_s: exact(skew_s), gain: exact(gain), offset_v: exact(offset_v) }
+    Correction { skew_s: exact(skew_s), gain: exact(gain), offset_v: exact(offset_v), gain_offset: 0.0 }
 }
 
 /// Expected from the closed form in other words: gain alone `(1 + g)/(2|1 − g|)`, skew alone `½·cot(πfτ)`.

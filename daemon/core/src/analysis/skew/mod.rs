@@ -91,7 +91,15 @@ impl SkewEstimate {
     /// The estimates as a correction.
     #[must_use]
     pub fn correction(&self) -> Correction {
-        Correction { skew_s: self.skew_s, gain: self.gain, offset_v: self.offset_v }
+        Correction { skew_s: self.skew_s, gain: self.gain, offset_v: self.offset_v, gain_offset: self.gain_offset() }
+    }
+
+    /// Correlation coefficient of gain and offset, from their covariance; 0 where either has no uncertainty.
+    #[must_use]
+    pub fn gain_offset(&self) -> f64 {
+        let [_, [_, gg, go], [.., oo]] = self.covariance;
+        let product = (gg * oo).sqrt();
+        if product > 0.0 { (go / product).clamp(-1.0, 1.0) } else { 0.0 }
     }
 
     /// Takes the converter into account: `step_p_v` and `step_n_v` volts per step, records averaged over `averages`

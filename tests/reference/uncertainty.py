@@ -1,0 +1,104 @@
+"""Reference values for the uncertainty side of the analysis, made with GTC, numpy and scipy.
+
+    python -m venv VENV && VENV/bin/pip install -r requirements.txt
+    VENV/bin/python uncertainty.py           # writes vectors/budget.json and vectors/half_width.json
+    VENV/bin/python uncertainty.py --check   # computes them again and compares with what is stored
+
+The unit tests of the core read the files. GTC (the GUM Tree Calculator) propagates uncertain numbers by automatic
+differentiation through the formulas below, sample by sample; it shares no formula with the core.
+"""
+
+import json
+import sys
+from pathlib import Path
+
+import numpy as np
+from GTC import component, get_correlation, result, set_correlation, sqrt, type_b, ureal, value, uncertainty
+from scipy import integrate, optimize, stats
+
+HERE = Path(__file__).parent / "vectors"
+
+
+def slope(b, interval):
+    """Five-point central difference; the two samples at each end repeat their neighbour."""
+    s = np.empty_like(b)
+    s[2:-2] = (8 * (b[3:-1] - b[1:-3]) - (b[4:] - b[:-4])) / (12 * interval)
+    s[:2], s[-2:] = s[2], s[-3]
+    return s
+
+
+def budget():
+    """A difference of 240 samples on a swinging node: mean and rms with their budgets.
+
+    D_i = (1 + e)·(P_i − (N_i − o)/g − b'_i·t), b' the slope of (N − o)/g: what a skew error t adds to N(t + τ).
+    Gain and offset are correlated; the scale e is rectangular; each sample of each leg has its own noise.
+    """
+    rng = np.random.default_rng(20)
+    n, interval = 240, 1e-9
+    t = np.arange(n)
+    node = 24.0 + 24.0 * np.tanh(8 * np.sin(2 * np.pi * t / 97.0))
+    d = 3.0 + 2.0 * np.sin(2 * np.pi * t / 31.0) + 0.1 * rng.normal(size=n)
+    gain, offset = 0.97, 0.3
+    positive, negative = node + d, gain * node + offset
+    # Small against the signal: the part of second order (s² against R²) must stay below what is compared.
+    noise_p, noise_n = 2e-4, 3e-4
+    u_gain, u_offset, r, u_skew, spec = 4e-4, 9e-3, -0.7, 15e-12, 5e-4
+
+    g, o = ureal(gain, u_gain, independent=False, label="gain"), ureal(offset, u_offset, independent=False, label="offset")
+    set_correlation(r, g, o)
+    skew = ureal(0.0, u_skew, label="skew")
+    e = ureal(0.0, type_b.uniform(spec), label="scale")
+    p = [ureal(x, noise_p) for x in positive]
+    q = [ureal(x, noise_n) for x in negative]
+    b = (negative - offset) / gain
+    db = slope(b, interval)
+    difference = [result((1 + e) * (p[i] - (q[i] - o) / g - db[i] * skew)) for i in range(n)]
+    mean = result(sum(difference) / n)
+    rms = result(sqrt(sum(x * x for x in difference) / n))
+    parts = lambda y: dict(
+        value=value(y), u=uncertainty(y),
+        noise=float(np.sqrt(sum(component(y, x) ** 2 for x in p + q))),
+        gain=abs(component(y, g)), offset=abs(component(y, o)), skew=abs(component(y, skew)), scale=abs(component(y, e)))
+    return dict(
+        difference=(positive - b).tolist(), negative=b.tolist(), interval_s=interval, gain=gain, offset_v=offset,
+        u_gain=u_gain, u_offset_v=u_offset, gain_offset=get_correlation(g, o), u_skew_s=u_skew, scale_spec=spec,
+        noise_p_v=noise_p, noise_n_v=noise_n, mean=parts(mean), rms=parts(rms))
+
+
+def half_width():
+    """95 % half-width of N(0, u) convolved with a rectangular distribution of ±a: the convolution by quadrature."""
+    cases = []
+    for u, a in [(1, 0.01), (1, 0.3), (1, 1), (1, 3), (0.3, 1), (0.1, 1), (0.03, 1), (1e-3, 1)]:
+        def holds(x):
+            # P(|S| <= x), with Y uniform on (-a, a): the mean over y of P(-x - y <= X <= x - y).
+            f = lambda y: stats.norm.cdf((x - y) / u) - stats.norm.cdf((-x - y) / u)
+            inner = [p for p in (x - 5 * u, x, x + 5 * u) if 0 < p < a]
+            return integrate.quad(f, 0, a, points=inner or None, epsabs=1e-13, epsrel=1e-13, limit=400)[0] / a - 0.95
+        cases.append([u, a, optimize.brentq(holds, 1e-6, 4 * u + a, xtol=1e-14, rtol=1e-14)])
+    return dict(cases=cases)
+
+
+def same(stored, found, where):
+    """Whether all numbers agree to 1e-9, and everything else exactly."""
+    if isinstance(stored, dict) and isinstance(found, dict) and stored.keys() == found.keys():
+        return all([same(stored[k], found[k], f"{where}.{k}") for k in stored])
+    if isinstance(stored, list) and isinstance(found, list) and len(stored) == len(found):
+        return all([same(a, b, f"{where}[{i}]") for i, (a, b) in enumerate(zip(stored, found))])
+    ok = isinstance(stored, (int, float)) and abs(stored - found) <= 1e-9 * abs(stored) + 1e-15
+    if not ok:
+        print(f"{where}: stored {stored}, found {found}")
+    return ok
+
+
+if __name__ == "__main__":
+    check = "--check" in sys.argv[1:]
+    good = True
+    for name, make in dict(budget=budget, half_width=half_width).items():
+        found, path = make(), HERE / f"{name}.json"
+        if check:
+            good &= same(json.loads(path.read_text()), found, name)
+        else:
+            path.write_text(json.dumps(found, separators=(",", ":")) + "\n")
+    if check:
+        print("the stored vectors are those of this script" if good else "the stored vectors differ")
+    sys.exit(0 if good else 1)
