@@ -10,6 +10,7 @@
 //! Printed for skew, gain and offset: standard deviation over bound (SE), bias over bound (SE), and the share of trials
 //! in which the error is within twice the stated standard uncertainty. Then a verdict for each mark:
 //! spread ≤ 1.05 (plus two SE), |bias| ≤ 0.1 (plus two SE), share 94 to 96.5 % (with two SE).
+//! `estimator_marks time` prints instead how long an estimate takes (medians of 15) from records of converter codes.
 //! Seeds: 70 000 + case number; ChaCha8, one stream a thread and case. Several minutes.
 
 #![allow(dead_code, clippy::unwrap_used, unreachable_pub)]
@@ -17,7 +18,8 @@
 #[path = "../src/analysis/skew/signals.rs"]
 mod signals;
 
-use evenpair_core::analysis::skew::{Reference, Shape, SkewEstimate, estimate};
+use evenpair_core::analysis::skew::{Reference, Shape, SkewEstimate, estimate, estimate_records};
+use evenpair_core::analysis::{Record, Samples};
 use signals::{Dice, Signal, Truth, quantise};
 
 /// Streams of random numbers a case is split into; the result does not depend on the machine.
@@ -137,7 +139,40 @@ fn trial(found: &SkewEstimate, truth: &Truth, bound: [f64; 3]) -> Trial {
     })
 }
 
+/// Milliseconds of an estimate from codes, median of 15.
+fn time() {
+    for (samples, edges) in [(100_000, 4.0), (1_000_000, 20.0), (10_000_000, 20.0)] {
+        let signal = Signal::Square { period: 2.0 * samples as f64 / edges, rise: 10.0, phase: 0.02 * samples as f64 };
+        let (p, n) = Dice::new(69_000).records(&signal, &Truth::with_noise(0.01), samples);
+        let record = |volts: &[f64]| Record {
+            samples: Samples::Codes(volts.iter().map(|v| (v / 0.01).round() as i16).collect()),
+            volts_per_code: 0.01,
+            zero_v: 0.0,
+            interval_s: 1e-9,
+            start_s: 0.0,
+            end_codes: (-128.0, 127.0),
+            step_v: 0.01,
+            averages: 1,
+        };
+        let (p, n) = (record(&p), record(&n));
+        let mut all: Vec<f64> = (0..15)
+            .map(|_| {
+                let begun = std::time::Instant::now();
+                let found = estimate_records(&p, &n, &Reference { shape: Shape::Edges, period_s: None }).unwrap();
+                let ms = begun.elapsed().as_secs_f64() * 1e3;
+                assert!((found.skew_s.value - 3.3e-9).abs() < 0.1e-9, "{found:?}");
+                ms
+            })
+            .collect();
+        all.sort_by(f64::total_cmp);
+        println!("{samples:>9} samples, {edges} edges: {:.2} ms (least {:.2})", all[all.len() / 2], all[0]);
+    }
+}
+
 fn main() {
+    if std::env::args().nth(1).is_some_and(|text| text == "time") {
+        return time();
+    }
     let mut arguments = std::env::args().skip(1);
     let trials: usize = arguments.next().and_then(|text| text.parse().ok()).unwrap_or(1000);
     let only = arguments.next();

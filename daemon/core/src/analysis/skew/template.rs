@@ -2,7 +2,7 @@
 
 use super::super::interpolate::BAND;
 use super::super::line::mean;
-use super::super::spectrum::{Fourier, SpectrumError, fast_length};
+use super::super::spectrum::{Fourier, SpectrumError, cosines, fast_length};
 use super::Shape;
 use realfft::num_complex::Complex;
 
@@ -128,9 +128,10 @@ fn sharpen(
     let least = 1.0 + 3.0 / ((2 * half + 1) as f64).sqrt();
     let mut energy = 0.0;
     let mut weights = vec![1.0; power.len()];
-    for (k, weight) in weights.iter_mut().enumerate().skip(1) {
-        let omega = std::f64::consts::TAU * k as f64 / length as f64;
-        let difference = 4.0 * (omega / 2.0).sin().powi(2);
+    let turn = std::f64::consts::TAU / length as f64;
+    for (k, (weight, cosine)) in weights.iter_mut().zip(cosines(0.0, turn)).enumerate().skip(1) {
+        let omega = turn * k as f64;
+        let difference = 2.0 * (1.0 - cosine);
         let (from, to) = (k.saturating_sub(half), (k + half + 1).min(power.len()));
         let seen = (running[to] - running[from]) / (to - from) as f64;
         let expected = noise * open as f64 * difference;

@@ -31,7 +31,8 @@ impl Blocks {
         let from = (-whole).max(0).unsigned_abs();
         let (mut means_p, mut means_n) = (p.block_means(from), n.block_means(whole.max(0).unsigned_abs()));
         let count = means_p.len().min(means_n.len());
-        (means_p.truncate(count), means_n.truncate(count));
+        means_p.truncate(count);
+        means_n.truncate(count);
         let level = mean(&means_p);
         let spread = means_p.iter().map(|x| (x - level).powi(2)).sum::<f64>() / count as f64;
         let mut open = vec![true; count];
