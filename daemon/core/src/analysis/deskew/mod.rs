@@ -4,7 +4,7 @@
 //! what the single uncertainties promise and what the scatter shows (type A, JCGM 100, 4.2). Repeats are not averaged
 //! down where the converter has too little dither: its error is then the same in all of them.
 
-use super::skew::{SkewEstimate, Warning};
+use super::skew::{Limit, SkewEstimate, Warning, limit_of};
 use super::{Correction, Estimate};
 use statrs::distribution::{ContinuousCDF, StudentsT};
 
@@ -50,6 +50,26 @@ impl Combined {
             gain: self.gain.estimate,
             offset_v: self.offset_v.estimate,
             gain_offset: self.gain_offset,
+        }
+    }
+
+    /// What limits the skew most, when it is carried to another range with the standard uncertainty `carry_u_s`
+    /// (zero: it is used where it was taken).
+    #[must_use]
+    pub fn limited_by(&self, carry_u_s: f64) -> Limit {
+        match limit_of(&self.warnings) {
+            Some(Limit::Ambiguity) => Limit::Ambiguity,
+            _ if carry_u_s > self.skew_s.estimate.u => Limit::Carry,
+            Some(limit) => limit,
+            // Two standard deviations of a scatter's own uncertainty: with few repeats it is large by chance.
+            None if self.skew_s.scatter.is_some_and(|scatter| {
+                let chance = 1.0 + 2.0 / (2.0 * (self.repeats as f64 - 1.0)).sqrt();
+                scatter > chance * self.skew_s.promised
+            }) =>
+            {
+                Limit::Scatter
+            }
+            None => Limit::Noise,
         }
     }
 }

@@ -2,8 +2,10 @@
 //!
 //! The noise is taken as white: a leg's value is its rms per sample, quantisation included.
 
+use super::Estimate;
 use super::line::{mean, sum};
 use super::spectrum::{SpectrumError, hann};
+use realfft::num_complex::Complex;
 
 /// The noise of a pair's legs.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -46,35 +48,79 @@ pub fn from_repeats(first: &[f64], second: &[f64]) -> Option<f64> {
 /// # Errors
 /// Only a mistake of the program, see [`SpectrumError`].
 pub fn out_of_band(p: &[f64], n: &[f64], gain: f64) -> Result<Option<PairNoise>, SpectrumError> {
-    let (spectrum_p, length) = hann(p)?;
-    let (spectrum_n, _) = hann(n)?;
-    let last = ((HIGHEST * length as f64) as usize).min(spectrum_p.len());
-    if last < 2 * ENOUGH_BINS {
-        return Ok(None);
-    }
-    let power = |spectrum: &[realfft::num_complex::Complex<f64>]| -> Vec<f64> {
-        spectrum[..last].iter().map(|bin| bin.norm_sqr()).collect()
-    };
-    let (power_p, power_n) = (power(&spectrum_p), power(&spectrum_n));
-    let (floor_p, floor_n) = (floor(&power_p), floor(&power_n));
-    let loud = |k: usize| power_p[k] > QUIET * floor_p || power_n[k] > QUIET * floor_n;
-    // A window's main lobe reaches two bins to either side of a line.
-    let mut quiet = vec![true; last];
-    for k in (0..last).filter(|&k| k < 3 || loud(k)) {
-        quiet[k.saturating_sub(2)..(k + 3).min(last)].fill(false);
-    }
-    let kept: Vec<usize> = (0..last).filter(|&k| quiet[k]).collect();
-    if kept.len() < ENOUGH_BINS {
-        return Ok(None);
-    }
-    let count = kept.len() as f64;
-    let total_p = sum(kept.iter().map(|&k| power_p[k])) / count;
-    let total_n = sum(kept.iter().map(|&k| power_n[k])) / count;
-    let common = sum(kept.iter().map(|&k| (spectrum_p[k].conj() * spectrum_n[k]).re)) / count;
+    let Some(quiet) = Quiet::of(p, n)? else { return Ok(None) };
+    let count = quiet.bins.len() as f64;
+    let common = sum(quiet.cross().map(|(_, cross)| cross.re)) / count;
     // Chance may make the common part too large; it never explains nearly all of the noise of either leg. Cutting it
     // off at zero, where chance makes it negative, would bias the noise.
     let rest = |total: f64, common: f64| (total - common).max(total / 10.0).sqrt();
-    Ok(Some(PairNoise { p_v: rest(total_p, common / gain), n_v: rest(total_n, common * gain), bins: kept.len() }))
+    let (total_p, total_n) = (quiet.power(&quiet.p), quiet.power(&quiet.n));
+    Ok(Some(PairNoise { p_v: rest(total_p, common / gain), n_v: rest(total_n, common * gain), bins: quiet.bins.len() }))
+}
+
+/// The correlation of the legs' noise at the same instant, from the quiet bins; `p` was delayed by `skew` samples to
+/// align it with `n`. `None` when too few bins are quiet.
+///
+/// What is left of the signal is in phase there; noise that both legs got at the same time is out of phase by ωτ. So
+/// only the imaginary part counts: `ρ = Σ Im(P*N)·sin ωτ / (Σ sin² ωτ·σ_P·σ_N)`. At no skew there is none, and the
+/// uncertainty is infinite: noise in step with the signal cannot be told from it, nor does it pull the skew.
+///
+/// # Errors
+/// Only a mistake of the program, see [`SpectrumError`].
+pub fn correlated(p: &[f64], n: &[f64], skew: f64) -> Result<Option<Estimate>, SpectrumError> {
+    let Some(quiet) = Quiet::of(p, n)? else { return Ok(None) };
+    let scale = (quiet.power(&quiet.p) * quiet.power(&quiet.n)).sqrt();
+    let sine = |k: usize| (std::f64::consts::TAU * k as f64 / quiet.length as f64 * skew).sin();
+    let weight = sum(quiet.bins.iter().map(|&k| sine(k).powi(2)));
+    let along = sum(quiet.cross().map(|(k, cross)| cross.im * sine(k)));
+    if weight.is_nan() || scale.is_nan() || weight <= 0.0 || scale <= 0.0 {
+        return Ok(None);
+    }
+    // Each bin's part has variance ½; Hann's window makes neighbours alike: 1 + 2·(4/9 + 1/36) = 1.94, and more with
+    // the zeros that the record was extended by.
+    let alike = 1.94 * quiet.length as f64 / p.len() as f64;
+    Ok(Some(Estimate { value: along / (weight * scale), u: (alike / 2.0 / weight).sqrt() }))
+}
+
+/// The spectra of both legs and the bins in which neither has a signal.
+struct Quiet {
+    p: Vec<Complex<f64>>,
+    n: Vec<Complex<f64>>,
+    length: usize,
+    bins: Vec<usize>,
+}
+
+impl Quiet {
+    fn of(p: &[f64], n: &[f64]) -> Result<Option<Self>, SpectrumError> {
+        let (spectrum_p, length) = hann(p)?;
+        let (spectrum_n, _) = hann(n)?;
+        let last = ((HIGHEST * length as f64) as usize).min(spectrum_p.len());
+        if last < 2 * ENOUGH_BINS {
+            return Ok(None);
+        }
+        let power =
+            |spectrum: &[Complex<f64>]| -> Vec<f64> { spectrum[..last].iter().map(|bin| bin.norm_sqr()).collect() };
+        let (power_p, power_n) = (power(&spectrum_p), power(&spectrum_n));
+        let (floor_p, floor_n) = (floor(&power_p), floor(&power_n));
+        let loud = |k: usize| power_p[k] > QUIET * floor_p || power_n[k] > QUIET * floor_n;
+        // A window's main lobe reaches two bins to either side of a line.
+        let mut quiet = vec![true; last];
+        for k in (0..last).filter(|&k| k < 3 || loud(k)) {
+            quiet[k.saturating_sub(2)..(k + 3).min(last)].fill(false);
+        }
+        let bins: Vec<usize> = (0..last).filter(|&k| quiet[k]).collect();
+        Ok((bins.len() >= ENOUGH_BINS).then_some(Self { p: spectrum_p, n: spectrum_n, length, bins }))
+    }
+
+    /// Mean power of a leg per quiet bin.
+    fn power(&self, spectrum: &[Complex<f64>]) -> f64 {
+        sum(self.bins.iter().map(|&k| spectrum[k].norm_sqr())) / self.bins.len() as f64
+    }
+
+    /// Number and cross-spectrum of each quiet bin.
+    fn cross(&self) -> impl Iterator<Item = (usize, Complex<f64>)> {
+        self.bins.iter().map(|&k| (k, self.p[k].conj() * self.n[k]))
+    }
 }
 
 /// A first value of the noise power per bin: lower quartile of the medians of bands in the upper half. A median does

@@ -24,7 +24,9 @@ pub enum SkewError {
         level_v: f64,
     },
     /// The gain is outside what two like legs can have.
-    #[error("the negative leg's gain comes out as {gain}: check that both channels have the right probe attenuation")]
+    #[error(
+        "the negative leg's gain comes out as {gain:.3e}: check that both channels are set to their probes' attenuation"
+    )]
     Gain {
         /// The gain.
         gain: f64,
@@ -71,6 +73,14 @@ pub enum SkewError {
         /// Samples left.
         samples: usize,
     },
+    /// The record holds no sine that could be fitted.
+    #[error(
+        "no sine could be fitted (about {periods:.1} periods in the record): use a record of two periods or more of a sine"
+    )]
+    NoSine {
+        /// Periods in the record where the fit was given up.
+        periods: f64,
+    },
     /// A sample or the interval is not a usable number.
     #[error("{what} is not a usable number: read the records again")]
     NotFinite {
@@ -86,6 +96,16 @@ pub enum SkewError {
         steps: usize,
         /// Where it was, in seconds.
         skew_s: f64,
+    },
+    /// One leg shows noise where the other shows a signal.
+    #[error(
+        "the {leg} leg shows only noise ({rms_v:.2e} V rms): check that its tip is on the reference and its channel and route are the right ones"
+    )]
+    OnlyNoise {
+        /// `positive` or `negative`.
+        leg: &'static str,
+        /// Its noise, volts rms.
+        rms_v: f64,
     },
     /// Too few samples.
     #[error("{samples} samples are too few for a skew, {needed} are needed: use a longer record")]
@@ -108,6 +128,11 @@ pub enum Warning {
         /// The other skew in seconds.
         alternative_s: f64,
     },
+    /// The gain is near a power of ten: a probe's attenuation is not the one its channel is set to.
+    Attenuation {
+        /// The gain.
+        gain: f64,
+    },
     /// The gain is far from 1; the legs are not alike.
     GainFarFromOne {
         /// The gain.
@@ -117,6 +142,11 @@ pub enum Warning {
     LittleDither {
         /// The noise in converter steps.
         steps: f64,
+    },
+    /// The legs' noise is alike at the same instant: it comes from what they share, and pulls a skew towards zero.
+    NoiseCorrelated {
+        /// The correlation coefficient.
+        correlation: f64,
     },
     /// The noise of the legs could not be told apart, so it was taken as equal; the gain may be a little off.
     NoiseSplitAssumed,
@@ -132,7 +162,16 @@ impl std::fmt::Display for Warning {
     fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
         match self {
             Self::Ambiguous { alternative_s } => {
-                write!(f, "the reference repeats: a skew of {alternative_s:e} s fits as well; use a longer period")
+                write!(f, "the reference repeats: a skew of {alternative_s:.3e} s fits as well; use a longer period")
+            }
+            Self::Attenuation { gain } => {
+                let (leg, times) = if *gain > 1.0 { ("negative", *gain) } else { ("positive", 1.0 / gain) };
+                let factor = 10f64.powf(times.log10().round());
+                write!(
+                    f,
+                    "the {leg} leg reads {times:.3} times the other: set both channels to the attenuation of their \
+                     probes, one of them is wrong by {factor:.0}"
+                )
             }
             Self::GainFarFromOne { gain } => {
                 write!(f, "the legs' gains differ by more than 20 % (gain {gain:.4}): check the probes' attenuation")
@@ -141,10 +180,17 @@ impl std::fmt::Display for Warning {
                 f,
                 "only {steps:.2} converter steps of noise: quantisation is not averaged out; use a smaller vertical range"
             ),
+            Self::NoiseCorrelated { correlation } => write!(
+                f,
+                "the legs' noise is correlated ({correlation:.2}): it comes from what they share, such as the scope's \
+                 supply or its ground; average more acquisitions, or use a stronger reference"
+            ),
             Self::NoiseSplitAssumed => f.write_str("the legs' noise could not be told apart and was taken as equal"),
             Self::ResponsesDiffer { excess_v } => write!(
                 f,
-                "beyond noise the aligned legs still differ by {excess_v:e} V rms: their responses are not the same"
+                "beyond noise the aligned legs still differ by {excess_v:.2e} V rms: their responses are not the same, \
+                 so that the skew is the one of this reference and another edge time or frequency has another; \
+                 deskew on a signal like the one to be measured, or correct the response too"
             ),
         }
     }

@@ -1,12 +1,13 @@
 //! The estimate itself: from the coarse lag to the root of the score, then the uncertainties.
 
+use super::super::coarse;
 use super::super::interpolate::Interpolator;
 use super::super::line::mean;
 use super::super::noise::{PairNoise, out_of_band};
-use super::super::{Estimate, coarse};
+use super::report::report;
 use super::score::Solved;
 use super::template::{Template, build};
-use super::{Reference, SkewError, SkewEstimate, Warning};
+use super::{Reference, Shape, SkewError, SkewEstimate};
 
 /// Fewest samples of a record that are worth an estimate.
 pub(super) const LEAST_SAMPLES: usize = 256;
@@ -16,8 +17,9 @@ const LEAST_LEFT: usize = 128;
 pub(super) const LEAST_CORRELATION: f64 = 0.4;
 /// Gains outside are no pair of like legs.
 pub(super) const GAINS: std::ops::RangeInclusive<f64> = 0.05..=20.0;
-/// Gains outside are worth a warning.
-const USUAL_GAINS: std::ops::RangeInclusive<f64> = 0.8..=1.25;
+/// Share of white noise in a leg's variance above which it shows nothing else, and below which it shows a signal.
+const ONLY_NOISE: f64 = 0.8;
+const SOME_SIGNAL: f64 = 0.5;
 /// Steps after which the search is given up; it needs three or four from a lag that is right to a sample.
 const STEPS: usize = 40;
 /// Longest step of the skew, in samples.
@@ -28,9 +30,8 @@ const NOISE_STEPS: usize = 3;
 const PATIENCE: usize = 12;
 /// Samples left out at each end, so that a template still fits when the skew passes a whole sample.
 const MARGIN: usize = 2;
-/// Residual over expected noise, in power, from which the legs' responses are said to differ.
-pub(super) const DIFFERENT: f64 = 1.3;
 
+/// The estimate from all samples of both legs.
 pub(super) fn estimate(
     p: &[f64],
     n: &[f64],
@@ -39,11 +40,70 @@ pub(super) fn estimate(
 ) -> Result<SkewEstimate, SkewError> {
     check(p, n, interval_s, reference)?;
     let (start, ambiguity) = begin(p, n, interval_s, reference)?;
+    let whole = Whole { p, n, interval_s };
+    let settled = settle(&whole, start, interval_s, reference.shape)?;
+    let alternative = ambiguity.map(|lag| lag as f64);
+    report(&settled, interval_s, alternative_lag(settled.at.tau, interval_s, reference, alternative))
+}
+
+/// Another skew, in samples, that fits as well and is less than three times as far from zero.
+pub(super) fn alternative_lag(tau: f64, interval_s: f64, reference: &Reference, seen: Option<f64>) -> Option<f64> {
+    // Within the half period that is searched a periodic reference shows no second hill; there is one all the same.
+    let told = reference.period_s.map(|period| tau - (period / interval_s).copysign(tau));
+    told.or(seen).filter(|other| other.abs() < 3.0 * tau.abs())
+}
+
+/// Where both legs can be had at a trial skew.
+pub(super) trait Legs {
+    /// Both legs at the skew `tau` in samples.
+    fn at(&self, tau: f64) -> Result<View<'_>, SkewError>;
+
+    /// Where samples that follow one another did not do so in time: there a slope has no meaning.
+    fn joins(&self) -> &[usize] {
+        &[]
+    }
+}
+
+/// All samples of both records.
+struct Whole<'a> {
+    p: &'a [f64],
+    n: &'a [f64],
+    interval_s: f64,
+}
+
+impl Legs for Whole<'_> {
+    fn at(&self, tau: f64) -> Result<View<'_>, SkewError> {
+        let interpolator = Interpolator::new(-tau);
+        let range = interpolator.support(self.p.len());
+        if range.len() < LEAST_LEFT {
+            return Err(SkewError::NothingLeft { skew_s: tau * self.interval_s, samples: range.len() });
+        }
+        let noise_gain = interpolator.noise_gain();
+        Ok(View { p: interpolator.apply(self.p), n: &self.n[range.clone()], noise_gain, range })
+    }
+}
+
+/// The root of the score, with what it was found from.
+pub(super) struct Settled<'a> {
+    pub(super) at: Point,
+    pub(super) view: View<'a>,
+    pub(super) noise: Noise,
+    pub(super) template: Template,
+    pub(super) solved: Solved,
+}
+
+/// Steps from `start` to the root of the score.
+pub(super) fn settle<'a>(
+    legs: &'a impl Legs,
+    start: Point,
+    interval_s: f64,
+    shape: Shape,
+) -> Result<Settled<'a>, SkewError> {
     let mut at = start;
     let mut noise = None;
     let mut kept: Option<Kept> = None;
     for step in 0..STEPS {
-        let mut view = View::at(p, n, at.tau, interval_s)?;
+        let mut view = legs.at(at.tau)?;
         let measured = match noise {
             Some(noise) if step >= NOISE_STEPS => noise,
             _ => Noise::measure(&view, &at)?,
@@ -53,7 +113,9 @@ pub(super) fn estimate(
             Some(kept) => kept,
             None => {
                 view.narrow(&(view.range.start + MARGIN..view.range.end - MARGIN));
-                Kept { template: view.template(&at, &measured, reference)?, range: view.range.clone() }
+                let mut template = view.template(&at, &measured, shape)?;
+                template.close(legs.joins(), view.range.start);
+                Kept { template, range: view.range.clone() }
             }
         };
         view.narrow(&held.range);
@@ -71,7 +133,7 @@ pub(super) fn estimate(
         let still = |step: f64, u: f64, floor: f64| step.abs() <= (0.01 * u).max(floor);
         let [u_tau, u_gain, _] = solved.u();
         if step + 1 >= NOISE_STEPS && still(tau, u_tau, 1e-9) && still(gain, u_gain, 1e-12) {
-            return Ok(report(&at, &view, &measured, &held.template, &solved, interval_s, ambiguity));
+            return Ok(Settled { at, view, noise: measured, template: held.template, solved });
         }
         // A gate that opens and closes from step to step would never let the search rest, so a template made near
         // the end is kept; so near, it is as good as uncorrelated with the residual.
@@ -118,8 +180,13 @@ pub(super) struct Point {
     pub(super) offset: f64,
 }
 
-/// The coarse estimate, and another lag that fits as well, if one is near enough to matter.
-fn begin(p: &[f64], n: &[f64], interval_s: f64, reference: &Reference) -> Result<(Point, Option<isize>), SkewError> {
+/// The coarse estimate, and another lag that fits as well.
+pub(super) fn begin(
+    p: &[f64],
+    n: &[f64],
+    interval_s: f64,
+    reference: &Reference,
+) -> Result<(Point, Option<isize>), SkewError> {
     let half = reference.period_s.map_or(p.len() / 2, |period| (period / interval_s / 2.0).ceil() as usize + 1);
     let found = coarse::find(p, n, half)?;
     let (alike, opposite) = (found.alike, found.opposite);
@@ -134,7 +201,7 @@ fn begin(p: &[f64], n: &[f64], interval_s: f64, reference: &Reference) -> Result
         return Err(SkewError::Inverted { correlation: opposite.correlation });
     }
     if alike.correlation < needed {
-        return Err(SkewError::NoCommonSignal { correlation: alike.correlation, needed });
+        return Err(nothing_common(p, n, alike.correlation, needed));
     }
     let late = alike.lag.max(0).unsigned_abs();
     let early = (-alike.lag).max(0).unsigned_abs();
@@ -145,8 +212,26 @@ fn begin(p: &[f64], n: &[f64], interval_s: f64, reference: &Reference) -> Result
     if !GAINS.contains(&gain) {
         return Err(SkewError::Gain { gain });
     }
-    let ambiguity = alike.alternative.filter(|other| other.unsigned_abs() < 3 * alike.lag.unsigned_abs());
-    Ok((Point { tau: alike.lag as f64, gain, offset: mean_n - gain * mean_p }, ambiguity))
+    Ok((Point { tau: alike.lag as f64, gain, offset: mean_n - gain * mean_p }, alike.alternative))
+}
+
+/// The error for legs without a common signal: names the leg that shows nothing but noise, if only one does.
+fn nothing_common(p: &[f64], n: &[f64], correlation: f64, needed: f64) -> SkewError {
+    // Half the mean square step from sample to sample is white noise's whole variance, and little of a signal's.
+    let spread = |x: &[f64]| {
+        let level = mean(x);
+        x.iter().map(|x| (x - level).powi(2)).sum::<f64>() / x.len() as f64
+    };
+    let noise_share = |x: &[f64]| {
+        let steps = x.windows(2).map(|pair| (pair[1] - pair[0]).powi(2)).sum::<f64>() / (x.len() as f64 - 1.0);
+        steps / 2.0 / spread(x)
+    };
+    let (share_p, share_n) = (noise_share(p), noise_share(n));
+    match (share_p > ONLY_NOISE, share_n > ONLY_NOISE) {
+        (true, false) if share_n < SOME_SIGNAL => SkewError::OnlyNoise { leg: "positive", rms_v: spread(p).sqrt() },
+        (false, true) if share_p < SOME_SIGNAL => SkewError::OnlyNoise { leg: "negative", rms_v: spread(n).sqrt() },
+        _ => SkewError::NoCommonSignal { correlation, needed },
+    }
 }
 
 /// A template with the samples that it was made for.
@@ -157,23 +242,14 @@ struct Kept {
 
 /// Both legs on the samples that are valid at a trial skew, the positive one delayed by it.
 pub(super) struct View<'a> {
-    p: Vec<f64>,
+    pub(super) p: Vec<f64>,
     pub(super) n: &'a [f64],
     pub(super) noise_gain: f64,
     /// Which samples of the record these are.
-    range: std::ops::Range<usize>,
+    pub(super) range: std::ops::Range<usize>,
 }
 
 impl<'a> View<'a> {
-    fn at(p: &[f64], n: &'a [f64], tau: f64, interval_s: f64) -> Result<Self, SkewError> {
-        let interpolator = Interpolator::new(-tau);
-        let range = interpolator.support(p.len());
-        if range.len() < LEAST_LEFT {
-            return Err(SkewError::NothingLeft { skew_s: tau * interval_s, samples: range.len() });
-        }
-        Ok(Self { p: interpolator.apply(p), n: &n[range.clone()], noise_gain: interpolator.noise_gain(), range })
-    }
-
     fn covers(&self, range: &std::ops::Range<usize>) -> bool {
         self.range.start <= range.start && range.end <= self.range.end
     }
@@ -188,12 +264,12 @@ impl<'a> View<'a> {
     }
 
     /// Denoised best estimate of the common signal: the weighted mean of both legs that the residual does not know.
-    fn template(&self, at: &Point, noise: &Noise, reference: &Reference) -> Result<Template, SkewError> {
+    fn template(&self, at: &Point, noise: &Noise, shape: Shape) -> Result<Template, SkewError> {
         let (weight_p, weight_n) = (1.0 / noise.p2, at.gain / noise.n2);
         let total = weight_p + at.gain * weight_n;
         let estimate: Vec<f64> =
             self.p.iter().zip(self.n).map(|(p, n)| (weight_p * p + weight_n * (n - at.offset)) / total).collect();
-        Ok(build(&estimate, 1.0 / total, reference.shape)?)
+        Ok(build(&estimate, 1.0 / total, shape)?)
     }
 
     pub(super) fn residual(&self, at: &Point) -> impl Iterator<Item = f64> {
@@ -208,7 +284,7 @@ pub(super) struct Noise {
     pub(super) p2: f64,
     pub(super) n2: f64,
     /// Bins of the spectrum that it was read from; none if it was split equally by assumption.
-    bins: usize,
+    pub(super) bins: usize,
 }
 
 impl Noise {
@@ -227,50 +303,5 @@ impl Noise {
         let (p2, n2) = (found.p_v.powi(2), found.n_v.powi(2));
         let least = (1e-16 * power).max(1e-4 * p2.max(n2));
         Ok(Self { p2: p2.max(least), n2: n2.max(least), bins: found.bins })
-    }
-}
-
-fn report(
-    at: &Point,
-    view: &View<'_>,
-    noise: &Noise,
-    template: &Template,
-    solved: &Solved,
-    interval_s: f64,
-    ambiguity: Option<isize>,
-) -> SkewEstimate {
-    let mut warnings = Vec::new();
-    if let Some(other) = ambiguity {
-        warnings.push(Warning::Ambiguous { alternative_s: other as f64 * interval_s });
-    }
-    if !USUAL_GAINS.contains(&at.gain) {
-        warnings.push(Warning::GainFarFromOne { gain: at.gain });
-    }
-    if noise.bins == 0 {
-        warnings.push(Warning::NoiseSplitAssumed);
-    }
-    // Few bins make the noise itself uncertain; under the window neighbours share half of theirs.
-    let doubt = 4.0 * (4.0 / noise.bins.max(1) as f64).sqrt();
-    if noise.bins > 0 && solved.ratio > DIFFERENT + doubt {
-        let excess_v = (solved.residual2 * (1.0 - 1.0 / solved.ratio)).sqrt();
-        warnings.push(Warning::ResponsesDiffer { excess_v });
-    }
-    let units = [interval_s, 1.0, 1.0];
-    let u = solved.u();
-    let power = template.signal.iter().map(|s| s * s).sum::<f64>() / view.n.len() as f64;
-    SkewEstimate {
-        skew_s: Estimate { value: at.tau * interval_s, u: u[0] * interval_s },
-        gain: Estimate { value: at.gain, u: u[1] },
-        offset_v: Estimate { value: at.offset, u: u[2] },
-        covariance: [0, 1, 2].map(|i| [0, 1, 2].map(|j| solved.covariance[(i, j)] * units[i] * units[j])),
-        bound: [0, 1, 2].map(|i| solved.bound[(i, i)].sqrt() * units[i]),
-        noise_p_v: noise.p2.sqrt(),
-        noise_n_v: noise.n2.sqrt(),
-        residual_v: solved.residual2.sqrt(),
-        signal_rms_v: (power - template.signal_noise).max(0.0).sqrt(),
-        level_v: template.level,
-        samples: view.n.len(),
-        dither_steps: None,
-        warnings,
     }
 }

@@ -4,7 +4,8 @@ use super::super::Estimate;
 use super::super::interpolate::Interpolator;
 use super::super::line::{Line, deming, mean, sum};
 use super::super::noise::{PairNoise, out_of_band};
-use super::fine::{DIFFERENT, GAINS, LEAST_CORRELATION, LEAST_SAMPLES};
+use super::fine::{GAINS, LEAST_CORRELATION, LEAST_SAMPLES};
+use super::report::DIFFERENT;
 use super::{SkewError, Warning};
 
 /// Gain and offset at a given skew.

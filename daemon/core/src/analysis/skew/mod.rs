@@ -10,15 +10,28 @@
 //! records need not hold whole periods: a whole lag from the correlation ([`super::coarse`]), then steps towards the
 //! root of `Zᵀe = 0`, whose regressors Z come from the denoised estimate of s that is uncorrelated with e. Denoising
 //! may be as non-linear as it likes: it costs efficiency, never bias. Cost: O(n log n).
+//!
+//! Two kinds of record go another way to the same bound. Long records with few edges (`gated`): only the samples
+//! round the edges tell of the skew, and block means of the rest of gain and offset. One sine (`sine`): a fit of both
+//! legs with one frequency.
 
 mod error;
 mod fine;
 mod gain;
+mod gated;
+mod leg;
+mod limit;
+mod report;
 mod score;
+mod sine;
 mod template;
 
 pub use error::{SkewError, Warning};
 pub use gain::{LevelEstimate, gain_and_offset};
+use leg::Leg;
+pub use limit::Limit;
+pub(in crate::analysis) use limit::of_warnings as limit_of;
+pub use sine::{Sine, SineFit, fit_two_sines};
 
 use super::record::Record;
 use super::{Correction, Estimate};
@@ -149,7 +162,7 @@ impl SkewEstimate {
 /// # Errors
 /// See [`SkewError`]; each says what is wrong with the records and what to try.
 pub fn estimate(p: &[f64], n: &[f64], interval_s: f64, reference: &Reference) -> Result<SkewEstimate, SkewError> {
-    fine::estimate(p, n, interval_s, reference)
+    front(&Leg::Volts(p), &Leg::Volts(n), interval_s, reference)
 }
 
 /// As [`estimate`], from the records of one acquisition, with the converter's step taken into account. The skew is in
@@ -158,16 +171,30 @@ pub fn estimate(p: &[f64], n: &[f64], interval_s: f64, reference: &Reference) ->
 /// # Errors
 /// As [`estimate`]; also clipped records, and sample intervals that differ.
 pub fn estimate_records(p: &Record, n: &Record, reference: &Reference) -> Result<SkewEstimate, SkewError> {
-    let clipped = (p.clipped(), n.clipped());
-    if clipped != (0, 0) {
-        return Err(SkewError::Clipped { p: clipped.0, n: clipped.1 });
+    let (leg_p, leg_n) = (Leg::of(p), Leg::of(n));
+    if leg_p.reaches(p.end_codes) || leg_n.reaches(n.end_codes) {
+        return Err(SkewError::Clipped { p: p.clipped(), n: n.clipped() });
     }
     if (p.interval_s - n.interval_s).abs() > 1e-9 * p.interval_s.abs() {
         return Err(SkewError::Intervals { p_s: p.interval_s, n_s: n.interval_s });
     }
-    let mut found = estimate(&p.volts(), &n.volts(), p.interval_s, reference)?;
+    let mut found = front(&leg_p, &leg_n, p.interval_s, reference)?;
     found.skew_s.value += n.start_s - p.start_s;
     Ok(found.with_converter(p.step_v, n.step_v, p.averages.min(n.averages)))
+}
+
+/// Chooses the way: the windows round the edges where that tells all, all samples otherwise; for a sine the better of
+/// two estimates.
+fn front(p: &Leg<'_>, n: &Leg<'_>, interval_s: f64, reference: &Reference) -> Result<SkewEstimate, SkewError> {
+    if let Some(found) = gated::estimate(p, n, interval_s, reference) {
+        return Ok(found);
+    }
+    let (p, n) = (p.volts(), n.volts());
+    let found = fine::estimate(&p, &n, interval_s, reference)?;
+    Ok(match reference.shape {
+        Shape::Sine => sine::better(&p, &n, interval_s, found),
+        Shape::Edges | Shape::Multitone | Shape::Unknown => found,
+    })
 }
 
 #[cfg(test)]
@@ -176,3 +203,5 @@ mod quality;
 pub(crate) mod signals;
 #[cfg(test)]
 mod tests;
+#[cfg(test)]
+mod traps;

@@ -143,27 +143,3 @@ fn estimates_reach_the_bound_without_bias_and_know_their_uncertainty() {
         case.check(60, 1000 + i as u64, *worst);
     }
 }
-
-#[test]
-#[ignore = "minutes: the same with 1500 trials, for a change of the estimator"]
-fn estimates_reach_the_bound_in_many_trials() {
-    for (i, (case, worst)) in cases().iter().enumerate() {
-        case.check(1500, 9000 + i as u64, *worst);
-    }
-}
-
-#[test]
-#[ignore = "seconds: a million samples with few edges"]
-fn a_million_samples_keep_the_bound() {
-    let signal = square(100_000.5, 10.0, 1234.5);
-    let mut dice = Dice::new(28);
-    for noise in [0.1, 0.001] {
-        let truth = Truth::with_noise(noise);
-        let (p, n) = dice.records(&signal, &truth, 1_000_000);
-        let begun = std::time::Instant::now();
-        let found = estimate(&p, &n, 1.0, &reference(Shape::Edges)).unwrap();
-        println!("{:?} {found:?} {:?}", begun.elapsed(), truth.bound(&signal, 1_000_000));
-        assert!((found.skew_s.value - truth.tau).abs() < 4.0 * truth.bound(&signal, 1_000_000)[0], "{found:?}");
-        assert!(found.skew_s.u < 1.3 * truth.bound(&signal, 1_000_000)[0], "{found:?}");
-    }
-}

@@ -2,7 +2,7 @@
 
 use super::super::interpolate::BAND;
 use super::super::line::mean;
-use super::super::spectrum::{Fourier, SpectrumError, fast_length};
+use super::super::spectrum::{Fourier, SpectrumError, cosines, fast_length};
 use super::Shape;
 use realfft::num_complex::Complex;
 
@@ -26,8 +26,12 @@ pub(super) struct Template {
 
 /// Standard deviations by which an edge's slope must stand out.
 const GATE: f64 = 4.5;
+/// Standard deviations down to which the flanks of such a slope are followed.
+const FLANK: f64 = 1.0;
 /// A bin of a line spectrum is kept above this multiple of its noise (one bin of pure noise in 160 000 is).
 const LINE: f64 = 12.0;
+/// Samples on either side of a join that its step may reach.
+const JOIN: usize = 24;
 /// Fewer samples than this are no gate.
 const LEAST_GATE: usize = 8;
 
@@ -124,15 +128,17 @@ fn sharpen(
     let least = 1.0 + 3.0 / ((2 * half + 1) as f64).sqrt();
     let mut energy = 0.0;
     let mut weights = vec![1.0; power.len()];
-    for (k, weight) in weights.iter_mut().enumerate().skip(1) {
-        let omega = std::f64::consts::TAU * k as f64 / length as f64;
-        let difference = 4.0 * (omega / 2.0).sin().powi(2);
+    let turn = std::f64::consts::TAU / length as f64;
+    for (k, (weight, cosine)) in weights.iter_mut().zip(cosines(0.0, turn)).enumerate().skip(1) {
+        let omega = turn * k as f64;
+        let difference = 2.0 * (1.0 - cosine);
         let (from, to) = (k.saturating_sub(half), (k + half + 1).min(power.len()));
         let seen = (running[to] - running[from]) / (to - from) as f64;
         let expected = noise * open as f64 * difference;
         *weight = if seen > least * expected { 1.0 - expected / seen } else { 0.0 };
         if *weight > 0.0 && k as f64 <= BAND * length as f64 {
-            energy += (power[k] - expected) * omega * omega / difference;
+            // With its weight, or bins that stand out by chance alone would add up.
+            energy += *weight * (power[k] - expected) * omega * omega / difference;
         }
     }
     Ok(Some((weights, 2.0 * energy / length as f64)))
@@ -199,11 +205,7 @@ impl Filtered {
     fn template(mut self, n: usize, level: f64, gate: bool) -> Template {
         self.slope.truncate(n);
         self.signal.truncate(n);
-        let least = GATE * self.slope_noise.sqrt();
-        let mut gated = self.slope.clone();
-        if gate && gated.iter().filter(|d| d.abs() > least).count() >= LEAST_GATE {
-            gated.iter_mut().filter(|d| d.abs() <= least).for_each(|d| *d = 0.0);
-        }
+        let gated = if gate { opened(&self.slope, self.slope_noise.sqrt()) } else { self.slope.clone() };
         Template {
             gated,
             slope: self.slope,
@@ -216,7 +218,40 @@ impl Filtered {
     }
 }
 
+/// The slope where it stands out of its noise (standard deviation `noise`), with its flanks: an edge of a few samples
+/// has a sixth of what it tells below the threshold, next to where it crosses it.
+fn opened(slope: &[f64], noise: f64) -> Vec<f64> {
+    let core = |d: f64| d.abs() > GATE * noise;
+    if slope.iter().filter(|d| core(**d)).count() < LEAST_GATE {
+        return slope.to_vec();
+    }
+    let mut gated: Vec<f64> = slope.iter().map(|&d| if core(d) { d } else { 0.0 }).collect();
+    let flank = |from: f64, d: f64| from * d > 0.0 && d.abs() > FLANK * noise;
+    for i in 1..slope.len() {
+        if gated[i] == 0.0 && flank(gated[i - 1], slope[i]) {
+            gated[i] = slope[i];
+        }
+    }
+    for i in (0..slope.len() - 1).rev() {
+        if gated[i] == 0.0 && flank(gated[i + 1], slope[i]) {
+            gated[i] = slope[i];
+        }
+    }
+    gated
+}
+
 impl Template {
+    /// Takes out the slopes next to `joins`, of which the record's first sample is number `from`.
+    pub(super) fn close(&mut self, joins: &[usize], from: usize) {
+        for join in joins {
+            let (start, end) = (join.saturating_sub(from + JOIN), (join + JOIN).saturating_sub(from));
+            let end = end.min(self.gated.len());
+            let start = start.min(end);
+            self.gated[start..end].fill(0.0);
+            self.slope[start..end].fill(0.0);
+        }
+    }
+
     /// Σ gated·s′: Σ gated² with the noise that the template shares with itself taken off.
     pub(super) fn useful(&self) -> f64 {
         let open = self.gated.iter().filter(|d| **d != 0.0).count() as f64;

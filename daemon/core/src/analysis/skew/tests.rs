@@ -210,7 +210,9 @@ fn bad_records_are_refused_with_the_reason() {
     broken[700] = f64::NAN;
     assert!(matches!(refuse(&p, &broken), SkewError::NotFinite { .. }));
     let only_noise: Vec<f64> = (0..2000).map(|_| dice.normal()).collect();
-    assert!(matches!(refuse(&p, &only_noise), SkewError::NoCommonSignal { .. }));
+    let error = refuse(&p, &only_noise);
+    assert!(matches!(error, SkewError::OnlyNoise { leg: "negative", rms_v } if (rms_v - 1.0).abs() < 0.1), "{error:?}");
+    assert!(matches!(refuse(&only_noise, &n), SkewError::OnlyNoise { leg: "positive", .. }));
     let more_noise: Vec<f64> = (0..2000).map(|_| dice.normal()).collect();
     assert!(matches!(refuse(&more_noise, &only_noise), SkewError::NoCommonSignal { .. }));
     let mirrored: Vec<f64> = n.iter().map(|x| -x).collect();
@@ -225,8 +227,17 @@ fn bad_records_are_refused_with_the_reason() {
 }
 
 #[test]
-fn a_ten_times_probe_gets_a_warning() {
+fn a_ten_times_probe_is_recognised() {
     let truth = Truth { gain: 10.0, ..Truth::with_noise(0.01) };
+    let (p, n) = Dice::new(18).records(&square(400.0, 10.0, 130.0), &truth, 4000);
+    let found = estimate(&p, &n, 1.0, &reference(Shape::Edges)).unwrap();
+    assert!(matches!(found.warnings[..], [Warning::Attenuation { .. }]), "{:?}", found.warnings);
+    let text = found.warnings[0].to_string();
+    assert!(text.contains("negative leg") && text.contains("wrong by 10"), "{text}");
+    let (n, p) = (p, n);
+    let found = estimate(&p, &n, 1.0, &reference(Shape::Edges)).unwrap();
+    assert!(found.warnings[0].to_string().contains("positive leg"), "{:?}", found.warnings);
+    let truth = Truth { gain: 1.4, ..Truth::with_noise(0.01) };
     let (p, n) = Dice::new(18).records(&square(400.0, 10.0, 130.0), &truth, 4000);
     let found = estimate(&p, &n, 1.0, &reference(Shape::Edges)).unwrap();
     assert!(matches!(found.warnings[..], [Warning::GainFarFromOne { .. }]), "{:?}", found.warnings);

@@ -47,3 +47,10 @@ fn white_noise_has_its_variance_in_every_part_of_the_spectrum() {
         assert!((power / 0.09 - 1.0).abs() < 0.16, "{power}");
     }
 }
+
+#[test]
+fn cosines_by_rotation_are_cosines() {
+    for (k, value) in cosines(0.3, 0.0123).take(1000).enumerate() {
+        assert!((value - (0.3 + 0.0123 * k as f64).cos()).abs() < 2e-14, "{k}");
+    }
+}
