@@ -12,6 +12,7 @@
 
 mod agreement;
 mod check;
+pub mod defaults;
 mod differential;
 mod loading;
 mod motion;
@@ -24,7 +25,7 @@ mod scope_error;
 mod terms;
 mod words;
 
-pub use check::{Flaw, defaults};
+pub use check::Flaw;
 pub use outcome::{
     Budget, Differential, Loading, Needed, RangeChoice, Rejection, Term, TipVoltage, Totals, Verdict, When,
 };

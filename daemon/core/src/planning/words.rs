@@ -32,6 +32,9 @@ pub(super) fn words(plan: &Checked, budget: &Budget, refusals: &[String], no_hel
                 volts(totals.after_v)
             ));
             words.extend(budget.needed.as_ref().map(needed));
+            words.extend(budget.range.as_ref().map(|range| {
+                format!("Deskew on the range of the measurement, {} at the tip: ranges differ.", volts(range.span_v))
+            }));
         }
         (Verdict::Refused, _) => words.push(format!(
             "Whatever is put on these nodes must be rated for {} to earth at {}.",
