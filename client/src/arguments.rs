@@ -4,6 +4,8 @@ use std::path::PathBuf;
 
 use clap::{Parser, Subcommand, ValueEnum};
 
+use crate::commands::BudgetFlags;
+
 /// Deskew two single-ended scope probes and measure the voltage between two points, with its uncertainty.
 ///
 /// Both probe grounds are at earth. Never defeat a scope's earth; stay inside the probes' rating and measurement
@@ -88,6 +90,17 @@ pub(crate) enum Command {
         to: Format,
         /// The folder; made if it is not there.
         folder: PathBuf,
+    },
+    /// Predict the error before measuring: will two single-ended probes do, and how well must they be deskewed? No daemon.
+    ///
+    /// From a file, from flags, or from a file with flags that replace some of it. Exit status 0 if two probes will do,
+    /// 1 if not.
+    Budget {
+        /// A plan, such as configs/budgets/high-side-gate.toml.
+        file: Option<PathBuf>,
+        /// What the file does not say, or says otherwise.
+        #[command(flatten)]
+        flags: Box<BudgetFlags>,
     },
     /// Check a bench file or a sequence, without a daemon.
     Check {

@@ -84,12 +84,17 @@ fn wrong(file: &Path, kind: &'static str, text: &str, mistakes: &[Mistake], json
         let mistakes = mistakes.iter().map(report).collect();
         output::print_json(&Checked { file: file.display().to_string(), kind, steps: 0, captures: 0, mistakes })?;
     } else {
-        for mistake in mistakes {
-            let labels = vec![miette::LabeledSpan::at(mistake.span.clone(), "here")];
-            let report = miette::miette!(labels = labels, help = mistake.help.clone(), "{}", mistake.what)
-                .with_source_code(miette::NamedSource::new(file.display().to_string(), text.to_owned()));
-            eprintln!("{report:?}");
-        }
+        show_mistakes(file, text, mistakes);
     }
     Err(Trouble::Mistakes { path: file.into(), count: mistakes.len() })
+}
+
+/// Shows every mistake on standard error, with its line and a caret.
+pub(super) fn show_mistakes(file: &Path, text: &str, mistakes: &[Mistake]) {
+    for mistake in mistakes {
+        let labels = vec![miette::LabeledSpan::at(mistake.span.clone(), "here")];
+        let report = miette::miette!(labels = labels, help = mistake.help.clone(), "{}", mistake.what)
+            .with_source_code(miette::NamedSource::new(file.display().to_string(), text.to_owned()));
+        eprintln!("{report:?}");
+    }
 }

@@ -1,6 +1,7 @@
 //! A file per command: ask the daemon, then show.
 
 mod bench;
+mod budget;
 mod check;
 mod deskew;
 mod export;
@@ -14,6 +15,7 @@ use crate::exit::Exit;
 use crate::http::Daemon;
 use crate::trouble::Trouble;
 
+pub(crate) use budget::BudgetFlags;
 pub(crate) use follow::follow;
 
 /// Carries out what the command line says.
@@ -34,6 +36,7 @@ pub(crate) async fn perform(arguments: Arguments) -> Result<Exit, Trouble> {
         Command::Watch { run } => run::watch(&daemon()?, &run, json).await,
         Command::Stop { run } => run::stop(&daemon()?, &run, json).await,
         Command::Export { run, to, folder } => export::export(&daemon()?, &run, to, &folder, json).await,
+        Command::Budget { file, flags } => budget::budget(file.as_deref(), *flags, json),
         Command::Check { file, bench } => check::check(&file, bench.as_deref(), json),
     }
 }

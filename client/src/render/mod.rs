@@ -1,6 +1,7 @@
 //! The API's answers as text that fits 80 columns.
 
 mod bench;
+mod budget;
 mod captures;
 mod correction;
 mod quantity;
@@ -8,6 +9,7 @@ mod run;
 mod table;
 
 pub(crate) use bench::bench;
+pub(crate) use budget::budget;
 pub(crate) use captures::{capture_summary, captures, figures};
 pub(crate) use correction::{correction, rejection};
 pub(crate) use quantity::with_uncertainty;

@@ -7,6 +7,7 @@
 //! volts at the probe tips.
 
 mod bench;
+mod budget;
 mod capture;
 mod correction;
 mod event;
@@ -16,6 +17,11 @@ mod run;
 mod sequence;
 
 pub use bench::{Bench, Instrument, Leg, LinkState, Pair, Probe, Reference, Rest, Route, Setting};
+pub use budget::{
+    Budget, BudgetAgreement, BudgetDerating, BudgetDifferential, BudgetLoading, BudgetNeeded, BudgetProbe, BudgetRange,
+    BudgetRejection, BudgetRequest, BudgetScope, BudgetSignal, BudgetSource, BudgetTerm, BudgetTip, BudgetTotals,
+    BudgetVerdict, BudgetWhen,
+};
 pub use capture::{
     Capture, Captures, Condition, CorrelatedTerm, Coverage, CoverageBasis, Figure, Grade, LeakBound, LimitVerdict,
     UncertaintyTerm,

@@ -3,6 +3,7 @@
 //! Handlers only ask the conductor and answer; nothing that a vanished client could leave half done happens here.
 
 mod body;
+mod budget;
 mod captures;
 mod describe;
 mod events;
@@ -53,6 +54,7 @@ pub(crate) fn router(conductor: Conductor, shutdown: CancellationToken) -> Route
 
 fn resources() -> OpenApiRouter<Desk> {
     OpenApiRouter::new()
+        .merge(budget::routes())
         .merge(captures::routes())
         .merge(events::routes())
         .merge(health::routes())

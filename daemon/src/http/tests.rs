@@ -14,6 +14,7 @@ fn the_description_names_every_route() {
     for path in [
         "/bench",
         "/bench/settle",
+        "/budget",
         "/health",
         "/pairs",
         "/pairs/{pair}/correction",

@@ -60,6 +60,13 @@ impl<'t> Table<'t> {
         self.entries.iter().any(|(name, _)| name.get_ref() == key)
     }
 
+    /// Whether the key is there and holds a text, without marking it as known.
+    #[must_use]
+    pub fn is_text(&self, key: &str) -> bool {
+        let text = |value: &Spanned<DeValue<'_>>| matches!(value.get_ref(), DeValue::String(_));
+        self.entries.iter().any(|(name, value)| name.get_ref() == key && text(value))
+    }
+
     /// Every key of the table, in the text's order of names, with its place; marks none as known.
     #[must_use]
     pub fn keys(&self) -> Vec<Item<String>> {

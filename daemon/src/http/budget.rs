@@ -1,0 +1,45 @@
+//! `POST /budget`: the error budget of a measurement not yet made. It asks no instrument and starts nothing.
+
+use axum::Json;
+use evenpair_api::{Budget, BudgetRequest, Problem, ProblemCode};
+use evenpair_core::planning::{self, Plan};
+use serde::Serialize;
+use serde::de::DeserializeOwned;
+use utoipa_axum::router::OpenApiRouter;
+use utoipa_axum::routes;
+
+use super::Desk;
+use super::body::Body;
+use super::problem::Fault;
+
+pub(super) fn routes() -> OpenApiRouter<Desk> {
+    OpenApiRouter::new().routes(routes!(budget))
+}
+
+/// Predict the errors of a pair of single-ended probes before and after a deskew, and say whether they will do, or what a
+/// differential probe must offer.
+#[utoipa::path(post, path = "/budget", tag = "budget", request_body = BudgetRequest,
+    responses((status = 200, body = Budget), (status = 413, body = Problem), (status = 415, body = Problem),
+              (status = 422, body = Problem)))]
+async fn budget(Body(request): Body<BudgetRequest>) -> Result<Json<Budget>, Fault> {
+    answer(&request).map(Json)
+}
+
+fn answer(request: &BudgetRequest) -> Result<Budget, Fault> {
+    let plan: Plan = carry(request)?;
+    let budget = planning::budget(&plan).map_err(|flaws| {
+        let told: Vec<String> = flaws.iter().map(ToString::to_string).collect();
+        Fault::new(ProblemCode::InvalidRequest, told.join(". "))
+    })?;
+    carry(&budget)
+}
+
+/// The same data in the other vocabulary. The API's types and the core's have one JSON form, which a test compares.
+fn carry<From: Serialize, To: DeserializeOwned>(value: &From) -> Result<To, Fault> {
+    serde_json::to_value(value)
+        .and_then(serde_json::from_value)
+        .map_err(|error| Fault::new(ProblemCode::Internal, format!("carrying a budget over: {error}")))
+}
+
+#[cfg(test)]
+mod tests;

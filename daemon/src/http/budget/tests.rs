@@ -1,0 +1,48 @@
+use axum::response::IntoResponse;
+
+use super::*;
+
+/// The example that comes with the program.
+fn example() -> Plan {
+    planning::read(include_str!("../../../../configs/budgets/high-side-gate.toml")).unwrap().plan
+}
+
+#[test]
+fn both_vocabularies_have_one_json_form() {
+    let mut plan = example();
+    let request: BudgetRequest = carry(&plan).unwrap();
+    assert_eq!(serde_json::to_value(&request).unwrap(), serde_json::to_value(&plan).unwrap());
+    // One plan for each verdict, so that every part of the answer is there once.
+    let mut verdicts = Vec::new();
+    for (accuracy, rating_v, scale_spec) in
+        [(0.5, 300.0, 0.015), (0.05, 300.0, 0.015), (0.04, 30.0, 0.0), (0.001, 300.0, 0.015), (0.035, 300.0, 0.0)]
+    {
+        plan.signal.accuracy_ratio = Some(accuracy);
+        plan.probe.rating_v = Some(rating_v);
+        plan.scope.scale_spec = Some(scale_spec);
+        let core = planning::budget(&plan).unwrap();
+        let api = answer(&carry(&plan).unwrap()).unwrap();
+        assert_eq!(serde_json::to_value(&api).unwrap(), serde_json::to_value(&core).unwrap());
+        verdicts.push(api.verdict);
+    }
+    use evenpair_api::BudgetVerdict as V;
+    assert_eq!(verdicts[..4], [V::AsTheyAre, V::AfterDeskew, V::Refused, V::OutOfReach]);
+}
+
+#[test]
+fn what_may_be_left_out_may_be_left_out() {
+    let text = r#"{"signal": {"swing_v": 48, "edge_s": 25e-9, "difference_v": 12, "accuracy_ratio": 0.05},
+                   "probe": {"attenuation": 10, "rating_v": 300}, "scope": {"bits": 12}}"#;
+    let budget = answer(&serde_json::from_str(text).unwrap()).unwrap();
+    assert!(!budget.assumed.is_empty() && !budget.terms.is_empty());
+    assert!(serde_json::from_str::<BudgetRequest>(r#"{"signal": {"swing": 48}}"#).is_err());
+}
+
+#[tokio::test]
+async fn flaws_are_a_problem_that_names_them_all() {
+    let response = answer(&BudgetRequest::default()).unwrap_err().into_response();
+    assert_eq!(response.status(), 422);
+    let body = axum::body::to_bytes(response.into_body(), 10_000).await.unwrap();
+    let problem: Problem = serde_json::from_slice(&body).unwrap();
+    assert!(problem.detail.contains("`signal.swing` is missing") && problem.detail.contains("`scope.bits`"));
+}
