@@ -1,1 +1,12 @@
-//! Whole-program tests.
+//! Whole-program tests: the real binaries on a simulated bench, driven as a user would drive them.
+
+mod bench;
+mod commands;
+mod crash;
+mod demo;
+mod deskew;
+mod files;
+mod refusals;
+mod rest;
+mod scripts;
+mod sequences;

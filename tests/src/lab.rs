@@ -1,12 +1,14 @@
 //! A simulated bench with a daemon on it.
 
+use std::collections::BTreeMap;
 use std::path::{Path, PathBuf};
+use std::process::Output;
 
 use serde_json::Value;
 use tempfile::TempDir;
 
 use crate::api::Api;
-use crate::process::Program;
+use crate::process::{Program, run_to_end};
 use crate::rewrite::set_resource;
 
 /// The texts that a lab is made of; begin with the shipped ones and change what the test is about.
@@ -18,6 +20,33 @@ pub struct LabPlan {
     pub bench: String,
     /// More sequences for the bench's folder: name without ending, text.
     pub sequences: Vec<(String, String)>,
+    /// Where an instrument is said to be, instead of where the simulator has it: name, VISA resource string.
+    pub elsewhere: Vec<(String, String)>,
+}
+
+impl LabPlan {
+    /// The same plan with one more sequence.
+    #[must_use]
+    pub fn with_sequence(mut self, name: &str, text: &str) -> Self {
+        self.sequences.push((name.to_owned(), text.to_owned()));
+        self
+    }
+
+    /// The same plan with one value of the bench file changed; see [`crate::set_in_table`].
+    #[must_use]
+    pub fn with_bench(mut self, table: &str, key: &str, value: &str) -> Self {
+        self.bench = crate::set_in_table(&self.bench, table, key, value);
+        self
+    }
+
+    /// The same plan with an instrument somewhere else, which is given half a second for each reply.
+    #[must_use]
+    pub fn with_instrument_at(mut self, instrument: &str, resource: &str) -> Self {
+        let table = format!("instrument.{instrument}");
+        self.bench = crate::set_in_table(&self.bench, &table, "dialect", "\"scpi-99\"\ntimeout = \"500 ms\"");
+        self.elsewhere.push((instrument.to_owned(), resource.to_owned()));
+        self
+    }
 }
 
 impl Default for LabPlan {
@@ -33,6 +62,7 @@ impl Default for LabPlan {
                 ("gate-night".to_owned(), read("sequences/gate-night.toml")),
                 ("quick-look".to_owned(), read("sequences/quick-look.toml")),
             ],
+            elsewhere: Vec::new(),
         }
     }
 }
@@ -48,6 +78,8 @@ pub struct Lab {
     pub sim: Program,
     /// The daemon.
     pub daemon: Program,
+    /// Where the simulator has each instrument: name, VISA resource string.
+    pub instruments: BTreeMap<String, String>,
     folder: TempDir,
 }
 
@@ -70,7 +102,7 @@ impl Lab {
             &["--scenario", text(&scenario), "--exit-with-stdin"],
             &place.join("sim.log"),
         );
-        let mut bench = plan.bench.clone();
+        let mut instruments = BTreeMap::new();
         loop {
             let line = sim.line().await.expect("the simulator becomes ready");
             if line == "ready" {
@@ -78,7 +110,11 @@ impl Lab {
             }
             let told: Value = serde_json::from_str(&line).expect("the simulator tells JSON");
             let word = |key: &str| told[key].as_str().expect("name and resource").to_owned();
-            bench = set_resource(&bench, &word("name"), &word("resource"));
+            instruments.insert(word("name"), word("resource"));
+        }
+        let mut bench = plan.bench.clone();
+        for (name, resource) in instruments.iter().chain(plan.elsewhere.iter().map(|(name, at)| (name, at))) {
+            bench = set_resource(&bench, name, resource);
         }
         std::fs::create_dir_all(place.join("sequences")).expect("a folder for sequences");
         for (name, sequence) in &plan.sequences {
@@ -87,7 +123,7 @@ impl Lab {
         bench = crate::set_in_table(&bench, "", "sequences", "\"sequences\"");
         write("bench.toml", &bench);
         let (daemon, url) = Self::start_daemon(place).await;
-        Self { api: Api::new(&url), url, sim, daemon, folder }
+        Self { api: Api::new(&url), url, sim, daemon, instruments, folder }
     }
 
     async fn start_daemon(place: &Path) -> (Program, String) {
@@ -113,6 +149,26 @@ impl Lab {
         self.daemon = daemon;
         self.api = Api::new(&url);
         self.url = url;
+    }
+
+    /// What an instrument of the simulator answers to a query over a connection of its own.
+    ///
+    /// # Panics
+    /// When the scenario has no such instrument, or it does not answer.
+    pub async fn ask(&self, instrument: &str, query: &str) -> String {
+        let resource = self.instruments.get(instrument).unwrap_or_else(|| panic!("no instrument `{instrument}`"));
+        crate::ask(resource, query).await
+    }
+
+    /// Runs `evenpair` against this lab's daemon to its end.
+    pub async fn evenpair(&self, arguments: &[&str]) -> Output {
+        run_to_end("evenpair", &[&["--server", self.url.as_str()], arguments].concat()).await
+    }
+
+    /// What the daemon has logged.
+    #[must_use]
+    pub fn log(&self) -> String {
+        std::fs::read_to_string(self.folder().join("daemon.log")).unwrap_or_default()
     }
 
     /// The folder that holds the bench file, the logs and `data`.

@@ -4,14 +4,22 @@
 //! free loopback ports, with a data folder that goes when the test ends.
 
 mod api;
+mod fake;
 mod lab;
+mod numbers;
 mod process;
 mod rewrite;
+mod truth;
+mod wire;
 
 pub use api::{Answer, Api};
+pub use fake::Fake;
 pub use lab::{Lab, LabPlan};
-pub use process::{Program, binary, run_to_end};
-pub use rewrite::{set_in_table, set_resource};
+pub use numbers::{Estimate, figure, quantity};
+pub use process::{Program, binary, processes_naming, run_to_end};
+pub use rewrite::{set_in_nth, set_in_table, set_resource};
+pub use truth::Truth;
+pub use wire::ask;
 
 /// The folder of the project, where `configs` lies.
 #[must_use]

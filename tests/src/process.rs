@@ -101,3 +101,17 @@ pub async fn run_to_end(name: &str, arguments: &[&str]) -> Output {
     let output = tokio::time::timeout(PATIENCE, run).await;
     output.unwrap_or_else(|_| panic!("{name} {arguments:?} does not end")).expect("running the program")
 }
+
+/// The command lines of the processes that run now and name `path` in theirs.
+///
+/// # Panics
+/// When `/proc` cannot be read.
+#[must_use]
+pub fn processes_naming(path: &std::path::Path) -> Vec<String> {
+    let path = path.to_str().expect("a temporary path is UTF-8");
+    let entries = std::fs::read_dir("/proc").expect("the list of processes");
+    // A process that ends meanwhile has no command line to read any more.
+    let lines = entries.flatten().filter_map(|entry| std::fs::read(entry.path().join("cmdline")).ok());
+    let lines = lines.map(|line| String::from_utf8_lossy(&line).replace('\0', " "));
+    lines.filter(|line| line.contains(path)).collect()
+}
