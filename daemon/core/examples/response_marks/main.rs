@@ -5,7 +5,7 @@
 //! with 31.8 µs. The rejection in the table is that of the true responses with what was found, not a measured one.
 //!
 //! The linear rows add noise of the averages' size; the rows with a non-linearity bend each leg's levels by 0.3 steps.
-//! `--codes` makes 256 records of real 8-bit codes with that bend for one seed instead of the averages (slow).
+//! `--codes` makes 256 records of real 8-bit codes with that bend for one seed instead of the averages (slow). A number is how many seeds to try.
 
 mod world;
 
@@ -15,7 +15,7 @@ use evenpair_core::analysis::{Correction, Record, Samples, deskew};
 use rand_chacha::ChaCha8Rng;
 use rand_chacha::rand_core::SeedableRng;
 use rand_distr::{Distribution, StandardNormal};
-use world::{Leg, Square, bend};
+use world::{Done, Leg, Square, bend, rejection_db};
 
 const INTERVAL_S: f64 = 0.8e-9;
 /// One period, and what the interpolation and the filter need at the ends.
@@ -41,14 +41,15 @@ fn main() -> Result<(), Box<dyn std::error::Error>> {
         print_row("256 records of 8-bit codes, bent", &found.with);
         return Ok(());
     }
-    println!("rejection of the true responses in dB, worst of {SEEDS} seeds");
+    let seeds = std::env::args().filter_map(|argument| argument.parse().ok()).next().unwrap_or(SEEDS);
+    println!("rejection of the true responses in dB, worst of {seeds} seeds");
     print_row("frequency in Hz", &FREQUENCIES);
     print_row("before", &rejections(&Correction::none(), None));
     let mut failed = false;
     for bent in [0.0, BEND] {
         println!("{}", if bent > 0.0 { "each leg bent by 0.3 steps:" } else { "linear converter:" });
         let mut worst: Option<[[f64; 6]; 3]> = None;
-        for seed in 1..=SEEDS {
+        for seed in 1..=seeds {
             let found = one(&averages(&clean, bent, seed))?;
             let rows = [found.correction, found.pole_zero, found.with];
             worst = Some(worst.map_or(rows, |worst| {
@@ -110,38 +111,16 @@ fn one((p, n): &(Vec<Record>, Vec<Record>)) -> Result<Found, Box<dyn std::error:
     })
 }
 
-/// Rejection of the true legs with a correction: `|(A + E·B)/2|/|A − E·B|`.
+/// Rejection of the true legs with what was found.
 fn rejections(correction: &Correction, response: Option<&Response>) -> [f64; 6] {
-    FREQUENCIES.map(|frequency| {
-        let (a, b) = (POSITIVE.response(frequency), NEGATIVE.response(frequency));
-        let w = std::f64::consts::TAU * frequency;
-        let mut y = turn(b, w * correction.skew_s.value);
-        y = (y.0 / correction.gain.value, y.1 / correction.gain.value);
-        if let Some(response) = response {
-            y = turn(y, w * response.skew_s);
-            let half = response.taps.len() as f64 / 2.0 - 0.5;
-            let mut e = (0.0, 0.0);
-            for (m, tap) in response.taps.iter().enumerate() {
-                let (sin, cos) = (w * INTERVAL_S * (m as f64 - half)).sin_cos();
-                e = (e.0 + tap * cos, e.1 + tap * sin);
-            }
-            if let Some(term) = response.pole_zero {
-                let relative = term.relative.value;
-                let beta = relative * response.taps.iter().sum::<f64>();
-                let x = w * term.time_constant_s.value * (1.0 + relative);
-                let size = beta / (1.0 + x * x);
-                e = (e.0 + size, e.1 - size * x);
-            }
-            y = (y.0 * e.0 - y.1 * e.1, y.0 * e.1 + y.1 * e.0);
-        }
-        let common = 0.5 * f64::hypot(a.0 + y.0, a.1 + y.1);
-        20.0 * (common / f64::hypot(a.0 - y.0, a.1 - y.1)).log10()
-    })
-}
-
-fn turn((re, im): (f64, f64), angle: f64) -> (f64, f64) {
-    let (sin, cos) = angle.sin_cos();
-    (re * cos - im * sin, re * sin + im * cos)
+    let done = Done {
+        skew_s: correction.skew_s.value + response.map_or(0.0, |response| response.skew_s),
+        gain: correction.gain.value,
+        interval_s: INTERVAL_S,
+        taps: response.map_or_else(|| vec![1.0], |response| response.taps.clone()),
+        pole_zero: response.and_then(|r| r.pole_zero).map(|term| (term.time_constant_s.value, term.relative.value)),
+    };
+    FREQUENCIES.map(|frequency_hz| rejection_db(&POSITIVE, &NEGATIVE, &done, frequency_hz))
 }
 
 /// Four records of 64 sweeps each, with the averages' noise. The rounding of a dithered converter is part of it.

@@ -46,7 +46,6 @@ impl Leg {
     }
 
     /// Real and imaginary part of its response at a frequency.
-    #[allow(dead_code, reason = "the tests that share this file do not ask")]
     pub(crate) fn response(&self, frequency_hz: f64) -> (f64, f64) {
         let w = std::f64::consts::TAU * frequency_hz;
         let (mut size, mut angle) = (self.gain, -w * self.delay_s);
@@ -110,7 +109,42 @@ fn edge(poles: &[(f64, f64)], t: f64, sigma_s: f64) -> f64 {
 }
 
 /// A smooth non-linearity of `size` steps at most over a converter of 256.
-#[allow(dead_code, reason = "the tests that share this file use only some")]
 pub(crate) fn bend(size: f64, value: f64, cycles: f64, phase: f64) -> f64 {
     size * (std::f64::consts::TAU * cycles * value / 256.0 + phase).sin()
+}
+
+/// What is done to the negative leg, in plain numbers.
+#[derive(Debug, Clone, Default)]
+pub(crate) struct Done {
+    pub(crate) skew_s: f64,
+    pub(crate) gain: f64,
+    pub(crate) interval_s: f64,
+    pub(crate) taps: Vec<f64>,
+    /// T and ε.
+    pub(crate) pole_zero: Option<(f64, f64)>,
+}
+
+/// Rejection of two true legs with a correction, in dB: `|(A + E·B)/2|/|A − E·B|`.
+pub(crate) fn rejection_db(positive: &Leg, negative: &Leg, done: &Done, frequency_hz: f64) -> f64 {
+    let turn = |(re, im): (f64, f64), angle: f64| {
+        let (sin, cos) = angle.sin_cos();
+        (re * cos - im * sin, re * sin + im * cos)
+    };
+    let (a, b) = (positive.response(frequency_hz), negative.response(frequency_hz));
+    let w = std::f64::consts::TAU * frequency_hz;
+    let y = turn(b, w * done.skew_s);
+    let middle = 0.5 * (done.taps.len() as f64 - 1.0);
+    let mut e = (0.0, 0.0);
+    for (m, tap) in done.taps.iter().enumerate() {
+        let (sin, cos) = (w * done.interval_s * (m as f64 - middle)).sin_cos();
+        e = (e.0 + tap * cos, e.1 + tap * sin);
+    }
+    if let Some((slow, relative)) = done.pole_zero {
+        let x = w * slow * (1.0 + relative);
+        let size = relative * done.taps.iter().sum::<f64>() / (1.0 + x * x);
+        e = (e.0 + size, e.1 - size * x);
+    }
+    let y = ((y.0 * e.0 - y.1 * e.1) / done.gain, (y.0 * e.1 + y.1 * e.0) / done.gain);
+    let common = 0.5 * f64::hypot(a.0 + y.0, a.1 + y.1);
+    20.0 * (common / f64::hypot(a.0 - y.0, a.1 - y.1)).log10()
 }

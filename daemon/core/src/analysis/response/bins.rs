@@ -95,7 +95,7 @@ pub(super) fn choose(
         let chance = 6.0 / (group.bins.len() as f64).sqrt();
         if group.common() > floor * (1.0 + chance) {
             kept.extend(&group.bins);
-        } else if group.common() < floor * (0.3 + chance) {
+        } else if group.common() < floor * (0.3 + chance) && group.own() < floor * (1.15 + chance) {
             quiet.extend(&group.bins);
         }
     }

@@ -97,7 +97,8 @@ impl Response {
             negative_v.iter_mut().zip(&slow[first..]).for_each(|(y, u)| *y += beta * u);
         }
         // P is the common mode plus half of the difference.
-        let positive = || corrected.common_v[first..].iter().zip(&corrected.difference_v[first..]).map(|(c, d)| c + 0.5 * d);
+        let positive =
+            || corrected.common_v[first..].iter().zip(&corrected.difference_v[first..]).map(|(c, d)| c + 0.5 * d);
         Ok(Corrected {
             difference_v: positive().zip(&negative_v).map(|(p, n)| p - n).collect(),
             common_v: positive().zip(&negative_v).map(|(p, n)| 0.5 * (p + n)).collect(),

@@ -14,10 +14,11 @@ use super::{BandGain, PoleZero, Response, ResponseError};
 /// The lengths of filter that are tried; longer ones only add noise.
 const LENGTHS: [usize; 3] = [5, 9, 17];
 
-/// A term must take this share off a band's residual power to be worth having.
-const WORTH: f64 = 0.1;
+/// A term must bring so much rejection, summed over the bands of half a decade, to be worth having. Only what stands out
+/// of the noise counts.
+const WORTH_DB: f64 = 1.0;
 
-/// By how many standard deviations of chance.
+/// A band's change counts beyond this many standard deviations of chance.
 const SURE: f64 = 3.0;
 
 /// How often the legs are aligned anew, and to what part of a sample.
@@ -64,7 +65,7 @@ pub(super) fn fit(
     if let Some(terms) = terms {
         finish(&mut response, &prepared, terms);
     }
-    response.words = words::tell(&response, &verdicts);
+    response.words = words::tell(&response, &verdicts, terms.is_some());
     Ok(response)
 }
 
@@ -96,7 +97,8 @@ fn prepare(
         let time_constant = if enough { solve::time_constant(&fitted, terms, None, length) } else { None };
         let samples = time_constant.map_or(length as f64, |found| found.samples);
         let system = System::new(&fitted, &bins.bands, samples);
-        let model = time_constant.and_then(|_| system.fit(terms)).or_else(|| system.fit(Terms { pole_zero: false, taps: 1 }));
+        let model =
+            time_constant.and_then(|_| system.fit(terms)).or_else(|| system.fit(Terms { pole_zero: false, taps: 1 }));
         let delay = model.as_ref().map_or(0.0, System::delay);
         round += 1;
         if delay.abs() < ALIGNED || !delay.is_finite() || round == ROUNDS {
@@ -196,20 +198,21 @@ impl Judge<'_> {
         let (noise, noise_x) = self.system.noise;
         let change = &after.coefficients - &before.coefficients;
         let taps: f64 = change.rows(0, SLOW).iter().map(|one| one * one).sum();
-        let mut verdict = Verdict::Nothing;
+        let mut gained_db = 0.0;
         for (products, band) in self.system.bands.iter().zip(self.bands) {
             let (old, new) = (before.cost(products), after.cost(products));
             let full = change.clone().insert_row(columns::POSITIVE, 0.0);
             let moved = full.dot(&(products * &full)).max(0.0) + band.range.len() as f64 * noise_x * taps;
-            let chance = SURE * (2.0 * noise * moved).sqrt();
-            if old - new > chance.max(WORTH * old) {
-                verdict = if verdict == Verdict::Harms { Verdict::Harms } else { Verdict::Helps };
-            }
-            if new - old > chance.max(WORTH * old.abs()).max(self.floor(band)) {
-                verdict = Verdict::Harms;
+            if (old - new).abs() > SURE * (2.0 * noise * moved).sqrt() {
+                let floor = self.floor(band);
+                gained_db += 10.0 * (old.max(floor) / new.max(floor)).log10();
             }
         }
-        verdict
+        match gained_db {
+            gained if gained > WORTH_DB => Verdict::Helps,
+            gained if gained < -WORTH_DB => Verdict::Harms,
+            _ => Verdict::Nothing,
+        }
     }
 
     /// The residual power that noise could leave in a band at a coverage factor of 2.

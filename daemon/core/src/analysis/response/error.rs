@@ -4,7 +4,9 @@
 #[derive(Debug, Clone, PartialEq, thiserror::Error)]
 pub enum ResponseError {
     /// Too few acquisitions to judge on others than those that were fitted.
-    #[error("{acquisitions} acquisitions of the reference are too few to fit a response and to judge it; acquire at least 2")]
+    #[error(
+        "{acquisitions} acquisitions of the reference are too few to fit a response and to judge it; acquire at least 2"
+    )]
     Acquisitions {
         /// How many there are.
         acquisitions: usize,
@@ -29,7 +31,9 @@ pub enum ResponseError {
         interval_s: f64,
     },
     /// The noise of the legs cannot be told from the signal.
-    #[error("the reference fills the spectrum, so that the legs' noise cannot be told; use one with a period, or more samples per edge")]
+    #[error(
+        "the reference fills the spectrum, so that the legs' noise cannot be told; use one with a period, or more samples per edge"
+    )]
     Noise,
     /// Nothing to fit.
     #[error("the legs share no signal above the noise in {points} samples; check that both tips are on the reference")]

@@ -14,9 +14,9 @@
 //! least squares (errors in variables); its power, measured in bins without signal, is taken out of the normal
 //! equations. Cost: O(n log n), some forty transforms.
 //!
-//! **Choice.** Half of the acquisitions are fitted, the other half judges: a term is kept if it takes at least a tenth
-//! off the residual power of a band, beyond three standard deviations of chance, and makes no band worse by as much.
-//! Then all are fitted once more.
+//! **Choice.** Half of the acquisitions are fitted, the other half judges: a term is kept if it gains at least a decibel
+//! of rejection, summed over bands of half a decade; changes within three standard deviations of chance, or below what
+//! noise hides, do not count. Then all are fitted once more.
 //!
 //! **What it cannot see.** A converter's non-linearity looks like a gain error to a signal of two levels; captures that
 //! sweep through the levels show it ([`nonlinearity`]), and no linear correction reaches beyond it.

@@ -157,9 +157,7 @@ pub(super) fn slope() -> [f64; TAPS] {
 /// Weights of the seventeen-point Lagrange interpolation at `by` samples from the middle.
 fn shift(by: f64) -> [f64; TAPS] {
     let node = |m: usize| m as f64 - HALF as f64;
-    std::array::from_fn(|m| {
-        (0..TAPS).filter(|&k| k != m).map(|k| (by - node(k)) / (node(m) - node(k))).product()
-    })
+    std::array::from_fn(|m| (0..TAPS).filter(|&k| k != m).map(|k| (by - node(k)) / (node(m) - node(k))).product())
 }
 
 /// The low-pass's time constant, T' in samples, at which a model fits best.
@@ -171,12 +169,7 @@ pub(super) struct TimeConstant {
 }
 
 /// Seeks the time constant, from the shortest that makes sense up to half of the record.
-pub(super) fn time_constant(
-    spectra: &Spectra,
-    terms: Terms,
-    near: Option<f64>,
-    length: usize,
-) -> Option<TimeConstant> {
+pub(super) fn time_constant(spectra: &Spectra, terms: Terms, near: Option<f64>, length: usize) -> Option<TimeConstant> {
     let mut fixed: Vec<Column> = match terms.taps {
         1 => vec![spectra.tap(HALF), spectra.weighted(&slope())],
         taps => (HALF - taps / 2..=HALF + taps / 2).map(|m| spectra.tap(m)).collect(),
@@ -224,9 +217,8 @@ pub(super) fn time_constant(
     };
     let points = if near.is_some() { 3 } else { GRID };
     let step = (high - low) / (points - 1) as f64;
-    let best = (0..points)
-        .map(|i| (low + i as f64 * step, cost(low + i as f64 * step)))
-        .min_by(|a, b| a.1.total_cmp(&b.1))?;
+    let best =
+        (0..points).map(|i| (low + i as f64 * step, cost(low + i as f64 * step))).min_by(|a, b| a.1.total_cmp(&b.1))?;
     let at = golden(&cost, best.0 - step, best.0 + step);
     let width = 0.02;
     let curvature = (cost(at + width) - 2.0 * cost(at) + cost(at - width)) / (width * width);

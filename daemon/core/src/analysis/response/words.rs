@@ -7,9 +7,9 @@ use crate::units::{Unit, show};
 /// What a term does on acquisitions that were not fitted.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub(super) enum Verdict {
-    /// It makes a band worse.
+    /// The bands get worse on the whole.
     Harms,
-    /// It makes a band better and none worse.
+    /// The bands get better on the whole.
     Helps,
     /// Neither, beyond chance.
     Nothing,
@@ -20,7 +20,7 @@ fn most(improved: &[BandGain]) -> Option<&BandGain> {
     improved.iter().max_by(|a, b| (a.after_db - a.before_db).total_cmp(&(b.after_db - b.before_db)))
 }
 
-pub(super) fn tell(response: &Response, verdicts: &[(Terms, Verdict)]) -> Vec<String> {
+pub(super) fn tell(response: &Response, verdicts: &[(Terms, Verdict)], corrects: bool) -> Vec<String> {
     let mut words = Vec::new();
     if let Some(term) = response.pole_zero {
         let relative = term.relative.value;
@@ -37,15 +37,13 @@ pub(super) fn tell(response: &Response, verdicts: &[(Terms, Verdict)]) -> Vec<St
             response.taps.len()
         ));
     }
-    for (terms, verdict) in verdicts.iter().filter(|(_, verdict)| *verdict == Verdict::Harms) {
+    for (terms, _) in verdicts.iter().filter(|(_, verdict)| *verdict == Verdict::Harms) {
         let what = match terms.taps {
             1 => "a low-frequency term".to_owned(),
             taps => format!("a filter of {taps} taps"),
         };
-        debug_assert!(*verdict == Verdict::Harms);
-        words.push(format!("{what} was left out: it makes some band worse on acquisitions that were not fitted"));
+        words.push(format!("{what} was left out: it loses rejection on acquisitions that were not fitted"));
     }
-    let corrects = response.pole_zero.is_some() || response.taps.len() > 1 || response.taps != [1.0];
     match most(&response.improved).filter(|_| corrects) {
         Some(band) => words.push(format!(
             "most is gained between {} and {}: rejection {:.0} dB before, {}{:.0} dB after",
