@@ -1,4 +1,4 @@
-//! Which bins of the spectrum the reference excites, and which show the noise alone.
+//! Which bins of the spectrum the reference excites, and how much noise there is.
 
 use realfft::num_complex::Complex;
 use std::collections::BTreeMap;
@@ -26,8 +26,6 @@ pub(super) struct Bins {
     /// Indices of excited bins, rising.
     pub(super) kept: Vec<usize>,
     pub(super) bands: Vec<Band>,
-    /// Indices of bins without signal.
-    pub(super) quiet: Vec<usize>,
 }
 
 /// How a harmonic counts: a symmetric square excites only the odd ones.
@@ -89,19 +87,15 @@ pub(super) fn choose(
     };
     let floor = if floor(ENOUGH).is_finite() { floor(ENOUGH) } else { floor(1) };
     let mut kept: Vec<usize> = Vec::new();
-    let mut quiet: Vec<usize> = Vec::new();
     for group in groups.values() {
         // A group of few bins may share as much by chance.
         let chance = 6.0 / (group.bins.len() as f64).sqrt();
         if group.common() > floor * (1.0 + chance) {
             kept.extend(&group.bins);
-        } else if group.common() < floor * (0.3 + chance) && group.own() < floor * (1.15 + chance) {
-            quiet.extend(&group.bins);
         }
     }
     kept.sort_unstable();
-    quiet.sort_unstable();
-    Bins { bands: bands(&kept, bin_hz), kept, quiet }
+    Bins { bands: bands(&kept, bin_hz), kept }
 }
 
 fn bands(kept: &[usize], bin_hz: f64) -> Vec<Band> {
@@ -120,14 +114,16 @@ fn bands(kept: &[usize], bin_hz: f64) -> Vec<Band> {
     bands
 }
 
-/// Noise power per bin of both legs from the quiet bins, less what the legs share there. `None` when they are too few.
-pub(super) fn noise(p: &[Complex<f64>], x: &[Complex<f64>], quiet: &[usize]) -> Option<(f64, f64)> {
-    if quiet.len() < ENOUGH {
-        return None;
-    }
-    let count = quiet.len() as f64;
-    let mean = |value: &dyn Fn(usize) -> f64| quiet.iter().map(|&k| value(k)).sum::<f64>() / count;
-    let shared = mean(&|k| (p[k] * x[k].conj()).re);
+/// Noise power per bin of both legs from two independent spectra of each: the power of their differences, less what the
+/// legs' differences share (the trigger's jitter moves both legs alike). Holds for the difference; of `1/a + 1/b` shares
+/// the means of a and b acquisitions have `1/a` and `1/b`.
+pub(super) fn noise(p: [&[Complex<f64>]; 2], x: [&[Complex<f64>]; 2]) -> (f64, f64) {
+    let last = ((HIGHEST * 2.0 * p[0].len() as f64) as usize).min(p[0].len() - 1).max(1);
+    let mean = |value: &dyn Fn(Complex<f64>, Complex<f64>) -> f64| {
+        let one = |k: usize| value(p[0][k] - p[1][k], x[0][k] - x[1][k]);
+        (1..=last).map(one).sum::<f64>() / last as f64
+    };
+    let shared = mean(&|p, x| (p * x.conj()).re);
     let rest = |power: f64| (power - shared).max(power / 10.0);
-    Some((rest(mean(&|k| p[k].norm_sqr())), rest(mean(&|k| x[k].norm_sqr()))))
+    (rest(mean(&|p, _| p.norm_sqr())), rest(mean(&|_, x| x.norm_sqr())))
 }

@@ -90,7 +90,11 @@ fn prepare(
         if bins.kept.len() < 2 {
             return Err(ResponseError::NoSignal { points: length });
         }
-        let fitted = Spectra::of(&halves.fitted, &fourier, &bins)?;
+        let (other_positive, other_negative) = columns::overview(&halves.judging, &fourier)?;
+        let noise = bins::noise([&positive, &other_positive], [&negative, &other_negative]);
+        let share = |one: f64, other: f64| (noise.0 * other / (one + other), noise.1 * other / (one + other));
+        let (a, b) = (halves.fitted.acquisitions, halves.judging.acquisitions);
+        let fitted = Spectra::of(&halves.fitted, &fourier, &bins, share(a, b))?;
         let terms = Terms { pole_zero: true, taps: 1 };
         // Few bins cannot tell a low-pass and its history from gain and delay.
         let enough = bins.kept.len() >= 6;
@@ -102,7 +106,7 @@ fn prepare(
         let delay = model.as_ref().map_or(0.0, System::delay);
         round += 1;
         if delay.abs() < ALIGNED || !delay.is_finite() || round == ROUNDS {
-            let judging = Spectra::of(&halves.judging, &fourier, &bins)?;
+            let judging = Spectra::of(&halves.judging, &fourier, &bins, share(b, a))?;
             return Ok(Prepared { halves, fitted, judging, bins, time_constant, moved });
         }
         moved += delay.clamp(-STEP, STEP);

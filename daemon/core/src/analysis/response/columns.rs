@@ -7,11 +7,10 @@ use nalgebra::DMatrix;
 use realfft::num_complex::Complex;
 use std::ops::Range;
 
-use super::super::noise;
 use super::super::spectrum::Fourier;
 use super::ResponseError;
 use super::align::{HALF, Mean};
-use super::bins::{self, Band, Bins};
+use super::bins::{Band, Bins};
 use super::carry::LowPass;
 
 /// How many shifted columns there are.
@@ -57,18 +56,16 @@ fn shifted(mean: &Mean, fourier: &Fourier, by: usize) -> Result<Vec<Complex<f64>
 }
 
 impl Spectra {
-    pub(super) fn of(mean: &Mean, fourier: &Fourier, bins: &Bins) -> Result<Self, ResponseError> {
+    /// Of a mean of acquisitions, whose legs have this noise power per bin.
+    pub(super) fn of(
+        mean: &Mean,
+        fourier: &Fourier,
+        bins: &Bins,
+        (noise_p, noise_x): (f64, f64),
+    ) -> Result<Self, ResponseError> {
         let pick = |spectrum: &[Complex<f64>]| bins.kept.iter().map(|&k| spectrum[k]).collect::<Vec<_>>();
         let (p, x) = overview(mean, fourier)?;
         let length = mean.p.len() as f64;
-        let (noise_p, noise_x) = match bins::noise(&p, &x, &bins.quiet) {
-            Some(powers) => powers,
-            None => {
-                let end = HALF + mean.p.len();
-                let found = noise::out_of_band(&mean.p, &mean.x[HALF..end], 1.0)?.ok_or(ResponseError::Noise)?;
-                (length * found.p_v.powi(2), length * found.n_v.powi(2))
-            }
-        };
         let mut columns = Vec::with_capacity(TAPS);
         for by in 0..TAPS {
             columns.push(if by == HALF { pick(&x) } else { pick(&shifted(mean, fourier, by)?) });

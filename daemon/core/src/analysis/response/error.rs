@@ -30,11 +30,6 @@ pub enum ResponseError {
         /// Interval of the records in seconds.
         interval_s: f64,
     },
-    /// The noise of the legs cannot be told from the signal.
-    #[error(
-        "the reference fills the spectrum, so that the legs' noise cannot be told; use one with a period, or more samples per edge"
-    )]
-    Noise,
     /// Nothing to fit.
     #[error("the legs share no signal above the noise in {points} samples; check that both tips are on the reference")]
     NoSignal {

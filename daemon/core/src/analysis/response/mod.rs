@@ -11,8 +11,8 @@
 //! that the reference excites (only odd harmonics for a square wave) has one solution; T' is sought by its profile. All
 //! columns are made in the time domain, with the low-pass's unknown history as one more column: records need
 //! not hold whole periods. Weights are uniform, which is maximum likelihood for white noise. Noise in the columns biases
-//! least squares (errors in variables); its power, measured in bins without signal, is taken out of the normal
-//! equations. Cost: O(n log n), some forty transforms.
+//! least squares (errors in variables); its power, measured from the repeats, is taken out of the normal equations.
+//! Cost: O(n log n), some forty transforms in each of a few rounds.
 //!
 //! **Choice.** Half of the acquisitions are fitted, the other half judges: a term is kept if it gains at least a decibel
 //! of rejection, summed over bands of half a decade; changes within three standard deviations of chance, or below what
