@@ -1,7 +1,7 @@
 //! What makes two legs agree: skew, gain and offset, each with its standard uncertainty.
 
 /// A value with its standard uncertainty (JCGM 100, 2.3.1), in whatever unit the field's name says.
-#[derive(Debug, Clone, Copy, PartialEq)]
+#[derive(Debug, Clone, Copy, PartialEq, serde::Serialize, serde::Deserialize)]
 pub struct Estimate {
     /// The estimate.
     pub value: f64,

@@ -22,6 +22,7 @@ pub mod noise;
 pub mod peaks;
 pub mod record;
 pub mod rejection;
+pub mod response;
 pub mod skew;
 pub mod spectrum;
 pub mod transition;

@@ -90,6 +90,9 @@ pub enum ApplyError {
         /// What of it.
         what: String,
     },
+    /// A response that does not fit the records.
+    #[error(transparent)]
+    Response(#[from] super::response::ResponseError),
     /// Nothing, or almost nothing, is left where both legs have samples.
     #[error(
         "of {points} samples only {valid} are left after a shift of {shift_samples} samples; use a longer record or \

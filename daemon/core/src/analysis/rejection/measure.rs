@@ -11,6 +11,7 @@ use realfft::num_complex::Complex;
 use super::super::apply::{self, ApplyError};
 use super::super::band;
 use super::super::interpolate::BAND;
+use super::super::response::{self, Response};
 use super::super::{Correction, Record};
 use super::RejectionBand;
 
@@ -36,11 +37,25 @@ pub fn measure(
     correction: &Correction,
     bands: &[f64],
 ) -> Result<Vec<RejectionBand>, ApplyError> {
+    measure_with(p, n, correction, None, bands)
+}
+
+/// As [`measure`], after a correction with a response.
+///
+/// # Errors
+/// As [`measure`]; also when the response does not fit the records.
+pub fn measure_with(
+    p: &[Record],
+    n: &[Record],
+    correction: &Correction,
+    response: Option<&Response>,
+    bands: &[f64],
+) -> Result<Vec<RejectionBand>, ApplyError> {
     let mut after = Vec::new();
     let mut before = Vec::new();
     let mut interval_s = 0.0;
     for (p, n) in p.iter().zip(n) {
-        let corrected = apply::correct(p, n, correction)?;
+        let corrected = response::correct(p, n, correction, response)?;
         interval_s = corrected.interval_s;
         after.push((corrected.difference_v, corrected.common_v));
         let pairs = apply::nearest(p, n)?;

@@ -8,7 +8,7 @@ use super::Correction;
 
 mod measure;
 
-pub use measure::measure;
+pub use measure::{measure, measure_with};
 
 /// The rejection in one band.
 #[derive(Debug, Clone, Copy, PartialEq)]

@@ -1,0 +1,126 @@
+//! Carrying out a response: the filter and the low-pass on the corrected negative leg, with the valid range they leave.
+
+use super::super::apply::{self, ApplyError, Corrected};
+use super::super::interpolate::{Interpolator, TAPS};
+use super::super::{Correction, Record};
+use super::{Response, ResponseError};
+
+/// What the low-pass's unknown history may still add at the first valid sample, relative to the signal (−100 dB).
+const HISTORY: f64 = 1e-5;
+
+/// A first-order low-pass in discrete time, exact for a signal that is straight between its samples:
+/// `u[i + 1] = ρ·u[i] + c0·x[i] + c1·x[i + 1]`.
+#[derive(Debug, Clone, Copy)]
+pub(super) struct LowPass {
+    pub(super) rho: f64,
+    pub(super) c0: f64,
+    pub(super) c1: f64,
+}
+
+impl LowPass {
+    /// For a time constant of `samples` samples.
+    pub(super) fn new(samples: f64) -> Self {
+        let a = 1.0 / samples;
+        let rho = (-a).exp();
+        let mean = -(-a).exp_m1() / a;
+        Self { rho, c0: mean - rho, c1: 1.0 - mean }
+    }
+
+    /// Its output for `signal`, as if that had been at its mean before.
+    pub(super) fn apply(&self, signal: &[f64]) -> Vec<f64> {
+        let mut state = super::super::line::mean(signal);
+        let mut last = state;
+        signal
+            .iter()
+            .map(|&x| {
+                state = self.rho.mul_add(state, self.c0.mul_add(last, self.c1 * x));
+                last = x;
+                state
+            })
+            .collect()
+    }
+}
+
+/// The corrected difference and the common mode of one capture, as [`apply::correct`] and then with the response.
+///
+/// # Errors
+/// As [`apply::correct`]; also when the response does not hold for the records' sample interval, or the low-frequency
+/// term needs more past than they have.
+pub fn correct(
+    p: &Record,
+    n: &Record,
+    correction: &Correction,
+    response: Option<&Response>,
+) -> Result<Corrected, ApplyError> {
+    let Some(response) = response else { return apply::correct(p, n, correction) };
+    let mut moved = *correction;
+    moved.skew_s.value += response.skew_s;
+    let corrected = apply::correct(p, n, &moved)?;
+    let shift = (p.start_s - n.start_s + moved.skew_s.value) / p.interval_s;
+    Ok(response.carry_out(&corrected, shift)?)
+}
+
+impl Response {
+    /// β, the low-pass's factor, and its time constant in samples of `interval_s`.
+    fn low_pass(&self, interval_s: f64) -> Option<(f64, f64)> {
+        let term = self.pole_zero?;
+        let relative = term.relative.value;
+        let samples = term.time_constant_s.value * (1.0 + relative) / interval_s;
+        Some((relative * self.taps.iter().sum::<f64>(), samples))
+    }
+
+    fn carry_out(&self, corrected: &Corrected, shift: f64) -> Result<Corrected, ResponseError> {
+        let interval_s = corrected.interval_s;
+        if self.taps.len() > 1 && (interval_s / self.interval_s - 1.0).abs() > 1e-6 {
+            return Err(ResponseError::Interval { fitted_s: self.interval_s, interval_s });
+        }
+        let x = &corrected.negative_v;
+        let half = self.taps.len() / 2;
+        let low_pass = self.low_pass(interval_s);
+        let settle = low_pass.map_or(0, |(beta, samples)| {
+            let periods = (beta.abs() / HISTORY).ln().max(0.0);
+            (samples * periods).ceil() as usize
+        });
+        let points = x.len();
+        if settle > points / 2 {
+            let needed_s = settle as f64 * interval_s;
+            return Err(ResponseError::Settling { needed_s, record_s: points as f64 * interval_s });
+        }
+        let first = settle.max(half);
+        if points < first + half + 16 {
+            return Err(ResponseError::TooShort { points });
+        }
+        let mut negative_v = convolve(&x[first - half..], &self.taps);
+        negative_v.iter_mut().for_each(|y| *y += self.level_v);
+        if let Some((beta, samples)) = low_pass {
+            let slow = LowPass::new(samples).apply(x);
+            negative_v.iter_mut().zip(&slow[first..]).for_each(|(y, u)| *y += beta * u);
+        }
+        // P is the common mode plus half of the difference.
+        let positive =
+            || corrected.common_v[first..].iter().zip(&corrected.difference_v[first..]).map(|(c, d)| c + 0.5 * d);
+        Ok(Corrected {
+            difference_v: positive().zip(&negative_v).map(|(p, n)| p - n).collect(),
+            common_v: positive().zip(&negative_v).map(|(p, n)| 0.5 * (p + n)).collect(),
+            first: corrected.first + first,
+            interval_s,
+            start_s: (first as f64).mul_add(interval_s, corrected.start_s),
+            noise_gain: self.noise_gain(shift),
+            negative_v,
+        })
+    }
+
+    /// `Σ h²` of interpolation and filter together. The low-pass adds `β²/2T'`, which is nothing beside them.
+    fn noise_gain(&self, shift: f64) -> f64 {
+        let interpolator = Interpolator::new(shift.fract());
+        let length = 4 * TAPS + 2 * self.taps.len();
+        let mut impulse = vec![0.0; length];
+        impulse[length / 2] = 1.0;
+        convolve(&interpolator.apply(&impulse), &self.taps).iter().map(|h| h * h).sum()
+    }
+}
+
+/// `y[i] = Σ_j taps[j]·x[i + j]`, where all taps have a sample.
+fn convolve(x: &[f64], taps: &[f64]) -> Vec<f64> {
+    x.windows(taps.len()).map(|w| w.iter().zip(taps).map(|(x, h)| x * h).sum()).collect()
+}
