@@ -60,19 +60,23 @@ fn facts(budget: &Budget) -> Vec<String> {
 }
 
 fn range(range: &RangeChoice) -> String {
-    format!(
-        "range      {} at the tip around {} ({} at the input), one step {}",
+    let mut text = format!(
+        "range      {} at the tip around {} ({} at the input)\n             one step {}",
         volts(range.span_v),
         volts(range.middle_v),
         volts(range.input_span_v),
         volts(range.step_v)
-    )
+    );
+    if range.noise_v > 0.0 {
+        text += &format!(", noise {} rms", volts(range.noise_v));
+    }
+    text
 }
 
 fn rejection(rejection: &Rejection, at: &str) -> String {
     let db = |value: Option<f64>| value.map_or_else(|| "no limit".to_owned(), |value| format!("{value:.1} dB"));
     format!(
-        "rejection  at {at}   {:>10} {:>10}\n             gain alone {:>10} {:>10}\n             skew alone {:>10} {:>10}",
+        "rejection  before / after a deskew, at {at}: {} / {}\n             gain alone {} / {}; skew alone {} / {}",
         db(rejection.before_db),
         db(rejection.after_db),
         db(rejection.gain_before_db),
