@@ -87,8 +87,9 @@ impl<'a> Leg<'a> {
     pub(super) fn reaches(&self, ends: (f64, f64)) -> bool {
         match self {
             Self::Codes { codes, .. } => {
-                let (low, high) =
-                    codes.iter().fold((i16::MAX, i16::MIN), |(low, high), &code| (low.min(code), high.max(code)));
+                // One after the other: each alone is a single wide instruction.
+                let low = codes.iter().copied().fold(i16::MAX, i16::min);
+                let high = codes.iter().copied().fold(i16::MIN, i16::max);
                 !codes.is_empty() && (f64::from(low) <= ends.0 || f64::from(high) >= ends.1)
             }
             Self::Numbers { numbers, .. } => numbers.iter().any(|&x| f64::from(x) <= ends.0 || f64::from(x) >= ends.1),

@@ -13,6 +13,9 @@ use super::edges::Edge;
 const STRETCHES: usize = 32;
 const STRETCH: usize = 8;
 
+/// Points of the regression: the blocks are joined until there are no more. A few then hold both levels, no harm done.
+const POINTS: usize = 2048;
+
 /// Block means of both legs at the same instants of the signal, apart from edges.
 pub(super) struct Blocks {
     p: Vec<f64>,
@@ -72,9 +75,13 @@ impl Blocks {
 
     /// `found` from the windows, with gain and offset from the blocks. `None` where these are too few.
     pub(super) fn complete(&self, mut found: SkewEstimate, settled: &Settled<'_>) -> Option<SkewEstimate> {
-        let each = 1.0 / (BLOCK as f64).sqrt();
+        let many = self.p.len().div_ceil(POINTS).max(1);
+        let joined = |means: &[f64]| -> Vec<f64> {
+            means.chunks_exact(many).map(|part| part.iter().sum::<f64>() / many as f64).collect()
+        };
+        let each = 1.0 / ((BLOCK * many) as f64).sqrt();
         let (noise_p, noise_n) = (found.noise_p_v, found.noise_n_v);
-        let line = deming(&self.p, &self.n, noise_p * each, noise_n * each).ok()?;
+        let line = deming(&joined(&self.p), &joined(&self.n), noise_p * each, noise_n * each).ok()?;
         // Many blocks show their scatter better than the noise at the edges predicts it.
         let scale = line.residual;
         let windows = found.gain;
@@ -90,7 +97,7 @@ impl Blocks {
         found.bound = [found.bound[0], gain * share, offset * share];
         found.samples = all as usize;
         found.level_v = self.level;
-        found.signal_rms_v = (self.spread - (noise_p * each).powi(2)).max(0.0).sqrt();
+        found.signal_rms_v = (self.spread - noise_p.powi(2) / BLOCK as f64).max(0.0).sqrt();
         let expected2 = noise_n.powi(2) + (found.gain.value * noise_p).powi(2);
         let beyond = (line.residual.powi(2) - 1.0) * expected2 * each * each;
         let apart = (windows.value - found.gain.value).abs();

@@ -22,9 +22,9 @@ use edges::Edge;
 /// Shorter records are estimated from all samples: it takes little time.
 const LEAST_SAMPLES: usize = 32_768;
 /// Samples on either side of an edge that are used.
-const HALF: usize = 192;
+const HALF: usize = 128;
 /// Samples more on either side, for the interpolator's taps and a coarse lag that is a few samples off.
-const PAD: usize = 40;
+const PAD: usize = 32;
 /// The windows may be one part in this many of the record; with more edges all samples are used.
 const SHARE: usize = 8;
 /// Points of the coarse correlation: the blocks are joined until there are no more.
