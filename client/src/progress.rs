@@ -64,7 +64,7 @@ impl Progress {
     }
 
     fn line(&self, event: &Event, text: &str) -> Result<(), Trouble> {
-        let text = format!("{:8.2} s  {text}", event.at_s);
+        let text = render::wrap(&format!("{:8.2} s  {text}", event.at_s), 12);
         match &self.bar {
             _ if self.silent => Ok(()),
             Some(bar) => bar.suspend(|| output::print(&text)),

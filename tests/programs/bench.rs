@@ -87,13 +87,12 @@ async fn a_silent_scope_breaks_the_run_and_the_rest_of_the_bench_is_safe() {
 /// Catches: waiting for ever for a trigger that cannot come.
 #[tokio::test]
 async fn a_missing_trigger_is_named() {
-    // The node reaches 48 V and a little ringing; 80 V lies within the span, but never comes.
+    // Declared is a node of up to 84 V; the one there reaches 48 V and rings a little, so 80 V never comes.
     let trigger = "{ channel = 1, level = \"80 V\", slope = \"positive\" }";
-    let plan = LabPlan::default().with_bench("pair.gate", "trigger", trigger).with_bench(
-        "instrument.scope",
-        "timeout",
-        "\"3 s\"",
-    );
+    let plan = LabPlan::default()
+        .with_bench("pair.gate", "trigger", trigger)
+        .with_bench("reference.in_situ", "high", "\"84 V\"")
+        .with_bench("instrument.scope", "timeout", "\"3 s\"");
     let mut lab = Lab::start(&plan).await;
     broken_deskew(&lab, &["deskew gate", "scope", "trigger on channel 1", "80.0 V"]).await;
     // The scope is given back, not left waiting: it takes the next command at once.
@@ -104,9 +103,11 @@ async fn a_missing_trigger_is_named() {
 /// Catches: a correction that is made from clipped records.
 #[tokio::test]
 async fn a_clipped_reference_is_named() {
-    // Declared is a node of 0 to 48 V, which fits; what is not declared is that it rings beyond 50 V.
-    let plan =
-        LabPlan::default().with_bench("pair.gate", "span", "\"60 V\"").with_bench("pair.gate", "offset", "\"20 V\"");
+    // Declared is a node of 0 to 30 V, which fits; the one there reaches 48 V.
+    let plan = LabPlan::default()
+        .with_bench("pair.gate", "span", "\"50 V\"")
+        .with_bench("pair.gate", "offset", "\"10 V\"")
+        .with_bench("reference.in_situ", "high", "\"30 V\"");
     let mut lab = Lab::start(&plan).await;
     broken_deskew(&lab, &["deskew", "gate", "in_situ", "clipped", "larger"]).await;
     assert_eq!(lab.api.get("/bench").await.json()["rest"], "settled");

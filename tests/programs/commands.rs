@@ -155,7 +155,8 @@ async fn mistakes_on_the_command_line_are_told_from_troubles() {
     let url = format!("http://127.0.0.1:{}", nobody.split("::").nth(2).unwrap());
     complained(&run_to_end("evenpair", &["--server", &url, "runs"]).await, 2, &[&url, "evenpaird", "--server"]);
     let help = run_to_end("evenpair", &["--help"]).await;
-    let help = printed(&help, 0);
+    assert_eq!(help.status.code(), Some(0));
+    let help = text(&help.stdout);
     for command in ["demo", "bench", "deskew", "verify", "run", "runs", "show", "watch", "stop", "export", "check"] {
         assert!(help.contains(&format!("  {command} ")), "`{command}` in: {help}");
     }

@@ -126,23 +126,39 @@ async fn a_shutdown_in_the_middle_stops_the_run_and_says_why() {
 /// Catches: a correction that is applied under other conditions than it was made with, silently.
 #[tokio::test]
 async fn a_void_correction_is_refused_or_marked_as_the_sequence_says() {
-    let lab = Lab::start(&LabPlan::default()).await;
+    let mut lab = Lab::start(&LabPlan::default()).await;
     let other = |what: &str| capture(&format!("span = \"50 V\"\noffset = \"15 V\"\n{what}"));
-    let id = lab.api.begin("/runs", &text(&sequence(&[DESKEW, DEVICE, &other("")]))).await;
-    let run = lab.api.ended(&id).await;
-    assert_eq!(run["state"], "broken", "{run}");
-    let reason = run["reason"].as_str().unwrap();
-    for word in ["gate", "void", "span", "deskew"] {
-        assert!(reason.contains(word), "`{word}` in: {reason}");
-    }
-    assert_eq!(readable_captures(&lab, &id).await, 0);
-    let id = lab.api.begin("/runs", &text(&sequence(&[DEVICE, &other("on_void = \"mark\"")]))).await;
+    // On another range than the deskew before it: that much is known before anything is sent.
+    let refused = lab.api.post("/runs", &text(&sequence(&[DESKEW, DEVICE, &other("")]))).await;
+    assert_eq!((refused.status, refused.json()["code"].as_str()), (422, Some("sequence-refused")));
+    let mistakes = refused.json()["mistakes"].to_string();
+    assert!(mistakes.contains("range") && mistakes.contains("on_void"), "{mistakes}");
+    let id = lab.api.begin("/runs", &text(&sequence(&[DESKEW, DEVICE, &other("on_void = \"mark\"")]))).await;
     assert_eq!(lab.api.ended(&id).await["state"], "passed");
     let captures = lab.api.get(&format!("/runs/{id}/captures")).await.json();
     let marked = &captures["items"][0];
     assert_eq!(marked["correction_state"], "void", "{marked}");
     let warnings = marked["warnings"].to_string();
     assert!(warnings.contains("void") && warnings.contains("span"), "{warnings}");
+
+    // Another probe since: only the daemon that compares the conditions can know.
+    lab.daemon.signal("TERM").await;
+    let path = lab.folder().join("bench.toml");
+    let bench = std::fs::read_to_string(&path).unwrap();
+    let leg = "{ channel = 1, probe = \"p10b\" }";
+    std::fs::write(&path, evenpair_tests::set_in_table(&bench, "pair.gate", "positive", leg)).unwrap();
+    lab.restart_daemon().await;
+    let correction = lab.api.get("/pairs/gate/correction").await.json();
+    assert_eq!(correction["state"], "void", "{correction}");
+    assert!(correction["reasons"].to_string().contains("probe"), "{correction}");
+    let id = lab.api.begin("/runs", &text(&sequence(&[DEVICE, &capture("")]))).await;
+    let run = lab.api.ended(&id).await;
+    assert_eq!(run["state"], "broken", "{run}");
+    let reason = run["reason"].as_str().unwrap();
+    for word in ["gate", "void", "probe", "deskew"] {
+        assert!(reason.contains(word), "`{word}` in: {reason}");
+    }
+    assert_eq!(readable_captures(&lab, &id).await, 0);
 }
 
 /// Catches: a capture of a pair that was never deskewed.

@@ -5,7 +5,7 @@ use std::process::{Output, Stdio};
 use std::time::Duration;
 
 use tokio::io::{AsyncBufReadExt, BufReader, Lines};
-use tokio::process::{Child, ChildStdout, Command};
+use tokio::process::{Child, ChildStdin, ChildStdout, Command};
 
 /// The longest that anything a test waits for may take; far above what it takes on a slow machine, so that only a hang
 /// reaches it.
@@ -33,6 +33,8 @@ pub struct Program {
     name: String,
     child: Child,
     lines: Lines<BufReader<ChildStdout>>,
+    /// Kept open: waiting for a child would close it, and its end is a reason to end of its own.
+    _stdin: Option<ChildStdin>,
 }
 
 impl Program {
@@ -52,7 +54,8 @@ impl Program {
             .spawn()
             .unwrap_or_else(|error| panic!("starting {name}: {error}"));
         let stdout = child.stdout.take().expect("standard output is piped");
-        Self { name: name.to_owned(), child, lines: BufReader::new(stdout).lines() }
+        let stdin = child.stdin.take();
+        Self { name: name.to_owned(), child, lines: BufReader::new(stdout).lines(), _stdin: stdin }
     }
 
     /// The next line of its standard output; none once it has ended.

@@ -28,8 +28,7 @@ impl Report {
     /// Where the data lies and how to open it.
     pub(super) fn where_the_data_lies(&self) -> String {
         let Some(folder) = &self.data else {
-            return "The data was in a temporary folder and is gone; keep it with `evenpair demo --data DIR`."
-                .to_owned();
+            return "The data was in a temporary folder and is gone;\n`evenpair demo --data DIR` keeps it.".to_owned();
         };
         let first = self.captures.first().map_or("waveforms", |capture| capture.file.as_str());
         format!(
@@ -37,9 +36,10 @@ impl Report {
              bench.toml, sequences/   what was run, to begin your own from\n  \
              data/evenpair.sqlite     runs, captures, figures, corrections\n  \
              data/{first}\n  \
-             Each capture's records (raw codes with their scale) and corrected difference are a Parquet\n  \
-             file: any reader opens it, such as pyarrow (`pyarrow.parquet.read_table(FILE)`) or duckdb\n  \
-             (`select * from 'FILE'`). To see it again:\n  \
+             Each capture's records (raw codes with their scale) and corrected difference\n  \
+             are a Parquet file: any reader opens it, such as pyarrow\n  \
+             (`pyarrow.parquet.read_table(FILE)`) or duckdb (`select * from 'FILE'`).\n  \
+             To see it again:\n  \
              evenpaird --bench {folder}/bench.toml --data {folder}/data, then evenpair runs."
         )
     }

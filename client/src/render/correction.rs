@@ -5,6 +5,7 @@ use evenpair_core::units::{Unit, show};
 
 use super::quantity::with_uncertainty;
 use super::table::{lines, table};
+use super::wrap::wrap;
 
 /// Skew, gain and offset with their expanded uncertainties, where they hold, and what to know about them.
 pub(crate) fn correction(correction: &Correction) -> String {
@@ -36,7 +37,7 @@ pub(crate) fn correction(correction: &Correction) -> String {
     }
     text.extend(correction.reasons.iter().map(|reason| format!("  {state}: {reason}")));
     text.extend(correction.warnings.iter().map(|warning| format!("  note: {warning}")));
-    text.join("\n")
+    text.iter().map(|line| wrap(line, 4)).collect::<Vec<_>>().join("\n")
 }
 
 /// Rejection before and after, per frequency.

@@ -7,6 +7,7 @@ mod correction;
 mod quantity;
 mod run;
 mod table;
+mod wrap;
 
 pub(crate) use bench::bench;
 pub(crate) use budget::budget;
@@ -14,7 +15,7 @@ pub(crate) use captures::{capture_summary, captures, figures};
 pub(crate) use correction::{correction, rejection};
 pub(crate) use quantity::with_uncertainty;
 pub(crate) use run::{run, runs};
+pub(crate) use wrap::wrap;
 
 /// The widest line that is printed.
-#[cfg(test)]
 pub(crate) const WIDTH: usize = 80;

@@ -3,6 +3,7 @@
 use evenpair_api::{Run, RunState, Runs};
 
 use super::table::{lines, table};
+use super::wrap::wrap;
 
 /// The word for a run's state.
 pub(crate) fn state_word(state: RunState) -> &'static str {
@@ -50,6 +51,7 @@ pub(crate) fn run(run: &Run) -> String {
     for failure in &run.failures {
         text.push(format!("  capture {}: {}", failure.capture, failure.text));
     }
+    let mut text: Vec<String> = text.iter().map(|line| wrap(line, 4)).collect();
     if !run.stages.is_empty() {
         let mut stages = table(&["at", "stage", "outcome"], &[0]);
         for stage in &run.stages {

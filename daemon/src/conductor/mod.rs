@@ -67,6 +67,15 @@ struct Inner {
     runs: TaskTracker,
 }
 
+impl Inner {
+    /// Lets go of a run that has ended. One whose end the store does not have stays visible from memory.
+    fn forget(&self, live: &LiveRun) {
+        if *live.generations().borrow() == live.run().generation {
+            self.live.lock().unwrap_or_else(PoisonError::into_inner).remove(&live.id());
+        }
+    }
+}
+
 impl Conductor {
     /// Begins: ends what an earlier life of the daemon left open, and brings the bench to rest.
     pub(crate) async fn begin(workshop: Workshop, sequences: Option<PathBuf>) -> Result<Self, Refusal> {
@@ -84,9 +93,17 @@ impl Conductor {
         // The bench is nobody's until it is at rest.
         let permit = Arc::clone(&conductor.0.bench).acquire_owned().await.ok();
         let unfinished = conductor.0.workshop.store.unfinished().await?;
+        let again = |run| Arc::new(LiveRun::again(run, conductor.0.workshop.store.clone()));
+        let unfinished: Vec<Arc<LiveRun>> = unfinished.into_iter().map(again).collect();
+        // Live until they have ended: whoever follows one now is told its end, too.
+        let lives = unfinished.iter().map(|live| (live.id(), Arc::clone(live)));
+        conductor.0.live.lock().unwrap_or_else(PoisonError::into_inner).extend(lives);
         let inner = Arc::clone(&conductor.0);
         conductor.0.runs.spawn(async move {
-            resume::end_unfinished(&inner.workshop, &inner.rest, unfinished).await;
+            for live in &unfinished {
+                resume::end(&inner.workshop, &inner.rest, live).await;
+                inner.forget(live);
+            }
             if inner.rest.now() == RestState::Unknown {
                 let _ = inner.rest.settle(&inner.workshop.bench, &inner.workshop.instruments).await;
             }
@@ -314,10 +331,7 @@ async fn live_through(inner: Arc<Inner>, live: Arc<LiveRun>, sequence: Sequence)
         *inner.current.lock().unwrap_or_else(PoisonError::into_inner) = None;
     }
     drop(permit);
-    // A run whose end the store does not have stays visible from memory.
-    if *live.generations().borrow() == live.run().generation {
-        inner.live.lock().unwrap_or_else(PoisonError::into_inner).remove(&live.id());
-    }
+    inner.forget(&live);
 }
 
 async fn carry(inner: &Arc<Inner>, live: &Arc<LiveRun>, sequence: Sequence, permit: Option<&OwnedSemaphorePermit>) {

@@ -1,12 +1,16 @@
 //! A JSON body, with problem documents for what is wrong with it.
 
-use axum::body::Bytes;
 use axum::extract::{FromRequest, Request};
-use axum::http::{StatusCode, header};
+use axum::http::header;
 use evenpair_api::ProblemCode;
+use futures_util::StreamExt;
 use serde::de::DeserializeOwned;
 
 use super::problem::Fault;
+
+/// How much of a body that is too large is read before the connection is closed on it: whoever sends more than this is
+/// no client with a long sequence.
+const MOST_READ: usize = 16 * super::LARGEST_BODY;
 
 /// A JSON body. An empty one stands for `{}`, so that `POST …/deskew` needs none.
 pub(crate) struct Body<T>(pub(crate) T);
@@ -14,16 +18,9 @@ pub(crate) struct Body<T>(pub(crate) T);
 impl<S: Send + Sync, T: DeserializeOwned> FromRequest<S> for Body<T> {
     type Rejection = Fault;
 
-    async fn from_request(request: Request, state: &S) -> Result<Self, Fault> {
+    async fn from_request(request: Request, _: &S) -> Result<Self, Fault> {
         let kind = request.headers().get(header::CONTENT_TYPE).and_then(|kind| kind.to_str().ok()).map(str::to_owned);
-        let bytes = Bytes::from_request(request, state).await.map_err(|rejection| {
-            if rejection.status() == StatusCode::PAYLOAD_TOO_LARGE {
-                let most = super::LARGEST_BODY;
-                Fault::new(ProblemCode::BodyTooLarge, format!("the body is larger than {most} bytes; send less"))
-            } else {
-                Fault::new(ProblemCode::InvalidRequest, format!("reading the body failed: {rejection}"))
-            }
-        })?;
+        let bytes = read(request).await?;
         if bytes.iter().all(u8::is_ascii_whitespace) {
             return parse(b"{}");
         }
@@ -37,6 +34,31 @@ impl<S: Send + Sync, T: DeserializeOwned> FromRequest<S> for Body<T> {
         }
         parse(&bytes)
     }
+}
+
+/// The body's bytes. One that is too large is read on and dropped for a while: a client that is still sending when the
+/// connection closes sees that it broke, and not the answer.
+async fn read(request: Request) -> Result<Vec<u8>, Fault> {
+    let most = super::LARGEST_BODY;
+    let mut stream = request.into_body().into_data_stream();
+    let (mut bytes, mut length) = (Vec::new(), 0_usize);
+    while let Some(part) = stream.next().await {
+        let part = part.map_err(|error| {
+            Fault::new(ProblemCode::InvalidRequest, format!("reading the body failed: {error}; send it again"))
+        })?;
+        length = length.saturating_add(part.len());
+        if length > MOST_READ {
+            break;
+        }
+        if length <= most {
+            bytes.extend_from_slice(&part);
+        }
+    }
+    if length > most {
+        let detail = format!("the body is larger than {most} bytes; send less");
+        return Err(Fault::new(ProblemCode::BodyTooLarge, detail));
+    }
+    Ok(bytes)
 }
 
 fn parse<T: DeserializeOwned>(bytes: &[u8]) -> Result<Body<T>, Fault> {
