@@ -22,6 +22,9 @@ pub(super) const HISTORY: usize = TAPS + 1;
 /// The positive leg.
 pub(super) const POSITIVE: usize = TAPS + 2;
 
+/// The spectrum of a record, bin 0 first.
+type Spectrum = Vec<Complex<f64>>;
+
 /// One column: its spectrum, and how the negative leg's noise comes through (nothing where it does not).
 #[derive(Debug, Clone)]
 pub(super) struct Column {
@@ -44,10 +47,7 @@ pub(super) struct Spectra {
 }
 
 /// The spectra of P and of the unshifted negative leg, from which bins are chosen.
-pub(super) fn overview(
-    mean: &Mean,
-    fourier: &Fourier,
-) -> Result<(Vec<Complex<f64>>, Vec<Complex<f64>>), ResponseError> {
+pub(super) fn overview(mean: &Mean, fourier: &Fourier) -> Result<(Spectrum, Spectrum), ResponseError> {
     Ok((fourier.forward(&mut mean.p.clone())?, shifted(mean, fourier, HALF)?))
 }
 
