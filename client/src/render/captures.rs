@@ -70,7 +70,7 @@ pub(crate) fn figures(capture: &Capture) -> String {
         with_uncertainty(&capture.leak.peak),
         with_uncertainty(&capture.leak.common_swing)
     );
-    format!("{}\n{leak}", lines(&list))
+    format!("{}\n± and +…/−… hold the true value with 95 %\n{leak}", lines(&list))
 }
 
 fn plain(figure: &Figure) -> String {

@@ -56,13 +56,17 @@ fn main() -> ExitCode {
         let rms = percent(|o| o.rms);
         let half = tally.outcomes.iter().map(|o| o.half_v).sum::<f64>() / tally.outcomes.len().max(1) as f64;
         println!(
-            "{:4} {:43} {rms:6.2} ({:.2}) {:6.2} {:6.2} {:6.2} {:6.1} {:8.2}  {} {}",
+            "{:4} {:43} {rms:6.2} ({:.2}) {:6.2} {:6.2} {:>6} {:6.1} {:8.2}  {} {}",
             regime.name,
             regime.words,
             100.0 * standard_error(rms / 100.0, cases),
             percent(|o| o.plain),
             percent(|o| o.mean),
-            percent(|o| o.maximum),
+            if tally.outcomes.iter().any(|o| o.maximum.is_some()) {
+                format!("{:.2}", percent(|o| o.maximum == Some(true)))
+            } else {
+                "-".to_owned()
+            },
             percent(|o| o.flagged),
             1e3 * half,
             if regime.mark == Mark::Sharp { "94–96" } else { "≥ 95, told" },

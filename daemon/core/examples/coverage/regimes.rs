@@ -106,7 +106,8 @@ pub(crate) struct Outcome {
     /// Whether the intervals of rms, mean and maximum held the truth.
     pub(crate) rms: bool,
     pub(crate) mean: bool,
-    pub(crate) maximum: bool,
+    /// `None` where the difference is more than its sine, so that its maximum is not the sine's amplitude.
+    pub(crate) maximum: Option<bool>,
     /// Whether value ± 2u of the rms would have held it.
     pub(crate) plain: bool,
     /// Whether the rms said what limits it: the common mode, or quantisation.
@@ -172,7 +173,7 @@ pub(crate) fn case(regime: &Regime, seed: u64) -> Option<Outcome> {
     Some(Outcome {
         rms: holds(FigureKind::Rms, rms),
         mean: holds(FigureKind::Mean, truth.iter().sum::<f64>() / count),
-        maximum: holds(FigureKind::Maximum, regime.sine_v),
+        maximum: (regime.step_v <= 0.0).then(|| holds(FigureKind::Maximum, regime.sine_v)),
         plain: (found.value - rms).abs() <= 2.0 * found.u,
         flagged: match regime.mark {
             Mark::Quantisation => named("quantisation"),

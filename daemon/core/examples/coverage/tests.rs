@@ -3,21 +3,24 @@
 use super::regimes::{Mark, REGIMES, slack};
 use super::*;
 
-/// Shares over 40 cases in each regime: coarse for one of them, but over all regimes of one mark together there are
-/// 160 and 200.
+/// Cases in each regime.
+const CASES: usize = 30;
+
+/// Shares over 30 cases in each regime: coarse for one of them, but over all regimes of one mark together there are
+/// 120 and 180.
 #[test]
 fn intervals_hold_what_they_promise() {
     let (mut sharp, mut limited, mut sharp_cases, mut limited_cases) = (0, 0, 0, 0);
     for regime in &REGIMES {
-        let tally = Tally::of(regime, 40);
-        assert_eq!(tally.outcomes.len(), 40, "{} refuses records", regime.name);
+        let tally = Tally::of(regime, CASES);
+        assert_eq!(tally.outcomes.len(), CASES, "{} refuses records", regime.name);
         let held = tally.outcomes.iter().filter(|o| o.rms).count();
         if regime.mark == Mark::Sharp {
             sharp += held;
-            sharp_cases += 40;
+            sharp_cases += CASES;
         } else {
             limited += held;
-            limited_cases += 40;
+            limited_cases += CASES;
             assert!(tally.share(|o| o.flagged) >= 0.95, "{} does not say what limits it", regime.name);
         }
     }
@@ -31,7 +34,7 @@ fn intervals_hold_what_they_promise() {
 /// rectangular term, which is no 95 %.
 #[test]
 fn two_standard_uncertainties_are_too_wide_under_a_rectangular_term() {
-    let tally = Tally::of(&REGIMES[0], 60);
+    let tally = Tally::of(&REGIMES[0], CASES);
     assert!(tally.share(|o| o.plain) > 0.99);
     assert!(tally.share(|o| o.rms) < 0.99);
 }
