@@ -63,7 +63,7 @@ pub(crate) fn bench(bench: &Bench) -> String {
 }
 
 /// Text broken at 78 columns, its further lines set in by `indent`.
-fn wrap(text: &str, indent: usize) -> String {
+pub(super) fn wrap(text: &str, indent: usize) -> String {
     let mut lines = vec![String::new()];
     for word in text.split_whitespace() {
         let line = lines.last_mut().map_or(0, |line| line.chars().count());

@@ -1,6 +1,6 @@
 //! Captures and their figures.
 
-use evenpair_api::{Capture, Figure, Grade};
+use evenpair_api::{Capture, Figure, Grade, LeakBound};
 use evenpair_core::units::{Unit, show};
 
 use super::quantity::with_uncertainty;
@@ -52,8 +52,13 @@ pub(crate) fn captures(captures: &[Capture], figure_name: &str) -> String {
 
 /// Every figure of one capture.
 pub(crate) fn figures(capture: &Capture) -> String {
+    figure_table(&capture.figures, &capture.leak)
+}
+
+/// Figures with their leak bound.
+pub(super) fn figure_table(figures: &[Figure], leak: &LeakBound) -> String {
     let mut list = table(&["figure", "corrected", "plain", "grade", ""], &[1, 2]);
-    for figure in &capture.figures {
+    for figure in figures {
         let value = if figure.valid { with_uncertainty(&figure.quantity) } else { "not valid".to_owned() };
         let grade = if figure.valid { grade_word(figure.grade) } else { "" };
         let note = figure.why.clone().unwrap_or_default();
@@ -61,9 +66,9 @@ pub(crate) fn figures(capture: &Capture) -> String {
     }
     let leak = format!(
         "leak bound {} rms, {} peak, of a common mode that swings {}",
-        with_uncertainty(&capture.leak.rms),
-        with_uncertainty(&capture.leak.peak),
-        with_uncertainty(&capture.leak.common_swing)
+        with_uncertainty(&leak.rms),
+        with_uncertainty(&leak.peak),
+        with_uncertainty(&leak.common_swing)
     );
     format!("{}\n{leak}", lines(&list))
 }

@@ -1,5 +1,6 @@
 //! The API's answers as text that fits 80 columns.
 
+mod analysis;
 mod bench;
 mod captures;
 mod correction;
@@ -7,6 +8,7 @@ mod quantity;
 mod run;
 mod table;
 
+pub(crate) use analysis::analysis;
 pub(crate) use bench::bench;
 pub(crate) use captures::{capture_summary, captures, figures};
 pub(crate) use correction::{correction, rejection};

@@ -4,10 +4,9 @@ use std::collections::BTreeMap;
 
 use evenpair_api::{self as api, CorrectionState, Quantity};
 use evenpair_core::analysis::figures::{Figure, FigureInput, compute as compute_figures};
-use evenpair_core::analysis::grade::Grade;
 use evenpair_core::analysis::leak::LeakBound;
 use evenpair_core::analysis::rejection::RejectionBand;
-use evenpair_core::analysis::{Correction, Record, apply, budget, leak, noise};
+use evenpair_core::analysis::{Correction, Record, apply, leak, noise};
 use evenpair_core::bench::PairSpec;
 use evenpair_core::sequence::{CapturePlan, OnVoid};
 use tokio_util::sync::CancellationToken;
@@ -71,8 +70,7 @@ pub(crate) async fn capture(
     let state_name = if state == CorrectionState::Void { "void" } else { "stale" };
     worked.warnings.extend(reasons.iter().map(|reason| format!("the correction is {state_name}: {reason}")));
 
-    let figures: Vec<api::Figure> = worked.figures.iter().map(figure_to_api).collect();
-    let volts = |value| Quantity::exact(value, "V");
+    let figures: Vec<api::Figure> = worked.figures.iter().map(api::Figure::from).collect();
     let capture = api::Capture {
         run: place.run,
         number: place.number,
@@ -83,12 +81,7 @@ pub(crate) async fn capture(
         correction_state: Some(state),
         limits: limits::judge(&plan.limits, &figures),
         figures,
-        leak: api::LeakBound {
-            rms: volts(worked.leak.rms_v),
-            peak: volts(worked.leak.peak_v),
-            common_rms: volts(worked.leak.common_rms_v),
-            common_swing: volts(worked.leak.common_swing_v),
-        },
+        leak: api::LeakBound::from(&worked.leak),
         warnings: worked.warnings,
         points: worked.positive.samples.len() as u64,
         sample_interval: Quantity::exact(worked.positive.interval_s, "s"),
@@ -167,27 +160,4 @@ fn measured_noise(positive: &Record, negative: &Record, gain: f64, warnings: &mu
     );
     let own = |record: &Record| record.step_v / (12.0 * f64::from(record.averages.max(1))).sqrt();
     (own(positive), own(negative))
-}
-
-fn figure_to_api(figure: &Figure) -> api::Figure {
-    let shares = budget::shares(&figure.budget);
-    let term = |(term, share): (&budget::Term, f64)| api::UncertaintyTerm {
-        name: term.name.to_owned(),
-        u: term.u,
-        kind: term.kind.name().to_owned(),
-        share,
-    };
-    api::Figure {
-        name: figure.kind.name().to_owned(),
-        quantity: Quantity::new(figure.value, figure.u, figure.kind.unit().symbol()),
-        plain: figure.plain,
-        grade: match figure.grade {
-            Grade::Clean => api::Grade::Clean,
-            Grade::Shaded => api::Grade::Shaded,
-            Grade::Swamped => api::Grade::Swamped,
-        },
-        valid: figure.valid,
-        why: figure.why.clone(),
-        budget: figure.budget.iter().zip(shares).map(term).collect(),
-    }
 }

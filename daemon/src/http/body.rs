@@ -18,8 +18,9 @@ impl<S: Send + Sync, T: DeserializeOwned> FromRequest<S> for Body<T> {
         let kind = request.headers().get(header::CONTENT_TYPE).and_then(|kind| kind.to_str().ok()).map(str::to_owned);
         let bytes = Bytes::from_request(request, state).await.map_err(|rejection| {
             if rejection.status() == StatusCode::PAYLOAD_TOO_LARGE {
-                let most = super::LARGEST_BODY;
-                Fault::new(ProblemCode::BodyTooLarge, format!("the body is larger than {most} bytes; send less"))
+                let (most, saved) = (super::LARGEST_BODY >> 20, super::analyse::LARGEST_BODY >> 20);
+                let limits = format!("the body is larger than this path takes ({most} MiB, `/analyse` {saved} MiB)");
+                Fault::new(ProblemCode::BodyTooLarge, format!("{limits}; send less"))
             } else {
                 Fault::new(ProblemCode::InvalidRequest, format!("reading the body failed: {rejection}"))
             }

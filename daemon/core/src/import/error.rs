@@ -72,7 +72,9 @@ pub enum ImportError {
         known: Vec<String>,
     },
     /// Nothing tells the time of a sample.
-    #[error("no column and no header line tells the time; tell the time column as time, or the sample interval as interval")]
+    #[error(
+        "no column and no header line tells the time; tell the time column as time, or the sample interval as interval"
+    )]
     NoTime,
     /// The text holds no rows of numbers.
     #[error("no rows of numbers were found ({lines} lines{}); save the record as text with a row a sample", looked(.line))]
@@ -109,7 +111,9 @@ pub enum ImportError {
         second: &'static str,
     },
     /// There are not enough columns for two legs.
-    #[error("{found} column(s) are left for {wanted} leg(s) besides time; save both legs in one file, or a file for each leg")]
+    #[error(
+        "{found} column(s) are left for {wanted} leg(s) besides time; save both legs in one file, or a file for each leg"
+    )]
     TooFewColumns {
         /// Columns that hold numbers, time aside.
         found: usize,

@@ -221,7 +221,9 @@ fn record(
         None => {
             let found = step::of(&values_v);
             let taken = match found {
-                Some(step_v) => format!("a converter step of {} in the {} leg", show(step_v, Unit::Volt, 3), leg.name()),
+                Some(step_v) => {
+                    format!("a converter step of {} in the {} leg", show(step_v, Unit::Volt, 3), leg.name())
+                }
                 None => format!("no converter step can be seen in the {} leg", leg.name()),
             };
             guess(guesses, "bits", taken);

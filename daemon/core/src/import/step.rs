@@ -38,9 +38,10 @@ pub(super) fn of(values: &[f64]) -> Option<f64> {
         return None;
     }
     // Over many codes the rounding of the text averages out.
-    let (total, steps) = gaps.iter().filter(|gap| **gap < 64.0 * step).fold((0.0, 0.0), |(total, steps), &gap| {
-        (total + gap, steps + count(gap))
-    });
+    let (total, steps) = gaps
+        .iter()
+        .filter(|gap| **gap < 64.0 * step)
+        .fold((0.0, 0.0), |(total, steps), &gap| (total + gap, steps + count(gap)));
     (steps > 0.0).then(|| total / steps)
 }
 
@@ -48,7 +49,8 @@ pub(super) fn of(values: &[f64]) -> Option<f64> {
 /// eight, and more than three times as many as one step further in. Clipping does that, and so does a level whose noise
 /// stays below the converter's step.
 pub(super) fn crowded(values: &[f64], step: f64) -> Option<usize> {
-    let (low, high) = values.iter().fold((f64::INFINITY, f64::NEG_INFINITY), |(low, high), &v| (low.min(v), high.max(v)));
+    let (low, high) =
+        values.iter().fold((f64::INFINITY, f64::NEG_INFINITY), |(low, high), &v| (low.min(v), high.max(v)));
     let (mut ends, mut next) = ([0_usize; 2], [0_usize; 2]);
     for value in values {
         for (i, distance) in [value - low, high - value].into_iter().enumerate() {

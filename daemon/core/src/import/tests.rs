@@ -113,9 +113,8 @@ fn an_interval_in_the_header_stands_for_a_time_column() {
 
 #[test]
 fn a_file_for_each_leg_and_a_time_column_for_each_leg() {
-    let one = |leg: usize| {
-        file("time (s),voltage (V)\n", move |t, p, n| format!("{t:e},{}\n", if leg == 0 { p } else { n }))
-    };
+    let one =
+        |leg: usize| file("time (s),voltage (V)\n", move |t, p, n| format!("{t:e},{}\n", if leg == 0 { p } else { n }));
     let imported = from_text(&one(0), Some(&one(1)), &Options::default()).unwrap();
     check(&imported);
     // The second leg's own times are 0.4 ns later.
@@ -172,7 +171,8 @@ fn times_with_few_digits_are_straightened() {
 
 #[test]
 fn what_is_missing_or_odd_is_told_with_its_line() {
-    let mut lines: Vec<String> = file("t,p,n\n", |t, p, n| format!("{t:e},{p},{n}\n")).lines().map(str::to_owned).collect();
+    let mut lines: Vec<String> =
+        file("t,p,n\n", |t, p, n| format!("{t:e},{p},{n}\n")).lines().map(str::to_owned).collect();
     let at = |lines: &[String]| from_text(&lines.join("\n"), None, &Options::default());
     let whole = lines[100].clone();
     let time = whole.split(',').next().unwrap().to_owned();

@@ -40,7 +40,10 @@ pub(super) fn work(
         }
     }
     if scale_spec.is_none() {
-        warnings.push("no gain specification of the scope was told (scale_spec): its own gain error is in no uncertainty".to_owned());
+        warnings.push(
+            "no gain specification of the scope was told (scale_spec): its own gain error is in no uncertainty"
+                .to_owned(),
+        );
     }
     let corrected = apply::correct(p, n, correction)?;
     let plain_v = apply::plain(p, n)?;

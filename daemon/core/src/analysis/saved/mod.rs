@@ -96,8 +96,7 @@ pub enum SavedError {
 /// When the reference gives no correction, or records do not belong together.
 pub fn analyse(given: &Given) -> Result<Findings, SavedError> {
     let Given { reference, verification, device, known, scale_spec } = given;
-    let estimate =
-        estimate_records(&reference.positive, &reference.negative, known).map_err(SavedError::Reference)?;
+    let estimate = estimate_records(&reference.positive, &reference.negative, known).map_err(SavedError::Reference)?;
     let mut correction = estimate.correction();
     let mut warnings: Vec<String> = estimate.warnings.iter().map(ToString::to_string).collect();
     let halves = reference.halves();

@@ -37,7 +37,14 @@ fn record(signal: impl Fn(f64) -> f64, points: usize, interval_s: f64, start_s: 
 }
 
 /// Both legs of what the positive and the negative tip see.
-fn legs(p: impl Fn(f64) -> f64, n: impl Fn(f64) -> f64, points: usize, interval_s: f64, start_s: f64, seed: u64) -> Legs {
+fn legs(
+    p: impl Fn(f64) -> f64,
+    n: impl Fn(f64) -> f64,
+    points: usize,
+    interval_s: f64,
+    start_s: f64,
+    seed: u64,
+) -> Legs {
     Legs {
         positive: record(p, points, interval_s, start_s, seed),
         negative: record(|t| GAIN * n(t - SKEW_S) + OFFSET_V, points, interval_s, start_s, seed + 1),
@@ -86,14 +93,8 @@ fn halves_that_disagree_widen_the_uncertainty() {
     let mut given = given(None);
     // The negative leg moves by 2 ns in the middle of the record, as if a connector had been touched.
     let late = reference(5);
-    let later = legs(
-        |t| 2.0 * square(t, 1e-5, 20e-9),
-        |t| 2.0 * square(t - 2e-9, 1e-5, 20e-9),
-        40_000,
-        INTERVAL_S,
-        -4e-5,
-        6,
-    );
+    let later =
+        legs(|t| 2.0 * square(t, 1e-5, 20e-9), |t| 2.0 * square(t - 2e-9, 1e-5, 20e-9), 40_000, INTERVAL_S, -4e-5, 6);
     let (Samples::Numbers(before), Samples::Numbers(after)) = (&late.negative.samples, &later.negative.samples) else {
         panic!("the model makes numbers");
     };

@@ -94,7 +94,9 @@ fn style_of(lines: &[&str], options: &Options) -> Result<Option<(Style, usize)>,
     let sample: Vec<&str> = filled.iter().rev().step_by(stride).copied().collect();
     let mut best: Option<(usize, usize, Style)> = None;
     for (separator, decimal) in usual {
-        if options.separator.is_some_and(|told| told != separator) || options.decimal.is_some_and(|told| told != decimal) {
+        if options.separator.is_some_and(|told| told != separator)
+            || options.decimal.is_some_and(|told| told != decimal)
+        {
             continue;
         }
         let style = Style { separator, decimal };
@@ -116,7 +118,8 @@ fn style_of(lines: &[&str], options: &Options) -> Result<Option<(Style, usize)>,
     }
     match best {
         Some((_, width, _)) if width > MOST_COLUMNS => {
-            let why = format!("the rows come out with {width} fields, at most {MOST_COLUMNS} are read; tell the separator");
+            let why =
+                format!("the rows come out with {width} fields, at most {MOST_COLUMNS} are read; tell the separator");
             Err(ImportError::Option { option: "separator", why })
         }
         best => Ok(best.map(|(_, width, style)| (style, width))),
