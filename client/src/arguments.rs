@@ -2,7 +2,7 @@
 
 use std::path::PathBuf;
 
-use clap::{Parser, Subcommand, ValueEnum};
+use clap::{Args, Parser, Subcommand, ValueEnum};
 
 use crate::commands::BudgetFlags;
 
@@ -91,6 +91,8 @@ pub(crate) enum Command {
         /// The folder; made if it is not there.
         folder: PathBuf,
     },
+    /// Deskew, correct and measure records that any scope saved, without a daemon.
+    Analyse(Box<AnalyseArguments>),
     /// Predict the error before measuring: will two single-ended probes do, and how well must they be deskewed? No daemon.
     ///
     /// From a file, from flags, or from a file with flags that replace some of it. Exit status 0 if two probes will do,
@@ -110,6 +112,102 @@ pub(crate) enum Command {
         #[arg(long, value_name = "FILE")]
         bench: Option<PathBuf>,
     },
+}
+
+/// Files of saved records, and what can be told about them; what is not told is guessed and printed.
+#[derive(Debug, Args)]
+pub(crate) struct AnalyseArguments {
+    /// One acquisition with both tips on a reference: text (CSV and its kin) or Parquet.
+    #[arg(long, value_name = "FILE")]
+    pub(crate) reference: PathBuf,
+    /// The reference's negative leg, where each leg has a file.
+    #[arg(long, value_name = "FILE")]
+    pub(crate) reference_negative: Option<PathBuf>,
+    /// Another acquisition of the reference, to verify on.
+    #[arg(long, value_name = "FILE")]
+    pub(crate) verification: Option<PathBuf>,
+    /// Its negative leg, where each leg has a file.
+    #[arg(long, value_name = "FILE", requires = "verification")]
+    pub(crate) verification_negative: Option<PathBuf>,
+    /// One acquisition with the tips on the device.
+    #[arg(long, value_name = "FILE")]
+    pub(crate) device: Option<PathBuf>,
+    /// The device's negative leg, where each leg has a file.
+    #[arg(long, value_name = "FILE", requires = "device")]
+    pub(crate) device_negative: Option<PathBuf>,
+    /// The positive leg's column: its name, or its number from 1.
+    #[arg(long, value_name = "COLUMN")]
+    pub(crate) positive: Option<String>,
+    /// The negative leg's column.
+    #[arg(long, value_name = "COLUMN", allow_hyphen_values = true)]
+    pub(crate) negative: Option<String>,
+    /// The time column.
+    #[arg(long, value_name = "COLUMN")]
+    pub(crate) time: Option<String>,
+    /// The negative leg's own time column, where it has one.
+    #[arg(long, value_name = "COLUMN")]
+    pub(crate) negative_time: Option<String>,
+    /// The unit of the time column: s, ms, us, ns, ps.
+    #[arg(long, value_name = "UNIT")]
+    pub(crate) time_unit: Option<String>,
+    /// The unit of both legs: V, mV, uV, kV.
+    #[arg(long, value_name = "UNIT")]
+    pub(crate) volt_unit: Option<String>,
+    /// Time between two samples, such as `2 ns`, where no column tells it.
+    #[arg(long, value_name = "TIME")]
+    pub(crate) interval: Option<String>,
+    /// The same for the device's file, where it differs.
+    #[arg(long, value_name = "TIME")]
+    pub(crate) device_interval: Option<String>,
+    /// What the fields are separated by: comma, semicolon, tab, blank.
+    #[arg(long, value_name = "WORD")]
+    pub(crate) separator: Option<String>,
+    /// The decimal mark: point, comma.
+    #[arg(long, value_name = "WORD")]
+    pub(crate) decimal: Option<String>,
+    /// How many lines stand before the first row of numbers.
+    #[arg(long, value_name = "N")]
+    pub(crate) header_lines: Option<u32>,
+    /// What the volts in the file are to be multiplied by to be volts at the tip.
+    #[arg(long, value_name = "FACTOR")]
+    pub(crate) attenuation: Option<f64>,
+    /// The same for the negative leg, where it differs.
+    #[arg(long, value_name = "FACTOR")]
+    pub(crate) negative_attenuation: Option<f64>,
+    /// The converter's resolution in bits; needs --span.
+    #[arg(long, value_name = "N")]
+    pub(crate) bits: Option<u32>,
+    /// Full vertical span at the tip, such as `8 V`.
+    #[arg(long, value_name = "VOLTS")]
+    pub(crate) span: Option<String>,
+    /// The same for the device's file, where it differs.
+    #[arg(long, value_name = "VOLTS")]
+    pub(crate) device_span: Option<String>,
+    /// How many acquisitions the scope averaged.
+    #[arg(long, value_name = "N")]
+    pub(crate) averages: Option<u32>,
+    /// The scope's gain specification as half-width, such as `1.5 %`.
+    #[arg(long, value_name = "SHARE")]
+    pub(crate) scale_spec: Option<String>,
+    /// What the reference looks like.
+    #[arg(long)]
+    pub(crate) shape: Option<ShapeWord>,
+    /// The reference's period; the skew is then sought within half of it.
+    #[arg(long, value_name = "TIME")]
+    pub(crate) period: Option<String>,
+}
+
+/// What a reference looks like.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, ValueEnum)]
+pub(crate) enum ShapeWord {
+    /// A square wave or pulses.
+    Edges,
+    /// One sine.
+    Sine,
+    /// A sum of sines.
+    Multitone,
+    /// Not known.
+    Unknown,
 }
 
 /// A format of waveform files.

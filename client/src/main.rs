@@ -3,6 +3,7 @@
 //! Exit status: 0 passed, 1 a limit failed, 2 it could not be completed, 3 wrong usage. A reader that closed the pipe
 //! early counts as success.
 
+mod analyse;
 mod arguments;
 mod commands;
 mod demo;

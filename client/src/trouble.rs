@@ -30,6 +30,9 @@ pub(crate) enum Trouble {
     /// The daemon refused.
     #[error("{}", .0.detail)]
     Problem(Box<Problem>),
+    /// A file of records could not be read or analysed.
+    #[error("{}: {why}", path.display())]
+    Records { path: PathBuf, why: String },
     /// No daemon answers.
     #[error(
         "no daemon answers at {url}: {reason}; start one with `evenpaird --bench FILE --data DIR`, or name another with --server"
@@ -59,7 +62,7 @@ impl Trouble {
         use ProblemCode as P;
         match self {
             Self::NoReader => Exit::Passed,
-            Self::Mistakes { .. } | Self::Usage(_) => Exit::Usage,
+            Self::Mistakes { .. } | Self::Records { .. } | Self::Usage(_) => Exit::Usage,
             Self::Problem(problem) => match problem.code {
                 P::InvalidRequest | P::SequenceRefused | P::BodyTooLarge | P::NoCorrection => Exit::Usage,
                 P::UnknownCapture | P::UnknownPair | P::UnknownRun | P::UnknownSequence => Exit::Usage,

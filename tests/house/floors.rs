@@ -102,10 +102,7 @@ fn the_simulator_shares_no_code() {
 #[test]
 fn the_client_is_light() {
     for name in dependencies("client") {
-        assert!(
-            !["evenpair-daemon", "rusqlite", "parquet", "axum"].contains(&name.as_str()),
-            "the client depends on {name}"
-        );
+        assert!(!["evenpair-daemon", "rusqlite", "axum"].contains(&name.as_str()), "the client depends on {name}");
     }
 }
 

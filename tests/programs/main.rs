@@ -1,5 +1,6 @@
 //! Whole-program tests: the real binaries on a simulated bench, driven as a user would drive them.
 
+mod analyse;
 mod bench;
 mod commands;
 mod crash;

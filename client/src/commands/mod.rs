@@ -1,5 +1,6 @@
 //! A file per command: ask the daemon, then show.
 
+mod analyse;
 mod bench;
 mod budget;
 mod check;
@@ -36,6 +37,7 @@ pub(crate) async fn perform(arguments: Arguments) -> Result<Exit, Trouble> {
         Command::Watch { run } => run::watch(&daemon()?, &run, json).await,
         Command::Stop { run } => run::stop(&daemon()?, &run, json).await,
         Command::Export { run, to, folder } => export::export(&daemon()?, &run, to, &folder, json).await,
+        Command::Analyse(wish) => analyse::analyse(&wish, json),
         Command::Budget { file, flags } => budget::budget(file.as_deref(), *flags, json),
         Command::Check { file, bench } => check::check(&file, bench.as_deref(), json),
     }

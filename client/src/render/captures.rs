@@ -1,6 +1,6 @@
 //! Captures and their figures.
 
-use evenpair_api::{Capture, CoverageBasis, Figure, Grade};
+use evenpair_api::{Capture, CoverageBasis, Figure, Grade, LeakBound};
 use evenpair_core::units::{Unit, show};
 
 use super::quantity::{self, with_uncertainty};
@@ -52,8 +52,13 @@ pub(crate) fn captures(captures: &[Capture], figure_name: &str) -> String {
 
 /// Every figure of one capture.
 pub(crate) fn figures(capture: &Capture) -> String {
+    figure_table(&capture.figures, &capture.leak)
+}
+
+/// Figures with their leak bound.
+pub(super) fn figure_table(figures: &[Figure], leak: &LeakBound) -> String {
     let mut list = table(&["figure", "corrected", "plain", "grade", ""], &[1, 2]);
-    for figure in &capture.figures {
+    for figure in figures {
         let value = if figure.valid { quantity::figure(figure) } else { "not valid".to_owned() };
         let grade = if figure.valid { grade_word(figure.grade) } else { "" };
         let limited = figure.coverage.as_ref().is_some_and(|c| c.basis == CoverageBasis::CommonMode);
@@ -66,9 +71,9 @@ pub(crate) fn figures(capture: &Capture) -> String {
     }
     let leak = format!(
         "leak bound {} rms, {} peak, of a common mode that swings {}",
-        with_uncertainty(&capture.leak.rms),
-        with_uncertainty(&capture.leak.peak),
-        with_uncertainty(&capture.leak.common_swing)
+        with_uncertainty(&leak.rms),
+        with_uncertainty(&leak.peak),
+        with_uncertainty(&leak.common_swing)
     );
     format!("{}\n± and +…/−… hold the true value with 95 %\n{leak}", lines(&list))
 }

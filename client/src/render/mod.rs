@@ -1,5 +1,6 @@
 //! The API's answers as text that fits 80 columns.
 
+mod analysis;
 mod bench;
 mod budget;
 mod captures;
@@ -9,6 +10,7 @@ mod run;
 mod table;
 mod wrap;
 
+pub(crate) use analysis::analysis;
 pub(crate) use bench::bench;
 pub(crate) use budget::budget;
 pub(crate) use captures::{capture_summary, captures, figures};

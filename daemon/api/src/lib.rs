@@ -1,14 +1,16 @@
 //! The data types of the API under `/api/v1`: one vocabulary for the daemon that answers and the client that asks.
 //!
-//! Only data and serde live here. Every physical quantity is a [`Quantity`], `{"value": …, "u": …, "unit": "…"}`,
+//! Only data, serde and the way from the mathematics' results to documents ([`convert`]) live here. Every physical quantity is a [`Quantity`], `{"value": …, "u": …, "unit": "…"}`,
 //! with `u` the *standard* uncertainty (JCGM 100, 2.3.1); people see the expanded one, `2 u`.
 //! Sign conventions: with both tips on the node `s(t)`, `P(t) = s(t)` and `N(t) = g·s(t − τ) + o`, so a
 //! positive skew τ says that the negative leg arrives late, the gain g is N relative to P, and the offset o is in
 //! volts at the probe tips.
 
+mod analysis;
 mod bench;
 mod budget;
 mod capture;
+pub mod convert;
 mod correction;
 mod event;
 mod problem;
@@ -16,6 +18,7 @@ mod quantity;
 mod run;
 mod sequence;
 
+pub use analysis::{Analysis, AnalysisRequest, Guess, Reading, ReferenceShape, SavedRecords, SavedText, VerifiedOn};
 pub use bench::{Bench, Instrument, Leg, LinkState, Pair, Probe, Reference, Rest, Route, Setting};
 pub use budget::{
     Budget, BudgetAgreement, BudgetDerating, BudgetDifferential, BudgetLoading, BudgetNeeded, BudgetProbe, BudgetRange,

@@ -3,13 +3,14 @@
 //! Nothing here touches the world: no runtime, no files, no sockets, no clock. Time, bytes and text come in as
 //! arguments, decisions go out as values, so that everything can be tested, replayed and read without a bench.
 //!
-//! The floors, each using only those before it: [`units`] and [`analysis`]; [`scpi`] and [`document`]; [`planning`],
-//! which knows no instrument; [`dialect`], [`bench`] and [`sequence`].
+//! The floors, each using only those before it: [`units`] and [`analysis`]; [`import`], [`scpi`] and [`document`];
+//! [`planning`], which knows no instrument; [`dialect`], [`bench`] and [`sequence`].
 
 pub mod analysis;
 pub mod bench;
 pub mod dialect;
 pub mod document;
+pub mod import;
 pub mod planning;
 pub mod scpi;
 pub mod sequence;

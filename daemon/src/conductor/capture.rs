@@ -3,13 +3,7 @@
 use std::collections::BTreeMap;
 
 use evenpair_api::{self as api, CorrectionState, Quantity};
-use evenpair_core::analysis::budget::{self, Basis};
-use evenpair_core::analysis::figures::{Allowance, Figure, FigureInput, FigureKind, compute as compute_figures};
-use evenpair_core::analysis::grade::Grade;
-use evenpair_core::analysis::leak::LeakBound;
-use evenpair_core::analysis::noise::{self, PairNoise};
-use evenpair_core::analysis::rejection::RejectionBand;
-use evenpair_core::analysis::{Correction, Record, apply, leak};
+use evenpair_core::analysis::measured::measure;
 use evenpair_core::bench::PairSpec;
 use evenpair_core::sequence::{CapturePlan, OnVoid};
 use tokio_util::sync::CancellationToken;
@@ -28,17 +22,6 @@ pub(crate) struct Place {
     pub(crate) run: Uuid,
     pub(crate) number: u32,
     pub(crate) conditions: Vec<api::Condition>,
-}
-
-/// What the mathematics makes of two records.
-struct Worked {
-    positive: Record,
-    negative: Record,
-    difference_v: Vec<f32>,
-    first_valid: usize,
-    figures: Vec<Figure>,
-    leak: LeakBound,
-    warnings: Vec<String>,
 }
 
 /// Makes a capture; when this returns it is on the disk.
@@ -66,15 +49,17 @@ pub(crate) async fn capture(
     let software = for_software(&correction, settings_n.delay_s - settings_p.delay_s);
     let bands = rejection_bands(&correction.rejection);
     let scale_spec = workshop.bench.instrument(&pair.scope).and_then(|scope| scope.scale_spec);
-    let work = move || work(positive, negative, &software, &bands, scale_spec);
-    let mut worked = compute("correcting a capture", work)
+    let work = move || {
+        let measured = measure(&positive, &negative, &software, &bands, scale_spec);
+        measured.map(|measured| (positive, negative, measured))
+    };
+    let (positive, negative, mut measured) = compute("correcting a capture", work)
         .await?
         .map_err(|source| Trouble::Apply { pair: pair.name.clone(), source })?;
     let state_name = if state == CorrectionState::Void { "void" } else { "stale" };
-    worked.warnings.extend(reasons.iter().map(|reason| format!("the correction is {state_name}: {reason}")));
+    measured.warnings.extend(reasons.iter().map(|reason| format!("the correction is {state_name}: {reason}")));
 
-    let figures: Vec<api::Figure> = worked.figures.iter().map(figure_to_api).collect();
-    let volts = |value| Quantity::exact(value, "V");
+    let figures: Vec<api::Figure> = measured.figures.iter().map(api::Figure::from).collect();
     let capture = api::Capture {
         run: place.run,
         number: place.number,
@@ -85,134 +70,21 @@ pub(crate) async fn capture(
         correction_state: Some(state),
         limits: limits::judge(&plan.limits, &figures),
         figures,
-        leak: api::LeakBound {
-            rms: volts(worked.leak.rms_v),
-            peak: volts(worked.leak.peak_v),
-            common_rms: volts(worked.leak.common_rms_v),
-            common_swing: volts(worked.leak.common_swing_v),
-        },
-        warnings: worked.warnings,
-        points: worked.positive.samples.len() as u64,
-        sample_interval: Quantity::exact(worked.positive.interval_s, "s"),
+        leak: api::LeakBound::from(&measured.leak),
+        warnings: measured.warnings,
+        points: positive.samples.len() as u64,
+        sample_interval: Quantity::exact(positive.interval_s, "s"),
         file: String::new(),
     };
     let waveform = Waveform {
-        positive: worked.positive,
-        negative: worked.negative,
-        difference_v: worked.difference_v,
-        first_valid: worked.first_valid,
+        // Single precision holds a converter's codes and a hundred times more.
+        difference_v: measured.difference_v.iter().map(|&volts| volts as f32).collect(),
+        first_valid: measured.first,
+        positive,
+        negative,
         metadata: BTreeMap::new(),
     };
     let capture = workshop.store.put_capture(&capture, waveform).await?;
     tell.captured(&capture).await?;
     Ok(capture)
-}
-
-/// Records → corrected difference → leak bound → figures.
-fn work(
-    positive: Record,
-    negative: Record,
-    correction: &Correction,
-    bands: &[RejectionBand],
-    scale_spec: Option<f64>,
-) -> Result<Worked, apply::ApplyError> {
-    let mut warnings = Vec::new();
-    let clipped = (positive.clipped(), negative.clipped());
-    for (leg, count) in [("positive", clipped.0), ("negative", clipped.1)] {
-        if count > 0 {
-            warnings.push(format!("the {leg} leg is clipped at {count} samples"));
-        }
-    }
-    if scale_spec.is_none() {
-        warnings
-            .push("the bench file states no `scale_spec`: the scope's own gain error is in no uncertainty".to_owned());
-    }
-    let corrected = apply::correct(&positive, &negative, correction)?;
-    let plain_v = apply::plain(&positive, &negative)?;
-    let noise = measured_noise(&positive, &negative, correction.gain.value, &mut warnings);
-    let leak = leak::bound(&corrected.common_v, corrected.interval_s, correction, bands);
-    let figures = compute_figures(&FigureInput {
-        corrected: &corrected,
-        plain_v: &plain_v,
-        correction,
-        leak: &leak,
-        noise_p_v: noise.p_v,
-        noise_n_v: noise.n_v,
-        step_p_v: positive.step_v,
-        step_n_v: negative.step_v,
-        scale_spec: scale_spec.unwrap_or(0.0),
-        clipped_p: clipped.0,
-        clipped_n: clipped.1,
-        averages: positive.averages,
-        allowance: Allowance { noise_bins: noise.bins, ..Allowance::default() },
-    });
-    if figures.iter().any(|f| f.kind == FigureKind::Rms && f.coverage.is_some_and(|c| c.basis == Basis::CommonMode)) {
-        warnings.push(
-            "the rms is common-mode limited: what the correction may leave of the common mode is as large as the \
-             difference shows; deskew more closely, or read the interval and not the value"
-                .to_owned(),
-        );
-    }
-    Ok(Worked {
-        // Single precision holds a converter's codes and a hundred times more.
-        difference_v: corrected.difference_v.iter().map(|&volts| volts as f32).collect(),
-        first_valid: corrected.first,
-        positive,
-        negative,
-        figures,
-        leak,
-        warnings,
-    })
-}
-
-/// The noise of each leg in volts rms per sample, from the part of the spectrum that holds nothing else; where there is
-/// none, the converter's own.
-fn measured_noise(positive: &Record, negative: &Record, gain: f64, warnings: &mut Vec<String>) -> PairNoise {
-    if let Ok(Some(noise)) = noise::out_of_band(&positive.volts(), &negative.volts(), gain) {
-        return noise;
-    }
-    warnings.push(
-        "noise could not be measured: the record's whole spectrum holds signal; the converter's own is taken"
-            .to_owned(),
-    );
-    let own = |record: &Record| record.step_v / (12.0 * f64::from(record.averages.max(1))).sqrt();
-    PairNoise { p_v: own(positive), n_v: own(negative), bins: 0 }
-}
-
-fn figure_to_api(figure: &Figure) -> api::Figure {
-    let shares = budget::shares(&figure.budget);
-    let term = |(term, share): (&budget::Term, f64)| api::UncertaintyTerm {
-        name: term.name.to_owned(),
-        u: term.u,
-        sensitivity: term.sensitivity,
-        distribution: term.distribution.name().to_owned(),
-        correlated: term
-            .correlated
-            .map(|c| api::CorrelatedTerm { with: c.with.to_owned(), coefficient: c.coefficient }),
-        kind: term.kind.name().to_owned(),
-        share,
-    };
-    api::Figure {
-        name: figure.kind.name().to_owned(),
-        quantity: Quantity::new(figure.value, figure.u, figure.kind.unit().symbol()),
-        coverage: figure.coverage.map(|c| api::Coverage {
-            low: c.low,
-            high: c.high,
-            basis: match c.basis {
-                Basis::CommonMode => api::CoverageBasis::CommonMode,
-                Basis::Normal => api::CoverageBasis::Normal,
-                Basis::Propagated => api::CoverageBasis::Propagated,
-                Basis::Rectangular => api::CoverageBasis::Rectangular,
-            },
-        }),
-        plain: figure.plain,
-        grade: match figure.grade {
-            Grade::Clean => api::Grade::Clean,
-            Grade::Shaded => api::Grade::Shaded,
-            Grade::Swamped => api::Grade::Swamped,
-        },
-        valid: figure.valid,
-        why: figure.why.clone(),
-        budget: figure.budget.iter().zip(shares).map(term).collect(),
-    }
 }

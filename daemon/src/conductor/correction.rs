@@ -24,14 +24,7 @@ pub(crate) fn for_software(correction: &api::Correction, scope_skew_s: f64) -> C
 
 /// Rejection as the API tells it.
 pub(crate) fn rejection_points(bands: &[RejectionBand]) -> Vec<api::RejectionPoint> {
-    let point = |band: &RejectionBand| api::RejectionPoint {
-        frequency_hz: band.frequency_hz,
-        before_db: band.before_db,
-        after_db: band.after_db,
-        floor_db: band.floor_db,
-        at_least: band.at_least,
-    };
-    bands.iter().map(point).collect()
+    bands.iter().map(api::RejectionPoint::from).collect()
 }
 
 /// Rejection as the leak bound takes it. The number of bins is not kept; nothing that reads these asks for it.

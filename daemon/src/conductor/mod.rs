@@ -3,6 +3,7 @@
 //! Everything that takes time is a run, also a deskew asked for by itself. A run is a task of its own: it waits for the
 //! bench, carries out what the state machine asks for, and persists a record of each thing before doing it.
 
+mod analyse;
 mod capture;
 mod correction;
 mod deskew;
@@ -36,6 +37,7 @@ use tokio_util::sync::CancellationToken;
 use tokio_util::task::TaskTracker;
 use uuid::Uuid;
 
+pub(crate) use analyse::analyse;
 pub(crate) use instruments::Instruments;
 pub(crate) use refusal::Refusal;
 pub(crate) use workshop::Workshop;

@@ -13,14 +13,16 @@ use super::problem::Fault;
 const MOST_READ: usize = 16 * super::LARGEST_BODY;
 
 /// A JSON body. An empty one stands for `{}`, so that `POST …/deskew` needs none.
-pub(crate) struct Body<T>(pub(crate) T);
+///
+/// `MOST` is the largest that is taken, in bytes.
+pub(crate) struct Body<T, const MOST: usize = { super::LARGEST_BODY }>(pub(crate) T);
 
-impl<S: Send + Sync, T: DeserializeOwned> FromRequest<S> for Body<T> {
+impl<S: Send + Sync, T: DeserializeOwned, const MOST: usize> FromRequest<S> for Body<T, MOST> {
     type Rejection = Fault;
 
     async fn from_request(request: Request, _: &S) -> Result<Self, Fault> {
         let kind = request.headers().get(header::CONTENT_TYPE).and_then(|kind| kind.to_str().ok()).map(str::to_owned);
-        let bytes = read(request).await?;
+        let bytes = read(request, MOST).await?;
         if bytes.iter().all(u8::is_ascii_whitespace) {
             return parse(b"{}");
         }
@@ -38,8 +40,7 @@ impl<S: Send + Sync, T: DeserializeOwned> FromRequest<S> for Body<T> {
 
 /// The body's bytes. One that is too large is read on and dropped for a while: a client that is still sending when the
 /// connection closes sees that it broke, and not the answer.
-async fn read(request: Request) -> Result<Vec<u8>, Fault> {
-    let most = super::LARGEST_BODY;
+async fn read(request: Request, most: usize) -> Result<Vec<u8>, Fault> {
     let mut stream = request.into_body().into_data_stream();
     let (mut bytes, mut length) = (Vec::new(), 0_usize);
     while let Some(part) = stream.next().await {
@@ -47,7 +48,7 @@ async fn read(request: Request) -> Result<Vec<u8>, Fault> {
             Fault::new(ProblemCode::InvalidRequest, format!("reading the body failed: {error}; send it again"))
         })?;
         length = length.saturating_add(part.len());
-        if length > MOST_READ {
+        if length > MOST_READ.max(most) {
             break;
         }
         if length <= most {
@@ -61,7 +62,7 @@ async fn read(request: Request) -> Result<Vec<u8>, Fault> {
     Ok(bytes)
 }
 
-fn parse<T: DeserializeOwned>(bytes: &[u8]) -> Result<Body<T>, Fault> {
+fn parse<T: DeserializeOwned, const MOST: usize>(bytes: &[u8]) -> Result<Body<T, MOST>, Fault> {
     serde_json::from_slice(bytes).map(Body).map_err(|error| {
         Fault::new(
             ProblemCode::InvalidRequest,

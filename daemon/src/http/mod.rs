@@ -2,6 +2,7 @@
 //!
 //! Handlers only ask the conductor and answer; nothing that a vanished client could leave half done happens here.
 
+mod analyse;
 mod body;
 mod budget;
 mod captures;
@@ -25,7 +26,7 @@ use utoipa_axum::router::OpenApiRouter;
 use crate::conductor::Conductor;
 use problem::Fault;
 
-/// The largest body that is read: a sequence's text of 1 MiB (the most that is parsed) with its JSON escapes.
+/// The largest body that is read, but for [`analyse`], which has its own limit: a sequence's text of 1 MiB (the most that is parsed) with its JSON escapes.
 const LARGEST_BODY: usize = 2 << 20;
 
 /// What every handler has at hand.
@@ -54,6 +55,7 @@ pub(crate) fn router(conductor: Conductor, shutdown: CancellationToken) -> Route
 
 fn resources() -> OpenApiRouter<Desk> {
     OpenApiRouter::new()
+        .merge(analyse::routes())
         .merge(budget::routes())
         .merge(captures::routes())
         .merge(events::routes())
