@@ -45,7 +45,7 @@ fn write(folder: &Path, name: &str, header: &str, rows: &[[f64; 3]], line: impl 
 /// inverted legs (±1.5 V each) with 1 V of a 450 kHz sine mixed onto both.
 fn files(folder: &Path) -> (PathBuf, PathBuf) {
     let reference = |t: f64| 2.0 * square(t, 1e-5);
-    let rows_r = rows(20_000, 2e-9, -2e-5, reference, reference);
+    let rows_r = rows(60_000, 2e-9, -6e-5, reference, reference);
     let reference = write(folder, "reference.csv", "Zeit (ns);P (mV);N (mV)\n", &rows_r, |[t, p, n]| {
         format!("{:.3};{:.4};{:.4}\n", t * 1e9, p * 1e3, n * 1e3).replace('.', ",")
     });
