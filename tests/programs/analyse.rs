@@ -1,5 +1,7 @@
 //! `evenpair analyse` on files as people have them: made by hand, and exported from the simulated bench.
 
+#![allow(clippy::unwrap_used, reason = "a test may panic; not all of these helpers are marked as tests")]
+
 use std::path::{Path, PathBuf};
 
 use evenpair_tests::{Lab, LabPlan, run_to_end};
