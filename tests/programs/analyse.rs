@@ -1,5 +1,7 @@
 //! `evenpair analyse` on files as people have them: made by hand, and exported from the simulated bench.
 
+#![allow(clippy::unwrap_used, reason = "a test may panic; not all of these helpers are marked as tests")]
+
 use std::path::{Path, PathBuf};
 
 use evenpair_tests::{Lab, LabPlan, run_to_end};
@@ -45,7 +47,7 @@ fn write(folder: &Path, name: &str, header: &str, rows: &[[f64; 3]], line: impl 
 /// inverted legs (±1.5 V each) with 1 V of a 450 kHz sine mixed onto both.
 fn files(folder: &Path) -> (PathBuf, PathBuf) {
     let reference = |t: f64| 2.0 * square(t, 1e-5);
-    let rows_r = rows(20_000, 2e-9, -2e-5, reference, reference);
+    let rows_r = rows(60_000, 2e-9, -6e-5, reference, reference);
     let reference = write(folder, "reference.csv", "Zeit (ns);P (mV);N (mV)\n", &rows_r, |[t, p, n]| {
         format!("{:.3};{:.4};{:.4}\n", t * 1e9, p * 1e3, n * 1e3).replace('.', ",")
     });

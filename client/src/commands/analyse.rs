@@ -72,7 +72,10 @@ fn amount(flag: &str, text: &Option<String>, unit: Unit) -> Result<Option<f64>, 
 
 /// `1.5 %` or `0.015`.
 fn share(text: &str) -> Result<f64, Trouble> {
-    let (number, scale) = text.trim().strip_suffix('%').map_or((text.trim(), 1.0), |number| (number.trim(), 0.01));
+    let (number, scale) = match text.trim().strip_suffix('%') {
+        Some(number) => (number.trim(), 0.01),
+        None => (text.trim(), 1.0),
+    };
     let value = number.parse::<f64>().ok().map(|value| value * scale);
     value
         .filter(|value| (0.0..1.0).contains(value))

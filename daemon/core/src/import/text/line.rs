@@ -25,7 +25,7 @@ pub(super) fn row(line: &str, style: Style, width: Option<usize>) -> Row {
     let all = match plain_mark(line, style.separator) {
         // The usual case needs no list of fields.
         Some(mark) => line.split(mark).all(|field| read(field.trim())),
-        None => split(line, style.separator).into_iter().all(|field| read(field)),
+        None => split(line, style.separator).into_iter().all(read),
     };
     if all && any && width.is_none_or(|width| width == values.len()) { Row::Numbers(values) } else { Row::Other }
 }

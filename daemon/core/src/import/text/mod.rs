@@ -136,7 +136,6 @@ fn first_row(lines: &[&str], style: Style, width: usize) -> Option<usize> {
 }
 
 /// The columns' values from line `begin` on, and the line of the first row.
-#[expect(clippy::type_complexity, reason = "columns, and where they begin")]
 fn rows(
     lines: &[&str],
     begin: usize,
