@@ -28,7 +28,7 @@ fn verdict_word(verdict: Verdict) -> &'static str {
         Verdict::AfterDeskew => "will do after a deskew",
         Verdict::AsTheyAre => "will do as they are",
         Verdict::DifferentialProbe => "will NOT do; a differential probe may",
-        Verdict::OutOfReach => "will NOT do, nor will a differential probe on this scope",
+        Verdict::OutOfReach => "will NOT do, nor a differential probe on this scope",
         Verdict::Refused => "REFUSED: a rating would be exceeded",
     }
 }
