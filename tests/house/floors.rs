@@ -65,10 +65,7 @@ fn the_floors_of_the_core_stand_on_each_other() {
         "daemon/core/src/document",
         &["crate::scpi", "crate::dialect", "crate::bench", "crate::sequence", "crate::analysis"],
     );
-    must_not_know(
-        "daemon/core/src/planning",
-        &["crate::scpi", "crate::dialect", "crate::bench", "crate::sequence"],
-    );
+    must_not_know("daemon/core/src/planning", &["crate::scpi", "crate::dialect", "crate::bench", "crate::sequence"]);
     must_not_know("daemon/core/src/dialect", &["crate::bench", "crate::sequence"]);
     must_not_know("daemon/core/src/bench", &["crate::sequence"]);
 }

@@ -12,8 +12,8 @@ use evenpair_core::analysis::{Estimate, saved};
 use evenpair_core::import::{Decimal, ImportError, Imported, Options, Separator, from_text};
 
 use crate::{
-    Analysis, AnalysisRequest, CorrelatedTerm, Coverage, CoverageBasis, Figure, Grade, Guess, LeakBound, Quantity, Reading, ReferenceShape, RejectionPoint,
-    SavedRecords, SavedText, UncertaintyTerm, VerifiedOn,
+    Analysis, AnalysisRequest, CorrelatedTerm, Coverage, CoverageBasis, Figure, Grade, Guess, LeakBound, Quantity,
+    Reading, ReferenceShape, RejectionPoint, SavedRecords, SavedText, UncertaintyTerm, VerifiedOn,
 };
 
 /// Why saved records could not be analysed.
@@ -153,9 +153,7 @@ impl From<&CoreFigure> for Figure {
             u: term.u,
             sensitivity: term.sensitivity,
             distribution: term.distribution.name().to_owned(),
-            correlated: term
-                .correlated
-                .map(|c| CorrelatedTerm { with: c.with.to_owned(), coefficient: c.coefficient }),
+            correlated: term.correlated.map(|c| CorrelatedTerm { with: c.with.to_owned(), coefficient: c.coefficient }),
             kind: term.kind.name().to_owned(),
             share,
         };

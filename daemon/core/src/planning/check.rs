@@ -149,7 +149,7 @@ pub(super) fn check(plan: &Plan) -> Result<Checked, Vec<Flaw>> {
     );
     let edge_s = desk.stated("signal.edge", signal.edge_s, Unit::Second, &SECONDS);
     let frequency_hz = desk.stated("signal.frequency", signal.frequency_hz, Unit::Hertz, &HERTZ);
-    let motion = edge_s.map(Motion::Edge).or(frequency_hz.map(Motion::Sine)).unwrap_or(Motion::Sine(1.0));
+    let motion = edge_s.map(Motion::Edge).or_else(|| frequency_hz.map(Motion::Sine)).unwrap_or(Motion::Sine(1.0));
     let help = "the largest difference that you expect";
     let difference_v = desk.needed("signal.difference", signal.difference_v, Unit::Volt, &VOLTS, help);
     let headroom_v = desk.stated("signal.headroom", signal.headroom_v, Unit::Volt, &(0.0..=1e6)).unwrap_or(0.0);
@@ -161,7 +161,7 @@ pub(super) fn check(plan: &Plan) -> Result<Checked, Vec<Flaw>> {
     }
     let accuracy_v = desk.stated("signal.accuracy", signal.accuracy_v, Unit::Volt, &(1e-12..=1e6));
     let accuracy = desk.stated("signal.accuracy", signal.accuracy_ratio, Unit::One, &(1e-9..=10.0));
-    let wanted_v = accuracy_v.or(accuracy.map(|ratio| ratio * difference_v)).unwrap_or(1.0);
+    let wanted_v = accuracy_v.or_else(|| accuracy.map(|ratio| ratio * difference_v)).unwrap_or(1.0);
 
     let sources_ohm = sources(&mut desk, plan);
     let probe = &plan.probe;
@@ -283,7 +283,7 @@ fn scope(desk: &mut Desk, plan: &Plan) -> CheckedScope {
     desk.either(["scope.bits", "scope.enob"], [scope.bits, scope.enob], help);
     let bits = desk.stated("scope.bits", scope.bits, Unit::One, &(1.0..=24.0));
     let enob = desk.stated("scope.enob", scope.enob, Unit::One, &(1.0..=24.0));
-    let fineness = enob.map_or(Fineness::Bits(bits.unwrap_or(8.0)), Fineness::Effective);
+    let fineness = enob.map_or_else(|| Fineness::Bits(bits.unwrap_or(8.0)), Fineness::Effective);
     let noise_v = desk.stated("scope.noise", scope.noise_v, Unit::Volt, &(0.0..=1e3));
     let noise_ratio = desk.stated("scope.noise", scope.noise_ratio, Unit::One, &RATIO);
     let linearity = desk.stated("scope.linearity", scope.linearity_steps, Unit::One, &(0.0..=1000.0));
@@ -327,7 +327,7 @@ fn scope(desk: &mut Desk, plan: &Plan) -> CheckedScope {
         spans_v,
         shifts: scope.shifts.unwrap_or(true),
         scale_spec,
-        noise: noise_v.map_or(Noise::OfSpan(noise_ratio.unwrap_or(defaults::NOISE_RATIO)), Noise::Volts),
+        noise: noise_v.map_or_else(|| Noise::OfSpan(noise_ratio.unwrap_or(defaults::NOISE_RATIO)), Noise::Volts),
         linearity_steps: linearity.unwrap_or(defaults::LINEARITY_STEPS),
         bandwidth_hz: desk.stated("scope.bandwidth", scope.bandwidth_hz, Unit::Hertz, &HERTZ),
         rating_v: desk.stated("scope.rating", scope.rating_v, Unit::Volt, &(1e-3..=1e6)),

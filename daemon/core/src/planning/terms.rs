@@ -154,7 +154,8 @@ pub(super) fn totals(terms: &[Term], motion: Motion) -> Totals {
         counted.map(|term| value(term).powi(2)).sum::<f64>().sqrt()
     };
     let settles = matches!(motion, Motion::Edge(_));
-    let (before, after): (fn(&Term) -> f64, fn(&Term) -> f64) = (|term| term.before_v, |term| term.after_v);
+    let before: fn(&Term) -> f64 = |term| term.before_v;
+    let after: fn(&Term) -> f64 = |term| term.after_v;
     Totals {
         before_v: sum(before, false),
         after_v: sum(after, false),

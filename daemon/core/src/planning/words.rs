@@ -162,7 +162,8 @@ pub(super) fn notes(plan: &Checked, range: Option<&RangeChoice>) -> Vec<String> 
             ));
         }
     }
-    if plan.sources_ohm[0] != plan.sources_ohm[1] {
+    let [positive_ohm, negative_ohm] = plan.sources_ohm;
+    if (positive_ohm - negative_ohm).abs() > 0.0 {
         notes.push(
             "Loading stays after a deskew: with both tips on one node both are loaded alike, and it cannot be seen."
                 .to_owned(),
