@@ -52,7 +52,7 @@ fn three_periods_and_a_third_of_a_sine_do_no_harm() {
     for shape in [Shape::Sine, Shape::Unknown] {
         let (mean, rms) = errors(60, || {
             let truth = Truth { tau: 30.0, ..Truth::with_noise(0.02) };
-            let signal = Signal::sine(2000.0 / 3.3, dice.uniform(0.0, 6.283));
+            let signal = Signal::sine(2000.0 / 3.3, dice.uniform(0.0, std::f64::consts::TAU));
             let (p, n) = dice.records(&signal, &truth, 2000);
             (estimate(&p, &n, 1.0, &reference(shape)).unwrap(), truth, truth.bound(&signal, 2000))
         });

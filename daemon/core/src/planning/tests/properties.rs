@@ -106,7 +106,7 @@ proptest! {
         let high_v = signal.low_v.unwrap() + signal.swing_v.unwrap() + beyond_v;
         let most_v = high_v.abs().max((signal.low_v.unwrap() - beyond_v).abs());
         close(tip.most_v, most_v, 1e-12);
-        let frequency_hz = signal.frequency_hz.or(signal.edge_s.map(|edge_s| 0.35 / edge_s)).unwrap();
+        let frequency_hz = signal.frequency_hz.or_else(|| signal.edge_s.map(|edge_s| 0.35 / edge_s)).unwrap();
         let mut allowed_v = probe.rating_v.unwrap();
         if let Some(corner_hz) = probe.rating_corner_hz {
             allowed_v *= (corner_hz / frequency_hz).min(1.0);

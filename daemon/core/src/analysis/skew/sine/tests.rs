@@ -36,7 +36,7 @@ fn its_spread_is_the_closed_form_also_for_3_3_periods() {
         let omega = std::f64::consts::TAU * frequency;
         let bound = ((0.05f64.powi(2) + (0.1f64 / 0.97).powi(2)) / (omega * omega * f64::from(samples) / 2.0)).sqrt();
         for _ in 0..trials {
-            let signal = Signal::sine(1.0 / frequency, dice.uniform(0.0, 6.283));
+            let signal = Signal::sine(1.0 / frequency, dice.uniform(0.0, std::f64::consts::TAU));
             let (p, n) = dice.records(&signal, &truth, 2000);
             let fit = fit_two_sines(&p, &n).unwrap();
             let error = fit.skew_samples.value - truth.tau;
