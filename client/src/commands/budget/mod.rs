@@ -5,7 +5,7 @@ mod flags;
 use std::path::Path;
 
 use evenpair_core::document::Mistake;
-use evenpair_core::planning::{self, Plan};
+use evenpair_core::planning::{self, Flaw, Plan};
 
 pub(crate) use flags::BudgetFlags;
 
@@ -19,13 +19,7 @@ pub(crate) fn budget(file: Option<&Path>, flags: BudgetFlags, json: bool) -> Res
     let over = flags.plan();
     let told = match file {
         Some(path) => from_file(path, over)?,
-        None => planning::budget(&over).map_err(|flaws| {
-            let told: Vec<String> = flaws.iter().map(|flaw| format!("\n  {flaw}")).collect();
-            Trouble::Usage(format!(
-                "the plan is not complete; name a file or use flags (`evenpair budget --help`):{}",
-                told.concat()
-            ))
-        })?,
+        None => planning::budget(&over).map_err(|flaws| incomplete(&flaws))?,
     };
     if json {
         output::print_json(&told)?;
@@ -46,5 +40,16 @@ fn from_file(path: &Path, over: Plan) -> Result<planning::Budget, Trouble> {
         Trouble::Mistakes { path: path.into(), count: mistakes.len() }
     };
     let written = planning::read(&text).map_err(wrong)?;
-    planning::budget(&written.plan.clone().overlaid(over)).map_err(|flaws| wrong(written.mistakes(&flaws)))
+    planning::budget(&written.plan.clone().overlaid(over)).map_err(|flaws| {
+        // A file that is right by itself is not to blame for what the flags made of it.
+        if planning::budget(&written.plan).is_ok() { incomplete(&flaws) } else { wrong(written.mistakes(&flaws)) }
+    })
+}
+
+fn incomplete(flaws: &[Flaw]) -> Trouble {
+    let told: Vec<String> = flaws.iter().map(|flaw| format!("\n  {flaw}")).collect();
+    Trouble::Usage(format!(
+        "the plan is not complete or not consistent; see `evenpair budget --help`:{}",
+        told.concat()
+    ))
 }
