@@ -1,6 +1,7 @@
 //! Whole-program tests: the real binaries on a simulated bench, driven as a user would drive them.
 
 #![allow(clippy::unwrap_used, reason = "a test that cannot go on has failed")]
+#![allow(clippy::float_cmp, reason = "what a supply is set to comes back as the very number")]
 
 mod analyse;
 mod bench;
