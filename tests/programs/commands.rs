@@ -99,7 +99,7 @@ async fn a_session_at_the_bench() {
         );
         let figures = std::fs::read_to_string(folder.join("figures.csv")).unwrap();
         assert!(
-            figures.starts_with("capture,made_at,bus_voltage,figure,value,u,unit,plain,grade,valid\n"),
+            figures.starts_with("capture,made_at,bus_voltage,figure,value,u,low,high,unit,plain,grade,valid\n"),
             "{figures}"
         );
         assert!(figures.lines().any(|line| line.starts_with("2,") && line.contains(",48,high_level,")), "{figures}");

@@ -35,6 +35,10 @@ async fn end_one(workshop: &Workshop, rest: &RestKeeper, live: &Arc<LiveRun>) ->
     match entries {
         Ok(entries) if !sequence.steps.is_empty() => {
             let machine = Machine::replay(sequence.plan(), &entries);
+            if let Some((state, reason)) = end_in(&machine) {
+                run::close(live, state, reason, workshop.clock.now()).await;
+                return Ok(());
+            }
             run::carry_out(workshop, rest, live, &sequence, machine, Event::Resumed).await;
         }
         _ => {
@@ -45,4 +49,38 @@ async fn end_one(workshop: &Workshop, rest: &RestKeeper, live: &Arc<LiveRun>) ->
         }
     }
     Ok(())
+}
+
+/// How a run ended whose journal has its end: the daemon was killed between writing that and telling it.
+fn end_in(machine: &Machine) -> Option<(RunState, Option<String>)> {
+    machine.state().ended().then(|| {
+        let (verdict, reason) = machine.state().verdict();
+        (run::state_of(verdict), reason)
+    })
+}
+
+#[cfg(test)]
+mod tests {
+    use evenpair_core::sequence::machine::{Plan, Verdict, What};
+
+    use super::*;
+
+    /// A run without steps: every entry of its journal.
+    fn journal() -> Vec<Entry> {
+        let closed = What::Closed { verdict: Verdict::Passed, reason: None };
+        let what = [What::Begun, What::Settling, What::Settled { trouble: None }, closed];
+        what.into_iter().zip(0u8..).map(|(what, at_s)| Entry { at_s: at_s.into(), what }).collect()
+    }
+
+    #[test]
+    fn a_run_is_over_only_once_its_journal_says_so() {
+        let entries = journal();
+        for count in 0..entries.len() {
+            assert_eq!(end_in(&Machine::replay(Plan::default(), &entries[..count])), None, "after {count} entries");
+        }
+        assert_eq!(end_in(&Machine::replay(Plan::default(), &entries)), Some((RunState::Passed, None)));
+        // Handed to the machine it would say nothing, and the run would be waited for without end.
+        let effects = Machine::replay(Plan::default(), &entries).handle(9.0, Event::Resumed);
+        assert!(effects.is_empty());
+    }
 }

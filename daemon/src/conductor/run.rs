@@ -187,14 +187,19 @@ impl<'r> Book<'r> {
 
     /// Tells the end; where even that cannot be written, it stays in memory.
     async fn close(&self, verdict: Verdict, reason: Option<String>) {
-        let state = match verdict {
-            Verdict::Broken => RunState::Broken,
-            Verdict::Failed => RunState::Failed,
-            Verdict::Passed => RunState::Passed,
-            Verdict::Stopped => RunState::Stopped,
-        };
+        let state = state_of(verdict);
         let reason = if state == RunState::Stopped { Some(self.live.stopped_by()) } else { reason };
         close(self.live, state, reason, self.workshop.clock.now()).await;
+    }
+}
+
+/// The state that a run has in the API after this verdict.
+pub(crate) fn state_of(verdict: Verdict) -> RunState {
+    match verdict {
+        Verdict::Broken => RunState::Broken,
+        Verdict::Failed => RunState::Failed,
+        Verdict::Passed => RunState::Passed,
+        Verdict::Stopped => RunState::Stopped,
     }
 }
 
