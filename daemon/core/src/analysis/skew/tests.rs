@@ -97,7 +97,7 @@ fn a_sine_is_taken_for_the_nearer_of_two_skews_and_says_so() {
 
 #[test]
 fn correlated_noise_does_not_pull_the_skew_to_zero() {
-    // The findings name this as a trap for correlation peaks: −55 bounds at 20 dB, rho = 0.5 at lag zero.
+    // A numerical prototype showed this trap for correlation peaks: −55 bounds at 20 dB, rho = 0.5 at lag zero.
     let signal = square(392.5, 10.0, 100.0);
     let truth = Truth::with_noise(0.1);
     let bound = truth.bound(&signal, 4000)[0];
@@ -112,7 +112,7 @@ fn correlated_noise_does_not_pull_the_skew_to_zero() {
         }
         mean += (estimate(&p, &n, 1.0, &reference(Shape::Edges)).unwrap().skew_s.value - truth.tau) / bound / 40.0;
     }
-    // Standard error 0.16; the findings saw −0.23.
+    // Standard error 0.16; the prototype saw −0.23.
     assert!(mean.abs() < 0.7, "{mean}");
 }
 
@@ -245,7 +245,7 @@ fn a_ten_times_probe_is_recognised() {
 
 #[test]
 fn gain_and_offset_at_a_known_skew_are_unbiased_and_know_their_uncertainty() {
-    // 20 dB, where ordinary regression of N on P is biased by −1 % (−9.7 of these bounds in the findings' record).
+    // 20 dB, where ordinary regression of N on P is biased by −1 % (−9.7 of these bounds in the prototype).
     let signal = square(392.5, 10.0, 100.0);
     let truth = Truth { noise_p: 0.1, noise_n: 0.2, ..Truth::with_noise(0.0) };
     let bound = truth.bound(&signal, 4000);
