@@ -4,7 +4,7 @@
 //! arguments, decisions go out as values, so that everything can be tested, replayed and read without a bench.
 //!
 //! The floors, each using only those before it: [`units`] and [`analysis`]; [`import`], [`scpi`] and [`document`];
-//! [`planning`], which knows no instrument; [`dialect`], [`bench`] and [`sequence`].
+//! [`planning`], which knows no instrument; [`dialect`], [`mod@bench`] and [`sequence`].
 
 pub mod analysis;
 pub mod bench;

@@ -25,7 +25,8 @@ impl Store {
     /// Stores how a run stands now together with the event that tells of it: both or neither.
     ///
     /// # Errors
-    /// As of [`Store::update_run`] and [`Store::append_event`].
+    /// [`StoreError::AlreadyThere`] when the run has an event of this generation, [`StoreError::Unknown`] when the run
+    /// or the capture that the event names is not stored, or what the database says.
     pub(crate) async fn publish(&self, run: &Run, event: &Event) -> Result<(), StoreError> {
         let (run, event) = (run.clone(), event.clone());
         self.inner

@@ -1,6 +1,6 @@
 //! The bench file: the instruments, pairs, references, settings, routes and safe states that one daemon owns.
 //!
-//! [`read`] turns the text into a checked [`Bench`], or into every mistake in it at once. What a bench says is kept in
+//! [`read()`] turns the text into a checked [`Bench`], or into every mistake in it at once. What a bench says is kept in
 //! plain types ([`spec`]); whether a reference suits a pair is decided in one place ([`fit`]) for the file, for a
 //! sequence and for a request alike; [`conditions`] holds what a correction was made under and what voids it.
 //!

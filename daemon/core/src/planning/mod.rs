@@ -1,7 +1,7 @@
 //! The error budget of a measurement not yet made: will two single-ended probes do, how well must they be deskewed, or
 //! what must a differential probe offer instead?
 //!
-//! [`budget`] takes a [`Plan`] (from a file by [`read`], from flags or from the API), and gives a [`Budget`]: every
+//! [`budget`] takes a [`Plan`] (from a file by [`read()`], from flags or from the API), and gives a [`Budget`]: every
 //! term in volts before and after a deskew, with its formula and that formula's source, and a verdict in words and
 //! numbers. Ratings come first: where the voltage at a tip exceeds what is stated for its frequency, the answer is no,
 //! whatever the accuracy.

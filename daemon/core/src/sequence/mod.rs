@@ -1,6 +1,6 @@
 //! Sequences: the script of an unattended run, checked whole against the bench before anything is sent.
 //!
-//! [`read`] turns the text into a flat list of [`Step`]s with every sweep unrolled, or into every mistake at once.
+//! [`read()`] turns the text into a flat list of [`Step`]s with every sweep unrolled, or into every mistake at once.
 //! [`machine`] then says what to do next, whatever happens; it knows steps only by their number.
 
 pub mod machine;

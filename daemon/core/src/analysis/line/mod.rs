@@ -21,7 +21,7 @@ pub struct Line {
     pub intercept: Estimate,
     /// Covariance of slope and intercept.
     pub covariance: f64,
-    /// For [`ordinary`] the residual standard deviation in the unit of y; for [`york`] and [`deming`] the root of
+    /// For [`ordinary`] the residual standard deviation in the unit of y; for [`york()`] and [`deming`] the root of
     /// `S/(n − 2)`, about 1 where the stated uncertainties describe the scatter.
     pub residual: f64,
 }
