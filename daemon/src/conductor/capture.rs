@@ -128,10 +128,10 @@ fn work(
     let corrected = apply::correct(&positive, &negative, correction)?;
     let plain_v = apply::plain(&positive, &negative)?;
     let (noise_p_v, noise_n_v) = measured_noise(&positive, &negative, correction.gain.value, &mut warnings);
-    let leak = leak::bound(&corrected.common_v, corrected.interval_s, correction, bands);
+    let leak = leak::bound(&corrected.common(), corrected.interval_s, correction, bands);
     let figures = compute_figures(&FigureInput {
         corrected: &corrected,
-        plain_v: &plain_v,
+        plain_v: Some(&plain_v),
         correction,
         leak: &leak,
         noise_p_v,
@@ -144,8 +144,7 @@ fn work(
         averages: positive.averages,
     });
     Ok(Worked {
-        // Single precision holds a converter's codes and a hundred times more.
-        difference_v: corrected.difference_v.iter().map(|&volts| volts as f32).collect(),
+        difference_v: corrected.difference_v,
         first_valid: corrected.first,
         positive,
         negative,

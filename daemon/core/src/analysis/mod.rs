@@ -21,6 +21,7 @@ pub mod noise;
 pub mod peaks;
 pub mod record;
 pub mod rejection;
+pub mod signal;
 pub mod skew;
 pub mod spectrum;
 pub mod transition;

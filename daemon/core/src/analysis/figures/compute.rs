@@ -1,11 +1,13 @@
 //! Computing all figures of a capture with their budgets and grades.
 
+use super::super::apply::Moments;
+use super::super::signal::{Moved, Signal};
 use super::super::transition::{duration_per_part, middle_per_part};
 use super::super::{budget, grade, peaks};
 use super::plain::Plain;
 use super::shape::{Layout, Read, Reading, Shape};
 use super::sources::{Parts, Sources};
-use super::sums::{mean, product, without_noise};
+use super::sums::without_noise;
 use super::{Figure, FigureInput, FigureKind};
 
 /// A figure before it is graded.
@@ -34,7 +36,7 @@ pub fn compute(input: &FigureInput<'_>) -> Vec<Figure> {
                 let sum = f.value + budget::combined(&f.parts.budget());
                 if sum.is_finite() { Ok(f) } else { Err("it cannot be computed from these samples".to_owned()) }
             });
-            let plain = plain.figure(kind).filter(|v| v.is_finite());
+            let plain = plain.as_ref().and_then(|plain| plain.figure(kind)).filter(|v| v.is_finite());
             match found {
                 Ok(found) => {
                     let budget = found.parts.budget();
@@ -69,8 +71,10 @@ struct Bench<'a> {
     sources: Sources,
     layout: Layout,
     shape: Shape,
-    /// N_c', volts per second.
-    slope: Vec<f64>,
+    /// Means of D, N_c, its slope N_c' and their products.
+    moments: Moments,
+    /// Means of N_c and of N_c' over the samples of the low and of the high state.
+    at_states: [(f64, f64); 2],
     /// Shapes with the gain a standard uncertainty up and down.
     by_gain: Option<[Shape; 2]>,
     /// The same for the skew.
@@ -84,23 +88,23 @@ impl<'a> Bench<'a> {
         let d = &corrected.difference_v;
         let layout = Layout::of(d, sources.mean_noise_v);
         let shape = layout.read(d, sources.mean_noise_v, layout.between());
-        let slope = corrected.negative_slope();
-        let moved = |derivative: &[f64], step: f64| {
-            (step > 0.0).then(|| {
-                [step, -step].map(|step| {
-                    let signal: Vec<f64> = d.iter().zip(derivative).map(|(d, x)| x.mul_add(step, *d)).collect();
-                    let (mut low, mut high) = layout.between();
-                    if let Ok(levels) = &layout.levels {
-                        low += step * levels.mean_at_low(d, derivative);
-                        high += step * levels.mean_at_high(d, derivative);
-                    }
-                    layout.read(&signal, sources.mean_noise_v, (low, high))
-                })
-            })
+        let (negative, slope) = (&corrected.negative_v, corrected.slope());
+        let at_states = layout.levels.as_ref().map_or([(0.0, 0.0); 2], |levels| {
+            [
+                (levels.mean_at_low(d, negative), levels.mean_at_high(d, negative)),
+                (levels.mean_at_low(d, &slope), levels.mean_at_high(d, &slope)),
+            ]
+        });
+        let known = |derivative: usize, step: f64| {
+            let (low, high) = layout.between();
+            (low + step * at_states[derivative].0, high + step * at_states[derivative].1)
         };
-        let by_gain = moved(&corrected.negative_v, (sources.u_gain / sources.gain).abs());
-        let by_skew = moved(&slope, sources.u_skew_s);
-        Self { input, sources, layout, shape, slope, by_gain, by_skew }
+        let noise_v = sources.mean_noise_v;
+        let step = (sources.u_gain / sources.gain).abs();
+        let by_gain = (step > 0.0).then(|| moved(&layout, &shape, d, negative, noise_v, step, |step| known(0, step)));
+        let step = sources.u_skew_s;
+        let by_skew = (step > 0.0).then(|| moved(&layout, &shape, d, &slope, noise_v, step, |step| known(1, step)));
+        Self { input, moments: corrected.moments(), sources, layout, shape, at_states, by_gain, by_skew }
     }
 
     fn figure(&self, kind: FigureKind) -> Result<Found, String> {
@@ -151,11 +155,11 @@ impl<'a> Bench<'a> {
     fn mean(&self) -> Found {
         let Sources { mean_noise_v, u_gain, u_skew_s, u_offset_v, scale, gain, quantisation_v, .. } = self.sources;
         let corrected = self.input.corrected;
-        let value = mean(&corrected.difference_v);
+        let value = self.moments.d;
         let parts = Parts {
             noise: mean_noise_v / (corrected.difference_v.len().max(1) as f64).sqrt(),
-            gain: u_gain * mean(&corrected.negative_v) / gain,
-            skew: u_skew_s * mean(&self.slope),
+            gain: u_gain * self.moments.n / gain,
+            skew: u_skew_s * self.moments.s,
             offset: u_offset_v,
             scale: scale * value,
             quantisation: quantisation_v,
@@ -167,20 +171,19 @@ impl<'a> Bench<'a> {
     fn rms(&self) -> Found {
         let s = &self.sources;
         let corrected = self.input.corrected;
-        let (d, b) = (&corrected.difference_v, &corrected.negative_v);
-        let (value, noise, size) = without_noise(d, s.noise_v);
+        let m = &self.moments;
+        let (value, noise, size) = without_noise(m.dd, corrected.difference_v.len(), s.noise_v);
         // Second order: what gain, skew and offset errors of this size add to the mean square whatever their sign. The
         // slope's own noise, (2·8² + 2·1²)/12² per sample interval squared, is not the signal's.
         let slope_noise = self.input.noise_n_v / s.gain / corrected.interval_s;
-        let steep = (product(&self.slope, &self.slope) - 130.0 / 144.0 * slope_noise * slope_noise).max(0.0);
+        let steep = (m.ss - 130.0 / 144.0 * slope_noise * slope_noise).max(0.0);
         let relative = s.u_gain / s.gain;
-        let second =
-            relative * relative * product(b, b) + s.u_skew_s * s.u_skew_s * steep + s.u_offset_v * s.u_offset_v;
+        let second = relative * relative * m.nn + s.u_skew_s * s.u_skew_s * steep + s.u_offset_v * s.u_offset_v;
         let parts = Parts {
             noise,
-            gain: relative * product(d, b) / size,
-            skew: s.u_skew_s * product(d, &self.slope) / size,
-            offset: s.u_offset_v * mean(d) / size,
+            gain: relative * m.dn / size,
+            skew: s.u_skew_s * m.ds / size,
+            offset: s.u_offset_v * m.d / size,
             scale: s.scale * value,
             quantisation: s.quantisation_v,
             // The mean square cannot rise by more than its square root does.
@@ -191,14 +194,14 @@ impl<'a> Bench<'a> {
 
     fn common_rms(&self) -> Found {
         let s = &self.sources;
-        let corrected = self.input.corrected;
-        let (c, b) = (&corrected.common_v, &corrected.negative_v);
-        let (value, noise, size) = without_noise(c, s.common_noise_v);
+        let m = &self.moments;
+        let points = self.input.corrected.difference_v.len();
+        let (value, noise, size) = without_noise(m.common_square(), points, s.common_noise_v);
         let parts = Parts {
             noise,
-            gain: 0.5 * s.u_gain / s.gain * product(c, b) / size,
-            skew: 0.5 * s.u_skew_s * product(c, &self.slope) / size,
-            offset: 0.5 * s.u_offset_v * mean(c) / size,
+            gain: 0.5 * s.u_gain / s.gain * m.common_negative() / size,
+            skew: 0.5 * s.u_skew_s * m.common_slope() / size,
+            offset: 0.5 * s.u_offset_v * m.common() / size,
             scale: s.scale * value,
             quantisation: 0.5 * s.quantisation_v,
             common_mode: 0.0,
@@ -208,7 +211,7 @@ impl<'a> Bench<'a> {
 
     fn common_swing(&self) -> Found {
         let s = &self.sources;
-        let (low, high) = peaks::extremes(&self.input.corrected.common_v, s.common_noise_v);
+        let (low, high) = peaks::extremes(&self.input.corrected.common(), s.common_noise_v);
         let value = high.value - low.value;
         // At the top and the bottom the slope is nil, so that skew does nothing to first order.
         let parts = Parts {
@@ -224,13 +227,10 @@ impl<'a> Bench<'a> {
     fn level(&self, kind: FigureKind) -> Result<Found, String> {
         let levels = self.layout.levels.as_ref().map_err(ToString::to_string)?;
         let s = &self.sources;
-        let d = &self.input.corrected.difference_v;
         // With noise unknown or too small a claim the samples' own spread counts.
         let noise =
             |level: &super::super::levels::Level| s.mean_noise_v.max(level.spread) / (level.count.max(1) as f64).sqrt();
-        let of = |signal: &[f64]| (levels.mean_at_low(d, signal), levels.mean_at_high(d, signal));
-        let (gain_low, gain_high) = of(&self.input.corrected.negative_v);
-        let (skew_low, skew_high) = of(&self.slope);
+        let [(gain_low, gain_high), (skew_low, skew_high)] = self.at_states;
         let (low, high) = (&levels.low, &levels.high);
         let (value, noise, gain, skew, offset, steps, leak) = match kind {
             FigureKind::LowLevel => (low.value, noise(low), gain_low, skew_low, 1.0, 1.0, 1.0),
@@ -302,6 +302,19 @@ impl<'a> Bench<'a> {
         let per_part = 2.0 * self.shape.slowest / self.shape.periods.max(1.0);
         self.time(|s| s.period.clone(), move |part, _| per_part * middle_per_part(part))
     }
+}
+
+/// The shape with the signal moved along a derivative by a step up and down; `between` gives the levels then.
+fn moved<S: Signal + ?Sized, D: Signal + ?Sized>(
+    layout: &Layout,
+    shape: &Shape,
+    signal: &S,
+    along: &D,
+    noise_v: f64,
+    step: f64,
+    between: impl Fn(f64) -> (f64, f64),
+) -> [Shape; 2] {
+    [step, -step].map(|step| layout.read_beside(Some(shape), &Moved { signal, along, step }, noise_v, between(step)))
 }
 
 /// Half of what a figure changes between two shapes, 0 when it is missing in one.

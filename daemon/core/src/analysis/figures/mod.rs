@@ -8,7 +8,7 @@
 //! which can only make it larger. The scope's time base is not among them: no specification of it is known here.
 
 use super::Correction;
-use super::apply::Corrected;
+use super::apply::{Corrected, Plain};
 use super::budget::Term;
 use super::grade::Grade;
 use super::leak::LeakBound;
@@ -28,8 +28,8 @@ pub use kind::FigureKind;
 pub struct FigureInput<'a> {
     /// The corrected capture.
     pub corrected: &'a Corrected,
-    /// Plain subtraction of the two records, in volts.
-    pub plain_v: &'a [f64],
+    /// Plain subtraction of the two records, where it is to be shown beside.
+    pub plain_v: Option<&'a Plain<'a>>,
     /// The correction that was applied.
     pub correction: &'a Correction,
     /// The capture's leak bound.
