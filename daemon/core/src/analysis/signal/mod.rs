@@ -165,7 +165,8 @@ pub(super) fn mean_and_square<S: Signal + ?Sized>(signal: &S) -> (f64, f64) {
 
 /// The lowest and the highest sample; samples that are not a number are passed over.
 pub(super) fn range_of(samples: &[f32]) -> (f32, f32) {
-    const LANES: usize = 16;
+    // So many that the compiler keeps the loop over them and makes vectors of it, instead of unrolling it into shuffles.
+    const LANES: usize = 64;
     let (mut low, mut high) = ([f32::INFINITY; LANES], [f32::NEG_INFINITY; LANES]);
     let (chunks, rest) = samples.as_chunks::<LANES>();
     for chunk in chunks {
