@@ -78,7 +78,7 @@ pub(crate) async fn capture(
     };
     let waveform = Waveform {
         // Single precision holds a converter's codes and a hundred times more.
-        difference_v: measured.difference_v.iter().map(|&volts| volts as f32).collect(),
+        difference_v: measured.difference_v,
         first_valid: measured.first,
         positive,
         negative,

@@ -148,7 +148,7 @@ pub(crate) fn case(regime: &Regime, seed: u64) -> Option<Outcome> {
     let leak = LeakBound { rms_v: 0.0, peak_v: 0.0, mean_v: 0.0, common_rms_v: 0.0, common_swing_v: 0.0 };
     let figures = compute(&FigureInput {
         corrected: &corrected,
-        plain_v: &[],
+        plain_v: None,
         correction: &correction,
         leak: &leak,
         noise_p_v: noise.p_v,

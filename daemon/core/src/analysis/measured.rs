@@ -17,7 +17,7 @@ pub struct Measured {
     /// The most that the common mode can have added.
     pub leak: LeakBound,
     /// The corrected difference in volts.
-    pub difference_v: Vec<f64>,
+    pub difference_v: Vec<f32>,
     /// Index, in the positive leg's record, of its first sample.
     pub first: usize,
     /// Time of its first sample in seconds.
@@ -56,10 +56,10 @@ pub fn measure(
     let corrected = apply::correct(p, n, correction)?;
     let plain_v = apply::plain(p, n)?;
     let noise = measured_noise(p, n, correction.gain.value, &mut warnings);
-    let leak = leak::bound(&corrected.common_v, corrected.interval_s, correction, rejection);
+    let leak = leak::bound(&corrected.common(), corrected.interval_s, correction, rejection);
     let figures = compute(&FigureInput {
         corrected: &corrected,
-        plain_v: &plain_v,
+        plain_v: Some(&plain_v),
         correction,
         leak: &leak,
         noise_p_v: noise.p_v,

@@ -25,6 +25,7 @@ pub mod record;
 pub mod rejection;
 pub mod response;
 pub mod saved;
+pub mod signal;
 pub mod skew;
 pub mod spectrum;
 pub mod transition;

@@ -6,20 +6,27 @@
 //! the interpolation cannot reach with all its taps are left out at both ends.
 
 use super::interpolate::Interpolator;
-use super::{Correction, Record};
+use super::signal::Signal;
+use super::{Correction, Record, Samples};
+
+mod fused;
+mod sums;
+
+pub use sums::{Moments, Sums};
 
 /// The least number of valid samples that is worth calling a result.
 const LEAST_POINTS: usize = 16;
 
-/// A capture after correction. All three waveforms share one time axis and one length.
+/// A capture after correction. All waveforms share one time axis and one length. Difference and negative leg are kept in
+/// single precision, a hundred times finer than any converter; the common mode follows from them.
 #[derive(Debug, Clone, PartialEq)]
 pub struct Corrected {
     /// D in volts: positive leg minus corrected negative leg.
-    pub difference_v: Vec<f64>,
-    /// C in volts: the mean of the positive leg and the corrected negative leg.
-    pub common_v: Vec<f64>,
+    pub difference_v: Vec<f32>,
     /// The corrected negative leg in volts, `(N(t + τ) − o)/g`.
-    pub negative_v: Vec<f64>,
+    pub negative_v: Vec<f32>,
+    /// Sums of both, of the slope, and of their products.
+    pub sums: Sums,
     /// Index, in the positive leg's record, of the first sample here.
     pub first: usize,
     /// Seconds between two samples.
@@ -31,26 +38,71 @@ pub struct Corrected {
 }
 
 impl Corrected {
+    /// From a difference and a corrected negative leg of equal length that were made elsewhere.
+    #[must_use]
+    pub fn of(difference_v: Vec<f32>, negative_v: Vec<f32>, interval_s: f64, start_s: f64, noise_gain: f64) -> Self {
+        let sums = Sums::of(&difference_v, &negative_v);
+        Self { difference_v, negative_v, sums, first: 0, interval_s, start_s, noise_gain }
+    }
+
+    /// Means of difference, negative leg, its slope and of their products.
+    #[must_use]
+    pub fn moments(&self) -> Moments {
+        self.sums.moments(self.interval_s)
+    }
+
+    /// C in volts: the mean of the positive leg and the corrected negative leg.
+    #[must_use]
+    pub fn common(&self) -> Common<'_> {
+        Common(self)
+    }
+
     /// The slope of the corrected negative leg in volts per second, by the five-point central difference (Abramowitz
     /// and Stegun, 25.3.6): with the sign reversed, what D changes per second of skew. The two samples at each end
     /// repeat their neighbour.
     #[must_use]
-    pub fn negative_slope(&self) -> Vec<f64> {
-        let x = &self.negative_v;
-        let n = x.len();
-        if n < 5 {
-            return vec![0.0; n];
-        }
-        let scale = 1.0 / (12.0 * self.interval_s);
-        let mut slope = vec![0.0; n];
-        for (i, w) in x.windows(5).enumerate() {
-            slope[i + 2] = (8.0 * (w[3] - w[1]) - (w[4] - w[0])) * scale;
-        }
-        slope[0] = slope[2];
-        slope[1] = slope[2];
-        slope[n - 1] = slope[n - 3];
-        slope[n - 2] = slope[n - 3];
-        slope
+    pub fn slope(&self) -> Slope<'_> {
+        Slope(self)
+    }
+}
+
+/// The common mode of a corrected capture, in volts.
+#[derive(Debug, Clone, Copy)]
+pub struct Common<'a>(&'a Corrected);
+
+impl Signal for Common<'_> {
+    fn points(&self) -> usize {
+        self.0.negative_v.len()
+    }
+
+    fn at(&self, index: usize) -> f64 {
+        0.5f64.mul_add(f64::from(self.0.difference_v[index]), f64::from(self.0.negative_v[index]))
+    }
+
+    fn load(&self, from: usize, out: &mut [f32]) {
+        let range = from..from + out.len();
+        let both = self.0.negative_v[range.clone()].iter().zip(&self.0.difference_v[range]);
+        out.iter_mut().zip(both).for_each(|(out, (n, d))| *out = n + 0.5 * d);
+    }
+}
+
+/// The slope of the corrected negative leg, in volts per second.
+#[derive(Debug, Clone, Copy)]
+pub struct Slope<'a>(&'a Corrected);
+
+impl Signal for Slope<'_> {
+    fn points(&self) -> usize {
+        self.0.negative_v.len()
+    }
+
+    fn at(&self, index: usize) -> f64 {
+        f64::from(sums::slope_at(&self.0.negative_v, index)) / self.0.interval_s
+    }
+
+    fn load(&self, from: usize, out: &mut [f32]) {
+        let scale = (1.0 / self.0.interval_s) as f32;
+        sums::slopes(&self.0.negative_v, from, out);
+        out.iter_mut().for_each(|slope| *slope *= scale);
     }
 }
 
@@ -120,9 +172,8 @@ pub fn correct(p: &Record, n: &Record, correction: &Correction) -> Result<Correc
     if !(gain.is_finite() && gain.abs() > 1e-6) {
         return Err(ApplyError::Gain { gain });
     }
-    let (positive, negative) = volts(p, n)?;
+    let points = belong(p, n)?;
     let shift = (p.start_s - n.start_s + correction.skew_s.value) / p.interval_s;
-    let points = positive.len();
     let too_short = |valid| ApplyError::TooShort { points, valid, shift_samples: shift };
     if !(shift.is_finite() && shift.abs() < points as f64) {
         return Err(too_short(0));
@@ -132,18 +183,16 @@ pub fn correct(p: &Record, n: &Record, correction: &Correction) -> Result<Correc
     if valid.len() < LEAST_POINTS {
         return Err(too_short(valid.len()));
     }
-    let mut negative_v = interpolator.apply(&negative);
-    let offset = correction.offset_v.value;
-    negative_v.iter_mut().for_each(|v| *v = (*v - offset) / gain);
-    let pairs = || positive[valid.clone()].iter().zip(&negative_v);
+    let first = valid.start;
+    let pass = fused::pass(p, n, &interpolator, valid, (gain, correction.offset_v.value));
     Ok(Corrected {
-        difference_v: pairs().map(|(p, n)| p - n).collect(),
-        common_v: pairs().map(|(p, n)| 0.5 * (p + n)).collect(),
-        first: valid.start,
+        difference_v: pass.difference_v,
+        negative_v: pass.negative_v,
+        sums: pass.sums,
+        first,
         interval_s: p.interval_s,
-        start_s: (valid.start as f64).mul_add(p.interval_s, p.start_s),
+        start_s: (first as f64).mul_add(p.interval_s, p.start_s),
         noise_gain: interpolator.noise_gain(),
-        negative_v,
     })
 }
 
@@ -152,31 +201,61 @@ pub fn correct(p: &Record, n: &Record, correction: &Correction) -> Result<Correc
 ///
 /// # Errors
 /// When the records do not belong together, hold something that is not a number, or do not overlap in time.
-pub fn plain(p: &Record, n: &Record) -> Result<Vec<f64>, ApplyError> {
-    Ok(nearest(p, n)?.into_iter().map(|(p, n)| p - n).collect())
-}
-
-/// Pairs of samples nearest in time, in volts.
-pub(super) fn nearest(p: &Record, n: &Record) -> Result<Vec<(f64, f64)>, ApplyError> {
-    let (positive, negative) = volts(p, n)?;
+pub fn plain<'a>(p: &'a Record, n: &'a Record) -> Result<Plain<'a>, ApplyError> {
+    let points = belong(p, n)?;
     let shift = (p.start_s - n.start_s) / p.interval_s;
-    let points = positive.len();
     if !(shift.is_finite() && shift.abs() < points as f64) {
         return Err(ApplyError::TooShort { points, valid: 0, shift_samples: shift });
     }
     let whole = shift.round() as isize;
     let skip_p = usize::try_from(-whole).unwrap_or(0);
     let skip_n = usize::try_from(whole).unwrap_or(0);
-    let pairs: Vec<(f64, f64)> =
-        positive.iter().skip(skip_p).zip(negative.iter().skip(skip_n)).map(|(p, n)| (*p, *n)).collect();
-    if pairs.len() < LEAST_POINTS {
-        return Err(ApplyError::TooShort { points, valid: pairs.len(), shift_samples: shift });
+    let valid = points.saturating_sub(skip_p.max(skip_n));
+    if valid < LEAST_POINTS {
+        return Err(ApplyError::TooShort { points, valid, shift_samples: shift });
     }
-    Ok(pairs)
+    Ok(Plain { p, n, skip_p, skip_n, points: valid })
 }
 
-/// Both legs in volts, once they are known to belong together.
-fn volts(p: &Record, n: &Record) -> Result<(Vec<f64>, Vec<f64>), ApplyError> {
+/// The difference by plain subtraction, computed as it is read. See [`plain`].
+#[derive(Debug, Clone, Copy)]
+pub struct Plain<'a> {
+    p: &'a Record,
+    n: &'a Record,
+    skip_p: usize,
+    skip_n: usize,
+    points: usize,
+}
+
+impl Signal for Plain<'_> {
+    fn points(&self) -> usize {
+        self.points
+    }
+
+    fn at(&self, index: usize) -> f64 {
+        let volts = |record: &Record, index: usize| {
+            let code = match &record.samples {
+                Samples::Codes(codes) => f64::from(codes[index]),
+                Samples::Numbers(numbers) => f64::from(numbers[index]),
+            };
+            code.mul_add(record.volts_per_code, record.zero_v)
+        };
+        volts(self.p, self.skip_p + index) - volts(self.n, self.skip_n + index)
+    }
+
+    fn load(&self, from: usize, out: &mut [f32]) {
+        fused::load_volts(self.p, self.skip_p + from, out);
+        let mut negative = [0.0; super::signal::BLOCK];
+        for (i, out) in out.chunks_mut(negative.len()).enumerate() {
+            let negative = &mut negative[..out.len()];
+            fused::load_volts(self.n, self.skip_n + from + i * super::signal::BLOCK, negative);
+            out.iter_mut().zip(negative).for_each(|(p, n)| *p -= *n);
+        }
+    }
+}
+
+/// The number of samples of two records, once they are known to belong together.
+fn belong(p: &Record, n: &Record) -> Result<usize, ApplyError> {
     for (leg, record) in [("positive", p), ("negative", n)] {
         let axis = record.interval_s.is_finite() && record.interval_s > 0.0 && record.start_s.is_finite();
         if !axis {
@@ -192,13 +271,20 @@ fn volts(p: &Record, n: &Record) -> Result<(Vec<f64>, Vec<f64>), ApplyError> {
     if (p.interval_s - n.interval_s).abs() * points as f64 > 1e-3 * p.interval_s {
         return Err(ApplyError::Intervals { positive_s: p.interval_s, negative_s: n.interval_s });
     }
-    let (positive, negative) = (p.volts(), n.volts());
-    for (leg, samples) in [("positive", &positive), ("negative", &negative)] {
-        if let Some(index) = samples.iter().position(|v| !v.is_finite()) {
+    for (leg, record) in [("positive", p), ("negative", n)] {
+        let scaled = record.volts_per_code.is_finite() && record.zero_v.is_finite();
+        let odd = match &record.samples {
+            Samples::Codes(_) => None,
+            // Infinities and what is no number survive a sum of magnitudes; only then the culprit is looked for.
+            Samples::Numbers(numbers) => (!numbers.iter().map(|x| x * 0.0).sum::<f32>().is_finite())
+                .then(|| numbers.iter().position(|x| !x.is_finite()))
+                .flatten(),
+        };
+        if let Some(index) = odd.or_else(|| (!scaled).then_some(0)) {
             return Err(ApplyError::NotFinite { leg, what: format!("sample {index}") });
         }
     }
-    Ok((positive, negative))
+    Ok(points)
 }
 
 #[cfg(test)]

@@ -1,13 +1,15 @@
 //! Computing all figures of a capture with their budgets and grades.
 
+use super::super::apply::Moments;
 use super::super::budget::{self, Coverage};
+use super::super::signal::{Moved, Signal};
 use super::super::transition::{duration_per_part, middle_per_part};
 use super::super::{grade, peaks};
 use super::plain::Plain;
 use super::power;
 use super::shape::{Layout, Read, Reading, Shape};
 use super::sources::{Parts, Sources};
-use super::sums::{mean, product, without_noise};
+use super::sums::without_noise;
 use super::{Figure, FigureInput, FigureKind};
 
 /// A figure before it is graded.
@@ -36,7 +38,7 @@ pub fn compute(input: &FigureInput<'_>) -> Vec<Figure> {
                 let sum = f.value + budget::combined(&f.parts.budget(&bench.sources));
                 if sum.is_finite() { Ok(f) } else { Err("it cannot be computed from these samples".to_owned()) }
             });
-            let plain = plain.figure(kind).filter(|v| v.is_finite());
+            let plain = plain.as_ref().and_then(|plain| plain.figure(kind)).filter(|v| v.is_finite());
             match found {
                 Ok(found) => {
                     let budget = found.parts.budget(&bench.sources);
@@ -50,7 +52,7 @@ pub fn compute(input: &FigureInput<'_>) -> Vec<Figure> {
                     let grade = grade::grade(found.size, u, found.leak);
                     let valid = why.is_none();
                     let coverage = valid.then(|| match kind {
-                        FigureKind::Rms => power::coverage(input, &bench.sources, &bench.slope, found.value, &budget),
+                        FigureKind::Rms => power::coverage(input, &bench.sources, &bench.moments, found.value, &budget),
                         _ => Coverage::of(found.value, &budget),
                     });
                     Figure { kind, value: found.value, u, coverage, plain, valid, why, budget, grade }
@@ -77,8 +79,10 @@ struct Bench<'a> {
     sources: Sources,
     layout: Layout,
     shape: Shape,
-    /// N_c', volts per second.
-    slope: Vec<f64>,
+    /// Means of D, N_c, its slope N_c' and their products.
+    moments: Moments,
+    /// Means of N_c and of N_c' over the samples of the low and of the high state.
+    at_states: [(f64, f64); 2],
     /// Shapes with the gain a standard uncertainty up and down.
     by_gain: Option<[Shape; 2]>,
     /// The same for the skew.
@@ -92,23 +96,23 @@ impl<'a> Bench<'a> {
         let d = &corrected.difference_v;
         let layout = Layout::of(d, sources.mean_noise_v);
         let shape = layout.read(d, sources.mean_noise_v, layout.between());
-        let slope = corrected.negative_slope();
-        let moved = |derivative: &[f64], step: f64| {
-            (step > 0.0).then(|| {
-                [step, -step].map(|step| {
-                    let signal: Vec<f64> = d.iter().zip(derivative).map(|(d, x)| x.mul_add(step, *d)).collect();
-                    let (mut low, mut high) = layout.between();
-                    if let Ok(levels) = &layout.levels {
-                        low += step * levels.mean_at_low(d, derivative);
-                        high += step * levels.mean_at_high(d, derivative);
-                    }
-                    layout.read(&signal, sources.mean_noise_v, (low, high))
-                })
-            })
+        let (negative, slope) = (&corrected.negative_v, corrected.slope());
+        let at_states = layout.levels.as_ref().map_or([(0.0, 0.0); 2], |levels| {
+            [
+                (levels.mean_at_low(d, negative), levels.mean_at_high(d, negative)),
+                (levels.mean_at_low(d, &slope), levels.mean_at_high(d, &slope)),
+            ]
+        });
+        let known = |derivative: usize, step: f64| {
+            let (low, high) = layout.between();
+            (low + step * at_states[derivative].0, high + step * at_states[derivative].1)
         };
-        let by_gain = moved(&corrected.negative_v, sources.step(0));
-        let by_skew = moved(&slope, sources.step(1));
-        Self { input, sources, layout, shape, slope, by_gain, by_skew }
+        let noise_v = sources.mean_noise_v;
+        let step = sources.step(0);
+        let by_gain = (step > 0.0).then(|| moved(&layout, &shape, d, negative, noise_v, step, |step| known(0, step)));
+        let step = sources.step(1);
+        let by_skew = (step > 0.0).then(|| moved(&layout, &shape, d, &slope, noise_v, step, |step| known(1, step)));
+        Self { input, moments: corrected.moments(), sources, layout, shape, at_states, by_gain, by_skew }
     }
 
     fn figure(&self, kind: FigureKind) -> Result<Found, String> {
@@ -159,11 +163,11 @@ impl<'a> Bench<'a> {
     fn mean(&self) -> Found {
         let Sources { mean_noise_v, quantisation_v, .. } = self.sources;
         let corrected = self.input.corrected;
-        let value = mean(&corrected.difference_v);
+        let value = self.moments.d;
         let parts = Parts {
             noise: mean_noise_v / (corrected.difference_v.len().max(1) as f64).sqrt(),
-            gain: mean(&corrected.negative_v),
-            skew: -mean(&self.slope),
+            gain: self.moments.n,
+            skew: -self.moments.s,
             offset: 1.0,
             scale: value,
             quantisation: quantisation_v,
@@ -175,8 +179,8 @@ impl<'a> Bench<'a> {
     fn rms(&self) -> Found {
         let s = &self.sources;
         let corrected = self.input.corrected;
-        let (value, noise, size) = without_noise(&corrected.difference_v, s.noise_v);
-        let model = power::model(self.input, s, &self.slope);
+        let (value, noise, size) = without_noise(self.moments.dd, corrected.difference_v.len(), s.noise_v);
+        let model = power::model(self.input, s, &self.moments);
         // Second order: what gain, skew and offset errors of this size add to the mean square whatever their sign.
         let second = model.second_order(&s.errors);
         // The noise power that is taken away is not known exactly itself.
@@ -196,14 +200,14 @@ impl<'a> Bench<'a> {
 
     fn common_rms(&self) -> Found {
         let s = &self.sources;
-        let corrected = self.input.corrected;
-        let (c, b) = (&corrected.common_v, &corrected.negative_v);
-        let (value, noise, size) = without_noise(c, s.common_noise_v);
+        let m = &self.moments;
+        let points = self.input.corrected.difference_v.len();
+        let (value, noise, size) = without_noise(m.common_square(), points, s.common_noise_v);
         let parts = Parts {
             noise,
-            gain: -0.5 * product(c, b) / size,
-            skew: 0.5 * product(c, &self.slope) / size,
-            offset: -0.5 * mean(c) / size,
+            gain: -0.5 * m.common_negative() / size,
+            skew: 0.5 * m.common_slope() / size,
+            offset: -0.5 * m.common() / size,
             scale: value,
             quantisation: 0.5 * s.quantisation_v,
             common_mode: 0.0,
@@ -213,7 +217,7 @@ impl<'a> Bench<'a> {
 
     fn common_swing(&self) -> Found {
         let s = &self.sources;
-        let (low, high) = peaks::extremes(&self.input.corrected.common_v, s.common_noise_v);
+        let (low, high) = peaks::extremes(&self.input.corrected.common(), s.common_noise_v);
         let value = high.value - low.value;
         // At the top and the bottom the slope is nil, so that skew does nothing to first order.
         let parts = Parts {
@@ -229,13 +233,10 @@ impl<'a> Bench<'a> {
     fn level(&self, kind: FigureKind) -> Result<Found, String> {
         let levels = self.layout.levels.as_ref().map_err(ToString::to_string)?;
         let s = &self.sources;
-        let d = &self.input.corrected.difference_v;
         // With noise unknown or too small a claim the samples' own spread counts.
         let noise =
             |level: &super::super::levels::Level| s.mean_noise_v.max(level.spread) / (level.count.max(1) as f64).sqrt();
-        let of = |signal: &[f64]| (levels.mean_at_low(d, signal), levels.mean_at_high(d, signal));
-        let (gain_low, gain_high) = of(&self.input.corrected.negative_v);
-        let (skew_low, skew_high) = of(&self.slope);
+        let [(gain_low, gain_high), (skew_low, skew_high)] = self.at_states;
         let (low, high) = (&levels.low, &levels.high);
         let (value, noise, gain, skew, offset, steps, leak) = match kind {
             FigureKind::LowLevel => (low.value, noise(low), gain_low, skew_low, 1.0, 1.0, 1.0),
@@ -307,6 +308,19 @@ impl<'a> Bench<'a> {
         let per_part = 2.0 * self.shape.slowest / self.shape.periods.max(1.0);
         self.time(|s| s.period.clone(), move |part, _| per_part * middle_per_part(part))
     }
+}
+
+/// The shape with the signal moved along a derivative by a step up and down; `between` gives the levels then.
+fn moved<S: Signal + ?Sized, D: Signal + ?Sized>(
+    layout: &Layout,
+    shape: &Shape,
+    signal: &S,
+    along: &D,
+    noise_v: f64,
+    step: f64,
+    between: impl Fn(f64) -> (f64, f64),
+) -> [Shape; 2] {
+    [step, -step].map(|step| layout.read_beside(Some(shape), &Moved { signal, along, step }, noise_v, between(step)))
 }
 
 /// Half of what a figure changes between two shapes, 0 when it is missing in one.

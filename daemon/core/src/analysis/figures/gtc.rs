@@ -13,15 +13,8 @@ fn every_term_of_mean_and_rms_is_gtcs() {
     let file: serde_json::Value = serde_json::from_str(text).unwrap();
     let number = |key: &str| file[key].as_f64().unwrap();
     let list = |key: &str| file[key].as_array().unwrap().iter().map(|x| x.as_f64().unwrap()).collect::<Vec<f64>>();
-    let corrected = Corrected {
-        difference_v: list("difference"),
-        common_v: list("negative"),
-        negative_v: list("negative"),
-        first: 0,
-        interval_s: number("interval_s"),
-        start_s: 0.0,
-        noise_gain: 1.0,
-    };
+    let single = |key: &str| list(key).iter().map(|x| *x as f32).collect::<Vec<f32>>();
+    let corrected = Corrected::of(single("difference"), single("negative"), number("interval_s"), 0.0, 1.0);
     let correction = Correction {
         skew_s: Estimate { value: 0.0, u: number("u_skew_s") },
         gain: Estimate { value: number("gain"), u: number("u_gain") },
@@ -30,7 +23,7 @@ fn every_term_of_mean_and_rms_is_gtcs() {
     };
     let figures = compute(&FigureInput {
         corrected: &corrected,
-        plain_v: &[],
+        plain_v: None,
         correction: &correction,
         leak: &LeakBound { rms_v: 0.0, peak_v: 0.0, mean_v: 0.0, common_rms_v: 0.0, common_swing_v: 0.0 },
         noise_p_v: number("noise_p_v"),
@@ -70,15 +63,7 @@ fn every_term_of_mean_and_rms_is_gtcs() {
 #[test]
 fn sensitivities_are_per_unit_of_their_source() {
     // D is 2 V, the negative leg 10 V: by hand ∂D̄/∂g = N_c/g, ∂D̄/∂o = 1/g.
-    let corrected = Corrected {
-        difference_v: vec![2.0; 64],
-        common_v: vec![11.0; 64],
-        negative_v: vec![10.0; 64],
-        first: 0,
-        interval_s: 1e-9,
-        start_s: 0.0,
-        noise_gain: 1.0,
-    };
+    let corrected = Corrected::of(vec![2.0; 64], vec![10.0; 64], 1e-9, 0.0, 1.0);
     let none = LeakBound { rms_v: 0.0, peak_v: 0.0, mean_v: 0.0, common_rms_v: 0.0, common_swing_v: 0.0 };
     let exact = |value, u| Estimate { value, u };
     let correction =
@@ -86,7 +71,7 @@ fn sensitivities_are_per_unit_of_their_source() {
     let drift = Drift { gain: 3e-3, ..Drift::default() };
     let input = FigureInput {
         corrected: &corrected,
-        plain_v: &[],
+        plain_v: None,
         correction: &correction,
         leak: &none,
         noise_p_v: 0.0,

@@ -14,7 +14,7 @@
 //! ([`super::montecarlo`]).
 
 use super::Correction;
-use super::apply::Corrected;
+use super::apply::{Corrected, Plain};
 use super::budget::{Coverage, Term};
 use super::grade::Grade;
 use super::leak::LeakBound;
@@ -35,8 +35,8 @@ pub use kind::FigureKind;
 pub struct FigureInput<'a> {
     /// The corrected capture.
     pub corrected: &'a Corrected,
-    /// Plain subtraction of the two records, in volts.
-    pub plain_v: &'a [f64],
+    /// Plain subtraction of the two records, where it is to be shown beside.
+    pub plain_v: Option<&'a Plain<'a>>,
     /// The correction that was applied.
     pub correction: &'a Correction,
     /// The capture's leak bound.

@@ -1,38 +1,41 @@
 //! What plain subtraction would have given: the same figures, values only.
 
 use super::super::levels::Levels;
+use super::super::signal::{Signal, mean_and_square};
 use super::shape::{Layout, Reading, Shape};
-use super::sums::{mean, without_noise};
+use super::sums::without_noise;
 use super::{FigureInput, FigureKind};
 
 /// The figures of plain subtraction, values only.
-pub(super) struct Plain<'a> {
-    signal: &'a [f64],
-    noise_v: f64,
+pub(super) struct Plain {
+    points: usize,
+    mean: f64,
+    rms: f64,
     interval_s: f64,
     layout: Layout,
     shape: Shape,
 }
 
-impl<'a> Plain<'a> {
-    pub(super) fn of(input: &'a FigureInput<'a>) -> Self {
+impl Plain {
+    pub(super) fn of(input: &FigureInput<'_>) -> Option<Self> {
+        let signal = input.plain_v?;
         let noise_v = input.noise_p_v.hypot(input.noise_n_v);
-        let layout = Layout::of(input.plain_v, noise_v);
-        let shape = layout.read(input.plain_v, noise_v, layout.between());
-        Self { signal: input.plain_v, noise_v, interval_s: input.corrected.interval_s, layout, shape }
+        let layout = Layout::of(signal, noise_v);
+        let shape = layout.read(signal, noise_v, layout.between());
+        let (mean, square) = mean_and_square(signal);
+        let points = signal.points();
+        let rms = without_noise(square, points, noise_v).0;
+        Some(Self { points, mean, rms, interval_s: input.corrected.interval_s, layout, shape })
     }
 
     pub(super) fn figure(&self, kind: FigureKind) -> Option<f64> {
         let value = |reading: &Reading| reading.as_ref().ok().map(|r| r.value);
         let time = |reading: &Reading| value(reading).map(|v| v * self.interval_s);
         let levels = self.layout.levels.as_ref().ok();
-        if self.signal.is_empty() {
-            return None;
-        }
         match kind {
-            FigureKind::Mean => Some(mean(self.signal)),
-            FigureKind::Area => Some(mean(self.signal) * self.signal.len() as f64 * self.interval_s),
-            FigureKind::Rms => Some(without_noise(self.signal, self.noise_v).0),
+            FigureKind::Mean => Some(self.mean),
+            FigureKind::Area => Some(self.mean * self.points as f64 * self.interval_s),
+            FigureKind::Rms => Some(self.rms),
             FigureKind::HighLevel => levels.map(|l| l.high.value),
             FigureKind::LowLevel => levels.map(|l| l.low.value),
             FigureKind::Amplitude => levels.map(Levels::amplitude),

@@ -1,10 +1,10 @@
 //! The mean square of the difference as the correction's errors move it, and the interval of the rms.
 
+use super::super::apply::Moments;
 use super::super::budget::{self, Basis, Coverage, Term};
 use super::super::montecarlo::{self, Others, Power};
 use super::FigureInput;
 use super::sources::Sources;
-use super::sums::{mean, product};
 
 /// The second order counts from this ratio of `b₂/(2·R)` to the first-order uncertainty on (b₂: what the correction's
 /// errors add to the mean square on average). Below it ordinary intervals hold what they promise.
@@ -15,23 +15,22 @@ const LEAST_BEND: f64 = 0.15;
 
 /// The mean square as a function of gain, skew and offset errors. The noise that D, N_c and its slope share is taken
 /// out of each moment; N_c and its slope, by the odd symmetry of the slope's coefficients, share none.
-pub(super) fn model(input: &FigureInput<'_>, sources: &Sources, slope: &[f64]) -> Power {
+pub(super) fn model(input: &FigureInput<'_>, sources: &Sources, m: &Moments) -> Power {
     let corrected = input.corrected;
-    let (d, b) = (&corrected.difference_v, &corrected.negative_v);
     let noise = sources.noise_v * sources.noise_v;
     let single = input.noise_n_v / sources.gain;
     let negative = single * single * corrected.noise_gain;
     // The five-point slope of white noise: (2·8² + 2·1²)/12² per sample interval squared.
     let slope_noise = single / corrected.interval_s;
-    let steep = (product(slope, slope) - 130.0 / 144.0 * slope_noise * slope_noise).max(0.0);
-    let (mb, ms, bs) = (mean(b), -mean(slope), -product(b, slope));
+    let steep = (m.ss - 130.0 / 144.0 * slope_noise * slope_noise).max(0.0);
+    let (mb, ms, bs) = (m.n, -m.s, -m.ns);
     Power {
-        measured: product(d, d) - noise,
+        measured: m.dd - noise,
         noise,
-        points: d.len(),
+        points: corrected.difference_v.len(),
         u_noise: if input.allowance.noise_bins > 0 { (2.0 / input.allowance.noise_bins as f64).sqrt() } else { 0.0 },
-        linear: [product(d, b) + negative, -product(d, slope), mean(d)],
-        quadratic: [[(product(b, b) - negative).max(0.0), bs, mb], [bs, steep, ms], [mb, ms, 1.0]],
+        linear: [m.dn + negative, -m.ds, m.d],
+        quadratic: [[(m.nn - negative).max(0.0), bs, mb], [bs, steep, ms], [mb, ms, 1.0]],
     }
 }
 
@@ -39,11 +38,11 @@ pub(super) fn model(input: &FigureInput<'_>, sources: &Sources, slope: &[f64]) -
 pub(super) fn coverage(
     input: &FigureInput<'_>,
     sources: &Sources,
-    slope: &[f64],
+    moments: &Moments,
     value: f64,
     terms: &[Term],
 ) -> Coverage {
-    let model = model(input, sources, slope);
+    let model = model(input, sources, moments);
     let first: Vec<Term> = terms.iter().filter(|t| t.name != "common mode").copied().collect();
     let u = budget::combined(&first);
     let second = model.second_order(&sources.errors);

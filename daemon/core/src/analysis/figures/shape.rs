@@ -7,11 +7,15 @@
 use std::ops::Range;
 
 use super::super::levels::{self, Levels, NoLevels};
-use super::super::peaks;
+use super::super::peaks::{self, Extreme};
+use super::super::signal::Signal;
 use super::super::transition::{self, Edge, Transition};
 
 /// At most about this many transitions are measured, spread over the record.
 const MOST_EDGES: usize = 256;
+
+/// So many transitions tell how a small change moves them all.
+const ENOUGH_EDGES: usize = 24;
 
 /// At most this many cycles are searched for their extremes, spread over the record.
 const MOST_CYCLES: usize = 128;
@@ -56,6 +60,8 @@ pub(super) struct Shape {
     pub(super) duty: Reading,
     pub(super) maximum: Read,
     pub(super) minimum: Read,
+    /// Where each cycle has its lowest and its highest value.
+    extremes: Vec<(Extreme, Extreme)>,
     /// Longest mean duration of a transition, in samples; 0 without any.
     pub(super) slowest: f64,
     /// How many periods lie between the first and the last 50 % point that the period was taken from.
@@ -64,10 +70,10 @@ pub(super) struct Shape {
 
 impl Layout {
     /// Of a signal with white noise of `noise` rms.
-    pub(super) fn of(signal: &[f64], noise: f64) -> Self {
+    pub(super) fn of<S: Signal + ?Sized>(signal: &S, noise: f64) -> Self {
         let levels = levels::find(signal, noise);
         // A waveform without states (a sine) still has a middle that it crosses.
-        let (low, high) = levels.as_ref().map_or_else(|_| outer(signal), |l| (l.low.value, l.high.value));
+        let (low, high) = levels.as_ref().map_or_else(|_| levels::outer(signal), |l| (l.low.value, l.high.value));
         let edges = match &levels {
             Ok(levels) => levels.edges.clone(),
             Err(_) if high - low > 6.0 * noise && high > low => transition::edges(signal, low, high),
@@ -81,7 +87,7 @@ impl Layout {
         let mut cycles: Vec<Range<usize>> = starts.windows(2).step_by(step).map(|w| w[0]..w[1]).collect();
         if cycles.len() < 2 {
             cycles.clear();
-            cycles.push(0..signal.len());
+            cycles.push(0..signal.points());
         }
         Self { levels, low, high, edges, chosen, cycles }
     }
@@ -92,14 +98,27 @@ impl Layout {
     }
 
     /// Reads a signal that has its features at the same places, between the levels given.
-    pub(super) fn read(&self, signal: &[f64], noise: f64, (low, high): (f64, f64)) -> Shape {
+    pub(super) fn read<S: Signal + ?Sized>(&self, signal: &S, noise: f64, between: (f64, f64)) -> Shape {
+        self.read_beside(None, signal, noise, between)
+    }
+
+    /// As [`Layout::read`], of a signal that differs little from one that was read: its extremes are at the same
+    /// places, and fewer transitions suffice, since the noise is the same in both.
+    pub(super) fn read_beside<S: Signal + ?Sized>(
+        &self,
+        known: Option<&Shape>,
+        signal: &S,
+        noise: f64,
+        (low, high): (f64, f64),
+    ) -> Shape {
         let middle = |i: usize| self.edges.get(i).map(Edge::middle);
         let measured: Vec<(usize, Transition)> = self
             .chosen
             .iter()
+            .take(if known.is_some() { ENOUGH_EDGES } else { usize::MAX })
             .filter_map(|&i| {
                 let from = i.checked_sub(1).and_then(middle).unwrap_or(0);
-                let to = middle(i + 1).unwrap_or(signal.len());
+                let to = middle(i + 1).unwrap_or(signal.points());
                 let found = transition::measure(signal, self.edges[i], from..to, (low, high), noise)?;
                 Some((i, found))
             })
@@ -114,10 +133,10 @@ impl Layout {
         let (rise, fall) = (duration(true), duration(false));
         let aberration = |rising: bool| {
             let found = measured.iter().filter(|(_, t)| t.rising == rising).take(MOST_CYCLES).filter_map(|(i, t)| {
-                let next = middle(i + 1).unwrap_or(signal.len()) as f64;
+                let next = middle(i + 1).unwrap_or(signal.points()) as f64;
                 // The post-transition region: ten durations, but no further than half-way to the next transition.
                 let to = (t.end + (10.0 * t.duration).max(16.0)).min(0.5 * (t.end + next));
-                let range = t.end.ceil() as usize..(to.ceil() as usize).min(signal.len());
+                let range = t.end.ceil() as usize..(to.ceil() as usize).min(signal.points());
                 let top = if rising { peaks::highest } else { peaks::lowest };
                 (range.len() >= 3).then(|| {
                     let top = top(signal, range, noise);
@@ -130,11 +149,21 @@ impl Layout {
         };
         let (period, periods) = period(&measured);
         let duty = states.clone().and_then(|()| duty(&measured, period.clone()?));
-        let extreme = |of: fn(&[f64], Range<usize>, f64) -> peaks::Extreme| {
-            let found = self.cycles.iter().map(|r| of(signal, r.clone(), noise));
-            let mean = mean(found.clone().map(|e| Read { value: e.value, u: e.u }));
+        let found: Vec<(Extreme, Extreme)> = match known {
+            None => self.cycles.iter().map(|r| peaks::extremes_within(signal, r.clone(), noise)).collect(),
+            Some(known) => {
+                let again = |(low, high): &(Extreme, Extreme)| {
+                    let value = |e: &Extreme, highest| Extreme { value: e.again(signal, highest), ..*e };
+                    (value(low, false), value(high, true))
+                };
+                known.extremes.iter().map(again).collect()
+            }
+        };
+        let extreme = |of: fn(&(Extreme, Extreme)) -> Extreme| {
+            let all = found.iter().map(of);
+            let mean = mean(all.clone().map(|e| Read { value: e.value, u: e.u }));
             let mean = mean.unwrap_or(Read { value: 0.0, u: 0.0 });
-            let each = found.map(|e| e.u).sum::<f64>() / self.cycles.len() as f64;
+            let each = all.map(|e| e.u).sum::<f64>() / self.cycles.len() as f64;
             Read { value: mean.value, u: mean.u.hypot(CHOICE * each) }
         };
         let duration_of = |r: &Reading| r.as_ref().map_or(0.0, |r| r.value);
@@ -146,23 +175,12 @@ impl Layout {
             fall: states.and(fall),
             period,
             duty,
-            maximum: extreme(peaks::highest),
-            minimum: extreme(peaks::lowest),
+            maximum: extreme(|both| both.1),
+            minimum: extreme(|both| both.0),
+            extremes: found,
             periods,
         }
     }
-}
-
-/// The values below and above which 5 % of the samples lie.
-fn outer(signal: &[f64]) -> (f64, f64) {
-    let mut sorted = signal.to_vec();
-    let last = sorted.len().saturating_sub(1);
-    if last == 0 {
-        return (0.0, 0.0);
-    }
-    let low = *sorted.select_nth_unstable_by(last / 20, f64::total_cmp).1;
-    let high = *sorted.select_nth_unstable_by(last - last / 20, f64::total_cmp).1;
-    (low, high)
 }
 
 /// Mean of repeats; its uncertainty is the larger of what noise and what scatter say.

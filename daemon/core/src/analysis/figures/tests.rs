@@ -69,10 +69,10 @@ impl Scene {
 
     pub(super) fn figures(&self, (p, n): &(Record, Record), correction: &Correction, scale_spec: f64) -> Vec<Figure> {
         let corrected = apply::correct(p, n, correction).unwrap();
-        let bound = leak::bound(&corrected.common_v, corrected.interval_s, correction, &[]);
+        let bound = leak::bound(&corrected.common(), corrected.interval_s, correction, &[]);
         compute(&FigureInput {
             corrected: &corrected,
-            plain_v: &apply::plain(p, n).unwrap(),
+            plain_v: Some(&apply::plain(p, n).unwrap()),
             correction,
             leak: &bound,
             noise_p_v: self.noise_v,
@@ -229,10 +229,10 @@ fn clipping_makes_every_figure_invalid_and_says_how_much() {
     let records = scene.acquire(7, gate);
     let correction = scene.correction(0.0, 0.0, 0.0);
     let corrected = apply::correct(&records.0, &records.1, &correction).unwrap();
-    let bound = leak::bound(&corrected.common_v, 1e-9, &correction, &[]);
+    let bound = leak::bound(&corrected.common(), 1e-9, &correction, &[]);
     let input = FigureInput {
         corrected: &corrected,
-        plain_v: &[],
+        plain_v: None,
         correction: &correction,
         leak: &bound,
         noise_p_v: 0.05,

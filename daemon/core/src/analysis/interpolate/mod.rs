@@ -56,6 +56,11 @@ impl Interpolator {
         self.taps.iter().map(|tap| tap * tap).sum()
     }
 
+    /// The taps, and the index of the first one's sample relative to the output's.
+    pub(super) fn kernel(&self) -> (&[f64], isize) {
+        (&self.taps, self.first)
+    }
+
     /// The output samples of a record of `length` for which every tap has a sample: the others are not valid.
     #[must_use]
     pub fn support(&self, length: usize) -> std::ops::Range<usize> {

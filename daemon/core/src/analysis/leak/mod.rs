@@ -11,13 +11,21 @@
 //! all phases that are common to all frequencies, which is the peak of the envelope (analytic signal) of the
 //! common mode weighted by the residual.
 //!
+//! Records beyond [`LONGEST`] samples are done in two parts that add up, see [`long`].
+//!
 //! The record is mirrored before the transform: a record whose ends differ then makes no jump that was never there. Its
 //! last value is held for up to a percent of its length, to one that transforms fast.
 
 use realfft::num_complex::Complex;
 
 use super::rejection::{RejectionBand, residual_of_uncertainty};
+use super::signal::{Signal, mean_and_square};
 use super::{Correction, band, peaks};
+
+mod long;
+
+/// The longest record that is transformed as a whole.
+const LONGEST: usize = 32_768;
 
 /// The most that the common mode can have added to the difference.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -37,27 +45,59 @@ pub struct LeakBound {
 /// The leak bound of a capture whose common mode is `common_v`, corrected with `correction`, for which `rejection` was
 /// found (may be empty).
 #[must_use]
-pub fn bound(common_v: &[f64], interval_s: f64, correction: &Correction, rejection: &[RejectionBand]) -> LeakBound {
-    let n = common_v.len();
+pub fn bound<S: Signal + ?Sized>(
+    common_v: &S,
+    interval_s: f64,
+    correction: &Correction,
+    rejection: &[RejectionBand],
+) -> LeakBound {
+    let n = common_v.points();
     if n == 0 {
         return LeakBound { rms_v: 0.0, peak_v: 0.0, mean_v: 0.0, common_rms_v: 0.0, common_swing_v: 0.0 };
     }
     let mut bands: Vec<RejectionBand> = rejection.iter().copied().filter(|b| b.frequency_hz > 0.0).collect();
     bands.sort_by(|a, b| a.frequency_hz.total_cmp(&b.frequency_hz));
     let residual = |f: f64| measured(&bands, f).max(residual_of_uncertainty(correction, f));
-    let mean = common_v.iter().sum::<f64>() / n as f64;
+    let (mean, square) = mean_and_square(common_v);
     let offset_v = 2.0 * (correction.offset_v.u / correction.gain.value).abs();
     let mean_v = (mean * residual(0.0)).abs() + offset_v;
+    let noise = peaks::noise_of(common_v);
+    let moving = if n > LONGEST {
+        long::filtered(common_v, interval_s, mean, noise, &residual)
+    } else {
+        let mut values = vec![0.0f32; n];
+        common_v.load(0, &mut values);
+        let wave: Vec<f64> = values.iter().map(|x| f64::from(*x) - mean).collect();
+        let (in_phase, in_quadrature, power) = quadrature(wave, interval_s, &residual);
+        let square = in_phase.iter().zip(&in_quadrature).map(|(a, b)| a * a + b * b).fold(0.0, f64::max);
+        Moving { rms: power.sqrt(), peak: square.sqrt() }
+    };
+    let extremes = peaks::extremes(common_v, noise);
+    LeakBound {
+        rms_v: moving.rms.hypot(mean_v),
+        peak_v: moving.peak + mean_v,
+        mean_v,
+        common_rms_v: square.sqrt(),
+        common_swing_v: extremes.1.value - extremes.0.value,
+    }
+}
 
+/// What the alternating part of a common mode leaks.
+struct Moving {
+    rms: f64,
+    peak: f64,
+}
+
+/// A waveform without its mean, weighted by the residual: in phase, in quadrature, and its mean square.
+fn quadrature(mut wave: Vec<f64>, interval_s: f64, residual: &impl Fn(f64) -> f64) -> (Vec<f64>, Vec<f64>, f64) {
+    let n = wave.len();
     let half = band::fast_from(n);
     let points = 2 * half;
     let bin_hz = 1.0 / (points as f64 * interval_s);
-    let last = common_v[n - 1] - mean;
-    let held = common_v.iter().map(|c| c - mean).chain(std::iter::repeat_n(last, half - n));
-    let mut mirrored: Vec<f64> = held.collect();
-    mirrored.extend_from_within(..);
-    mirrored[half..].reverse();
-    let mut spectrum = band::forward(mirrored);
+    wave.resize(half, wave.last().copied().unwrap_or(0.0));
+    wave.extend_from_within(..);
+    wave[half..].reverse();
+    let mut spectrum = band::forward(wave);
     let mut power = 0.0;
     for (k, x) in spectrum.iter_mut().enumerate() {
         *x *= residual(k as f64 * bin_hz);
@@ -65,19 +105,13 @@ pub fn bound(common_v: &[f64], interval_s: f64, correction: &Correction, rejecti
         power += x.norm_sqr() * if k == 0 || k == half { 1.0 } else { 2.0 };
     }
     // All of the power is put down to the record itself, none to the part that was held.
-    let alternating = (power / points as f64 / (2 * n) as f64).sqrt();
+    let power = power / points as f64 / (2 * n) as f64;
     let quarter = spectrum.iter().map(|x| x * Complex::i()).collect();
-    let in_phase = band::inverse(spectrum, points);
-    let in_quadrature = band::inverse(quarter, points);
-    let envelope = in_phase[..n].iter().zip(&in_quadrature[..n]).map(|(a, b)| a * a + b * b).fold(0.0, f64::max);
-    let extremes = peaks::extremes(common_v, peaks::noise_of(common_v));
-    LeakBound {
-        rms_v: alternating.hypot(mean_v),
-        peak_v: envelope.sqrt() + mean_v,
-        mean_v,
-        common_rms_v: (common_v.iter().map(|c| c * c).sum::<f64>() / n as f64).sqrt(),
-        common_swing_v: extremes.1.value - extremes.0.value,
-    }
+    let mut in_phase = band::inverse(spectrum, points);
+    let mut in_quadrature = band::inverse(quarter, points);
+    in_phase.truncate(n);
+    in_quadrature.truncate(n);
+    (in_phase, in_quadrature, power)
 }
 
 /// `|D/C|` after the verification's bands, sorted by frequency; 0 without any.

@@ -1,7 +1,22 @@
 //! The histogram behind the state levels: splitting it in two and finding the mode of each half.
 
+use std::ops::Range;
+
+use super::super::signal::{BLOCK, Outline, Signal, blocks};
+
 /// Bins over the record's range.
-const BINS: usize = 4096;
+pub(super) const BINS: usize = 4096;
+
+/// The last bin, as a place.
+const LAST: f32 = (BINS - 1) as f32;
+
+/// What [`Histogram::settle`] finds.
+pub(super) struct Settled {
+    pub(super) centre: f64,
+    pub(super) spread: f64,
+    pub(super) mean: f64,
+    pub(super) count: f64,
+}
 
 /// How often a signal takes which values.
 pub(super) struct Histogram {
@@ -11,18 +26,116 @@ pub(super) struct Histogram {
 }
 
 impl Histogram {
-    /// Of a signal; `None` when all its samples are equal or one is not finite.
-    pub(super) fn of(signal: &[f64]) -> Option<Self> {
-        let (low, high) = signal.iter().fold((f64::INFINITY, f64::NEG_INFINITY), |(l, h), &x| (l.min(x), h.max(x)));
+    /// Of a whole signal between its lowest and highest value; `None` when they are equal or one is not finite.
+    pub(super) fn of<S: Signal + ?Sized>(signal: &S, outline: &Outline) -> Option<Self> {
+        Self::within(signal, std::iter::once(0..signal.points()), outline.low, outline.high)
+    }
+
+    /// Of some stretches of a signal; samples below `low` or above `high` count in the first or the last bin.
+    pub(super) fn within<S: Signal + ?Sized>(
+        signal: &S,
+        stretches: impl Iterator<Item = Range<usize>>,
+        low: f64,
+        high: f64,
+    ) -> Option<Self> {
         let bin = (high - low) / BINS as f64;
         if !(bin > 0.0 && bin.is_finite()) {
             return None;
         }
-        let mut counts = vec![0.0; BINS];
-        for &x in signal {
-            counts[(((x - low) / bin) as usize).min(BINS - 1)] += 1.0;
+        // Neighbouring samples often fall into one bin; four tables spare them waiting for each other.
+        let mut tables = vec![[0u32; BINS]; 4];
+        let (origin, scale) = (low as f32, (1.0 / bin) as f32);
+        let mut places = [0u16; BLOCK];
+        for stretch in stretches {
+            blocks(signal, stretch, |_, part| {
+                for (place, x) in places.iter_mut().zip(part) {
+                    // Clamped as a number: what is no number counts as the lowest.
+                    let at = (x - origin) * scale;
+                    let at = if at > 0.0 { at } else { 0.0 };
+                    let at = if at < LAST { at } else { LAST };
+                    *place = at as i32 as u16;
+                }
+                for four in places[..part.len()].chunks(4) {
+                    for (table, place) in tables.iter_mut().zip(four) {
+                        table[usize::from(*place) % BINS] += 1;
+                    }
+                }
+            });
         }
+        let counts = (0..BINS).map(|i| tables.iter().map(|table| f64::from(table[i])).sum()).collect();
         Some(Self { low, bin, counts })
+    }
+
+    /// The value below which a share of the samples lies.
+    pub(super) fn quantile(&self, share: f64) -> f64 {
+        let wanted = share * self.counts.iter().sum::<f64>();
+        let mut below = 0.0;
+        for (i, n) in self.counts.iter().enumerate() {
+            if below + n >= wanted && *n > 0.0 {
+                return ((wanted - below) / n + i as f64).mul_add(self.bin, self.low);
+            }
+            below += n;
+        }
+        self.value(BINS as f64 - 1.0)
+    }
+
+    /// The samples within a distance of a centre: their number, and the sum of their distances with sign. `side`
+    /// limits it to values above (or not above) a threshold.
+    fn around(&self, side: &Range<usize>, centre: f64, reach: f64) -> (f64, f64) {
+        let place = |x: f64| ((x - self.low) / self.bin).max(0.0) as usize;
+        let first = place(centre - reach).clamp(side.start, side.end);
+        let last = (place(centre + reach) + 1).clamp(first, side.end);
+        self.counts[first..last]
+            .iter()
+            .enumerate()
+            .map(|(k, n)| (n, self.value((first + k) as f64) - centre))
+            .filter(|(_, distance)| distance.abs() <= reach)
+            .fold((0.0, 0.0), |(count, sum), (n, distance)| (count + n, sum + n * distance))
+    }
+
+    /// The median distance of one side's samples from a centre.
+    fn median_distance(&self, side: &Range<usize>, centre: f64) -> f64 {
+        let half = 0.5 * self.counts[side.clone()].iter().sum::<f64>();
+        let place = (centre - self.low) / self.bin;
+        let (mut down, mut up) = ((place.max(0.0) as usize).clamp(side.start, side.end), 0);
+        up += down;
+        let (mut count, mut distance) = (0.0, 0.0);
+        // Outwards bin by bin, always the nearer one next.
+        while count < half && (down > side.start || up < side.end) {
+            let below = if down > side.start { place - (down as f64 - 0.5) } else { f64::INFINITY };
+            let above = if up < side.end { up as f64 + 0.5 - place } else { f64::INFINITY };
+            let bin = if below < above {
+                down -= 1;
+                down
+            } else {
+                up += 1;
+                up - 1
+            };
+            count += self.counts[bin];
+            distance = below.abs().min(above.abs());
+        }
+        distance * self.bin
+    }
+
+    /// The mean within three robust standard deviations of a centre, three passes, of the samples on one side of a
+    /// threshold (of all without one): centre of the last pass, robust standard deviation (at least `least`), mean.
+    pub(super) fn settle(&self, side: Option<(f64, bool)>, centre: f64, least: f64) -> Settled {
+        let side = side.map_or(0..BINS, |(threshold, above)| self.side(threshold, above));
+        let mut found = Settled { centre, spread: least, mean: centre, count: 0.0 };
+        for _ in 0..3 {
+            found.centre = found.mean;
+            found.spread = (1.4826 * self.median_distance(&side, found.centre)).max(least);
+            let (count, sum) = self.around(&side, found.centre, 3.0 * found.spread);
+            found.count = count;
+            found.mean = found.centre + if count > 0.0 { sum / count } else { 0.0 };
+        }
+        found
+    }
+
+    /// The bins on one side of a threshold.
+    fn side(&self, threshold: f64, above: bool) -> Range<usize> {
+        let cut = (((threshold - self.low) / self.bin) as usize).clamp(1, BINS - 1);
+        if above { cut..BINS } else { 0..cut }
     }
 
     /// Width of a bin in the signal's unit.
@@ -61,8 +174,7 @@ impl Histogram {
     /// The most frequent value on one side of a threshold: the histogram smoothed by a Gaussian whose width suits the
     /// spread and the number of samples (0.9·s·n^(−1/5), Silverman's rule, common practice), its top by a parabola.
     pub(super) fn mode(&self, threshold: f64, above: bool) -> f64 {
-        let cut = (((threshold - self.low) / self.bin) as usize).clamp(1, BINS - 1);
-        let side = if above { cut..BINS } else { 0..cut };
+        let side = self.side(threshold, above);
         let count: f64 = self.counts[side.clone()].iter().sum();
         let quantile = |share: f64| {
             let mut sum = 0.0;

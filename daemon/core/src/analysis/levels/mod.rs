@@ -10,11 +10,12 @@
 
 use std::ops::Range;
 
+use super::signal::{Outline, Signal, blocks};
 use super::transition::{self, Edge};
 
 mod histogram;
 
-use histogram::Histogram;
+use histogram::{BINS, Histogram};
 
 /// The fewest samples for which levels mean anything.
 const LEAST_POINTS: usize = 32;
@@ -22,6 +23,9 @@ const LEAST_POINTS: usize = 32;
 /// The states must be this many robust standard deviations of the samples round them apart. Noise halved in the middle
 /// reaches 2, a sine or a triangle 3 to 4: half of their samples lie far from the would-be levels.
 const LEAST_SEPARATION: f64 = 6.0;
+
+/// Width of the fine histogram's bins in parts of the spread; it reaches 64 spreads to each side.
+const FINENESS: f64 = 128.0 / BINS as f64;
 
 /// One state's level.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -80,28 +84,37 @@ impl Levels {
 
     /// The mean of another signal over the samples that made the low level.
     #[must_use]
-    pub fn mean_at_low(&self, signal: &[f64], other: &[f64]) -> f64 {
+    pub fn mean_at_low<S: Signal + ?Sized, T: Signal + ?Sized>(&self, signal: &S, other: &T) -> f64 {
         mean_of(signal, other, &self.low_stays, &self.low)
     }
 
     /// The mean of another signal over the samples that made the high level.
     #[must_use]
-    pub fn mean_at_high(&self, signal: &[f64], other: &[f64]) -> f64 {
+    pub fn mean_at_high<S: Signal + ?Sized, T: Signal + ?Sized>(&self, signal: &S, other: &T) -> f64 {
         mean_of(signal, other, &self.high_stays, &self.high)
     }
 }
 
-/// Finds the levels of a signal whose white noise is `noise` rms (0 when not known).
+/// Finds the levels of a signal whose white noise is `noise` rms (0 when not known). Cost: five passes over the signal,
+/// no sorting.
 ///
 /// # Errors
 /// When the waveform has no two levels.
-pub fn find(signal: &[f64], noise: f64) -> Result<Levels, NoLevels> {
-    let histogram = (signal.len() >= LEAST_POINTS).then(|| Histogram::of(signal)).flatten().ok_or(NoLevels::Flat)?;
+pub fn find<S: Signal + ?Sized>(signal: &S, noise: f64) -> Result<Levels, NoLevels> {
+    let outline = Outline::of(signal);
+    let enough = signal.points() >= LEAST_POINTS;
+    let histogram = enough.then(|| Histogram::of(signal, &outline)).flatten().ok_or(NoLevels::Flat)?;
     let threshold = histogram.threshold();
     let least = noise.max(histogram.bin());
     let rough = |above: bool| {
-        let group: Vec<f64> = signal.iter().copied().filter(|&x| (x > threshold) == above).collect();
-        settle(&group, histogram.mode(threshold, above), least)
+        let settled = histogram.settle(Some((threshold, above)), histogram.mode(threshold, above), least);
+        Level {
+            value: settled.mean,
+            spread: settled.spread,
+            count: settled.count as usize,
+            reach: 3.0 * settled.spread,
+            centre: settled.centre,
+        }
     };
     let (low, high) = (rough(false), rough(true));
     let apart = high.value - low.value;
@@ -109,41 +122,75 @@ pub fn find(signal: &[f64], noise: f64) -> Result<Levels, NoLevels> {
     if apart.is_nan() || apart < LEAST_SEPARATION * spread {
         return Err(NoLevels::NotApart { apart, spread });
     }
-    let edges = transition::edges(signal, low.value, high.value);
+    let edges = transition::outlined_edges(signal, &outline, low.value, high.value);
     if edges.is_empty() {
         return Err(NoLevels::NoTransition);
     }
-    let (low_stays, high_stays) = stays(&edges, signal.len());
-    let refine = |stays: &[Range<usize>], rough: Level| {
-        let group: Vec<f64> = stays.iter().flat_map(|r| &signal[r.clone()]).copied().collect();
-        if group.is_empty() { rough } else { settle(&group, rough.value, least) }
-    };
-    Ok(Levels { low: refine(&low_stays, low), high: refine(&high_stays, high), edges, low_stays, high_stays })
+    let (low_stays, high_stays) = stays(&edges, signal.points());
+    Ok(Levels {
+        low: refine(signal, &low_stays, low, least),
+        high: refine(signal, &high_stays, high, least),
+        edges,
+        low_stays,
+        high_stays,
+    })
 }
 
-/// The mean within three robust standard deviations of a centre, three passes.
-fn settle(group: &[f64], centre: f64, least: f64) -> Level {
-    let mut level = Level { value: centre, spread: least, count: 0, reach: 3.0 * least, centre };
-    let mut distances: Vec<f64> = Vec::with_capacity(group.len());
-    for _ in 0..3 {
-        level.centre = level.value;
-        distances.clear();
-        distances.extend(group.iter().map(|x| (x - level.centre).abs()));
-        let middle = distances.len() / 2;
-        if distances.is_empty() {
-            break;
-        }
-        let (_, median, _) = distances.select_nth_unstable_by(middle, f64::total_cmp);
-        level.spread = (1.4826 * *median).max(least);
-        level.reach = 3.0 * level.spread;
-        let (sum, count) = group
-            .iter()
-            .filter(|&x| (x - level.centre).abs() <= level.reach)
-            .fold((0.0, 0usize), |(s, n), x| (s + (x - level.centre), n + 1));
-        level.count = count;
-        level.value = level.centre + sum / count.max(1) as f64;
+/// The levels that a waveform without states has: the values below and above which 5 % of its samples lie.
+pub(super) fn outer<S: Signal + ?Sized>(signal: &S) -> (f64, f64) {
+    let outline = Outline::of(signal);
+    match Histogram::of(signal, &outline) {
+        Some(histogram) => (histogram.quantile(0.05), histogram.quantile(0.95)),
+        None if outline.low.is_finite() => (outline.low, outline.low),
+        None => (0.0, 0.0),
     }
-    level
+}
+
+/// A level from the samples of its stays alone, beginning with a rough one. Where to cut is found on a histogram that is
+/// fine against the spread; the mean within is that of the samples themselves.
+fn refine<S: Signal + ?Sized>(signal: &S, stays: &[Range<usize>], rough: Level, least: f64) -> Level {
+    let half = 0.5 * FINENESS * BINS as f64 * rough.spread;
+    let (low, high) = (rough.value - half, rough.value + half);
+    let fine = (!stays.is_empty()).then(|| Histogram::within(signal, stays.iter().cloned(), low, high)).flatten();
+    let Some(settled) = fine.map(|histogram| histogram.settle(None, rough.value, least)) else { return rough };
+    let (centre, reach) = (settled.centre, 3.0 * settled.spread);
+    let (mut sum, mut count) = (0.0, 0.0);
+    for stretch in stays {
+        blocks(signal, stretch.clone(), |_, part| {
+            let (distance, inside) = inside(part, part, centre, reach);
+            sum += distance;
+            count += inside;
+        });
+    }
+    let value = centre + if count > 0.0 { sum / count } else { 0.0 };
+    Level { value, spread: settled.spread, count: count as usize, reach, centre }
+}
+
+/// The sum of `other` over the samples of `part` within `reach` of `centre`, and their number; for `other` the same as
+/// `part` relative to the centre.
+fn inside(part: &[f32], other: &[f32], centre: f64, reach: f64) -> (f64, f64) {
+    const LANES: usize = 8;
+    let (middle, reach) = (centre as f32, reach as f32);
+    let zero = if std::ptr::eq(part, other) { middle } else { 0.0 };
+    let (mut sums, mut counts) = ([0.0f32; LANES], [0.0f32; LANES]);
+    let mut take = |k: usize, x: f32, y: f32| {
+        let weight = if (x - middle).abs() <= reach { 1.0 } else { 0.0 };
+        sums[k] += weight * (y - zero);
+        counts[k] += weight;
+    };
+    let (whole, others) = (part.chunks_exact(LANES), other.chunks_exact(LANES));
+    for (x, y) in whole.remainder().iter().zip(others.remainder()) {
+        take(0, *x, *y);
+    }
+    for (x, y) in whole.zip(others) {
+        for k in 0..LANES {
+            take(k, x[k], y[k]);
+        }
+    }
+    let count: f64 = counts.into_iter().map(f64::from).sum();
+    // What the centre lost in single precision is given back.
+    let lost = if zero.abs() > 0.0 { (f64::from(middle) - centre) * count } else { 0.0 };
+    (sums.into_iter().map(f64::from).sum::<f64>() + lost, count)
 }
 
 /// The stretches between the transitions, low and high, without their neighbourhoods.
@@ -166,10 +213,24 @@ fn stays(edges: &[Edge], points: usize) -> (Vec<Range<usize>>, Vec<Range<usize>>
     (low, high)
 }
 
-fn mean_of(signal: &[f64], other: &[f64], stays: &[Range<usize>], level: &Level) -> f64 {
-    let inside = stays.iter().flat_map(Range::clone).filter(|&i| (signal[i] - level.centre).abs() <= level.reach);
-    let (sum, count) = inside.fold((0.0, 0usize), |(sum, count), i| (sum + other[i], count + 1));
-    sum / count.max(1) as f64
+fn mean_of<S: Signal + ?Sized, T: Signal + ?Sized>(
+    signal: &S,
+    other: &T,
+    stays: &[Range<usize>],
+    level: &Level,
+) -> f64 {
+    let (mut sum, mut count) = (0.0, 0.0);
+    let mut buffer = [0.0f32; super::signal::BLOCK];
+    for stretch in stays {
+        blocks(signal, stretch.clone(), |from, part| {
+            let others = &mut buffer[..part.len()];
+            other.load(from, others);
+            let (total, inside) = inside(part, others, level.centre, level.reach);
+            sum += total;
+            count += inside;
+        });
+    }
+    sum / f64::max(count, 1.0)
 }
 
 #[cfg(test)]

@@ -92,8 +92,9 @@ fn eight_bit_codes_with_little_dither_are_good_to_a_fraction_of_a_code() {
 fn sensitivities_use_the_samples_of_the_level() {
     let x = pulse(0.5, 0.0, 0.0);
     let levels = find(&x, 0.001).unwrap();
-    assert!((levels.mean_at_high(&x, &x) - levels.high.value).abs() < 1e-9);
-    assert!((levels.mean_at_low(&x, &x) - levels.low.value).abs() < 1e-9);
+    // Summed in single precision with another origin: 2⁻²⁴ is 6e-8.
+    assert!((levels.mean_at_high(&x, &x) - levels.high.value).abs() < 1e-7);
+    assert!((levels.mean_at_low(&x, &x) - levels.low.value).abs() < 1e-7);
     assert!(levels.high.count > 4000 && levels.edges.len() == 8);
 }
 

@@ -7,6 +7,8 @@
 
 use std::ops::Range;
 
+use super::signal::{BLOCK, Signal, blocks, range_of};
+
 /// Half-widths of the window in samples begin here.
 const LEAST_HALF: usize = 2;
 
@@ -15,6 +17,12 @@ const STEPS_BACK: usize = 2;
 
 /// Misfits below this part of the record's range do not stop the window from growing when there is no noise.
 const RELATIVE_FLOOR: f64 = 1e-5;
+
+/// The window grows no wider: with a thousand samples on each side noise is down to a twentieth.
+const MOST_HALF: usize = 1024;
+
+/// Stretches of samples, spread over a long record, from which the noise is taken: enough to know it to 1 %.
+const NOISE_STRETCHES: usize = 64;
 
 /// A local extreme.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -25,54 +33,87 @@ pub struct Extreme {
     pub u: f64,
     /// Where it is, in samples.
     pub position: f64,
+    /// Half-width of the window it was fitted in, in samples; 0 for a single sample.
+    pub half: usize,
 }
 
 /// The lowest and the highest value of a signal with white noise of `noise` rms.
 #[must_use]
-pub fn extremes(signal: &[f64], noise: f64) -> (Extreme, Extreme) {
-    (lowest(signal, 0..signal.len(), noise), highest(signal, 0..signal.len(), noise))
+pub fn extremes<S: Signal + ?Sized>(signal: &S, noise: f64) -> (Extreme, Extreme) {
+    extremes_within(signal, 0..signal.points(), noise)
+}
+
+/// The lowest and the highest value within a range of samples; zero for an empty range.
+#[must_use]
+pub fn extremes_within<S: Signal + ?Sized>(signal: &S, range: Range<usize>, noise: f64) -> (Extreme, Extreme) {
+    let range = range.start..range.end.min(signal.points());
+    let Some(start) = Start::of(signal, range.clone()) else { return (Extreme::NONE, Extreme::NONE) };
+    let low = extreme(signal, &range, (start.lowest, start.spread), noise, -1.0);
+    (Extreme { value: -low.value, ..low }, extreme(signal, &range, (start.highest, start.spread), noise, 1.0))
 }
 
 /// The highest value within a range of samples; zero for an empty range.
 #[must_use]
-pub fn highest(signal: &[f64], range: Range<usize>, noise: f64) -> Extreme {
-    extreme(signal, range, noise, 1.0)
+pub fn highest<S: Signal + ?Sized>(signal: &S, range: Range<usize>, noise: f64) -> Extreme {
+    extremes_within(signal, range, noise).1
 }
 
 /// The lowest value within a range of samples; zero for an empty range.
 #[must_use]
-pub fn lowest(signal: &[f64], range: Range<usize>, noise: f64) -> Extreme {
-    let e = extreme(signal, range, noise, -1.0);
-    Extreme { value: -e.value, ..e }
+pub fn lowest<S: Signal + ?Sized>(signal: &S, range: Range<usize>, noise: f64) -> Extreme {
+    extremes_within(signal, range, noise).0
+}
+
+impl Extreme {
+    const NONE: Self = Self { value: 0.0, u: 0.0, position: 0.0, half: 0 };
+
+    /// What the same fit, in the same window, gives for another signal: this one changed a little.
+    #[must_use]
+    pub fn again<S: Signal + ?Sized>(&self, signal: &S, highest: bool) -> f64 {
+        let sign = if highest { 1.0 } else { -1.0 };
+        let fit = (self.half > 0).then(|| Fit::of(signal, &(0..signal.points()), self.position, self.half, sign));
+        let single = || signal.at((self.position.max(0.0) as usize).min(signal.points().saturating_sub(1)));
+        fit.flatten().map_or_else(single, |fit| sign * fit.value)
+    }
 }
 
 /// The rms of a signal's white noise, from the median magnitude of its fourth differences: slow shapes vanish in them
 /// and edges are too few to move a median. Waveforms whose every sample lies on an edge read too high.
 #[must_use]
-pub fn noise_of(signal: &[f64]) -> f64 {
-    let mut fourth: Vec<f64> =
-        signal.windows(5).map(|w| (w[0] + w[4] - 4.0 * (w[1] + w[3]) + 6.0 * w[2]).abs()).collect();
+pub fn noise_of<S: Signal + ?Sized>(signal: &S) -> f64 {
+    let points = signal.points();
+    let step = points.div_ceil(NOISE_STRETCHES).max(BLOCK);
+    let mut fourth: Vec<f32> = Vec::new();
+    for from in (0..points).step_by(step) {
+        blocks(signal, from..(from + BLOCK).min(points), |_, part| {
+            fourth.extend(part.windows(5).map(|w| (w[0] + w[4] - 4.0 * (w[1] + w[3]) + 6.0 * w[2]).abs()));
+        });
+    }
     if fourth.is_empty() {
         return 0.0;
     }
     let middle = fourth.len() / 2;
-    let (_, median, _) = fourth.select_nth_unstable_by(middle, f64::total_cmp);
+    let (_, median, _) = fourth.select_nth_unstable_by(middle, f32::total_cmp);
     // 1.4826 turns the median magnitude of a normal distribution into its sd; 70 = 1 + 16 + 36 + 16 + 1.
-    1.4826 * *median / 70.0f64.sqrt()
+    1.4826 * f64::from(*median) / 70.0f64.sqrt()
 }
 
-/// The highest value of `sign` times the signal.
-fn extreme(signal: &[f64], range: Range<usize>, noise: f64, sign: f64) -> Extreme {
-    let range = range.start..range.end.min(signal.len());
-    let Some((top, spread)) = start(signal, range.clone(), sign) else {
-        return Extreme { value: 0.0, u: 0.0, position: 0.0 };
-    };
+/// The highest value of `sign` times the signal, from where to begin and the range's spread.
+fn extreme<S: Signal + ?Sized>(
+    signal: &S,
+    range: &Range<usize>,
+    (top, spread): (usize, f64),
+    noise: f64,
+    sign: f64,
+) -> Extreme {
     let tolerance = noise.max(RELATIVE_FLOOR * spread);
-    let mut accepted = vec![Extreme { value: sign * signal[top], u: noise, position: top as f64 }];
+    let single = Extreme { value: sign * signal.at(top), u: noise, position: top as f64, half: 0 };
+    let mut accepted = vec![single];
     let mut half = LEAST_HALF;
     let mut misfit = false;
     while let Some(last) = accepted.last()
-        && let Some(fit) = Fit::of(signal, &range, last.position, half, sign)
+        && half <= MOST_HALF
+        && let Some(fit) = Fit::of(signal, range, last.position, half, sign)
     {
         // The place was chosen for being high: of the m windows that could have been chosen, noise lifts the highest by
         // √(2·ln m) standard deviations. Falling back by that much is no misfit, nor is one sample that stands out so.
@@ -85,7 +126,7 @@ fn extreme(signal: &[f64], range: Range<usize>, noise: f64, sign: f64) -> Extrem
         if misfit {
             break;
         }
-        accepted.push(Extreme { value: fit.value, u: noise * fit.weight.sqrt(), position: fit.position });
+        accepted.push(Extreme { value: fit.value, u: noise * fit.weight.sqrt(), position: fit.position, half });
         half = (half + half / 2).max(half + 1);
     }
     // A misfit shows only when it is as large as the noise in the result. It falls with the fourth power of the width,
@@ -93,21 +134,59 @@ fn extreme(signal: &[f64], range: Range<usize>, noise: f64, sign: f64) -> Extrem
     if misfit && accepted.len() > STEPS_BACK + 1 {
         accepted.truncate(accepted.len() - STEPS_BACK);
     }
-    accepted.pop().unwrap_or(Extreme { value: 0.0, u: 0.0, position: 0.0 })
+    accepted.pop().unwrap_or(single)
 }
 
-/// Where the mean of five neighbours is highest, and the range's spread.
-fn start(signal: &[f64], range: Range<usize>, sign: f64) -> Option<(usize, f64)> {
-    let part = signal.get(range.clone())?;
-    let first = *part.first()?;
-    let (low, high) = part.iter().fold((first, first), |(l, h), &x| (l.min(x), h.max(x)));
-    let better = |a: (usize, f64), b: (usize, f64)| if b.1 > a.1 { b } else { a };
-    let smoothed = part.windows(5).enumerate().map(|(i, w)| (i + 2, sign * w.iter().sum::<f64>() / 5.0));
-    let place = smoothed
-        .reduce(better)
-        .or_else(|| part.iter().map(|x| sign * x).enumerate().reduce(better))
-        .map_or(0, |(i, _)| i);
-    Some((range.start + place, high - low))
+/// Where to begin: the places at which the mean of five neighbours is lowest and highest, and the range's spread.
+struct Start {
+    lowest: usize,
+    highest: usize,
+    spread: f64,
+}
+
+impl Start {
+    fn of<S: Signal + ?Sized>(signal: &S, range: Range<usize>) -> Option<Self> {
+        if range.is_empty() {
+            return None;
+        }
+        let (mut low, mut high) = (f32::INFINITY, f32::NEG_INFINITY);
+        let mut found = Self { lowest: range.start, highest: range.start, spread: 0.0 };
+        // Neighbouring stretches share four samples, so that every five in a row are seen once.
+        let mut best = (f32::INFINITY, f32::NEG_INFINITY);
+        let mut buffer = [0.0f32; BLOCK + 4];
+        let mut smooth = [0.0f32; BLOCK];
+        let mut from = range.start;
+        while from < range.end {
+            let count = (BLOCK + 4).min(range.end - from);
+            let part = &mut buffer[..count];
+            signal.load(from, part);
+            let (least, most) = range_of(part);
+            (low, high) = (low.min(least), high.max(most));
+            // A mean is never beyond its samples.
+            if count >= 5 && (least < best.0 || most > best.1) {
+                let smooth = &mut smooth[..count - 4];
+                for (k, smooth) in smooth.iter_mut().enumerate() {
+                    *smooth = 0.2 * (part[k] + part[k + 1] + part[k + 2] + part[k + 3] + part[k + 4]);
+                }
+                let (least, most) = range_of(smooth);
+                let place = |x: f32| from + 2 + smooth.iter().position(|y| *y >= x && *y <= x).unwrap_or(0);
+                if least < best.0 {
+                    (best.0, found.lowest) = (least, place(least));
+                }
+                if most > best.1 {
+                    (best.1, found.highest) = (most, place(most));
+                }
+            }
+            from += BLOCK;
+        }
+        if range.len() < 5 {
+            let by = |a: &usize, b: &usize| signal.at(*a).total_cmp(&signal.at(*b));
+            found.lowest = range.clone().min_by(by).unwrap_or(range.start);
+            found.highest = range.clone().max_by(by).unwrap_or(range.start);
+        }
+        found.spread = f64::from(high - low).max(0.0);
+        Some(found)
+    }
 }
 
 /// A parabola through `2·half + 1` samples.
@@ -121,23 +200,24 @@ struct Fit {
 }
 
 impl Fit {
-    fn of(signal: &[f64], range: &Range<usize>, centre: f64, half: usize, sign: f64) -> Option<Self> {
+    fn of<S: Signal + ?Sized>(signal: &S, range: &Range<usize>, centre: f64, half: usize, sign: f64) -> Option<Self> {
         let points = 2 * half + 1;
         if range.len() < points {
             return None;
         }
         let middle = (centre.round().max(0.0) as usize).clamp(range.start + half, range.end - 1 - half);
-        let window = &signal[middle - half..=middle + half];
+        let mut window = vec![0.0f32; points];
+        signal.load(middle - half, &mut window);
         let h = half as f64;
         let count = points as f64;
         // Σx² and Σx⁴ over −h..h.
         let s2 = h * (h + 1.0) * (2.0 * h + 1.0) / 3.0;
         let s4 = s2 * (3.0 * h * h + 3.0 * h - 1.0) / 5.0;
         let xs = (0..points).map(|i| i as f64 - h);
-        let mean = window.iter().sum::<f64>() / count;
+        let mean = window.iter().map(|y| f64::from(*y)).sum::<f64>() / count;
         let (mut t1, mut t2, mut total) = (0.0, 0.0, 0.0);
-        for (x, y) in xs.zip(window) {
-            let y = y - mean;
+        for (x, y) in xs.zip(&window) {
+            let y = f64::from(*y) - mean;
             t1 += x * y;
             t2 += (x * x - s2 / count) * y;
             total += y * y;

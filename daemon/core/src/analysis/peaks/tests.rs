@@ -61,7 +61,7 @@ fn noise_is_found_under_a_waveform() {
 
 #[test]
 fn short_and_empty_ranges() {
-    assert!(highest(&[], 0..0, 1.0).value.abs() < 1e-300);
+    assert!(highest::<[f64]>(&[], 0..0, 1.0).value.abs() < 1e-300);
     assert!((highest(&[1.0, 4.0, 2.0], 0..3, 0.1).value - 4.0).abs() < 1e-12);
     assert!((lowest(&[1.0, 4.0, 2.0], 1..3, 0.1).value - 2.0).abs() < 1e-12);
 }

@@ -7,6 +7,8 @@
 use super::Correction;
 
 mod measure;
+mod residual;
+mod spectra;
 
 pub use measure::{measure, measure_with};
 

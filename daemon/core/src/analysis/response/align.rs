@@ -52,8 +52,9 @@ pub(super) fn halves(
         if (corrected.interval_s / interval_s - 1.0).abs() > 1e-9 {
             return Err(ResponseError::Interval { fitted_s: interval_s, interval_s: corrected.interval_s });
         }
-        let positive = corrected.common_v.iter().zip(&corrected.difference_v).map(|(c, d)| c + 0.5 * d).collect();
-        let one = Sum { first: corrected.first, p: positive, x: corrected.negative_v, count: 1.0 };
+        let x: Vec<f64> = corrected.negative_v.iter().map(|n| f64::from(*n)).collect();
+        let positive = x.iter().zip(&corrected.difference_v).map(|(n, d)| n + f64::from(*d)).collect();
+        let one = Sum { first: corrected.first, p: positive, x, count: 1.0 };
         let sum = &mut sums[index % 2];
         match sum {
             Some(sum) => sum.add(&one),

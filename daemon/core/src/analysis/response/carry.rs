@@ -74,7 +74,7 @@ impl Response {
         if self.taps.len() > 1 && (interval_s / self.interval_s - 1.0).abs() > 1e-6 {
             return Err(ResponseError::Interval { fitted_s: self.interval_s, interval_s });
         }
-        let x = &corrected.negative_v;
+        let x: Vec<f64> = corrected.negative_v.iter().map(|n| f64::from(*n)).collect();
         let half = self.taps.len() / 2;
         let low_pass = self.low_pass(interval_s);
         let settle = low_pass.map_or(0, |(beta, samples)| {
@@ -93,21 +93,16 @@ impl Response {
         let mut negative_v = convolve(&x[first - half..], &self.taps);
         negative_v.iter_mut().for_each(|y| *y += self.level_v);
         if let Some((beta, samples)) = low_pass {
-            let slow = LowPass::new(samples).apply(x);
+            let slow = LowPass::new(samples).apply(&x);
             negative_v.iter_mut().zip(&slow[first..]).for_each(|(y, u)| *y += beta * u);
         }
-        // P is the common mode plus half of the difference.
-        let positive =
-            || corrected.common_v[first..].iter().zip(&corrected.difference_v[first..]).map(|(c, d)| c + 0.5 * d);
-        Ok(Corrected {
-            difference_v: positive().zip(&negative_v).map(|(p, n)| p - n).collect(),
-            common_v: positive().zip(&negative_v).map(|(p, n)| 0.5 * (p + n)).collect(),
-            first: corrected.first + first,
-            interval_s,
-            start_s: (first as f64).mul_add(interval_s, corrected.start_s),
-            noise_gain: self.noise_gain(shift),
-            negative_v,
-        })
+        // P is the corrected negative leg, as it was before the response, plus the difference.
+        let positive = x[first..].iter().zip(&corrected.difference_v[first..]).map(|(n, d)| n + f64::from(*d));
+        let difference_v = positive.zip(&negative_v).map(|(p, n)| (p - n) as f32).collect();
+        let negative_v = negative_v.iter().map(|n| *n as f32).collect();
+        let start_s = (first as f64).mul_add(interval_s, corrected.start_s);
+        let made = Corrected::of(difference_v, negative_v, interval_s, start_s, self.noise_gain(shift));
+        Ok(Corrected { first: corrected.first + first, ..made })
     }
 
     /// `Σ h²` of interpolation and filter together. The low-pass adds `β²/2T'`, which is nothing beside them.

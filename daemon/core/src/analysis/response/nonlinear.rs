@@ -9,6 +9,7 @@
 //! A reference of two levels does not show it: to such a signal it is a gain error. A sine or a ramp does.
 
 use super::super::apply::ApplyError;
+use super::super::signal::Signal;
 use super::super::{Correction, Record};
 use super::{Response, correct};
 
@@ -52,7 +53,9 @@ pub fn nonlinearity(
     let mut points: Vec<(f64, f64)> = Vec::new();
     for (p, n) in p.iter().zip(n) {
         let corrected = correct(p, n, correction, response)?;
-        points.extend(corrected.common_v.iter().copied().zip(corrected.difference_v));
+        let common = corrected.common();
+        let difference = corrected.difference_v.iter().enumerate();
+        points.extend(difference.map(|(i, d)| (common.at(i), f64::from(*d))));
     }
     Ok(of_points(&points))
 }

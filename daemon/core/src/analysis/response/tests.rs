@@ -128,7 +128,7 @@ fn carried_out_it_is_what_the_rejection_shows() {
     // The level agrees as well: no difference at the mean.
     let corrected = correct(&p[0], &n[0], &correction, Some(&found)).unwrap();
     let whole = &corrected.difference_v[..25_000];
-    let mean = whole.iter().sum::<f64>() / 25_000.0;
+    let mean = whole.iter().map(|d| f64::from(*d)).sum::<f64>() / 25_000.0;
     assert!(mean.abs() < 4.0 * 0.05 * (2.0f64 / 25_000.0).sqrt() + 1e-3, "{mean}");
     assert!(corrected.first > 57_500 / 100 && corrected.noise_gain > 0.5, "{}", corrected.first);
     assert_eq!(corrected.first + corrected.difference_v.len(), 57_500 - 22 - found.taps.len() / 2);

@@ -5,6 +5,7 @@ use rand_chacha::ChaCha8Rng;
 use rand_distr::{Distribution, Normal};
 
 use super::super::figures::FigureKind;
+use super::super::signal::Signal;
 use super::super::skew::Shape;
 use super::*;
 
@@ -107,9 +108,10 @@ fn halves_that_disagree_widen_the_uncertainty() {
 
 /// The amplitude of a sine of this frequency in the first 40,000 samples of 3 ns: 120 µs hold 51 periods of 425 kHz and
 /// 12 of 100 kHz, so the square wave adds nothing.
-fn amplitude(signal: &[f64], interval_s: f64, frequency_hz: f64) -> f64 {
+fn amplitude(signal: &impl Signal, interval_s: f64, frequency_hz: f64) -> f64 {
     let (mut re, mut im) = (0.0, 0.0);
-    for (i, x) in signal[..40_000].iter().enumerate() {
+    for i in 0..40_000 {
+        let x = signal.at(i);
         let angle = std::f64::consts::TAU * frequency_hz * i as f64 * interval_s;
         re += x * angle.cos();
         im += x * angle.sin();

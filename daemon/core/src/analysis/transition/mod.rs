@@ -7,6 +7,7 @@
 
 mod local;
 
+use super::signal::{BLOCK, Outline, Signal};
 use local::Local;
 
 /// A state counts as reached when so many samples in a row say so: a single wild sample is no transition.
@@ -63,50 +64,97 @@ pub struct Transition {
 
 /// All transitions of a signal between two levels, with a hysteresis from 30 % to 70 %.
 #[must_use]
-pub fn edges(signal: &[f64], low: f64, high: f64) -> Vec<Edge> {
+pub fn edges<S: Signal + ?Sized>(signal: &S, low: f64, high: f64) -> Vec<Edge> {
+    outlined_edges(signal, &Outline::of(signal), low, high)
+}
+
+/// As [`edges`], with the signal's outline: blocks that stay in one state are not looked into.
+pub(super) fn outlined_edges<S: Signal + ?Sized>(signal: &S, outline: &Outline, low: f64, high: f64) -> Vec<Edge> {
     let (lower, upper) = (0.3f64.mul_add(high - low, low), 0.7f64.mul_add(high - low, low));
-    let mut found = Vec::new();
-    let mut state: Option<bool> = None;
-    let mut last = [None::<usize>; 2];
-    let mut run = (false, 0);
-    for (i, &x) in signal.iter().enumerate() {
-        let side = if x <= lower {
-            false
-        } else if x >= upper {
-            true
+    let mut walk = Walk::default();
+    let points = signal.points();
+    let mut buffer = [0.0; BLOCK];
+    for (block, &(least, most)) in outline.blocks.iter().enumerate() {
+        let from = block * BLOCK;
+        let count = BLOCK.min(points - from);
+        let side = if f64::from(most) <= lower {
+            Some(false)
+        } else if f64::from(least) >= upper {
+            Some(true)
         } else {
-            run.1 = 0;
-            continue;
+            None
         };
-        run = if run.0 == side { (side, run.1 + 1) } else { (side, 1) };
-        if run.1 >= DWELL {
-            if state == Some(!side)
-                && let Some(from) = last[usize::from(!side)]
-            {
-                found.push(Edge { rising: side, from, to: i + 1 - DWELL });
+        match side {
+            // The first few samples may complete a transition; the rest only says where the state was seen last.
+            Some(side) if count > DWELL => {
+                (from..from + DWELL).for_each(|i| walk.step(i, Some(side)));
+                walk.stay(from + count - 1, side);
             }
-            state = Some(side);
-        }
-        // A lone wild sample on the old side after the edge must not become its beginning.
-        if state == Some(side) {
-            last[usize::from(side)] = Some(i);
+            _ => {
+                let part = &mut buffer[..count];
+                signal.load(from, part);
+                for (i, &x) in part.iter().enumerate() {
+                    let x = f64::from(x);
+                    let side = (x <= lower || x >= upper).then_some(x >= upper);
+                    walk.step(from + i, side);
+                }
+            }
         }
     }
-    found
+    walk.found
+}
+
+/// Walks along a signal's states, low (false) and high (true).
+#[derive(Default)]
+struct Walk {
+    found: Vec<Edge>,
+    state: Option<bool>,
+    /// Where each state was seen last.
+    last: [Option<usize>; 2],
+    /// How many samples in a row were on which side.
+    run: (bool, usize),
+}
+
+impl Walk {
+    fn step(&mut self, i: usize, side: Option<bool>) {
+        let Some(side) = side else {
+            self.run.1 = 0;
+            return;
+        };
+        self.run = if self.run.0 == side { (side, self.run.1 + 1) } else { (side, 1) };
+        if self.run.1 >= DWELL {
+            if self.state == Some(!side)
+                && let Some(from) = self.last[usize::from(!side)]
+            {
+                self.found.push(Edge { rising: side, from, to: i + 1 - DWELL });
+            }
+            self.state = Some(side);
+        }
+        // A lone wild sample on the old side after the edge must not become its beginning.
+        if self.state == Some(side) {
+            self.last[usize::from(side)] = Some(i);
+        }
+    }
+
+    /// The state, which holds already, goes on to sample `i`.
+    fn stay(&mut self, i: usize, side: bool) {
+        self.run = (side, DWELL);
+        self.last[usize::from(side)] = Some(i);
+    }
 }
 
 /// Measures one transition between `low` and `high`. `room` is the stretch of samples that belongs to it: from the
 /// transition before to the one after. `None` when it does not cross its levels within that room.
 #[must_use]
-pub fn measure(
-    signal: &[f64],
+pub fn measure<S: Signal + ?Sized>(
+    signal: &S,
     edge: Edge,
     room: std::ops::Range<usize>,
     (low, high): (f64, f64),
     noise: f64,
 ) -> Option<Transition> {
     let amplitude = high - low;
-    if amplitude.is_nan() || amplitude <= 0.0 || room.end > signal.len() {
+    if amplitude.is_nan() || amplitude <= 0.0 || room.end > signal.points() {
         return None;
     }
     let span = (edge.to - edge.from).max(1);

@@ -85,7 +85,7 @@ fn transitions_alternate_and_wild_samples_are_none() {
     assert_eq!(found.iter().map(|e| e.rising).collect::<Vec<_>>(), [true, false]);
     assert!(found[0].middle().abs_diff(100) <= 1 && found[1].middle().abs_diff(300) <= 1);
     assert!(edges(&[0.5; 100], 0.0, 1.0).is_empty());
-    assert!(edges(&[], 0.0, 1.0).is_empty());
+    assert!(edges::<[f64]>(&[], 0.0, 1.0).is_empty());
 }
 
 #[test]

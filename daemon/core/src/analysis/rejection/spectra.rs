@@ -1,0 +1,206 @@
+//! Averaged spectra of difference and common mode, from which rejection is read.
+//!
+//! A record of up to [`LONGEST`] samples is one segment. A longer one is cut into half-overlapping segments, in three
+//! resolutions: [`SEGMENT`] samples of the record itself, and longer segments of the record brought to a 16th and a
+//! 256th of its rate by a triangular average, so that every band has at least [`LEAST_PLACE`] bins below it while no
+//! transform is long. (The triangle's slope acts on difference and common mode alike; what it folds down is at least
+//! 80 dB lower in the bands that are read there.) At the full rate only segments in which the common mode moves are
+//! transformed, and a few of the others, which hold nothing but noise.
+
+use realfft::num_complex::Complex;
+
+use super::super::apply::Corrected;
+use super::super::band::{self, Transform};
+use super::super::interpolate::BAND;
+use super::super::peaks;
+use super::super::signal::{BLOCK, Outline, Signal};
+use super::residual::{Noise, Spectra, sort_bins};
+
+/// The longest record that is transformed as a whole.
+const LONGEST: usize = 32_768;
+/// Samples per segment at the full rate, and at the lower rates.
+const SEGMENT: usize = 16_384;
+const SLOW_SEGMENT: usize = 65_536;
+/// Each resolution's rate is this part of the one before.
+const STEP: usize = 16;
+/// A band is read at the highest rate at which its centre lies at least so many bins up.
+pub(super) const LEAST_PLACE: f64 = 8.0;
+/// A segment whose common mode ranges over more than so many standard deviations of its noise moves.
+const MOVES: f64 = 12.0;
+/// So many segments that hold only noise are enough.
+const ENOUGH_QUIET: usize = 8;
+
+/// Sums over segments.
+struct Average {
+    cross: Vec<Complex<f64>>,
+    common: Vec<f64>,
+    difference: Vec<f64>,
+    segments: usize,
+}
+
+impl Average {
+    fn new(points: usize) -> Self {
+        let bins = points / 2 + 1;
+        Self {
+            cross: vec![Complex::default(); bins],
+            common: vec![0.0; bins],
+            difference: vec![0.0; bins],
+            segments: 0,
+        }
+    }
+
+    fn add(&mut self, d: &[Complex<f32>], c: &[Complex<f32>]) {
+        for (k, (d, c)) in d.iter().zip(c).enumerate() {
+            let product = d * c.conj();
+            self.cross[k] += Complex::new(f64::from(product.re), f64::from(product.im));
+            self.common[k] += f64::from(c.norm_sqr());
+            self.difference[k] += f64::from(d.norm_sqr());
+        }
+        self.segments += 1;
+    }
+
+    fn finish(mut self) -> Self {
+        let share = 1.0 / self.segments.max(1) as f64;
+        self.cross.iter_mut().for_each(|x| *x *= share);
+        self.common.iter_mut().chain(&mut self.difference).for_each(|x| *x *= share);
+        self
+    }
+}
+
+/// The spectra of all acquisitions in every resolution, the finest in time first. Empty without any.
+pub(super) fn of(captures: &[Corrected]) -> Vec<Spectra> {
+    let Some(points) = captures.iter().map(|c| c.difference_v.len()).min() else { return Vec::new() };
+    let Some(interval_s) = captures.first().map(|c| c.interval_s) else { return Vec::new() };
+    if points <= LONGEST {
+        let points = band::fast_up_to(points);
+        let average = whole(captures.iter().map(|c| (&c.difference_v, c.common())), points, points);
+        return vec![sorted(average, 1.0 / (points as f64 * interval_s), None)];
+    }
+    let (first, quiet) = segments(captures, points);
+    let mut found = vec![sorted(first, 1.0 / (SEGMENT as f64 * interval_s), quiet)];
+    let mut slow: Vec<(Vec<f32>, Vec<f32>)> =
+        captures.iter().map(|c| (slower(&c.difference_v, points), slower(&c.common(), points))).collect();
+    let mut rate = STEP;
+    while points / rate >= 256 {
+        let length = points / rate;
+        let size = if length > SLOW_SEGMENT { SLOW_SEGMENT } else { band::fast_up_to(length) };
+        let average = whole(slow.iter().map(|(d, c)| (d, c)), length, size);
+        // White noise is the same per hertz: a bin of the slower spectrum holds less of it.
+        let noise = found[0].noise_anywhere().map(|noise| noise.per_bin(1.0 / rate as f64));
+        found.push(sorted(average, 1.0 / ((size * rate) as f64 * interval_s), noise.map(Quiet::Same)));
+        slow = slow.iter().map(|(d, c)| (slower(d, length), slower(c, length))).collect();
+        rate *= STEP;
+    }
+    found
+}
+
+/// What is known of the noise beside the spectra themselves.
+enum Quiet {
+    /// Spectra of noise alone.
+    Measured(Average),
+    /// The same in every bin, for where the spectrum has no bins without signal.
+    Same(Noise),
+}
+
+fn sorted(average: Average, bin_hz: f64, quiet: Option<Quiet>) -> Spectra {
+    let bins = average.common.len();
+    let last = ((BAND * 2.0 * (bins - 1) as f64) as usize).min(bins.saturating_sub(1));
+    let floor = match &quiet {
+        Some(Quiet::Measured(noise)) => {
+            let usable = noise.common.get(band::LOBE..=last).unwrap_or_default();
+            Some(usable.iter().sum::<f64>() / usable.len().max(1) as f64)
+        }
+        _ => None,
+    };
+    let (signal, silent) = sort_bins(&average.common, last, floor);
+    let averages = average.segments as f64;
+    let mut found = Spectra {
+        averages,
+        bin_hz,
+        cross: average.cross,
+        common: average.common,
+        difference: average.difference,
+        signal,
+        quiet: silent,
+        measured: None,
+        elsewhere: None,
+    };
+    match quiet {
+        Some(Quiet::Measured(noise)) => found.measured = Some((noise.cross, noise.difference, noise.segments as f64)),
+        Some(Quiet::Same(noise)) => found.elsewhere = Some(noise),
+        None => {}
+    }
+    found
+}
+
+/// Half-overlapping segments of `size` over the first `points` samples of every acquisition.
+fn whole<D: Signal, C: Signal>(captures: impl Iterator<Item = (D, C)>, points: usize, size: usize) -> Average {
+    let mut transform = Transform::new(size);
+    let mut average = Average::new(size);
+    for (d, c) in captures {
+        for from in starts(points, size) {
+            transform.both(&d, &c, from);
+            average.add(&transform.first, &transform.second);
+        }
+    }
+    average.finish()
+}
+
+/// Where half-overlapping segments begin; the last one ends where the record does.
+fn starts(points: usize, size: usize) -> impl Iterator<Item = usize> {
+    let last = points.saturating_sub(size);
+    (0..last).step_by((size / 2).max(1)).chain(std::iter::once(last))
+}
+
+/// The segments in which the common mode moves; the second average is of some in which it does not, if there are any.
+fn segments(captures: &[Corrected], points: usize) -> (Average, Option<Quiet>) {
+    let mut transform = Transform::new(SEGMENT);
+    let (mut moving, mut still) = (Average::new(SEGMENT), Average::new(SEGMENT));
+    let enough = ENOUGH_QUIET.div_ceil(captures.len());
+    for capture in captures {
+        let common = capture.common();
+        let outline = Outline::of(&common);
+        let limit = MOVES * peaks::noise_of(&common);
+        let moves = |from: &usize| {
+            let blocks = &outline.blocks[from / BLOCK..(from + SEGMENT).div_ceil(BLOCK).min(outline.blocks.len())];
+            let low = blocks.iter().fold(f32::INFINITY, |low, block| low.min(block.0));
+            let high = blocks.iter().fold(f32::NEG_INFINITY, |high, block| high.max(block.1));
+            f64::from(high - low) > limit
+        };
+        let (mut move_at, mut still_at): (Vec<usize>, Vec<usize>) = starts(points, SEGMENT).partition(moves);
+        if move_at.is_empty() {
+            std::mem::swap(&mut move_at, &mut still_at);
+        }
+        for from in move_at {
+            transform.both(&capture.difference_v, &common, from);
+            moving.add(&transform.first, &transform.second);
+        }
+        for &from in still_at.iter().step_by(still_at.len().div_ceil(enough).max(1)) {
+            transform.both(&capture.difference_v, &common, from);
+            still.add(&transform.first, &transform.second);
+        }
+    }
+    let quiet = (still.segments > 0).then(|| Quiet::Measured(still.finish()));
+    (moving.finish(), quiet)
+}
+
+/// The signal at a [`STEP`]th of its rate: `y[m] = Σ (16 − |k|)/256·x[16m + k]`, `|k| < 16`.
+fn slower<S: Signal + ?Sized>(signal: &S, points: usize) -> Vec<f32> {
+    let scale = 1.0 / (STEP * STEP) as f32;
+    let mut before = None;
+    let mut found = Vec::with_capacity(points / STEP);
+    super::super::signal::blocks(signal, 0..points / STEP * STEP, |_, part| {
+        for x in part.chunks_exact(STEP) {
+            let (mut sum, mut ramp) = (0.0f32, 0.0f32);
+            for (k, x) in x.iter().enumerate() {
+                sum += x;
+                ramp += k as f32 * x;
+            }
+            // Before the first sample the record is taken to go on as its first block.
+            let earlier = before.unwrap_or(ramp);
+            before = Some(ramp);
+            found.push((STEP as f32 * sum - ramp + earlier) * scale);
+        }
+    });
+    found
+}
