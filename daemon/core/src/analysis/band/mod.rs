@@ -18,8 +18,9 @@ pub(super) fn window(points: usize) -> Vec<f64> {
     let step = std::f64::consts::TAU / points as f64;
     (0..points)
         .map(|i| {
-            let x = step * i as f64;
-            0.358_75 - 0.488_29 * x.cos() + 0.141_28 * (2.0 * x).cos() - 0.011_68 * (3.0 * x).cos()
+            // cos 2x and cos 3x by their polynomials in cos x: a third of the work for long windows.
+            let c = (step * i as f64).cos();
+            0.358_75 - 0.488_29 * c + 0.141_28 * (2.0 * c * c - 1.0) - 0.011_68 * c * (4.0 * c * c - 3.0)
         })
         .collect()
 }

@@ -111,6 +111,7 @@ impl Layout {
         noise: f64,
         (low, high): (f64, f64),
     ) -> Shape {
+        let points = signal.points();
         let middle = |i: usize| self.edges.get(i).map(Edge::middle);
         let measured: Vec<(usize, Transition)> = self
             .chosen
@@ -118,7 +119,7 @@ impl Layout {
             .take(if known.is_some() { ENOUGH_EDGES } else { usize::MAX })
             .filter_map(|&i| {
                 let from = i.checked_sub(1).and_then(middle).unwrap_or(0);
-                let to = middle(i + 1).unwrap_or(signal.points());
+                let to = middle(i + 1).unwrap_or(points);
                 let found = transition::measure(signal, self.edges[i], from..to, (low, high), noise)?;
                 Some((i, found))
             })
@@ -133,10 +134,10 @@ impl Layout {
         let (rise, fall) = (duration(true), duration(false));
         let aberration = |rising: bool| {
             let found = measured.iter().filter(|(_, t)| t.rising == rising).take(MOST_CYCLES).filter_map(|(i, t)| {
-                let next = middle(i + 1).unwrap_or(signal.points()) as f64;
+                let next = middle(i + 1).unwrap_or(points) as f64;
                 // The post-transition region: ten durations, but no further than half-way to the next transition.
                 let to = (t.end + (10.0 * t.duration).max(16.0)).min(0.5 * (t.end + next));
-                let range = t.end.ceil() as usize..(to.ceil() as usize).min(signal.points());
+                let range = t.end.ceil() as usize..(to.ceil() as usize).min(points);
                 let top = if rising { peaks::highest } else { peaks::lowest };
                 (range.len() >= 3).then(|| {
                     let top = top(signal, range, noise);

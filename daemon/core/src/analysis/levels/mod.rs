@@ -169,22 +169,16 @@ fn refine<S: Signal + ?Sized>(signal: &S, stays: &[Range<usize>], rough: Level, 
 /// The sum of `other` over the samples of `part` within `reach` of `centre`, and their number; for `other` the same as
 /// `part` relative to the centre.
 fn inside(part: &[f32], other: &[f32], centre: f64, reach: f64) -> (f64, f64) {
-    const LANES: usize = 8;
+    // As many as keep the loop over them a loop, see `range_of`.
+    const LANES: usize = 64;
     let (middle, reach) = (centre as f32, reach as f32);
     let zero = if std::ptr::eq(part, other) { middle } else { 0.0 };
     let (mut sums, mut counts) = ([0.0f32; LANES], [0.0f32; LANES]);
-    let mut take = |k: usize, x: f32, y: f32| {
-        let weight = if (x - middle).abs() <= reach { 1.0 } else { 0.0 };
-        sums[k] += weight * (y - zero);
-        counts[k] += weight;
-    };
-    let (whole, others) = (part.chunks_exact(LANES), other.chunks_exact(LANES));
-    for (x, y) in whole.remainder().iter().zip(others.remainder()) {
-        take(0, *x, *y);
-    }
-    for (x, y) in whole.zip(others) {
-        for k in 0..LANES {
-            take(k, x[k], y[k]);
+    for (x, y) in part.chunks(LANES).zip(other.chunks(LANES)) {
+        for (((sum, count), x), y) in sums.iter_mut().zip(&mut counts).zip(x).zip(y) {
+            let weight = if (x - middle).abs() <= reach { 1.0 } else { 0.0 };
+            *sum += weight * (y - zero);
+            *count += weight;
         }
     }
     let count: f64 = counts.into_iter().map(f64::from).sum();

@@ -169,7 +169,7 @@ impl Start {
                     *smooth = 0.2 * (part[k] + part[k + 1] + part[k + 2] + part[k + 3] + part[k + 4]);
                 }
                 let (least, most) = range_of(smooth);
-                let place = |x: f32| from + 2 + smooth.iter().position(|y| *y >= x && *y <= x).unwrap_or(0);
+                let place = |x: f32| from + 2 + smooth.iter().position(|y| (y - x).abs() <= 0.0).unwrap_or(0);
                 if least < best.0 {
                     (best.0, found.lowest) = (least, place(least));
                 }
