@@ -39,6 +39,8 @@ def budget():
     node = 24.0 + 24.0 * np.tanh(8 * np.sin(2 * np.pi * t / 97.0))
     d = 3.0 + 2.0 * np.sin(2 * np.pi * t / 31.0) + 0.1 * rng.normal(size=n)
     gain, offset = 0.97, 0.3
+    # A capture is kept in single precision: the values that both work on are made such before.
+    d, node = (x.astype(np.float32).astype(np.float64) for x in (d, node))
     positive, negative = node + d, gain * node + offset
     # Small against the signal: the part of second order (s² against R²) must stay below what is compared.
     noise_p, noise_n = 2e-4, 3e-4
@@ -60,7 +62,7 @@ def budget():
         noise=float(np.sqrt(sum(component(y, x) ** 2 for x in p + q))),
         gain=abs(component(y, g)), offset=abs(component(y, o)), skew=abs(component(y, skew)), scale=abs(component(y, e)))
     return dict(
-        difference=(positive - b).tolist(), negative=b.tolist(), interval_s=interval, gain=gain, offset_v=offset,
+        difference=d.tolist(), negative=node.tolist(), interval_s=interval, gain=gain, offset_v=offset,
         u_gain=u_gain, u_offset_v=u_offset, gain_offset=get_correlation(g, o), u_skew_s=u_skew, scale_spec=spec,
         noise_p_v=noise_p, noise_n_v=noise_n, mean=parts(mean), rms=parts(rms))
 

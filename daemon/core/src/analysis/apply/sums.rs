@@ -2,10 +2,10 @@
 //! sensitivities need.
 //!
 //! Stretches of [`STRETCH`] samples are added up in single precision in eight lanes and their totals in double
-//! precision: the rounding of a stretch, below 2⁻²⁴·√(128/8) of it, is random from stretch to stretch.
+//! precision: the rounding of a stretch, below 4·2⁻²⁴ of the sum of its magnitudes, is random from stretch to stretch.
 
 /// Samples that are summed in single precision.
-const STRETCH: usize = 128;
+const STRETCH: usize = 32;
 const LANES: usize = 8;
 
 /// Means over all samples of `D` (difference), `N` (corrected negative leg), `S` (its slope per sample interval) and of
@@ -43,35 +43,35 @@ impl Sums {
             let to = end.min(from + STRETCH);
             let slope = &mut slope[..to - from];
             slopes(negative, from, slope);
+            self.s += slope_sum(negative, from, to);
             self.stretch(&difference[from..to], &negative[from..to], slope);
             from = to;
         }
     }
 
     fn stretch(&mut self, d: &[f32], n: &[f32], s: &[f32]) {
-        let mut lanes = [[0.0f32; LANES]; 9];
+        let mut lanes = [[0.0f32; LANES]; 8];
         let whole = d.len() / LANES * LANES;
         for ((d, n), s) in d.chunks_exact(LANES).zip(n.chunks_exact(LANES)).zip(s.chunks_exact(LANES)) {
             for k in 0..LANES {
                 lanes[0][k] += d[k];
                 lanes[1][k] += n[k];
-                lanes[2][k] += s[k];
             }
             for k in 0..LANES {
-                lanes[3][k] += d[k] * d[k];
-                lanes[4][k] += n[k] * n[k];
-                lanes[5][k] += s[k] * s[k];
+                lanes[2][k] += d[k] * d[k];
+                lanes[3][k] += n[k] * n[k];
+                lanes[4][k] += s[k] * s[k];
             }
             for k in 0..LANES {
-                lanes[6][k] += d[k] * n[k];
-                lanes[7][k] += d[k] * s[k];
-                lanes[8][k] += n[k] * s[k];
+                lanes[5][k] += d[k] * n[k];
+                lanes[6][k] += d[k] * s[k];
+                lanes[7][k] += n[k] * s[k];
             }
         }
         let mut total = lanes.map(|lane| lane.into_iter().map(f64::from).sum::<f64>());
         for k in whole..d.len() {
             let (d, n, s) = (f64::from(d[k]), f64::from(n[k]), f64::from(s[k]));
-            for (total, term) in total.iter_mut().zip([d, n, s, d * d, n * n, s * s, d * n, d * s, n * s]) {
+            for (total, term) in total.iter_mut().zip([d, n, d * d, n * n, s * s, d * n, d * s, n * s]) {
                 *total += term;
             }
         }
@@ -79,7 +79,6 @@ impl Sums {
         let own = [
             &mut self.d,
             &mut self.n,
-            &mut self.s,
             &mut self.dd,
             &mut self.nn,
             &mut self.ss,
@@ -170,6 +169,17 @@ pub(super) fn slopes(x: &[f32], from: usize, out: &mut [f32]) {
     } else {
         out.iter_mut().enumerate().for_each(|(k, out)| *out = slope_at(x, from + k));
     }
+}
+
+/// The sum of the slopes from one sample up to before another. What neighbours share cancels on paper, so that no digits
+/// are lost where a fast signal comes back to where it was.
+fn slope_sum(x: &[f32], from: usize, to: usize) -> f64 {
+    if from < 2 || to + 2 > x.len() {
+        return (from..to).map(|i| f64::from(slope_at(x, i))).sum();
+    }
+    let near = |i: usize| f64::from(x[i]) + f64::from(x[i - 1]);
+    let far = |i: usize| near(i + 1) + near(i - 1);
+    (8.0 * (near(to) - near(from)) - (far(to) - far(from))) / 12.0
 }
 
 /// The slope per sample by the five-point central difference (Abramowitz and Stegun, 25.3.6). The two samples at
