@@ -50,6 +50,9 @@ pub(crate) enum Command {
         /// Write the rounded skew into the scope's own skew setting.
         #[arg(long)]
         use_scope_skew: bool,
+        /// Fit the response that is left between the legs, and apply it.
+        #[arg(long)]
+        response: bool,
     },
     /// Verify a pair's correction on fresh acquisitions.
     Verify {
@@ -192,6 +195,9 @@ pub(crate) struct AnalyseArguments {
     /// What the reference looks like.
     #[arg(long)]
     pub(crate) shape: Option<ShapeWord>,
+    /// Fit the response that is left between the legs, and apply it; needs the reference's period.
+    #[arg(long, requires = "period")]
+    pub(crate) response: bool,
     /// The reference's period; the skew is then sought within half of it.
     #[arg(long, value_name = "TIME")]
     pub(crate) period: Option<String>,

@@ -99,6 +99,46 @@ async fn estimates_lie_within_their_uncertainty_of_the_truth() {
     offset.judge("offset");
 }
 
+/// The legs' compensation where it differs: positive, negative. The first is the demo's.
+const UNEQUAL: [(f64, f64); 6] =
+    [(1.0e-4, -0.5e-4), (0.0, 8e-4), (-1e-3, 1e-3), (2e-4, -3e-4), (1.5e-3, 0.0), (-4e-4, 1e-4)];
+
+/// Means of a common mode at which the offset is to hold, in volts; the reference's is near 24 V.
+const MEANS_V: [f64; 4] = [0.0, 12.0, 48.0, 60.0];
+
+/// Catches: an offset that claims to hold at every common mode, while slow and fast gain of the legs differ. What the
+/// correction leaves at a mean m is its own uncertainty and that of the compensation, times the distance from the mean of
+/// the reference that it was taken on.
+#[tokio::test(flavor = "multi_thread", worker_threads = 2)]
+async fn the_offset_holds_at_any_common_mode_where_compensation_differs() {
+    let shipped = LabPlan::default();
+    let mut tallies = MEANS_V.map(|_| Tally::default());
+    for (mismatch, (positive, negative)) in MISMATCHES.iter().zip(UNEQUAL) {
+        let mut scenario = mismatch.scenario(&shipped.scenario);
+        for (leg, error) in [positive, negative].into_iter().enumerate() {
+            scenario = set_in_nth(&scenario, "[[leg]]", leg, "compensation_error", &format!("{error:?}"));
+        }
+        let truth = Truth::of(&scenario, SPAN_V);
+        assert!((truth.gain - truth.slow_gain).abs() > 1e-4, "unequal, or nothing is tested");
+        let lab = Lab::start(&LabPlan { scenario, ..shipped.clone() }).await;
+        for _ in 0..REPEATS {
+            let correction = deskew(&lab, &json!({ "skew_reference": "in_situ" })).await;
+            let offset = quantity(&correction["offset"], "V");
+            let compensation = &correction["compensation"];
+            let relative = quantity(&compensation["relative"], "1");
+            let level_v = compensation["level"]["value"].as_f64().unwrap();
+            for (tally, mean_v) in tallies.iter_mut().zip(MEANS_V) {
+                let slow = relative.value.hypot(relative.u) * (mean_v - level_v);
+                let found = Estimate { value: offset.value, u: offset.u.hypot(slow) };
+                tally.add(found, truth.offset_at_mean(mean_v));
+            }
+        }
+    }
+    for (tally, mean_v) in tallies.iter().zip(MEANS_V) {
+        tally.judge(&format!("offset at {mean_v} V"));
+    }
+}
+
 /// Catches: skew of one range used on another without the uncertainty that this costs, or without saying so.
 #[tokio::test]
 async fn skew_carried_from_another_range_says_so_and_still_covers() {

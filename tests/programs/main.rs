@@ -11,6 +11,7 @@ mod demo;
 mod deskew;
 mod files;
 mod refusals;
+mod response;
 mod rest;
 mod scripts;
 mod sequences;

@@ -34,7 +34,8 @@ pub(crate) fn analyse(arguments: &AnalyseArguments, json: bool) -> Result<Exit, 
     });
     let period_s = amount("period", &arguments.period, Unit::Second)?;
     let scale_spec = arguments.scale_spec.as_deref().map(share).transpose()?;
-    let found = convert::analyse(Acquisitions { reference, verification, device }, shape, period_s, scale_spec)
+    let all = Acquisitions { reference, verification, device };
+    let found = convert::analyse(all, shape, period_s, scale_spec, arguments.response)
         .map_err(|error| Trouble::Records { path: arguments.reference.clone(), why: error.to_string() })?;
     if json {
         output::print_json(&found)?;

@@ -9,19 +9,8 @@ use crate::trouble::Trouble;
 use crate::{output, render};
 
 /// Deskews a pair and shows the correction that came of it.
-pub(crate) async fn deskew(
-    daemon: &Daemon,
-    pair: &str,
-    most: Option<u32>,
-    use_scope_skew: bool,
-    json: bool,
-) -> Result<Exit, Trouble> {
-    let request = DeskewRequest {
-        most_acquisitions: most,
-        use_scope_skew: use_scope_skew.then_some(true),
-        ..DeskewRequest::default()
-    };
-    let run = daemon.deskew(pair, &request).await?;
+pub(crate) async fn deskew(daemon: &Daemon, pair: &str, request: &DeskewRequest, json: bool) -> Result<Exit, Trouble> {
+    let run = daemon.deskew(pair, request).await?;
     finish(daemon, pair, run, json).await
 }
 

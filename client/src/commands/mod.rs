@@ -10,6 +10,8 @@ mod follow;
 mod run;
 mod show;
 
+use evenpair_api::DeskewRequest;
+
 use crate::arguments::{Arguments, Command};
 use crate::demo;
 use crate::exit::Exit;
@@ -27,8 +29,14 @@ pub(crate) async fn perform(arguments: Arguments) -> Result<Exit, Trouble> {
         Command::Demo { data, seed } => demo::demo(data, seed, json).await,
         Command::Bench => bench::bench(&daemon()?, json).await,
         Command::Settle => bench::settle(&daemon()?, json).await,
-        Command::Deskew { pair, most, use_scope_skew } => {
-            deskew::deskew(&daemon()?, &pair, most, use_scope_skew, json).await
+        Command::Deskew { pair, most, use_scope_skew, response } => {
+            let request = DeskewRequest {
+                most_acquisitions: most,
+                use_scope_skew: use_scope_skew.then_some(true),
+                response: response.then_some(true),
+                ..DeskewRequest::default()
+            };
+            deskew::deskew(&daemon()?, &pair, &request, json).await
         }
         Command::Verify { pair } => deskew::verify(&daemon()?, &pair, json).await,
         Command::Run { sequence, wait } => run::run(&daemon()?, &sequence, wait, json).await,

@@ -5,7 +5,7 @@ use evenpair_core::units::{Unit, show};
 
 use super::bench::wrap;
 use super::captures::figure_table;
-use super::correction::rejection;
+use super::correction::{rejection, response};
 use super::quantity::with_uncertainty;
 
 /// Everything: how the files were read, the correction, its rejection, the figures.
@@ -26,6 +26,7 @@ pub(crate) fn analysis(found: &Analysis) -> String {
         with_uncertainty(&found.gain),
         with_uncertainty(&found.offset)
     ));
+    text.extend(found.response.as_ref().map(|found| format!("\n{}", response(found))));
     let on = match found.verified_on {
         VerifiedOn::Fresh => "measured on an acquisition of its own, to which nothing was fitted",
         VerifiedOn::OtherHalf => {

@@ -1,6 +1,6 @@
 //! A correction and the rejection that it reaches.
 
-use evenpair_api::{Correction, CorrectionState, RejectionPoint};
+use evenpair_api::{Compensation, Correction, CorrectionState, RejectionLimit, RejectionPoint, Response};
 use evenpair_core::units::{Unit, show};
 
 use super::quantity::with_uncertainty;
@@ -32,12 +32,52 @@ pub(crate) fn correction(correction: &Correction) -> String {
         let (from, added) = (show(carried.from_span.value, Unit::Volt, 3), show(carried.added.value, Unit::Second, 2));
         text.push(format!("  skew was taken on a span of {from}; carrying it adds {added} to its u"));
     }
+    text.extend(correction.compensation.as_ref().map(|found| compensation(found, &correction.response)));
+    text.extend(correction.response.as_ref().map(response));
+    text.extend(correction.limit.as_ref().map(limit));
     if correction.scope_skew.value != 0.0 {
         text.push(format!("  of the skew, {} is taken off by the scope", with_uncertainty(&correction.scope_skew)));
     }
     text.extend(correction.reasons.iter().map(|reason| format!("  {state}: {reason}")));
     text.extend(correction.warnings.iter().map(|warning| format!("  note: {warning}")));
     text.iter().map(|line| wrap(line, 4)).collect::<Vec<_>>().join("\n")
+}
+
+/// Where the offset holds, and what it is worth elsewhere.
+fn compensation(found: &Compensation, response: &Option<Response>) -> String {
+    let applied = response.as_ref().and_then(|response| response.pole_zero.as_ref());
+    let left = match applied {
+        Some(term) => term.relative.u.unwrap_or(0.0),
+        None => found.relative.value.hypot(found.relative.u.unwrap_or(0.0)),
+    };
+    format!(
+        "  the offset holds at a mean common mode of {}; each volt away from it adds ±{} (slow and fast gain differ by {})",
+        show(found.level.value, Unit::Volt, 3),
+        show(2.0 * left, Unit::Volt, 2),
+        with_uncertainty(&found.relative)
+    )
+}
+
+/// What is applied after gain, skew and offset, in words and by bands.
+pub(crate) fn response(response: &Response) -> String {
+    let mut text = vec!["  response, applied after gain, skew and offset:".to_owned()];
+    text.extend(response.words.iter().map(|words| format!("    {words}")));
+    for band in &response.improved {
+        let after = if band.after_db >= band.floor_db { "≥ " } else { "" };
+        text.push(format!(
+            "    {} to {}: {:.1} dB without, {after}{:.1} dB with it",
+            show(band.from_hz, Unit::Hertz, 2),
+            show(band.to_hz, Unit::Hertz, 2),
+            band.before_db,
+            band.after_db
+        ));
+    }
+    text.iter().map(|line| wrap(line, 4)).collect::<Vec<_>>().join("\n")
+}
+
+fn limit(limit: &RejectionLimit) -> String {
+    let least = if limit.at_least { "at least " } else { "" };
+    format!("  the converters' non-linearity limits the rejection to {least}{:.0} dB", limit.limit_db)
 }
 
 /// Rejection before and after, per frequency.

@@ -3,7 +3,7 @@
 use serde::{Deserialize, Serialize};
 use utoipa::ToSchema;
 
-use crate::{Figure, LeakBound, Quantity, RejectionPoint};
+use crate::{Figure, LeakBound, Quantity, RejectionPoint, Response};
 
 /// Body of `POST /analyse`: records that some scope saved, as text.
 #[derive(Debug, Clone, Default, PartialEq, Serialize, Deserialize, ToSchema)]
@@ -26,6 +26,9 @@ pub struct AnalysisRequest {
     /// Half-width of the scope's gain specification, relative: 0.015 for ±1.5 %.
     #[serde(default, skip_serializing_if = "Option::is_none")]
     pub scale_spec: Option<f64>,
+    /// Whether to fit the response that is left between the legs, and to apply it; needs `period_s`.
+    #[serde(default, skip_serializing_if = "std::ops::Not::not")]
+    pub response: bool,
 }
 
 /// What a reference looks like; it decides how its edges or lines are found in noise.
@@ -124,6 +127,9 @@ pub struct Analysis {
     pub gain: Quantity,
     /// o: volts at the tips that the negative leg has too much.
     pub offset: Quantity,
+    /// The response that is applied after gain, skew and offset; absent where none was fitted or none helps.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub response: Option<Response>,
     /// Rejection before and after the correction.
     pub rejection: Vec<RejectionPoint>,
     /// What the rejection was measured on.

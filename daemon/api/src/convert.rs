@@ -13,7 +13,7 @@ use evenpair_core::import::{Decimal, ImportError, Imported, Options, Separator, 
 
 use crate::{
     Analysis, AnalysisRequest, CorrelatedTerm, Coverage, CoverageBasis, Figure, Grade, Guess, LeakBound, Quantity,
-    Reading, ReferenceShape, RejectionPoint, SavedRecords, SavedText, UncertaintyTerm, VerifiedOn,
+    Reading, ReferenceShape, RejectionPoint, Response, SavedRecords, SavedText, UncertaintyTerm, VerifiedOn,
 };
 
 /// Why saved records could not be analysed.
@@ -59,11 +59,11 @@ impl AnalysisRequest {
             verification: self.verification.as_ref().map(|saved| read("verification", saved)).transpose()?,
             device: self.device.as_ref().map(|saved| read("device", saved)).transpose()?,
         };
-        Ok(analyse(all, self.shape, self.period_s, self.scale_spec)?)
+        Ok(analyse(all, self.shape, self.period_s, self.scale_spec, self.response)?)
     }
 }
 
-/// Analyses acquisitions that were read.
+/// Analyses acquisitions that were read, with a `response` if it is asked for.
 ///
 /// # Errors
 /// When the reference gives no correction, or records do not belong together.
@@ -72,6 +72,7 @@ pub fn analyse(
     shape: Option<ReferenceShape>,
     period_s: Option<f64>,
     scale_spec: Option<f64>,
+    response: bool,
 ) -> Result<Analysis, SavedError> {
     let mut records = Vec::new();
     let mut legs = |imported: Imported| {
@@ -91,6 +92,7 @@ pub fn analyse(
         device: all.device.map(&mut legs),
         known: Reference { shape, period_s },
         scale_spec,
+        response,
     };
     let found = saved::analyse(&given)?;
     let mut records = records.into_iter();
@@ -116,6 +118,7 @@ fn document(
         skew: quantity(found.correction.skew_s, "s"),
         gain: quantity(found.correction.gain, "1"),
         offset: quantity(found.correction.offset_v, "V"),
+        response: found.beyond.response.as_ref().map(Response::from),
         rejection: found.rejection.iter().map(RejectionPoint::from).collect(),
         verified_on: match found.verified {
             Verified::Fresh => VerifiedOn::Fresh,

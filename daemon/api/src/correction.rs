@@ -5,7 +5,7 @@ use serde::{Deserialize, Serialize};
 use utoipa::ToSchema;
 use uuid::Uuid;
 
-use crate::Quantity;
+use crate::{Compensation, Quantity, RejectionLimit, Response};
 
 /// What makes the two legs of a pair agree, and how well.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize, ToSchema)]
@@ -26,6 +26,15 @@ pub struct Correction {
     /// Correlation coefficient of the errors of `gain` and `offset`, −1 to 1; absent where it is not known.
     #[serde(default, skip_serializing_if = "Option::is_none")]
     pub gain_offset_correlation: Option<f64>,
+    /// How far slow and fast gain of the legs differ; absent where the reference could not show it.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub compensation: Option<Compensation>,
+    /// The response that is applied after gain, skew and offset; absent where none was fitted.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub response: Option<Response>,
+    /// The rejection beyond which nothing linear goes, where a verification swept through the converters' levels.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub limit: Option<RejectionLimit>,
     /// The part of `skew` that was written into the scope's own skew setting; 0 s where none was.
     pub scope_skew: Quantity,
     /// Whether it holds now.
@@ -134,6 +143,9 @@ pub struct DeskewRequest {
     /// Whether to write the rounded skew into the scope's own skew setting; default: no.
     #[serde(default, skip_serializing_if = "Option::is_none")]
     pub use_scope_skew: Option<bool>,
+    /// Whether to fit the response that is left between the legs, and to apply it; default: the pair's.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub response: Option<bool>,
 }
 
 /// Body of `POST /pairs/{pair}/verify`; everything is optional.

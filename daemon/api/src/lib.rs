@@ -15,6 +15,7 @@ mod correction;
 mod event;
 mod problem;
 mod quantity;
+mod response;
 mod run;
 mod sequence;
 
@@ -36,6 +37,7 @@ pub use correction::{
 pub use event::{Event, EventKind};
 pub use problem::{Problem, ProblemCode};
 pub use quantity::Quantity;
+pub use response::{Compensation, PoleZero, RejectionLimit, Response, ResponseBand};
 pub use run::{LimitFailure, Run, RunKind, RunProgress, RunRequest, RunState, Runs, StageReport};
 pub use sequence::{CheckReport, MistakeReport, SequenceInfo, Sequences};
 

@@ -3,7 +3,7 @@
 use std::collections::BTreeMap;
 
 use evenpair_api::{self as api, CorrectionState, Quantity};
-use evenpair_core::analysis::measured::measure;
+use evenpair_core::analysis::measured::measure_with;
 use evenpair_core::bench::PairSpec;
 use evenpair_core::sequence::{CapturePlan, OnVoid};
 use tokio_util::sync::CancellationToken;
@@ -48,9 +48,10 @@ pub(crate) async fn capture(
     let [settings_p, settings_n] = &settings;
     let software = for_software(&correction, settings_n.delay_s - settings_p.delay_s);
     let bands = rejection_bands(&correction.rejection);
+    let beyond = correction.beyond();
     let scale_spec = workshop.bench.instrument(&pair.scope).and_then(|scope| scope.scale_spec);
     let work = move || {
-        let measured = measure(&positive, &negative, &software, &bands, scale_spec);
+        let measured = measure_with(&positive, &negative, &software, &beyond, &bands, scale_spec);
         measured.map(|measured| (positive, negative, measured))
     };
     let (positive, negative, mut measured) = compute("correcting a capture", work)

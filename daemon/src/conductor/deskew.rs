@@ -2,6 +2,7 @@
 
 use evenpair_api as api;
 use evenpair_api::Quantity;
+use evenpair_core::analysis::Correction;
 use evenpair_core::analysis::deskew::{Combined, combine, enough};
 use evenpair_core::analysis::skew::{Reference, Shape, SkewError, SkewEstimate, estimate_records};
 use evenpair_core::bench::conditions::Carried;
@@ -11,6 +12,7 @@ use evenpair_core::units::{Unit, show};
 use tokio_util::sync::CancellationToken;
 use uuid::Uuid;
 
+use super::beyond::{self, Kept, Seen};
 use super::correction::{conditions_now, to_api};
 use super::scope::Scope;
 use super::tell::Tell;
@@ -69,10 +71,11 @@ async fn make(
     let mut warnings = Vec::new();
 
     let on_skew = on_reference(workshop, scope, wish, wish.skew_reference, tell, stop).await?;
-    let on_gain = match one_for_all {
-        true => on_skew.clone(),
-        false => on_reference(workshop, scope, wish, wish.gain_reference, tell, stop).await?,
+    let other = match one_for_all {
+        true => None,
+        false => Some(on_reference(workshop, scope, wish, wish.gain_reference, tell, stop).await?),
     };
+    let on_gain = other.as_ref().unwrap_or(&on_skew);
     // The gain reference was the last on the scope, on the measuring range: these are the conditions that hold.
     let mut conditions = conditions_now(pair, workshop.scope_identity(pair), &scope.settings().await?);
     conditions.skew_reference.clone_from(&wish.skew_reference.name);
@@ -95,11 +98,15 @@ async fn make(
     for combined in [&on_skew.combined, &on_gain.combined] {
         warnings.extend(combined.warnings.iter().map(ToString::to_string));
     }
+    let (gain, offset) = (on_gain.combined.gain.estimate, on_gain.combined.offset_v.estimate);
+    let whole = Correction { skew_s: skew, gain, offset_v: offset, gain_offset: on_gain.combined.gain_offset };
+    let on_other = (!one_for_all).then(|| on_skew.seen(on_skew.combined.correction()));
+    let found = beyond::find(on_gain.seen(whole), on_other, pair.time_constant_s(), wish.plan.response).await?;
+    warnings.extend(found.warnings.iter().cloned());
     warnings.sort();
     warnings.dedup();
 
     let scope_skew_s = if wish.plan.use_scope_skew { hand_to_scope(scope, skew.value).await? } else { 0.0 };
-    let (gain, offset) = (on_gain.combined.gain.estimate, on_gain.combined.offset_v.estimate);
     let acquisitions = on_skew.combined.repeats + if one_for_all { 0 } else { on_gain.combined.repeats };
     let mut correction = api::Correction {
         id: Uuid::now_v7(),
@@ -109,6 +116,9 @@ async fn make(
         gain: Quantity::new(gain.value, gain.u, "1"),
         offset: Quantity::new(offset.value, offset.u, "V"),
         gain_offset_correlation: Some(on_gain.combined.gain_offset),
+        compensation: found.compensation.as_ref().map(api::Compensation::from),
+        response: found.response.as_ref().map(api::Response::from),
+        limit: None,
         scope_skew: Quantity::exact(scope_skew_s, "s"),
         state: api::CorrectionState::Fresh,
         reasons: Vec::new(),
@@ -117,19 +127,29 @@ async fn make(
         acquisitions: u32::try_from(acquisitions).unwrap_or(u32::MAX),
         warnings,
     };
-    let bands = verify::on_reference(workshop, scope, &correction, wish.gain_reference, wish.set, tell, stop).await?;
-    correction.rejection = super::correction::rejection_points(&bands);
+    let shown = verify::on_reference(workshop, scope, &correction, wish.gain_reference, wish.set, tell, stop).await?;
+    correction.rejection = super::correction::rejection_points(&shown.bands);
+    correction.limit = shown.limit.as_ref().map(api::RejectionLimit::from);
     workshop.store.put_correction(&correction).await?;
     tell.corrected(&correction).await?;
     Ok(correction)
 }
 
 /// What one reference gave.
-#[derive(Debug, Clone)]
+#[derive(Debug)]
 struct OnReference {
     combined: Combined,
     /// How it was acquired in the end.
     acquisition: Acquisition,
+    kept: Kept,
+    known: Reference,
+}
+
+impl OnReference {
+    /// Its acquisitions, with the correction that holds for them.
+    fn seen(&self, correction: Correction) -> Seen {
+        Seen { kept: self.kept.clone(), reference: self.known, correction }
+    }
 }
 
 /// Acquires a reference until the wanted uncertainty is reached or the allowed number of acquisitions is spent.
@@ -162,6 +182,7 @@ async fn acquire_until_enough(
     let is_gain_reference = reference.name == wish.gain_reference.name;
     let known = Reference { shape: shape_of(reference.kind), period_s: Some(1.0 / reference.frequency_hz) };
     let mut repeats: Vec<SkewEstimate> = Vec::new();
+    let mut kept = Kept::default();
     let mut widenings = 0;
     let most = wish.plan.most_acquisitions.max(LEAST_ACQUISITIONS);
     loop {
@@ -169,15 +190,19 @@ async fn acquire_until_enough(
             return Err(Trouble::Stopped);
         }
         let (positive, negative) = scope.acquire(&acquisition, stop).await?;
-        let estimate =
-            compute("estimating skew and gain", move || estimate_records(&positive, &negative, &known)).await?;
+        let work = move || (estimate_records(&positive, &negative, &known), positive, negative);
+        let (estimate, positive, negative) = compute("estimating skew and gain", work).await?;
         match estimate {
-            Ok(estimate) => repeats.push(estimate),
+            Ok(estimate) => {
+                repeats.push(estimate);
+                kept.add(positive, negative);
+            }
             // The gain reference has to be seen on the measuring range, which is not ours to widen.
             Err(SkewError::Clipped { .. }) if !is_gain_reference && widenings < WIDENINGS => {
                 widenings += 1;
                 acquisition.span_v *= 2.0;
                 repeats.clear();
+                kept.clear();
                 scope.prepare(&acquisition).await?;
                 continue;
             }
@@ -197,7 +222,7 @@ async fn acquire_until_enough(
         let gain_enough = !is_gain_reference || combined.gain.estimate.u <= TARGET_U_GAIN;
         let count = u32::try_from(repeats.len()).unwrap_or(u32::MAX);
         if count >= most || (count >= LEAST_ACQUISITIONS && skew_enough && gain_enough) {
-            return Ok(OnReference { combined, acquisition });
+            return Ok(OnReference { combined, acquisition, kept, known });
         }
     }
 }

@@ -4,6 +4,7 @@
 //! bench, carries out what the state machine asks for, and persists a record of each thing before doing it.
 
 mod analyse;
+mod beyond;
 mod capture;
 mod correction;
 mod deskew;

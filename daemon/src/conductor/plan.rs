@@ -46,6 +46,7 @@ pub(super) fn deskew(bench: &Bench, name: &str, request: &api::DeskewRequest) ->
         plan.most_acquisitions = most;
     }
     plan.use_scope_skew = request.use_scope_skew.unwrap_or(plan.use_scope_skew);
+    plan.response = request.response.unwrap_or(plan.response);
     Ok(deskew_alone(bench, plan))
 }
 

@@ -1,7 +1,10 @@
 //! Verification: both tips on one node, fresh acquisitions, and what of the common mode is left in the difference.
 
 use evenpair_api as api;
-use evenpair_core::analysis::rejection::{RejectionBand, measure};
+use evenpair_core::analysis::apply::ApplyError;
+use evenpair_core::analysis::rejection::{RejectionBand, measure_with};
+use evenpair_core::analysis::response::{Nonlinearity, nonlinearity};
+use evenpair_core::analysis::{Beyond, Correction, Record};
 use evenpair_core::bench::{Acquisition, PairSpec, ReferenceSpec};
 use tokio_util::sync::CancellationToken;
 
@@ -33,12 +36,24 @@ pub(crate) async fn verify(
     let remembered = scope.remember().await?;
     let outcome = on_reference(workshop, &scope, &correction, reference, set, tell, stop).await;
     let returned = scope.give_back(remembered, false).await;
-    correction.rejection = rejection_points(&outcome?);
+    let shown = outcome?;
+    correction.rejection = rejection_points(&shown.bands);
+    let limit = shown.limit.as_ref().map(api::RejectionLimit::from);
     returned?;
-    workshop.store.set_rejection(correction.id, &correction.rejection).await?;
+    workshop.store.set_rejection(correction.id, &correction.rejection, limit.as_ref()).await?;
+    correction.limit = limit.or(correction.limit);
     super::correction::judge_by_bench(workshop, &mut correction, pair);
     tell.corrected(&correction).await?;
     Ok(correction)
+}
+
+/// What a verification showed.
+#[derive(Debug, Clone)]
+pub(crate) struct Shown {
+    /// Rejection, by frequency.
+    pub(crate) bands: Vec<RejectionBand>,
+    /// The converters' non-linearity, where the reference sweeps through the levels.
+    pub(crate) limit: Option<Nonlinearity>,
 }
 
 /// Measures rejection on a reference. A checked plan has it on the measuring range, where the correction is to hold.
@@ -50,18 +65,18 @@ pub(crate) async fn on_reference(
     set: &[(String, f64)],
     tell: &Tell,
     stop: &CancellationToken,
-) -> Result<Vec<RejectionBand>, Trouble> {
+) -> Result<Shown, Trouble> {
     let acquisition = workshop.bench.reference_acquisition(scope.pair, reference);
     scope.prepare(&acquisition).await?;
     workshop.start_reference(reference, stop).await?;
     let outcome = acquire_and_measure(scope, correction, acquisition, tell, stop).await;
     let ended = workshop.stop_reference(reference, set, stop).await;
-    let bands = outcome?;
+    let shown = outcome?;
     ended?;
-    if bands.is_empty() {
+    if shown.bands.is_empty() {
         return Err(Trouble::NothingToVerify { pair: scope.pair.name.clone(), reference: reference.name.clone() });
     }
-    Ok(bands)
+    Ok(shown)
 }
 
 async fn acquire_and_measure(
@@ -70,7 +85,7 @@ async fn acquire_and_measure(
     acquisition: Acquisition,
     tell: &Tell,
     stop: &CancellationToken,
-) -> Result<Vec<RejectionBand>, Trouble> {
+) -> Result<Shown, Trouble> {
     let [positive, negative] = scope.settings().await?;
     let software = for_software(correction, negative.delay_s - positive.delay_s);
     let (mut all_p, mut all_n) = (Vec::new(), Vec::new());
@@ -88,6 +103,24 @@ async fn acquire_and_measure(
         all_p.push(p);
         all_n.push(n);
     }
-    let measured = compute("measuring the rejection", move || measure(&all_p, &all_n, &software, &BANDS_HZ)).await?;
+    let beyond = correction.beyond();
+    let measured = compute("measuring the rejection", move || show(&all_p, &all_n, &software, &beyond)).await?;
     measured.map_err(|source| Trouble::Apply { pair: scope.pair.name.clone(), source })
+}
+
+/// Rejection with all that is applied, a response that does not hold for these records left out as in a capture. No band
+/// claims more than the converters let through.
+fn show(p: &[Record], n: &[Record], software: &Correction, beyond: &Beyond) -> Result<Shown, ApplyError> {
+    let mut response = beyond.response.as_ref();
+    let mut bands = measure_with(p, n, software, response, &BANDS_HZ);
+    if let Err(ApplyError::Response(error)) = &bands {
+        tracing::warn!(%error, "the response is not applied to a verification");
+        response = None;
+        bands = measure_with(p, n, software, None, &BANDS_HZ);
+    }
+    let mut bands = bands?;
+    let limit = nonlinearity(p, n, software, response)?;
+    let most_db = limit.filter(|limit| !limit.at_least).map_or(f64::INFINITY, |limit| limit.cap_db);
+    bands.iter_mut().for_each(|band| band.after_db = band.after_db.min(most_db));
+    Ok(Shown { bands, limit })
 }

@@ -1,7 +1,8 @@
 //! Corrections and the rejection that they reach.
 
-use evenpair_api::{Carried, Correction, CorrectionConditions, LegConditions, RejectionPoint};
+use evenpair_api::{Carried, Correction, CorrectionConditions, LegConditions, RejectionLimit, RejectionPoint};
 use rusqlite::{Connection, Row, named_params, params};
+use serde::de::DeserializeOwned;
 use uuid::Uuid;
 
 use super::Store;
@@ -59,12 +60,19 @@ impl Store {
             .await
     }
 
-    /// Stores the rejection that a verification found, in place of what was found before.
+    /// Stores the rejection that a verification found, in place of what was found before, and the converters' limit if
+    /// it showed one.
     ///
     /// # Errors
     /// [`StoreError::Unknown`] when the correction is not stored, or what the database says.
-    pub(crate) async fn set_rejection(&self, id: Uuid, points: &[RejectionPoint]) -> Result<(), StoreError> {
+    pub(crate) async fn set_rejection(
+        &self,
+        id: Uuid,
+        points: &[RejectionPoint],
+        limit: Option<&RejectionLimit>,
+    ) -> Result<(), StoreError> {
         let points = points.to_vec();
+        let limit = limit.cloned();
         self.inner
             .writer
             .ask("store a correction's rejection", move |connection| {
@@ -74,6 +82,10 @@ impl Store {
                     return Err(StoreError::Unknown { what: "correction", id: id.to_string() }.into());
                 }
                 write_rejection(&transaction, id, &points)?;
+                if let Some(limit) = &limit {
+                    let sql = "update corrections set limit_json = ?2 where id = ?1";
+                    change(&transaction, sql, params![id.to_string(), json(limit)?])?;
+                }
                 Ok(transaction.commit()?)
             })
             .await
@@ -148,9 +160,10 @@ fn insert(connection: &Connection, correction: &Correction) -> Result<(), Fault>
     let sql = "insert into corrections (id, pair, made_at, state, skew_s, skew_u, gain, gain_u, offset_v, offset_u, \
                gain_offset_r, scope_skew_s, scope_skew_u, acquisitions, scope_identity, skew_reference, gain_reference, carried, \
                carried_from_span_v, carried_from_span_u, carried_added_s, carried_added_u, reasons_json, \
-               warnings_json) values (:id, :pair, :made_at, :state, :skew_s, :skew_u, :gain, :gain_u, :offset_v, \
+               warnings_json, compensation_json, response_json, limit_json) values (:id, :pair, :made_at, :state, :skew_s, :skew_u, :gain, :gain_u, :offset_v, \
                :offset_u, :gain_offset_r, :scope_skew_s, :scope_skew_u, :acquisitions, :scope_identity, :skew_reference, \
-               :gain_reference, :carried, :from_span_v, :from_span_u, :added_s, :added_u, :reasons, :warnings)";
+               :gain_reference, :carried, :from_span_v, :from_span_u, :added_s, :added_u, :reasons, :warnings, \
+               :compensation, :response, :limit)";
     let params = named_params! {
         ":id": correction.id.to_string(),
         ":pair": correction.pair,
@@ -176,6 +189,9 @@ fn insert(connection: &Connection, correction: &Correction) -> Result<(), Fault>
         ":added_u": added.and_then(|(_, u)| u),
         ":reasons": json(&correction.reasons)?,
         ":warnings": json(&correction.warnings)?,
+        ":compensation": correction.compensation.as_ref().map(json).transpose()?,
+        ":response": correction.response.as_ref().map(json).transpose()?,
+        ":limit": correction.limit.as_ref().map(json).transpose()?,
     };
     change(connection, sql, params)?;
     Ok(())
@@ -237,6 +253,9 @@ fn read_head(
         gain: quantity(row, "gain", "gain_u", "1")?,
         offset: quantity(row, "offset_v", "offset_u", "V")?,
         gain_offset_correlation: row.get("gain_offset_r")?,
+        compensation: optional(row, "compensation_json", "a correction's compensation")?,
+        response: optional(row, "response_json", "a correction's response")?,
+        limit: optional(row, "limit_json", "a correction's limit")?,
         scope_skew: quantity(row, "scope_skew_s", "scope_skew_u", "s")?,
         state: from_word("a correction's state", row.get("state")?)?,
         reasons: from_json("a correction's reasons", &row.get::<_, String>("reasons_json")?)?,
@@ -252,6 +271,11 @@ fn read_head(
         acquisitions: row.get("acquisitions")?,
         warnings: from_json("a correction's warnings", &row.get::<_, String>("warnings_json")?)?,
     })
+}
+
+/// What a column holds as JSON, if it holds anything.
+fn optional<T: DeserializeOwned>(row: &Row<'_>, column: &str, what: &'static str) -> Result<Option<T>, Fault> {
+    row.get::<_, Option<String>>(column)?.map(|text| from_json(what, &text)).transpose()
 }
 
 /// A row of `correction_legs`.

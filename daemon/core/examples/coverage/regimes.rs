@@ -159,7 +159,7 @@ pub(crate) fn case(regime: &Regime, seed: u64) -> Option<Outcome> {
         clipped_p: p.clipped(),
         clipped_n: n.clipped(),
         averages: 1,
-        allowance: Allowance { scale_u: u, noise_bins: noise.bins, drift: regime.drift },
+        allowance: Allowance { scale_u: u, noise_bins: noise.bins, drift: regime.drift, ..Allowance::default() },
     });
     let truth: Vec<f64> =
         (corrected.first..corrected.first + corrected.difference_v.len()).map(|i| difference(i as f64)).collect();

@@ -7,7 +7,7 @@ use super::figures::{Allowance, Figure, FigureInput, FigureKind, compute};
 use super::leak::{self, LeakBound};
 use super::noise::{self, PairNoise};
 use super::rejection::RejectionBand;
-use super::{Correction, Record};
+use super::{Beyond, Correction, Record, response};
 
 /// What the records of a capture show.
 #[derive(Debug, Clone, PartialEq)]
@@ -28,15 +28,31 @@ pub struct Measured {
     pub warnings: Vec<String>,
 }
 
-/// Corrects two records and computes the figures. `rejection` is what the correction was verified to reach (may be
-/// empty), `scale_spec` the half-width of the scope's gain specification, relative.
+/// As [`measure_with`], nothing being known beyond gain, skew and offset.
 ///
 /// # Errors
-/// When the records do not belong together or the correction cannot be applied.
+/// As [`measure_with`].
 pub fn measure(
     p: &Record,
     n: &Record,
     correction: &Correction,
+    rejection: &[RejectionBand],
+    scale_spec: Option<f64>,
+) -> Result<Measured, ApplyError> {
+    measure_with(p, n, correction, &Beyond::default(), rejection, scale_spec)
+}
+
+/// Corrects two records and computes the figures. `rejection` is what the correction was verified to reach (may be
+/// empty), `scale_spec` the half-width of the scope's gain specification, relative. A response that does not hold for the
+/// records is left out, with a warning.
+///
+/// # Errors
+/// When the records do not belong together or the correction cannot be applied.
+pub fn measure_with(
+    p: &Record,
+    n: &Record,
+    correction: &Correction,
+    beyond: &Beyond,
     rejection: &[RejectionBand],
     scale_spec: Option<f64>,
 ) -> Result<Measured, ApplyError> {
@@ -53,14 +69,34 @@ pub fn measure(
                 .to_owned(),
         );
     }
-    let corrected = apply::correct(p, n, correction)?;
+    let mut rejection = rejection.to_vec();
+    let (corrected, beyond) = match response::correct(p, n, correction, beyond.response.as_ref()) {
+        Ok(corrected) => (corrected, beyond.clone()),
+        Err(ApplyError::Response(error)) => {
+            warnings.push(format!("the response is not applied: {error}"));
+            if let Some(response) = &beyond.response {
+                // What was verified was verified with it.
+                for band in &mut rejection {
+                    let without = response.residual_without(band.frequency_hz);
+                    band.after_db = band.after_db.min(-20.0 * without.log10());
+                }
+            }
+            (apply::correct(p, n, correction)?, beyond.without_response())
+        }
+        Err(error) => return Err(error),
+    };
+    // The response's factor on the gain is known no better than it was fitted.
+    let mut correction = *correction;
+    if let Some(response) = &beyond.response {
+        correction.gain.u = correction.gain.u.hypot(correction.gain.value * response.gain_u);
+    }
     let plain_v = apply::plain(p, n)?;
     let noise = measured_noise(p, n, correction.gain.value, &mut warnings);
-    let leak = leak::bound(&corrected.common(), corrected.interval_s, correction, rejection);
+    let leak = leak::bound_with(&corrected.common(), corrected.interval_s, &correction, &rejection, &beyond);
     let figures = compute(&FigureInput {
         corrected: &corrected,
         plain_v: Some(&plain_v),
-        correction,
+        correction: &correction,
         leak: &leak,
         noise_p_v: noise.p_v,
         noise_n_v: noise.n_v,
@@ -70,7 +106,12 @@ pub fn measure(
         clipped_p: clipped.0,
         clipped_n: clipped.1,
         averages: p.averages.min(n.averages),
-        allowance: Allowance { noise_bins: noise.bins, ..Allowance::default() },
+        allowance: Allowance {
+            noise_bins: noise.bins,
+            compensation: beyond.left(&corrected.negative_v, corrected.interval_s),
+            response: beyond.remains(&corrected),
+            ..Allowance::default()
+        },
     });
     if figures.iter().any(|f| f.kind == FigureKind::Rms && f.coverage.is_some_and(|c| c.basis == Basis::CommonMode)) {
         warnings.push(

@@ -7,8 +7,10 @@
 
 pub mod apply;
 mod band;
+pub mod beyond;
 pub mod budget;
 pub mod coarse;
+pub mod compensation;
 pub mod correction;
 pub mod deskew;
 pub mod figures;
@@ -30,5 +32,6 @@ pub mod skew;
 pub mod spectrum;
 pub mod transition;
 
+pub use beyond::Beyond;
 pub use correction::{Correction, Estimate};
 pub use record::{Record, Samples};

@@ -94,6 +94,15 @@ pub struct ProbeSpec {
     pub capacitance_f: f64,
 }
 
+impl ProbeSpec {
+    /// The time constant of a compensated divider in seconds: with `R₁C₁ = R₂C₂ = T` the input resistance is `R₁ + R₂` and
+    /// the input capacitance `C₁C₂/(C₁ + C₂)`, whose product is T (Kirchhoff).
+    #[must_use]
+    pub fn time_constant_s(&self) -> f64 {
+        self.resistance_ohm * self.capacitance_f
+    }
+}
+
 /// One leg of a pair.
 #[derive(Debug, Clone, PartialEq)]
 pub struct LegSpec {
@@ -130,9 +139,17 @@ pub struct PairSpec {
     pub max_age_s: f64,
     /// Whether a deskew writes the rounded skew into the scope's own skew setting.
     pub use_scope_skew: bool,
+    /// Whether a deskew fits the response that is left between the legs.
+    pub response: bool,
 }
 
 impl PairSpec {
+    /// The time constant of the legs' low-frequency compensation in seconds: the mean of both probes'.
+    #[must_use]
+    pub fn time_constant_s(&self) -> f64 {
+        0.5 * (self.positive.probe.time_constant_s() + self.negative.probe.time_constant_s())
+    }
+
     /// The leg on this channel of the scope.
     #[must_use]
     pub fn leg_on(&self, channel: u32) -> Option<&LegSpec> {

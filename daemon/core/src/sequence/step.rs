@@ -163,6 +163,8 @@ pub struct DeskewPlan {
     pub most_acquisitions: u32,
     /// Whether to write the rounded skew into the scope's own skew setting.
     pub use_scope_skew: bool,
+    /// Whether to fit the response that is left between the legs.
+    pub response: bool,
 }
 
 /// How the rejection is shown.
@@ -224,6 +226,7 @@ impl DeskewPlan {
             target_u_skew_s: spec.target_u_skew_s,
             most_acquisitions: spec.most_acquisitions,
             use_scope_skew: spec.use_scope_skew,
+            response: spec.response,
         })
     }
 }

@@ -33,7 +33,7 @@ async fn state_and_rejection_change_and_estimates_do_not() {
     points.push(points[0].clone());
     points[1].frequency_hz = 1e7;
     points[0].at_least = false;
-    store.set_rejection(correction.id, &points).await.unwrap();
+    store.set_rejection(correction.id, &points, None).await.unwrap();
     correction.rejection = points;
     assert_eq!(store.correction(correction.id).await.unwrap(), Some(correction.clone()));
 
@@ -53,7 +53,7 @@ async fn what_does_not_fit_is_refused() {
     let correction = a_correction("gate", 0);
     let refused = store.update_correction(&correction).await.unwrap_err();
     assert!(matches!(refused, StoreError::Unknown { what: "correction", .. }), "{refused}");
-    let refused = store.set_rejection(Uuid::now_v7(), &correction.rejection).await.unwrap_err();
+    let refused = store.set_rejection(Uuid::now_v7(), &correction.rejection, None).await.unwrap_err();
     assert!(matches!(refused, StoreError::Unknown { what: "correction", .. }), "{refused}");
     let mut wrong = correction.clone();
     wrong.conditions.negative.span.unit = "mV".to_owned();

@@ -171,7 +171,8 @@ impl<'a> Bench<'a> {
             offset: 1.0,
             scale: value,
             quantisation: quantisation_v,
-            common_mode: 0.0,
+            compensation: self.sources.compensation.mean_v,
+            ..Parts::default()
         };
         Found { value, parts, leak: self.input.leak.mean_v, size: value }
     }
@@ -182,7 +183,7 @@ impl<'a> Bench<'a> {
         let (value, noise, size) = without_noise(self.moments.dd, corrected.difference_v.len(), s.noise_v);
         let model = power::model(self.input, s, &self.moments);
         // Second order: what gain, skew and offset errors of this size add to the mean square whatever their sign.
-        let second = model.second_order(&s.errors);
+        let second = model.second_order(&s.power_errors());
         // The noise power that is taken away is not known exactly itself.
         let own = 0.5 * model.u_noise * model.noise / size;
         let parts = Parts {
@@ -194,6 +195,9 @@ impl<'a> Bench<'a> {
             quantisation: s.quantisation_v,
             // The mean square cannot rise by more than its square root does.
             common_mode: (0.5 * second / size).min(second.sqrt()),
+            // As an offset at low frequencies; what it adds in second order is in the interval.
+            compensation: (self.moments.d / size * s.compensation.mean_v).hypot(s.compensation.swing_v),
+            response: s.response.rms,
         };
         Found { value, parts, leak: self.input.leak.rms_v, size: value }
     }
@@ -210,7 +214,9 @@ impl<'a> Bench<'a> {
             offset: -0.5 * m.common() / size,
             scale: value,
             quantisation: 0.5 * s.quantisation_v,
-            common_mode: 0.0,
+            compensation: 0.5 * s.compensation.level_v,
+            response: 0.5 * s.response.rms,
+            ..Parts::default()
         };
         Found { value, parts, leak: 0.0, size: value }
     }
@@ -254,7 +260,9 @@ impl<'a> Bench<'a> {
             offset,
             scale: value,
             quantisation: s.quantisation_v * steps,
-            common_mode: 0.0,
+            compensation: if offset > 0.0 { s.compensation.level_v } else { s.compensation.swing_v },
+            response: s.response.rms * steps,
+            ..Parts::default()
         };
         Ok(Found { value, parts, leak: leak * self.input.leak.rms_v, size: levels.amplitude() })
     }
@@ -270,7 +278,9 @@ impl<'a> Bench<'a> {
             offset,
             scale: value,
             quantisation: s.quantisation_v * peaks.sqrt(),
-            common_mode: 0.0,
+            compensation: if offset > 0.0 { s.compensation.level_v } else { s.compensation.swing_v },
+            response: s.response.peak / 3.0f64.sqrt() * peaks.sqrt(),
+            ..Parts::default()
         };
         Found { value, parts, leak: peaks * self.input.leak.peak_v, size: value }
     }
@@ -286,6 +296,7 @@ impl<'a> Bench<'a> {
             gain: half_change(self.by_gain.as_ref(), &read) / self.sources.step(0).max(f64::MIN_POSITIVE),
             skew: -half_change(self.by_skew.as_ref(), &read) / self.sources.step(1).max(f64::MIN_POSITIVE),
             quantisation: moves(self.sources.quantisation_v / amplitude, value),
+            response: moves(self.sources.response.peak / 3.0f64.sqrt() / amplitude, value),
             ..Parts::default()
         };
         Ok(Found { value, parts, leak: moves(self.input.leak.peak_v / amplitude, value), size: value })

@@ -94,7 +94,7 @@ fn sensitivities_are_per_unit_of_their_source() {
         clipped_p: 0,
         clipped_n: 0,
         averages: 1,
-        allowance: Allowance { drift, scale_u: 1e-3, noise_bins: 0 },
+        allowance: Allowance { drift, scale_u: 1e-3, ..Allowance::default() },
     };
     let figures = compute(&input);
     let mean = of(&figures, FigureKind::Mean);

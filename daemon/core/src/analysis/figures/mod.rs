@@ -4,7 +4,9 @@
 //! What every figure has in its budget: *noise* (type A, measured per leg; the interpolation's noise gain is in it),
 //! *gain*, *skew* and *offset* of the correction with sensitivities from the capture itself (`∂D/∂g = N_c/g`,
 //! `∂D/∂τ = −N_c'`, `∂D/∂o = 1/g`) and the correlation of gain and offset, what each of them may have drifted since
-//! (rectangular), *scale* (the scope's gain specification, rectangular) or *calibration* (a scale that was measured,
+//! (rectangular), *compensation* (slow and fast gain of the legs may differ, so that an offset holds at its reference's mean
+//! only), *response* (what an applied response leaves of the common mode: its rms for levels and the rms, its peak as a
+//! half-width for extremes, times and ratios), *scale* (the scope's gain specification, rectangular) or *calibration* (a scale that was measured,
 //! normal), *quantisation* (what a converter without enough noise leaves) and, for the rms, *common mode*: the
 //! second-order part of gain, skew and offset, which can only make it larger. The scope's time base is not among them: no
 //! specification of it is known here.
@@ -16,8 +18,9 @@
 use super::Correction;
 use super::apply::{Corrected, Plain};
 use super::budget::{Coverage, Term};
+use super::compensation::Left;
 use super::grade::Grade;
-use super::leak::LeakBound;
+use super::leak::{LeakBound, Moving};
 
 mod compute;
 mod kind;
@@ -71,6 +74,10 @@ pub struct Allowance {
     pub noise_bins: usize,
     /// How far the correction may have drifted since it was made.
     pub drift: Drift,
+    /// What the legs' low-frequency compensation leaves, as standard uncertainties in volts.
+    pub compensation: Left,
+    /// What a response that was applied leaves of the common mode, its mean apart: rms, and peak of its envelope.
+    pub response: Moving,
 }
 
 /// How far a correction may have moved, as half-widths of rectangular distributions (JCGM 100, 4.3.7).

@@ -45,14 +45,15 @@ pub(super) fn coverage(
     let model = model(input, sources, moments);
     let first: Vec<Term> = terms.iter().filter(|t| t.name != "common mode").copied().collect();
     let u = budget::combined(&first);
-    let second = model.second_order(&sources.errors);
+    let errors = sources.power_errors();
+    let second = model.second_order(&errors);
     let limited = second > LEAST_RATIO * 2.0 * value * u;
     if !limited && u <= LEAST_BEND * value {
         return Coverage::of(value, terms);
     }
-    let others =
-        Others { scale_u: sources.scale_u, scale_half: sources.scale * 3.0f64.sqrt(), added_v: sources.quantisation_v };
-    let (low, high) = montecarlo::interval(&model, &sources.errors, &others);
+    let added_v = sources.quantisation_v.hypot(sources.compensation.swing_v).hypot(sources.response.rms);
+    let others = Others { scale_u: sources.scale_u, scale_half: sources.scale * 3.0f64.sqrt(), added_v };
+    let (low, high) = montecarlo::interval(&model, &errors, &others);
     // The measured value lies within its own interval, also where noise has made its square negative.
     let basis = if limited { Basis::CommonMode } else { Basis::Propagated };
     Coverage { low: low.min(value), high: high.max(value), basis }

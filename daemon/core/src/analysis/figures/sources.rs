@@ -1,6 +1,8 @@
 //! Where a figure's uncertainty comes from, and the budget made of it.
 
 use super::super::budget::{self, Correlated, Distribution, Kind, Term};
+use super::super::compensation::Left;
+use super::super::leak::Moving;
 use super::super::montecarlo::Errors;
 use super::FigureInput;
 
@@ -20,6 +22,10 @@ pub(super) struct Sources {
     /// Relative standard uncertainty of a scale that was calibrated.
     pub(super) scale_u: f64,
     pub(super) gain: f64,
+    /// What the legs' compensation leaves.
+    pub(super) compensation: Left,
+    /// What the response leaves.
+    pub(super) response: Moving,
     /// The correction's errors as they appear in the difference: gain relative, skew in seconds, offset over g.
     pub(super) errors: Errors,
 }
@@ -41,6 +47,10 @@ pub(super) struct Parts {
     pub(super) quantisation: f64,
     /// Standard uncertainty from the correction's errors in second order.
     pub(super) common_mode: f64,
+    /// Standard uncertainty from the legs' low-frequency compensation.
+    pub(super) compensation: f64,
+    /// Standard uncertainty from what the response leaves.
+    pub(super) response: f64,
 }
 
 impl Sources {
@@ -64,12 +74,22 @@ impl Sources {
             scale: input.scale_spec / 3.0f64.sqrt(),
             scale_u: input.allowance.scale_u,
             gain,
+            compensation: input.allowance.compensation,
+            response: input.allowance.response,
             errors: Errors {
                 u: [correction.gain.u / gain.abs(), correction.skew_s.u, correction.offset_v.u / gain.abs()],
                 drift: [drift.gain, drift.skew_s, drift.offset_v / gain.abs()],
                 gain_offset: correction.gain_offset.clamp(-1.0, 1.0),
             },
         }
+    }
+
+    /// The correction's errors for the whole mean square: there the legs' compensation acts as an offset.
+    pub(super) fn power_errors(&self) -> Errors {
+        let [gain, skew, offset] = self.errors.u;
+        let whole = offset.hypot(self.compensation.mean_v);
+        let share = if whole > 0.0 { offset / whole } else { 1.0 };
+        Errors { u: [gain, skew, whole], gain_offset: self.errors.gain_offset * share, ..self.errors }
     }
 
     /// Standard uncertainty of one of the correction's errors, drift included: the step by which sensitivities are
@@ -90,6 +110,8 @@ impl Parts {
             scale: self.scale * factor,
             quantisation: self.quantisation * factor,
             common_mode: self.common_mode * factor,
+            compensation: self.compensation * factor,
+            response: self.response * factor,
         }
     }
 
@@ -124,6 +146,8 @@ impl Parts {
             normal("calibration", self.scale, sources.scale_u, self.scale),
             own("quantisation", self.quantisation, Kind::B),
             own("common mode", self.common_mode, Kind::B),
+            own("compensation", self.compensation, Kind::B),
+            own("response", self.response, Kind::B),
         ];
         let coefficient = gain_offset * (self.gain * self.offset).signum();
         if gain_offset != 0.0 && terms[1].u > 0.0 && terms[3].u > 0.0 {

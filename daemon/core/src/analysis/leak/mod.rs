@@ -11,6 +11,9 @@
 //! all phases that are common to all frequencies, which is the peak of the envelope (analytic signal) of the
 //! common mode weighted by the residual.
 //!
+//! What is known beyond gain, skew and offset ([`Beyond`]) bounds it too: what a response that was applied still leaves, what
+//! the legs' slow gains may differ by, and the converters' non-linearity, below which no residual is claimed.
+//!
 //! Records beyond [`LONGEST`] samples are done in two parts that add up, see [`long`].
 //!
 //! The record is mirrored before the transform: a record whose ends differ then makes no jump that was never there. Its
@@ -20,7 +23,7 @@ use realfft::num_complex::Complex;
 
 use super::rejection::{RejectionBand, residual_of_uncertainty};
 use super::signal::{Signal, mean_and_square};
-use super::{Correction, band, peaks};
+use super::{Beyond, Correction, band, peaks};
 
 mod long;
 
@@ -51,27 +54,34 @@ pub fn bound<S: Signal + ?Sized>(
     correction: &Correction,
     rejection: &[RejectionBand],
 ) -> LeakBound {
+    bound_with(common_v, interval_s, correction, rejection, &Beyond::default())
+}
+
+/// As [`bound`], with what is known beyond gain, skew and offset.
+#[must_use]
+pub fn bound_with<S: Signal + ?Sized>(
+    common_v: &S,
+    interval_s: f64,
+    correction: &Correction,
+    rejection: &[RejectionBand],
+    beyond: &Beyond,
+) -> LeakBound {
     let n = common_v.points();
     if n == 0 {
         return LeakBound { rms_v: 0.0, peak_v: 0.0, mean_v: 0.0, common_rms_v: 0.0, common_swing_v: 0.0 };
     }
     let mut bands: Vec<RejectionBand> = rejection.iter().copied().filter(|b| b.frequency_hz > 0.0).collect();
     bands.sort_by(|a, b| a.frequency_hz.total_cmp(&b.frequency_hz));
-    let residual = |f: f64| measured(&bands, f).max(residual_of_uncertainty(correction, f));
+    let points: Vec<(f64, f64)> = bands.iter().map(|b| (b.frequency_hz, b.after_db)).collect();
+    let residual = |f: f64| {
+        let linear = interpolated(&points, f).max(residual_of_uncertainty(correction, f));
+        if f > 0.0 { linear.max(beyond.residual(f)) } else { linear }
+    };
     let (mean, square) = mean_and_square(common_v);
     let offset_v = 2.0 * (correction.offset_v.u / correction.gain.value).abs();
-    let mean_v = (mean * residual(0.0)).abs() + offset_v;
+    let mean_v = (mean * residual(0.0)).abs() + offset_v + 2.0 * beyond.left(common_v, interval_s).mean_v;
     let noise = peaks::noise_of(common_v);
-    let moving = if n > LONGEST {
-        long::filtered(common_v, interval_s, mean, noise, &residual)
-    } else {
-        let mut values = vec![0.0f32; n];
-        common_v.load(0, &mut values);
-        let wave: Vec<f64> = values.iter().map(|x| f64::from(*x) - mean).collect();
-        let (in_phase, in_quadrature, power) = quadrature(wave, interval_s, &residual);
-        let square = in_phase.iter().zip(&in_quadrature).map(|(a, b)| a * a + b * b).fold(0.0, f64::max);
-        Moving { rms: power.sqrt(), peak: square.sqrt() }
-    };
+    let moving = weighted(common_v, interval_s, mean, noise, &residual);
     let extremes = peaks::extremes(common_v, noise);
     LeakBound {
         rms_v: moving.rms.hypot(mean_v),
@@ -82,10 +92,33 @@ pub fn bound<S: Signal + ?Sized>(
     }
 }
 
-/// What the alternating part of a common mode leaks.
-struct Moving {
-    rms: f64,
-    peak: f64,
+/// What the alternating part of a common mode leaks, in volts.
+#[derive(Debug, Clone, Copy, Default, PartialEq)]
+pub struct Moving {
+    /// As rms.
+    pub rms: f64,
+    /// As peak.
+    pub peak: f64,
+}
+
+/// What is left of a common mode of the given mean and noise, weighted by a residual that is a function of frequency.
+pub(super) fn weighted<S: Signal + ?Sized>(
+    common_v: &S,
+    interval_s: f64,
+    mean: f64,
+    noise: f64,
+    residual: &impl Fn(f64) -> f64,
+) -> Moving {
+    let n = common_v.points();
+    if n > LONGEST {
+        return long::filtered(common_v, interval_s, mean, noise, residual);
+    }
+    let mut values = vec![0.0f32; n];
+    common_v.load(0, &mut values);
+    let wave: Vec<f64> = values.iter().map(|x| f64::from(*x) - mean).collect();
+    let (in_phase, in_quadrature, power) = quadrature(wave, interval_s, residual);
+    let square = in_phase.iter().zip(&in_quadrature).map(|(a, b)| a * a + b * b).fold(0.0, f64::max);
+    Moving { rms: power.sqrt(), peak: square.sqrt() }
 }
 
 /// A waveform without its mean, weighted by the residual: in phase, in quadrature, and its mean square.
@@ -114,17 +147,17 @@ fn quadrature(mut wave: Vec<f64>, interval_s: f64, residual: &impl Fn(f64) -> f6
     (in_phase, in_quadrature, power)
 }
 
-/// `|D/C|` after the verification's bands, sorted by frequency; 0 without any.
-fn measured(bands: &[RejectionBand], frequency_hz: f64) -> f64 {
+/// `|D/C|` from a rejection in dB at some frequencies in hertz, which rise; 0 without any.
+pub(super) fn interpolated(points: &[(f64, f64)], frequency_hz: f64) -> f64 {
     let magnitude = |db: f64| 10.0f64.powf(-db / 20.0);
-    let next = bands.partition_point(|b| b.frequency_hz <= frequency_hz);
-    match (next.checked_sub(1).and_then(|i| bands.get(i)), bands.get(next)) {
+    let next = points.partition_point(|(f, _)| *f <= frequency_hz);
+    match (next.checked_sub(1).and_then(|i| points.get(i)), points.get(next)) {
         (None, None) => 0.0,
-        (None, Some(first)) => magnitude(first.after_db),
-        (Some(last), None) => magnitude(last.after_db) * frequency_hz / last.frequency_hz,
-        (Some(a), Some(b)) => {
-            let share = (frequency_hz / a.frequency_hz).ln() / (b.frequency_hz / a.frequency_hz).ln();
-            magnitude(share.mul_add(b.after_db - a.after_db, a.after_db))
+        (None, Some((_, first))) => magnitude(*first),
+        (Some((f, last)), None) => magnitude(*last) * frequency_hz / f,
+        (Some((low, a)), Some((high, b))) => {
+            let share = (frequency_hz / low).ln() / (high / low).ln();
+            magnitude(share.mul_add(b - a, *a))
         }
     }
 }

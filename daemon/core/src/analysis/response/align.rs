@@ -1,10 +1,9 @@
 //! Acquisitions of a reference, corrected, averaged and cut to whole periods.
 
-use super::super::apply;
 use super::super::band;
 use super::super::skew::Reference;
 use super::super::{Correction, Record};
-use super::ResponseError;
+use super::{Response, ResponseError, carry};
 
 /// Half of the longest filter: so many samples of the negative leg are kept beyond each end.
 pub(super) const HALF: usize = 8;
@@ -33,12 +32,13 @@ pub(super) struct Halves {
     pub(super) interval_s: f64,
 }
 
-/// Corrects the acquisitions and makes two halves of them, every other one in each.
+/// Corrects the acquisitions, with a `filter` if there is one, and makes two halves of them, every other one in each.
 pub(super) fn halves(
     p: &[Record],
     n: &[Record],
     correction: &Correction,
     reference: &Reference,
+    filter: Option<&Response>,
 ) -> Result<Halves, ResponseError> {
     let acquisitions = p.len().min(n.len());
     if acquisitions < 2 {
@@ -47,7 +47,7 @@ pub(super) fn halves(
     let interval_s = p[0].interval_s;
     let mut sums: [Option<Sum>; 2] = [None, None];
     for (index, (p, n)) in p.iter().zip(n).enumerate() {
-        let corrected = apply::correct(p, n, correction)
+        let corrected = carry::correct(p, n, correction, filter)
             .map_err(|error| ResponseError::Correct { index, reason: error.to_string() })?;
         if (corrected.interval_s / interval_s - 1.0).abs() > 1e-9 {
             return Err(ResponseError::Interval { fitted_s: interval_s, interval_s: corrected.interval_s });

@@ -11,7 +11,7 @@ const HISTORY: f64 = 1e-5;
 /// A first-order low-pass in discrete time, exact for a signal that is straight between its samples:
 /// `u[i + 1] = ρ·u[i] + c0·x[i] + c1·x[i + 1]`.
 #[derive(Debug, Clone, Copy)]
-pub(super) struct LowPass {
+pub(in crate::analysis) struct LowPass {
     pub(super) rho: f64,
     pub(super) c0: f64,
     pub(super) c1: f64,
@@ -19,7 +19,7 @@ pub(super) struct LowPass {
 
 impl LowPass {
     /// For a time constant of `samples` samples.
-    pub(super) fn new(samples: f64) -> Self {
+    pub(in crate::analysis) fn new(samples: f64) -> Self {
         let a = 1.0 / samples;
         let rho = (-a).exp();
         let mean = -(-a).exp_m1() / a;
@@ -28,7 +28,27 @@ impl LowPass {
 
     /// Its output for `signal`, as if that had been at its mean before.
     pub(super) fn apply(&self, signal: &[f64]) -> Vec<f64> {
-        let mut state = super::super::line::mean(signal);
+        self.from(super::super::line::mean(signal), signal)
+    }
+
+    /// Its output for `signal`, as if the record had always repeated: it ends where it began, and its mean is the
+    /// signal's. The way for records that are short beside the time constant, and that show the signal's mean.
+    pub(in crate::analysis) fn settled(&self, signal: &[f64]) -> Vec<f64> {
+        let mean = super::super::line::mean(signal);
+        let mut slow = self.from(mean, signal);
+        let whole = self.rho.powf(signal.len() as f64);
+        let Some(&end) = slow.last() else { return slow };
+        // Whatever is added to the beginning comes out `whole` of it at the end.
+        let mut more = (end - mean) / (1.0 - whole);
+        for u in &mut slow {
+            more *= self.rho;
+            *u += more;
+        }
+        slow
+    }
+
+    fn from(&self, state: f64, signal: &[f64]) -> Vec<f64> {
+        let mut state = state;
         let mut last = state;
         signal
             .iter()
@@ -43,9 +63,11 @@ impl LowPass {
 
 /// The corrected difference and the common mode of one capture, as [`apply::correct`] and then with the response.
 ///
+/// The low-frequency term needs the past. A record that is long beside its time constant loses its beginning to it; one
+/// that is not is taken to go on as it is, so that its mean is the signal's ([`LowPass::settled`]).
+///
 /// # Errors
-/// As [`apply::correct`]; also when the response does not hold for the records' sample interval, or the low-frequency
-/// term needs more past than they have.
+/// As [`apply::correct`]; also when the response does not hold for the records' sample interval.
 pub fn correct(
     p: &Record,
     n: &Record,
@@ -82,18 +104,16 @@ impl Response {
             (samples * periods).ceil() as usize
         });
         let points = x.len();
-        if settle > points / 2 {
-            let needed_s = settle as f64 * interval_s;
-            return Err(ResponseError::Settling { needed_s, record_s: points as f64 * interval_s });
-        }
-        let first = settle.max(half);
+        let repeats = settle > points / 2;
+        let first = if repeats { half } else { settle.max(half) };
         if points < first + half + 16 {
             return Err(ResponseError::TooShort { points });
         }
         let mut negative_v = convolve(&x[first - half..], &self.taps);
         negative_v.iter_mut().for_each(|y| *y += self.level_v);
         if let Some((beta, samples)) = low_pass {
-            let slow = LowPass::new(samples).apply(&x);
+            let filter = LowPass::new(samples);
+            let slow = if repeats { filter.settled(&x) } else { filter.apply(&x) };
             negative_v.iter_mut().zip(&slow[first..]).for_each(|(y, u)| *y += beta * u);
         }
         // P is the corrected negative leg, as it was before the response, plus the difference.

@@ -9,7 +9,7 @@ use super::bins::{self, Band, Bins};
 use super::columns::{self, SLOW, Spectra};
 use super::solve::{self, Model, System, Terms, TimeConstant};
 use super::words::{self, Verdict};
-use super::{BandGain, PoleZero, Response, ResponseError};
+use super::{BandGain, PoleZero, Prior, Response, ResponseError};
 
 /// The lengths of filter that are tried; longer ones only add noise.
 const LENGTHS: [usize; 3] = [5, 9, 17];
@@ -35,6 +35,8 @@ struct Prepared {
     judging: Spectra,
     bins: Bins,
     time_constant: Option<TimeConstant>,
+    /// Whether the time constant was known before rather than found.
+    given: bool,
     /// Samples by which the skew had to grow.
     moved: f64,
 }
@@ -44,14 +46,15 @@ pub(super) fn fit(
     n: &[Record],
     correction: &Correction,
     reference: &Reference,
+    prior: &Prior<'_>,
 ) -> Result<Response, ResponseError> {
-    let prepared = prepare(p, n, correction, reference)?;
-    let Prepared { halves, fitted, judging, bins, time_constant, moved } = &prepared;
+    let prepared = prepare(p, n, correction, reference, prior)?;
+    let Prepared { halves, fitted, judging, bins, time_constant, moved, .. } = &prepared;
     let samples = time_constant.map_or(halves.fitted.p.len() as f64, |found| found.samples);
     let learnt = System::new(fitted, &bins.bands, samples);
     let judge = Judge { system: System::new(judging, &bins.bands, samples), bands: &bins.bands };
     let before = Model::moved(*moved);
-    let (terms, model, verdicts) = select(&learnt, &judge, &before, time_constant.is_some());
+    let (terms, model, verdicts) = select(&learnt, &judge, &before, time_constant.is_some(), prior.filter.is_none());
     let improved = judge.gains(&before, &model);
     let mut response = Response {
         interval_s: halves.interval_s,
@@ -61,6 +64,7 @@ pub(super) fn fit(
         level_v: 0.0,
         improved,
         words: Vec::new(),
+        gain_u: 0.0,
     };
     if let Some(terms) = terms {
         finish(&mut response, &prepared, terms);
@@ -75,6 +79,7 @@ fn prepare(
     n: &[Record],
     correction: &Correction,
     reference: &Reference,
+    prior: &Prior<'_>,
 ) -> Result<Prepared, ResponseError> {
     let mut moved = 0.0;
     let mut round = 0;
@@ -82,7 +87,7 @@ fn prepare(
         let mut aligned = *correction;
         let interval_s = p.first().map_or(0.0, |record| record.interval_s);
         aligned.skew_s.value += moved * interval_s;
-        let halves = align::halves(p, n, &aligned, reference)?;
+        let halves = align::halves(p, n, &aligned, reference, prior.filter)?;
         let length = halves.fitted.p.len();
         let fourier = Fourier::new(length);
         let (positive, negative) = columns::overview(&halves.fitted, &fourier)?;
@@ -98,7 +103,11 @@ fn prepare(
         let terms = Terms { pole_zero: true, taps: 1 };
         // Few bins cannot tell a low-pass and its history from gain and delay.
         let enough = bins.kept.len() >= 6;
-        let time_constant = if enough { solve::time_constant(&fitted, terms, None, length) } else { None };
+        let found = if enough { solve::time_constant(&fitted, terms, None, length) } else { None };
+        let shown = found.filter(|found| found.shown(length));
+        let known = prior.time_constant_s.map(|seconds| TimeConstant::known(seconds / interval_s));
+        let time_constant = if enough { shown.or(known) } else { None };
+        let given = shown.is_none() && known.is_some();
         let samples = time_constant.map_or(length as f64, |found| found.samples);
         let system = System::new(&fitted, &bins.bands, samples);
         let model =
@@ -107,7 +116,7 @@ fn prepare(
         round += 1;
         if delay.abs() < ALIGNED || !delay.is_finite() || round == ROUNDS {
             let judging = Spectra::of(&halves.judging, &fourier, &bins, share(b, a))?;
-            return Ok(Prepared { halves, fitted, judging, bins, time_constant, moved });
+            return Ok(Prepared { halves, fitted, judging, bins, time_constant, given, moved });
         }
         moved += delay.clamp(-STEP, STEP);
     }
@@ -119,6 +128,7 @@ fn select(
     judge: &Judge<'_>,
     before: &Model,
     slow: bool,
+    filter: bool,
 ) -> (Option<Terms>, Model, Vec<(Terms, Verdict)>) {
     let mut best: (Option<Terms>, Model) = (None, before.clone());
     let mut verdicts = Vec::new();
@@ -139,7 +149,7 @@ fn select(
         }
         verdicts.push((with_slow, verdict));
     }
-    for taps in LENGTHS {
+    for taps in LENGTHS.into_iter().filter(|_| filter) {
         let pole_zero = best.0.is_some_and(|terms| terms.pole_zero);
         let terms = Terms { pole_zero, taps };
         let Some(model) = learnt.fit(terms) else { continue };
@@ -154,16 +164,18 @@ fn select(
 
 /// Fits the chosen terms to all acquisitions.
 fn finish(response: &mut Response, prepared: &Prepared, terms: Terms) {
-    let Prepared { halves, fitted, judging, bins, time_constant, moved } = prepared;
+    let Prepared { halves, fitted, judging, bins, time_constant, given, moved } = prepared;
     let all = fitted.with(judging);
     let length = halves.fitted.p.len();
     let near = time_constant.map(|found| found.samples);
     let time_constant = match terms.pole_zero {
+        true if *given => *time_constant,
         true => solve::time_constant(&all, terms, near, length).or(*time_constant),
         false => None,
     };
     let samples = time_constant.map_or(length as f64, |found| found.samples);
     let Some(model) = System::new(&all, &bins.bands, samples).fit(terms) else { return };
+    response.gain_u = model.u_sum;
     response.skew_s = moved * halves.interval_s;
     let half = terms.taps / 2;
     response.taps = (HALF - half..=HALF + half).map(|m| model.coefficients[m]).collect();
@@ -177,9 +189,11 @@ fn finish(response: &mut Response, prepared: &Prepared, terms: Terms) {
         let relative = slow / model.sum();
         let u = model.u[SLOW] / model.sum().abs();
         let value = found.samples * halves.interval_s / (1.0 + relative);
+        // Short records show `ε/T`: an error of a given T is one of ε.
+        let u_relative = if *given { u.hypot(relative * found.u_relative) } else { u };
         response.pole_zero = Some(PoleZero {
             time_constant_s: Estimate { value, u: value * found.u_relative.hypot(u) },
-            relative: Estimate { value: relative, u },
+            relative: Estimate { value: relative, u: u_relative },
         });
     }
     let level = |one: &align::Mean| line::mean(&one.p) - (model.sum() + slow) * line::mean(&one.x[HALF..HALF + length]);

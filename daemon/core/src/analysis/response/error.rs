@@ -36,17 +36,6 @@ pub enum ResponseError {
         /// Samples that were looked at.
         points: usize,
     },
-    /// The low-frequency term needs more past than the record has.
-    #[error(
-        "the low-frequency term needs {needed_s} s of record before its first valid sample, of {record_s} s; use a \
-         longer record, or trim the probe so that the term is not needed"
-    )]
-    Settling {
-        /// What it needs in seconds.
-        needed_s: f64,
-        /// What there is in seconds.
-        record_s: f64,
-    },
     /// A transform failed: a mistake of the program.
     #[error(transparent)]
     Spectrum(#[from] crate::analysis::spectrum::SpectrumError),

@@ -26,6 +26,7 @@ mod bins;
 mod carry;
 mod choose;
 mod columns;
+mod combine;
 mod error;
 mod nonlinear;
 mod solve;
@@ -36,7 +37,9 @@ use serde::{Deserialize, Serialize};
 use super::skew::Reference;
 use super::{Correction, Estimate, Record};
 
+pub(in crate::analysis) use carry::LowPass;
 pub use carry::correct;
+pub use combine::{Acquired, combined};
 pub use error::ResponseError;
 pub use nonlinear::{Nonlinearity, nonlinearity};
 
@@ -81,6 +84,45 @@ pub struct Response {
     pub improved: Vec<BandGain>,
     /// What helped, what did not and what to do about it, in words.
     pub words: Vec<String>,
+    /// Standard uncertainty of the factor on the gain, `Σ taps`.
+    pub gain_u: f64,
+}
+
+impl Response {
+    /// Whether it changes anything.
+    #[must_use]
+    pub fn corrects(&self) -> bool {
+        self.pole_zero.is_some() || self.skew_s != 0.0 || self.level_v != 0.0 || self.taps != [1.0]
+    }
+
+    /// `|D/C|` that judging acquisitions still showed, or that noise hid from them, at a frequency in hertz: of the band's
+    /// middle, interpolated in dB over log f, flat below the lowest band and growing with f above the highest.
+    #[must_use]
+    pub fn residual(&self, frequency_hz: f64) -> f64 {
+        self.ratio(frequency_hz, |band| band.after_db)
+    }
+
+    /// The same where the response is not applied.
+    #[must_use]
+    pub fn residual_without(&self, frequency_hz: f64) -> f64 {
+        self.ratio(frequency_hz, |band| band.before_db)
+    }
+
+    fn ratio(&self, frequency_hz: f64, db: impl Fn(&BandGain) -> f64) -> f64 {
+        let points: Vec<(f64, f64)> =
+            self.improved.iter().map(|band| ((band.from_hz * band.to_hz).sqrt(), db(band))).collect();
+        super::leak::interpolated(&points, frequency_hz)
+    }
+}
+
+/// What is known before a response is fitted.
+#[derive(Debug, Clone, Copy, Default)]
+pub struct Prior<'a> {
+    /// The time constant of the legs' low-frequency compensation in seconds, taken where the records are too short or too
+    /// noisy to show it: of a probe the product of its input resistance and capacitance.
+    pub time_constant_s: Option<f64>,
+    /// A response whose filter is carried out first; then only gain, delay and the low-frequency term are fitted.
+    pub filter: Option<&'a Response>,
 }
 
 /// Fits the response that is left after `correction`, from acquisitions of a reference that both legs see.
@@ -96,8 +138,22 @@ pub fn fit(
     correction: &Correction,
     reference: &Reference,
 ) -> Result<Response, ResponseError> {
-    choose::fit(p, n, correction, reference)
+    fit_after(p, n, correction, reference, &Prior::default())
+}
+
+/// As [`fit`], with what is known before.
+///
+/// # Errors
+/// As [`fit`].
+pub fn fit_after(
+    p: &[Record],
+    n: &[Record],
+    correction: &Correction,
+    reference: &Reference,
+    prior: &Prior<'_>,
+) -> Result<Response, ResponseError> {
+    choose::fit(p, n, correction, reference, prior)
 }
 
 #[cfg(test)]
-mod tests;
+pub(in crate::analysis) mod tests;

@@ -6,7 +6,8 @@
 //! rejection of a signal of that amplitude, `20·log10(amplitude/error)`; near 50 to 55 dB for the 8-bit front ends of
 //! real scopes (common practice, no source).
 //!
-//! A reference of two levels does not show it: to such a signal it is a gain error. A sine or a ramp does.
+//! A reference of two levels does not show it: to such a signal it is a gain error. A sine or a ramp does. Its edges do not
+//! count: what a fast signal leaves in the difference is the legs' responses more than their converters.
 
 use super::super::apply::ApplyError;
 use super::super::signal::Signal;
@@ -15,6 +16,12 @@ use super::{Response, correct};
 
 /// Steps that the swing is divided into.
 const STEPS: usize = 64;
+
+/// Samples over which the signal's slope is taken, to either side.
+const REACH: usize = 8;
+
+/// The fastest that a sample may move, in steps per sample.
+const FASTEST: f64 = 0.5;
 
 /// The least part of the steps that must be seen often.
 const SEEN: usize = STEPS * 3 / 4;
@@ -54,8 +61,15 @@ pub fn nonlinearity(
     for (p, n) in p.iter().zip(n) {
         let corrected = correct(p, n, correction, response)?;
         let common = corrected.common();
-        let difference = corrected.difference_v.iter().enumerate();
-        points.extend(difference.map(|(i, d)| (common.at(i), f64::from(*d))));
+        let count = corrected.difference_v.len();
+        let values: Vec<f64> = (0..count).map(|i| common.at(i)).collect();
+        let (low, high) = values.iter().fold((f64::INFINITY, f64::NEG_INFINITY), |(l, h), v| (l.min(*v), h.max(*v)));
+        let fastest = FASTEST * (high - low) / STEPS as f64 * 2.0 * REACH as f64;
+        for i in REACH..count.saturating_sub(REACH) {
+            if (values[i + REACH] - values[i - REACH]).abs() <= fastest {
+                points.push((values[i], f64::from(corrected.difference_v[i])));
+            }
+        }
     }
     Ok(of_points(&points))
 }

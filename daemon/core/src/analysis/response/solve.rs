@@ -33,6 +33,8 @@ pub(super) struct Model {
     pub(super) coefficients: DVector<f64>,
     /// Standard uncertainties, where the model was fitted.
     pub(super) u: DVector<f64>,
+    /// Standard uncertainty of the taps' sum.
+    pub(super) u_sum: f64,
 }
 
 impl Model {
@@ -42,7 +44,7 @@ impl Model {
         for (m, weight) in shift(-delay).into_iter().enumerate() {
             coefficients[m] = weight;
         }
-        Self { coefficients, u: DVector::zeros(POSITIVE) }
+        Self { coefficients, u: DVector::zeros(POSITIVE), u_sum: 0.0 }
     }
 
     /// `P − y` as weights of all columns.
@@ -99,7 +101,8 @@ impl System {
         // Noise of power w per bin has w/2 in each of its two parts.
         let covariance = &basis * inverse * basis.transpose() * (0.5 * self.noise.0);
         let u = DVector::from_fn(POSITIVE, |i, _| covariance[(i, i)].max(0.0).sqrt());
-        Some(Model { coefficients, u })
+        let u_sum = covariance.view((0, 0), (TAPS, TAPS)).sum().max(0.0).sqrt();
+        Some(Model { coefficients, u, u_sum })
     }
 
     /// The delay of a model of gain and delay, in samples: what the skew has to grow by.
@@ -166,6 +169,24 @@ pub(super) struct TimeConstant {
     pub(super) samples: f64,
     /// Standard uncertainty of its logarithm.
     pub(super) u_relative: f64,
+}
+
+/// Half-width of a probe's time constant as its data sheet gives it, relative (common practice, no source).
+const KNOWN_TO: f64 = 0.2;
+
+/// A time constant that was found counts up to this uncertainty of its logarithm.
+const SHOWN: f64 = 0.2;
+
+impl TimeConstant {
+    /// One that is known beforehand.
+    pub(super) fn known(samples: f64) -> Self {
+        Self { samples, u_relative: KNOWN_TO / 3.0f64.sqrt() }
+    }
+
+    /// Whether the records show it: well enough, and not at the end of what was sought.
+    pub(super) fn shown(&self, length: usize) -> bool {
+        self.u_relative < SHOWN && self.samples < 0.4 * length as f64
+    }
 }
 
 /// Seeks the time constant, from the shortest that makes sense up to half of the record.

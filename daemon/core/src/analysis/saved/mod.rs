@@ -7,12 +7,14 @@
 //! halves, fitted by themselves, must agree with each other, or its uncertainty is widened to what they differ by.
 
 mod bands;
+mod beyond;
 
 use super::apply::ApplyError;
 use super::measured::{self, Measured};
-use super::rejection::{RejectionBand, measure};
+use super::rejection::{RejectionBand, measure_with};
+use super::response;
 use super::skew::{Reference, SkewError, SkewEstimate, estimate_records};
-use super::{Correction, Estimate, Record, Samples};
+use super::{Beyond, Correction, Estimate, Record, Samples};
 
 /// The two records of one acquisition.
 #[derive(Debug, Clone, PartialEq)]
@@ -36,6 +38,8 @@ pub struct Given {
     pub known: Reference,
     /// Half-width of the scope's gain specification, relative.
     pub scale_spec: Option<f64>,
+    /// Whether the response that is left is to be fitted and applied.
+    pub response: bool,
 }
 
 /// What the rejection was measured on.
@@ -64,6 +68,8 @@ pub struct Findings {
     pub correction: Correction,
     /// The estimate from the whole record, as the estimator gave it.
     pub estimate: SkewEstimate,
+    /// What was found beyond them.
+    pub beyond: Beyond,
     /// Rejection before and after, by frequency.
     pub rejection: Vec<RejectionBand>,
     /// What `rejection` was measured on.
@@ -93,7 +99,7 @@ pub enum SavedError {
 /// # Errors
 /// When the reference gives no correction, or records do not belong together.
 pub fn analyse(given: &Given) -> Result<Findings, SavedError> {
-    let Given { reference, verification, device, known, scale_spec } = given;
+    let Given { reference, verification, device, known, scale_spec, response } = given;
     let estimate = estimate_records(&reference.positive, &reference.negative, known).map_err(SavedError::Reference)?;
     let mut correction = estimate.correction();
     let mut warnings: Vec<String> = estimate.warnings.iter().map(ToString::to_string).collect();
@@ -102,27 +108,41 @@ pub fn analyse(given: &Given) -> Result<Findings, SavedError> {
     if let [Some(first), Some(second)] = &fitted {
         warnings.extend(widen(&mut correction, first, second));
     }
+    let beyond = match beyond::find(reference, &correction, &estimate, known) {
+        _ if !response => Beyond::default(),
+        Ok(found) => found,
+        Err(why) => {
+            warnings.push(format!("no response was fitted: {why}"));
+            Beyond::default()
+        }
+    };
     let [first, _] = &fitted;
     let (on, with, verified) = match (verification, first) {
         (Some(fresh), _) => (fresh, correction, Verified::Fresh),
-        (None, Some(first)) => (&halves[1], first.correction(), Verified::OtherHalf),
-        (None, None) => (reference, correction, Verified::Itself),
+        // A response is fitted to both halves.
+        (None, Some(first)) if beyond.response.is_none() => (&halves[1], first.correction(), Verified::OtherHalf),
+        (None, _) => (reference, correction, Verified::Itself),
     };
-    let rejection = verify(on, &with).map_err(SavedError::Verify)?;
+    let rejection = verify(on, &with, &beyond).map_err(SavedError::Verify)?;
     let device = device
         .as_ref()
-        .map(|legs| measured::measure(&legs.positive, &legs.negative, &correction, &rejection, *scale_spec))
+        .map(|legs| {
+            measured::measure_with(&legs.positive, &legs.negative, &correction, &beyond, &rejection, *scale_spec)
+        })
         .transpose()
         .map_err(SavedError::Device)?;
-    Ok(Findings { correction, estimate, rejection, verified, device, warnings })
+    Ok(Findings { correction, estimate, beyond, rejection, verified, device, warnings })
 }
 
 /// Rejection at multiples of the reference's fundamental, or on a finer grid where these hold nothing.
-fn verify(legs: &Legs, correction: &Correction) -> Result<Vec<RejectionBand>, ApplyError> {
+fn verify(legs: &Legs, correction: &Correction, beyond: &Beyond) -> Result<Vec<RejectionBand>, ApplyError> {
     let (p, n) = (std::slice::from_ref(&legs.positive), std::slice::from_ref(&legs.negative));
     let [multiples, grid] = bands::of(&legs.positive);
-    let found = measure(p, n, correction, &multiples)?;
-    if found.len() > 1 { Ok(found) } else { measure(p, n, correction, &grid) }
+    // A response that does not hold for these records is left out, as it is for the device.
+    let response = beyond.response.as_ref();
+    let response = response.filter(|response| response::correct(&p[0], &n[0], correction, Some(response)).is_ok());
+    let found = measure_with(p, n, correction, response, &multiples)?;
+    if found.len() > 1 { Ok(found) } else { measure_with(p, n, correction, response, &grid) }
 }
 
 /// Two halves of one record must give the same; where they do not, each uncertainty is at least half of what they differ
@@ -151,10 +171,17 @@ fn widen(correction: &mut Correction, first: &SkewEstimate, second: &SkewEstimat
 impl Legs {
     /// The first and the second half of the acquisition.
     fn halves(&self) -> [Self; 2] {
+        let middle = self.positive.samples.len().min(self.negative.samples.len()) / 2;
+        self.parts(middle, middle)
+    }
+
+    /// Two parts of `length` samples, the second one from `second` on.
+    fn parts(&self, length: usize, second: usize) -> [Self; 2] {
         let cut = |from_second: bool| {
             let part = |record: &Record| {
-                let middle = record.samples.len() / 2;
-                let (from, to) = if from_second { (middle, 2 * middle) } else { (0, middle) };
+                let points = record.samples.len();
+                let from = if from_second { second.min(points) } else { 0 };
+                let to = (from + length).min(points);
                 let samples = match &record.samples {
                     Samples::Codes(codes) => Samples::Codes(codes[from..to].to_vec()),
                     Samples::Numbers(numbers) => Samples::Numbers(numbers[from..to].to_vec()),

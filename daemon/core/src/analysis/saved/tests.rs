@@ -59,7 +59,7 @@ fn reference(seed: u64) -> Legs {
 
 fn given(device: Option<Legs>) -> Given {
     let known = Reference { shape: Shape::Unknown, period_s: None };
-    Given { reference: reference(1), verification: None, device, known, scale_spec: None }
+    Given { reference: reference(1), verification: None, device, known, scale_spec: None, response: false }
 }
 
 #[test]

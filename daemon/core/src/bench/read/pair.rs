@@ -52,6 +52,7 @@ pub(super) fn pair(name: String, table: &mut Table<'_>, declared: &Declared, pro
     let most_acquisitions = field::whole(table, "most_acquisitions", &(2..=10_000));
     let max_age_s = field::amount(table, "max_age", Unit::Second, &(1.0..=1e8));
     let use_scope_skew = table.flag("use_scope_skew").is_some_and(|item| item.value);
+    let response = table.flag("response").is_some_and(|item| item.value);
     table.refuse_others();
     Some(PairSpec {
         name,
@@ -66,6 +67,7 @@ pub(super) fn pair(name: String, table: &mut Table<'_>, declared: &Declared, pro
         most_acquisitions: most_acquisitions.unwrap_or(DEFAULT_MOST_ACQUISITIONS),
         max_age_s: max_age_s.unwrap_or(DEFAULT_MAX_AGE_S),
         use_scope_skew,
+        response,
     })
 }
 

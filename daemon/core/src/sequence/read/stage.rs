@@ -208,12 +208,14 @@ fn deskew(table: &mut Table<'_>, context: &Context<'_>) -> Option<DeskewPlan> {
     let target = field::amount(table, "target_u_skew", Unit::Second, &(1e-15..=1e-6));
     let most = field::whole(table, "most_acquisitions", &(2..=10_000));
     let scope_skew = table.flag("use_scope_skew");
+    let response = table.flag("response");
     let plan = DeskewPlan::of(context.bench, &pair?, skew_reference.as_deref(), gain_reference.as_deref());
     let mut plan =
         plan.map_err(|error| table.mistakes().add(table.span(), error.to_string(), "take another reference")).ok()?;
     plan.target_u_skew_s = target.unwrap_or(plan.target_u_skew_s);
     plan.most_acquisitions = most.unwrap_or(plan.most_acquisitions);
     plan.use_scope_skew = scope_skew.map_or(plan.use_scope_skew, |item| item.value);
+    plan.response = response.map_or(plan.response, |item| item.value);
     Some(plan)
 }
 
