@@ -28,6 +28,7 @@ pub mod saved;
 pub mod signal;
 pub mod skew;
 pub mod spectrum;
+pub mod transfer;
 pub mod transition;
 
 pub use correction::{Correction, Estimate};
