@@ -1,6 +1,6 @@
 //! A correction and the rejection that it reaches.
 
-use evenpair_api::{Correction, CorrectionState, RejectionPoint};
+use evenpair_api::{Correction, CorrectionState, RejectionPoint, TransferWay, TransferredFrom};
 use evenpair_core::units::{Unit, show};
 
 use super::quantity::with_uncertainty;
@@ -32,12 +32,30 @@ pub(crate) fn correction(correction: &Correction) -> String {
         let (from, added) = (show(carried.from_span.value, Unit::Volt, 3), show(carried.added.value, Unit::Second, 2));
         text.push(format!("  skew was taken on a span of {from}; carrying it adds {added} to its u"));
     }
+    text.extend(correction.transferred_from.as_ref().map(transferred));
     if correction.scope_skew.value != 0.0 {
         text.push(format!("  of the skew, {} is taken off by the scope", with_uncertainty(&correction.scope_skew)));
     }
     text.extend(correction.reasons.iter().map(|reason| format!("  {state}: {reason}")));
     text.extend(correction.warnings.iter().map(|warning| format!("  note: {warning}")));
     text.iter().map(|line| wrap(line, 4)).collect::<Vec<_>>().join("\n")
+}
+
+/// Where a transferred correction came from, and how.
+fn transferred(from: &TransferredFrom) -> String {
+    let way = |way| match way {
+        TransferWay::Carried => "carried over as it was",
+        TransferWay::Common => "deskewed on this range",
+        TransferWay::Legs => "from each leg compared with itself on both ranges",
+    };
+    format!(
+        "  transferred from a span of {} around {} by `{}`: skew {}, gain and offset {}",
+        show(from.span.value, Unit::Volt, 3),
+        show(from.offset.value, Unit::Volt, 3),
+        from.reference,
+        way(from.skew_by),
+        way(from.levels_by)
+    )
 }
 
 /// Rejection before and after, per frequency.

@@ -17,6 +17,7 @@ mod problem;
 mod quantity;
 mod run;
 mod sequence;
+mod transfer;
 
 pub use analysis::{Analysis, AnalysisRequest, Guess, Reading, ReferenceShape, SavedRecords, SavedText, VerifiedOn};
 pub use bench::{Bench, Instrument, Leg, LinkState, Pair, Probe, Reference, Rest, Route, Setting};
@@ -38,6 +39,7 @@ pub use problem::{Problem, ProblemCode};
 pub use quantity::Quantity;
 pub use run::{LimitFailure, Run, RunKind, RunProgress, RunRequest, RunState, Runs, StageReport};
 pub use sequence::{CheckReport, MistakeReport, SequenceInfo, Sequences};
+pub use transfer::{Corrections, TransferChoice, TransferRequest, TransferWay, TransferredFrom};
 
 /// Where every path of this API begins.
 pub const PREFIX: &str = "/api/v1";
