@@ -4,7 +4,7 @@ use std::path::PathBuf;
 
 use clap::{Args, Parser, Subcommand, ValueEnum};
 
-use crate::commands::BudgetFlags;
+use crate::commands::{BudgetFlags, TransferArguments};
 
 /// Deskew two single-ended scope probes and measure the voltage between two points, with its uncertainty.
 ///
@@ -54,6 +54,8 @@ pub(crate) enum Command {
         #[arg(long)]
         response: bool,
     },
+    /// Transfer a pair's correction to another vertical range, by a signal that both ranges can show.
+    Transfer(TransferArguments),
     /// Verify a pair's correction on fresh acquisitions.
     Verify {
         /// The pair's name.

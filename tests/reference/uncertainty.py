@@ -1,7 +1,7 @@
 """Reference values for the uncertainty side of the analysis, made with GTC, numpy and scipy.
 
     python -m venv VENV && VENV/bin/pip install -r requirements.txt
-    VENV/bin/python uncertainty.py           # writes vectors/budget.json and vectors/half_width.json
+    VENV/bin/python uncertainty.py           # writes vectors/budget.json, half_width.json and transfer.json
     VENV/bin/python uncertainty.py --check   # computes them again and compares with what is stored
 
 The unit tests of the core read the files. GTC (the GUM Tree Calculator) propagates uncertain numbers by automatic
@@ -80,11 +80,39 @@ def half_width():
     return dict(cases=cases)
 
 
+def transfer():
+    """Gain and offset carried from one vertical range to another by one straight line for each leg.
+
+    V_B = k·V_A + c for either leg, N_A = g_A·P_A + o_A: what N_B = g_B·P_B + o_B are g_B and o_B?
+    """
+    cases = []
+    for gain, offset, r, legs in [
+        ((0.97, 2e-5), (0.035, 6e-4), -0.7, (((1.004, 5e-5), (-0.12, 4e-4), -0.6), ((0.996, 7e-5), (0.31, 5e-4), -0.65))),
+        ((1.06, 4e-4), (-0.4, 9e-3), 0.5, (((0.99, 1e-3), (0.5, 2e-3), 0.9), ((1.01, 8e-4), (-0.45, 6e-3), -0.95))),
+        ((1.0, 1e-5), (0.0, 1e-3), 0.0, (((1.0, 1e-6), (0.0, 1e-4), 0.0), ((1.0, 3e-2), (2.0, 0.2), 0.0))),
+    ]:
+        def two(first, second, correlation):
+            a, b = ureal(*first, independent=False), ureal(*second, independent=False)
+            set_correlation(correlation, a, b)
+            return a, b
+        g, o = two(gain, offset, r)
+        (k_p, c_p), (k_n, c_n) = two(*legs[0]), two(*legs[1])
+        # Substituted rather than in the core's closed form: N_B = k_n·(g·P_A + o) + c_n at P_B = 0 and at P_B = 1.
+        at = lambda p_b: k_n * (g * ((p_b - c_p) / k_p) + o) + c_n
+        new_offset = result(at(0))
+        new_gain = result(at(1) - at(0))
+        cases.append(dict(
+            gain=gain, offset=offset, correlation=r, positive=legs[0], negative=legs[1],
+            new_gain=[value(new_gain), uncertainty(new_gain)], new_offset=[value(new_offset), uncertainty(new_offset)],
+            new_correlation=get_correlation(new_gain, new_offset)))
+    return dict(cases=cases)
+
+
 def same(stored, found, where):
     """Whether all numbers agree to 1e-9, and everything else exactly."""
     if isinstance(stored, dict) and isinstance(found, dict) and stored.keys() == found.keys():
         return all([same(stored[k], found[k], f"{where}.{k}") for k in stored])
-    if isinstance(stored, list) and isinstance(found, list) and len(stored) == len(found):
+    if isinstance(stored, list) and isinstance(found, (list, tuple)) and len(stored) == len(found):
         return all([same(a, b, f"{where}[{i}]") for i, (a, b) in enumerate(zip(stored, found))])
     ok = isinstance(stored, (int, float)) and abs(stored - found) <= 1e-9 * abs(stored) + 1e-15
     if not ok:
@@ -95,7 +123,7 @@ def same(stored, found, where):
 if __name__ == "__main__":
     check = "--check" in sys.argv[1:]
     good = True
-    for name, make in dict(budget=budget, half_width=half_width).items():
+    for name, make in dict(budget=budget, half_width=half_width, transfer=transfer).items():
         found, path = make(), HERE / f"{name}.json"
         if check:
             good &= same(json.loads(path.read_text()), found, name)

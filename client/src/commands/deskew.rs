@@ -1,6 +1,6 @@
 //! `evenpair deskew` and `evenpair verify`
 
-use evenpair_api::{DeskewRequest, Run, RunState, VerifyRequest};
+use evenpair_api::{Correction, DeskewRequest, Run, RunState, VerifyRequest};
 
 use super::follow;
 use crate::exit::Exit;
@@ -11,16 +11,22 @@ use crate::{output, render};
 /// Deskews a pair and shows the correction that came of it.
 pub(crate) async fn deskew(daemon: &Daemon, pair: &str, request: &DeskewRequest, json: bool) -> Result<Exit, Trouble> {
     let run = daemon.deskew(pair, request).await?;
-    finish(daemon, pair, run, json).await
+    finish(daemon, run, json, async || daemon.correction(pair).await).await
 }
 
 /// Verifies a pair's correction and shows it.
 pub(crate) async fn verify(daemon: &Daemon, pair: &str, json: bool) -> Result<Exit, Trouble> {
     let run = daemon.verify(pair, &VerifyRequest::default()).await?;
-    finish(daemon, pair, run, json).await
+    finish(daemon, run, json, async || daemon.correction(pair).await).await
 }
 
-async fn finish(daemon: &Daemon, pair: &str, run: Run, json: bool) -> Result<Exit, Trouble> {
+/// Follows a run to its end and shows the correction that came of it, which `found` asks for.
+pub(super) async fn finish(
+    daemon: &Daemon,
+    run: Run,
+    json: bool,
+    found: impl AsyncFnOnce() -> Result<Correction, Trouble>,
+) -> Result<Exit, Trouble> {
     let run = follow(daemon, &run.id.to_string(), json).await?;
     if run.state != RunState::Passed {
         if json {
@@ -30,7 +36,7 @@ async fn finish(daemon: &Daemon, pair: &str, run: Run, json: bool) -> Result<Exi
         }
         return Ok(Exit::of_run(run.state));
     }
-    let correction = daemon.correction(pair).await?;
+    let correction = found().await?;
     if json {
         output::print_json(&correction)?;
     } else {

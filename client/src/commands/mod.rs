@@ -9,6 +9,7 @@ mod export;
 mod follow;
 mod run;
 mod show;
+mod transfer;
 
 use evenpair_api::DeskewRequest;
 
@@ -20,6 +21,7 @@ use crate::trouble::Trouble;
 
 pub(crate) use budget::BudgetFlags;
 pub(crate) use follow::follow;
+pub(crate) use transfer::TransferArguments;
 
 /// Carries out what the command line says.
 pub(crate) async fn perform(arguments: Arguments) -> Result<Exit, Trouble> {
@@ -38,6 +40,7 @@ pub(crate) async fn perform(arguments: Arguments) -> Result<Exit, Trouble> {
             };
             deskew::deskew(&daemon()?, &pair, &request, json).await
         }
+        Command::Transfer(wish) => transfer::transfer(&daemon()?, &wish, json).await,
         Command::Verify { pair } => deskew::verify(&daemon()?, &pair, json).await,
         Command::Run { sequence, wait } => run::run(&daemon()?, &sequence, wait, json).await,
         Command::Runs => show::runs(&daemon()?, json).await,

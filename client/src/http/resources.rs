@@ -1,7 +1,10 @@
 //! A call per resource.
 
 use bytes::Bytes;
-use evenpair_api::{Bench, Capture, Captures, Correction, DeskewRequest, Run, RunRequest, Runs, VerifyRequest};
+use evenpair_api::{
+    Bench, Capture, Captures, Correction, Corrections, DeskewRequest, Run, RunRequest, Runs, TransferRequest,
+    VerifyRequest,
+};
 
 use super::Daemon;
 use crate::trouble::Trouble;
@@ -23,6 +26,16 @@ impl Daemon {
     /// `GET /pairs/{pair}/correction`
     pub(crate) async fn correction(&self, pair: &str) -> Result<Correction, Trouble> {
         self.json(self.client.get(self.url(&format!("/pairs/{}/correction", segment(pair))))).await
+    }
+
+    /// `GET /pairs/{pair}/corrections`
+    pub(crate) async fn corrections(&self, pair: &str) -> Result<Corrections, Trouble> {
+        self.json(self.client.get(self.url(&format!("/pairs/{}/corrections", segment(pair))))).await
+    }
+
+    /// `POST /pairs/{pair}/transfer`
+    pub(crate) async fn transfer(&self, pair: &str, request: &TransferRequest) -> Result<Run, Trouble> {
+        self.json(self.client.post(self.url(&format!("/pairs/{}/transfer", segment(pair)))).json(request)).await
     }
 
     /// `POST /pairs/{pair}/deskew`

@@ -1,6 +1,8 @@
 //! A correction and the rejection that it reaches.
 
-use evenpair_api::{Compensation, Correction, CorrectionState, RejectionLimit, RejectionPoint, Response};
+use evenpair_api::{
+    Compensation, Correction, CorrectionState, RejectionLimit, RejectionPoint, Response, TransferWay, TransferredFrom,
+};
 use evenpair_core::units::{Unit, show};
 
 use super::quantity::with_uncertainty;
@@ -35,6 +37,7 @@ pub(crate) fn correction(correction: &Correction) -> String {
     text.extend(correction.compensation.as_ref().map(|found| compensation(found, &correction.response)));
     text.extend(correction.response.as_ref().map(response));
     text.extend(correction.limit.as_ref().map(limit));
+    text.extend(correction.transferred_from.as_ref().map(transferred));
     if correction.scope_skew.value != 0.0 {
         text.push(format!("  of the skew, {} is taken off by the scope", with_uncertainty(&correction.scope_skew)));
     }
@@ -78,6 +81,23 @@ pub(crate) fn response(response: &Response) -> String {
 fn limit(limit: &RejectionLimit) -> String {
     let least = if limit.at_least { "at least " } else { "" };
     format!("  the converters' non-linearity limits the rejection to {least}{:.0} dB", limit.limit_db)
+}
+
+/// Where a transferred correction came from, and how.
+fn transferred(from: &TransferredFrom) -> String {
+    let way = |way| match way {
+        TransferWay::Carried => "carried over as it was",
+        TransferWay::Common => "deskewed on this range",
+        TransferWay::Legs => "from each leg compared with itself on both ranges",
+    };
+    format!(
+        "  transferred from a span of {} around {} by `{}`: skew {}, gain and offset {}",
+        show(from.span.value, Unit::Volt, 3),
+        show(from.offset.value, Unit::Volt, 3),
+        from.reference,
+        way(from.skew_by),
+        way(from.levels_by)
+    )
 }
 
 /// Rejection before and after, per frequency.

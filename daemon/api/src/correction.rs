@@ -5,7 +5,7 @@ use serde::{Deserialize, Serialize};
 use utoipa::ToSchema;
 use uuid::Uuid;
 
-use crate::{Compensation, Quantity, RejectionLimit, Response};
+use crate::{Compensation, Quantity, RejectionLimit, Response, TransferredFrom};
 
 /// What makes the two legs of a pair agree, and how well.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize, ToSchema)]
@@ -46,6 +46,9 @@ pub struct Correction {
     pub rejection: Vec<RejectionPoint>,
     /// What was in force when it was made.
     pub conditions: CorrectionConditions,
+    /// Set when it was transferred from another vertical range.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub transferred_from: Option<TransferredFrom>,
     /// How many acquisitions of the pair went into it.
     pub acquisitions: u32,
     /// What a person should know about it.

@@ -18,6 +18,7 @@ mod quantity;
 mod response;
 mod run;
 mod sequence;
+mod transfer;
 
 pub use analysis::{Analysis, AnalysisRequest, Guess, Reading, ReferenceShape, SavedRecords, SavedText, VerifiedOn};
 pub use bench::{Bench, Instrument, Leg, LinkState, Pair, Probe, Reference, Rest, Route, Setting};
@@ -40,6 +41,7 @@ pub use quantity::Quantity;
 pub use response::{Compensation, PoleZero, RejectionLimit, Response, ResponseBand};
 pub use run::{LimitFailure, Run, RunKind, RunProgress, RunRequest, RunState, Runs, StageReport};
 pub use sequence::{CheckReport, MistakeReport, SequenceInfo, Sequences};
+pub use transfer::{Corrections, TransferChoice, TransferRequest, TransferWay, TransferredFrom};
 
 /// Where every path of this API begins.
 pub const PREFIX: &str = "/api/v1";

@@ -48,6 +48,8 @@ pub enum RunKind {
     Deskew,
     /// A sequence.
     Sequence,
+    /// A transfer to another range asked for by itself.
+    Transfer,
     /// A verification asked for by itself.
     Verify,
 }

@@ -9,7 +9,7 @@ use evenpair_core::sequence::{CapturePlan, OnVoid};
 use tokio_util::sync::CancellationToken;
 use uuid::Uuid;
 
-use super::correction::{conditions_now, for_software, judge, rejection_bands};
+use super::correction::{conditions_now, for_software, judge, newest_for, rejection_bands};
 use super::limits;
 use super::tell::Tell;
 use super::trouble::Trouble;
@@ -33,12 +33,14 @@ pub(crate) async fn capture(
     tell: &Tell,
     stop: &CancellationToken,
 ) -> Result<api::Capture, Trouble> {
-    let latest = workshop.store.latest_correction(&pair.name).await?;
-    let correction = latest.ok_or_else(|| Trouble::NoCorrection { pair: pair.name.clone() })?;
+    if workshop.store.latest_correction(&pair.name).await?.is_none() {
+        return Err(Trouble::NoCorrection { pair: pair.name.clone() });
+    }
     let scope = workshop.scope(pair)?;
     scope.prepare(&plan.acquisition).await?;
     let settings = scope.settings().await?;
     let now = conditions_now(pair, workshop.scope_identity(pair), &settings);
+    let correction = newest_for(workshop, pair, &now).await?;
     let (state, reasons) = judge(&correction, pair, &now, workshop.clock.now());
     if state == CorrectionState::Void && plan.on_void == OnVoid::Refuse {
         return Err(Trouble::CorrectionVoid { pair: pair.name.clone(), reasons });

@@ -1,13 +1,17 @@
-//! Corrections between the mathematics, the API and the store, and whether one holds now.
+//! Corrections between the mathematics, the API and the store: which one holds now, and whether it does.
+//!
+//! A pair has a correction for each vertical range that it was deskewed on or that one was transferred to.
 
-use evenpair_api::{self as api, CorrectionState, Quantity};
+use evenpair_api::{self as api, CorrectionState, Quantity, TransferWay};
 use evenpair_core::analysis::rejection::RejectionBand;
 use evenpair_core::analysis::{Correction, Estimate};
 use evenpair_core::bench::conditions::{self, Carried, Conditions, LegConditions};
 use evenpair_core::bench::{Acquisition, LegSpec, PairSpec};
 
 use super::scope::LegSettings;
+use super::trouble::Trouble;
 use super::workshop::Workshop;
+use crate::store::StoreError;
 
 /// The part of a correction that software has to do, when the scope's own skew settings take off `scope_skew_s`
 /// (negative leg's less positive leg's).
@@ -111,6 +115,41 @@ fn from_api(conditions: &api::CorrectionConditions) -> Conditions {
     }
 }
 
+/// The newest of the pair's corrections that was made under the conditions of `now`, or else the newest of all.
+pub(crate) async fn newest_for(
+    workshop: &Workshop,
+    pair: &PairSpec,
+    now: &Conditions,
+) -> Result<api::Correction, Trouble> {
+    let mut all = workshop.store.newest_corrections(&pair.name).await?;
+    let fits = |one: &api::Correction| conditions::differences(&from_api(&one.conditions), now).is_empty();
+    let place = all.iter().position(fits).unwrap_or(0);
+    if all.is_empty() {
+        return Err(Trouble::NoCorrection { pair: pair.name.clone() });
+    }
+    Ok(all.swap_remove(place))
+}
+
+/// The newest of the pair's corrections that holds on the range of its bench file, or else the newest of all, judged.
+pub(crate) async fn newest_by_bench(
+    workshop: &Workshop,
+    pair: &PairSpec,
+) -> Result<Option<api::Correction>, StoreError> {
+    let mut all = workshop.store.newest_corrections(&pair.name).await?;
+    all.iter_mut().for_each(|one| judge_by_bench(workshop, one, pair));
+    let place = all.iter().position(|one| one.state != CorrectionState::Void).unwrap_or(0);
+    Ok((!all.is_empty()).then(|| all.swap_remove(place)))
+}
+
+/// When what a correction says was measured: a transferred one is as old as the one it came from, unless all of it was
+/// measured anew.
+pub(crate) fn since(correction: &api::Correction) -> jiff::Timestamp {
+    match &correction.transferred_from {
+        Some(from) if [from.skew_by, from.levels_by] != [TransferWay::Common; 2] => from.made_at,
+        _ => correction.made_at,
+    }
+}
+
 /// Whether a correction holds under `now`, and why not.
 pub(crate) fn judge(
     correction: &api::Correction,
@@ -122,7 +161,7 @@ pub(crate) fn judge(
     if !reasons.is_empty() {
         return (CorrectionState::Void, reasons);
     }
-    let age_s = at.duration_since(correction.made_at).as_secs_f64();
+    let age_s = at.duration_since(since(correction)).as_secs_f64();
     match conditions::too_old(age_s, pair.max_age_s) {
         Some(reason) => (CorrectionState::Stale, vec![reason]),
         None => (CorrectionState::Fresh, Vec::new()),
@@ -131,6 +170,19 @@ pub(crate) fn judge(
 
 /// Judges a correction by what the bench file says a measurement will be set to, for when no capture is being made.
 pub(crate) fn judge_by_bench(workshop: &Workshop, correction: &mut api::Correction, pair: &PairSpec) {
+    let Acquisition { span_v, offset_v, .. } = pair.acquisition;
+    judge_at(workshop, correction, pair, span_v, offset_v);
+}
+
+/// Judges a correction on the very range that it was made on.
+pub(crate) fn judge_on_its_range(workshop: &Workshop, correction: &mut api::Correction, pair: &PairSpec) {
+    let made = &correction.conditions.positive;
+    let (span_v, offset_v) = (made.span.value, made.offset.value);
+    judge_at(workshop, correction, pair, span_v, offset_v);
+}
+
+/// Judges a correction by what the scope is going to be set to.
+fn judge_at(workshop: &Workshop, correction: &mut api::Correction, pair: &PairSpec, span_v: f64, offset_v: f64) {
     let conditions = &correction.conditions;
     let identity = match workshop.scope_identity(pair) {
         // Not connected yet: nobody has said that it is another scope.
@@ -138,7 +190,6 @@ pub(crate) fn judge_by_bench(workshop: &Workshop, correction: &mut api::Correcti
         identity => identity,
     };
     let settings = |made: &api::LegConditions| {
-        let Acquisition { span_v, offset_v, .. } = pair.acquisition;
         // The scope rounds a span up to its next step; what was read back then stands for what is asked for now.
         let same_request = span_v <= made.span.value * (1.0 + 1e-6) && span_v > made.span.value * 0.35;
         LegSettings {

@@ -32,10 +32,10 @@ pub(crate) struct Wish<'b> {
 
 /// The standard uncertainty of the gain at which its reference is content: 2·10⁻⁵ leaves the common mode 94 dB down,
 /// beyond what a scope's converter lets through.
-const TARGET_U_GAIN: f64 = 2e-5;
+pub(crate) const TARGET_U_GAIN: f64 = 2e-5;
 
 /// The fewest acquisitions of a reference: fewer have no scatter worth the name.
-const LEAST_ACQUISITIONS: u32 = 4;
+pub(crate) const LEAST_ACQUISITIONS: u32 = 4;
 
 /// How often the span may be doubled when the skew reference clips.
 const WIDENINGS: u32 = 3;
@@ -124,6 +124,7 @@ async fn make(
         reasons: Vec::new(),
         rejection: Vec::new(),
         conditions: to_api(&conditions),
+        transferred_from: None,
         acquisitions: u32::try_from(acquisitions).unwrap_or(u32::MAX),
         warnings,
     };
@@ -227,7 +228,8 @@ async fn acquire_until_enough(
     }
 }
 
-fn shape_of(kind: ReferenceKind) -> Shape {
+/// What the estimator is told of a reference of this kind.
+pub(crate) fn shape_of(kind: ReferenceKind) -> Shape {
     match kind {
         ReferenceKind::Square | ReferenceKind::Pulse => Shape::Edges,
         ReferenceKind::Sine => Shape::Sine,

@@ -21,6 +21,7 @@ mod run;
 mod scope;
 mod settle;
 mod tell;
+mod transfer;
 mod trouble;
 mod verify;
 mod workshop;
@@ -162,10 +163,23 @@ impl Conductor {
     /// A pair's correction, judged by what a measurement would be set to now.
     pub(crate) async fn correction(&self, pair: &str) -> Result<api::Correction, Refusal> {
         let spec = plan::pair(&self.0.workshop.bench, pair)?;
-        let latest = self.0.workshop.store.latest_correction(pair).await?;
-        let mut correction = latest.ok_or_else(|| Refusal::NoCorrection { pair: pair.to_owned() })?;
-        correction::judge_by_bench(&self.0.workshop, &mut correction, spec);
-        Ok(correction)
+        let newest = correction::newest_by_bench(&self.0.workshop, spec).await?;
+        newest.ok_or_else(|| Refusal::NoCorrection { pair: pair.to_owned() })
+    }
+
+    /// A pair's corrections, one for each set of conditions, each judged on its own range.
+    pub(crate) async fn corrections(&self, pair: &str) -> Result<api::Corrections, Refusal> {
+        let spec = plan::pair(&self.0.workshop.bench, pair)?;
+        let mut items = self.0.workshop.store.newest_corrections(pair).await?;
+        items.iter_mut().for_each(|one| correction::judge_on_its_range(&self.0.workshop, one, spec));
+        Ok(api::Corrections { items })
+    }
+
+    /// Transfers a pair's correction to another range.
+    pub(crate) async fn transfer(&self, pair: &str, request: api::TransferRequest) -> Result<Run, Refusal> {
+        let sequence = plan::transfer(&self.0.workshop.bench, pair, &request)?;
+        self.admit_corrected(pair).await?;
+        self.accept(RunKind::Transfer, sequence, String::new()).await
     }
 
     /// Deskews a pair.
@@ -177,9 +191,7 @@ impl Conductor {
     /// Verifies a pair's correction.
     pub(crate) async fn verify(&self, pair: &str, request: api::VerifyRequest) -> Result<Run, Refusal> {
         let sequence = plan::verify(&self.0.workshop.bench, pair, &request)?;
-        if self.0.workshop.store.latest_correction(pair).await?.is_none() {
-            return Err(Refusal::NoCorrection { pair: pair.to_owned() });
-        }
+        self.admit_corrected(pair).await?;
         self.accept(RunKind::Verify, sequence, String::new()).await
     }
 
@@ -269,6 +281,14 @@ impl Conductor {
     /// Whether anything may be started at all.
     fn admit_any(&self) -> Result<(), Refusal> {
         if self.0.closing.is_cancelled() { Err(Refusal::ShuttingDown) } else { Ok(()) }
+    }
+
+    /// Whether the pair has a correction, so that what needs one may be started.
+    async fn admit_corrected(&self, pair: &str) -> Result<(), Refusal> {
+        match self.0.workshop.store.latest_correction(pair).await? {
+            Some(_) => Ok(()),
+            None => Err(Refusal::NoCorrection { pair: pair.to_owned() }),
+        }
     }
 
     /// Takes a checked sequence as a new run and lets it begin as soon as the bench is free.

@@ -4,7 +4,7 @@ use std::time::Duration;
 
 use evenpair_api as api;
 use evenpair_core::sequence::machine::Outcome;
-use evenpair_core::sequence::{Action, CapturePlan, DeskewPlan, Step};
+use evenpair_core::sequence::{Action, CapturePlan, DeskewPlan, Step, TransferPlan};
 use evenpair_core::units::Unit;
 use tokio_util::sync::CancellationToken;
 
@@ -13,7 +13,7 @@ use super::live::LiveRun;
 use super::tell::Tell;
 use super::trouble::Trouble;
 use super::workshop::Workshop;
-use super::{capture, deskew, limits, verify};
+use super::{capture, deskew, limits, transfer, verify};
 use evenpair_core::dialect::Message;
 
 use std::sync::Arc;
@@ -81,6 +81,10 @@ async fn act(
             workshop.set(setting, *value).await?;
             Ok(Outcome::Done { text: None })
         }
+        Action::Transfer(plan) => {
+            let correction = act_transfer(workshop, step, plan, &tell, stop).await?;
+            Ok(Outcome::Done { text: Some(in_words(&correction)) })
+        }
         Action::Verify(plan) => {
             let Some((pair, reference)) =
                 workshop.bench.pair(&plan.pair).zip(workshop.bench.reference(&plan.reference))
@@ -109,6 +113,21 @@ async fn act_deskew(
     };
     deskew::deskew(workshop, pair, &Wish { plan, skew_reference, gain_reference, set: &step.conditions }, tell, stop)
         .await
+}
+
+async fn act_transfer(
+    workshop: &Workshop,
+    step: &Step,
+    plan: &TransferPlan,
+    tell: &Tell,
+    stop: &CancellationToken,
+) -> Result<api::Correction, Trouble> {
+    let bench = &workshop.bench;
+    // A checked plan names only what there is.
+    let Some((pair, reference)) = bench.pair(&plan.pair).zip(bench.reference(&plan.reference)) else {
+        return Err(Trouble::NoCorrection { pair: plan.pair.clone() });
+    };
+    transfer::transfer(workshop, pair, &transfer::Wish { plan, reference, set: &step.conditions }, tell, stop).await
 }
 
 async fn act_capture(

@@ -4,9 +4,12 @@ use std::path::Path;
 
 use evenpair_api::{self as api, MistakeReport, Quantity};
 use evenpair_core::analysis::figures::FigureKind;
-use evenpair_core::bench::{Bench, LegSpec, PairSpec};
+use evenpair_core::analysis::transfer::Choice;
+use evenpair_core::bench::{Bench, LegSpec, OFFSETS_V, PairSpec, SPANS_V};
 use evenpair_core::document::{Mistake, line_and_column};
-use evenpair_core::sequence::{self, DeskewPlan, Sequence, VerifyPlan, deskew_alone, verify_alone};
+use evenpair_core::sequence::{
+    self, DeskewPlan, Sequence, TransferPlan, VerifyPlan, deskew_alone, transfer_alone, verify_alone,
+};
 use uuid::Uuid;
 
 use super::Refusal;
@@ -33,21 +36,46 @@ pub(super) fn deskew(bench: &Bench, name: &str, request: &api::DeskewRequest) ->
     pair(bench, name)?;
     let (skew, gain) = (request.skew_reference.as_deref(), request.gain_reference.as_deref());
     let mut plan = DeskewPlan::of(bench, name, skew, gain).map_err(|error| bad(error.to_string()))?;
-    if let Some(target) = request.target_u_skew_s {
-        if !(target > 0.0 && target.is_finite()) {
-            return Err(bad(format!("`target_u_skew_s` is {target}, but must be above 0 s")));
-        }
-        plan.target_u_skew_s = target;
-    }
-    if let Some(most) = request.most_acquisitions {
-        if most == 0 || most > 10_000 {
-            return Err(bad(format!("`most_acquisitions` is {most}, but must be 1 to 10000")));
-        }
-        plan.most_acquisitions = most;
-    }
+    plan.target_u_skew_s = target(request.target_u_skew_s, plan.target_u_skew_s)?;
+    plan.most_acquisitions = most(request.most_acquisitions, plan.most_acquisitions)?;
     plan.use_scope_skew = request.use_scope_skew.unwrap_or(plan.use_scope_skew);
     plan.response = request.response.unwrap_or(plan.response);
     Ok(deskew_alone(bench, plan))
+}
+
+/// The sequence of a transfer asked for by itself.
+pub(super) fn transfer(bench: &Bench, name: &str, request: &api::TransferRequest) -> Result<Sequence, Refusal> {
+    pair(bench, name)?;
+    let (span_v, offset_v) = (request.span_v, request.offset_v);
+    if !(SPANS_V.contains(&span_v) && offset_v.is_none_or(|offset_v| OFFSETS_V.contains(&offset_v))) {
+        return Err(bad(format!("a span of {span_v} V around {offset_v:?} V is no vertical range")));
+    }
+    let plan = TransferPlan::of(bench, name, &request.reference, span_v, offset_v);
+    let mut plan = plan.map_err(|error| bad(error.to_string()))?;
+    plan.choice = request.by.map_or(plan.choice, Choice::from);
+    plan.target_u_skew_s = target(request.target_u_skew_s, plan.target_u_skew_s)?;
+    plan.most_acquisitions = most(request.most_acquisitions, plan.most_acquisitions)?;
+    Ok(transfer_alone(bench, plan))
+}
+
+/// The wanted standard uncertainty of skew, or the pair's own.
+fn target(asked: Option<f64>, own: f64) -> Result<f64, Refusal> {
+    match asked {
+        Some(target) if !(target > 0.0 && target.is_finite()) => {
+            Err(bad(format!("`target_u_skew_s` is {target}, but must be above 0 s")))
+        }
+        asked => Ok(asked.unwrap_or(own)),
+    }
+}
+
+/// The most acquisitions asked for, or the pair's own.
+fn most(asked: Option<u32>, own: u32) -> Result<u32, Refusal> {
+    match asked {
+        Some(most) if most == 0 || most > 10_000 => {
+            Err(bad(format!("`most_acquisitions` is {most}, but must be 1 to 10000")))
+        }
+        asked => Ok(asked.unwrap_or(own)),
+    }
 }
 
 /// The sequence of a verification asked for by itself.

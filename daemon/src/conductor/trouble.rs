@@ -2,6 +2,7 @@
 
 use evenpair_core::analysis::apply::ApplyError;
 use evenpair_core::analysis::skew::SkewError;
+use evenpair_core::analysis::transfer::TransferError;
 use evenpair_core::dialect::DialectError;
 
 use crate::session::SessionError;
@@ -58,6 +59,9 @@ pub(crate) enum Trouble {
     /// The store did not take what was measured.
     #[error(transparent)]
     Store(#[from] StoreError),
+    /// Two ranges could not be compared.
+    #[error("transferring the correction of the pair `{pair}` by the reference `{reference}`: {source}")]
+    Transfer { pair: String, reference: String, source: Box<TransferError> },
     /// A long computation ended in a fault.
     #[error("{what} ended in a fault of the daemon; its log has more")]
     Computation { what: &'static str },

@@ -8,7 +8,7 @@ use evenpair_core::analysis::{Beyond, Correction, Record};
 use evenpair_core::bench::{Acquisition, PairSpec, ReferenceSpec};
 use tokio_util::sync::CancellationToken;
 
-use super::correction::{for_software, rejection_points};
+use super::correction::{for_software, newest_by_bench, rejection_points};
 use super::scope::Scope;
 use super::tell::Tell;
 use super::trouble::Trouble;
@@ -30,8 +30,8 @@ pub(crate) async fn verify(
     tell: &Tell,
     stop: &CancellationToken,
 ) -> Result<api::Correction, Trouble> {
-    let latest = workshop.store.latest_correction(&pair.name).await?;
-    let mut correction = latest.ok_or_else(|| Trouble::NoCorrection { pair: pair.name.clone() })?;
+    let newest = newest_by_bench(workshop, pair).await?;
+    let mut correction = newest.ok_or_else(|| Trouble::NoCorrection { pair: pair.name.clone() })?;
     let scope = workshop.scope(pair)?;
     let remembered = scope.remember().await?;
     let outcome = on_reference(workshop, &scope, &correction, reference, set, tell, stop).await;
@@ -67,9 +67,24 @@ pub(crate) async fn on_reference(
     stop: &CancellationToken,
 ) -> Result<Shown, Trouble> {
     let acquisition = workshop.bench.reference_acquisition(scope.pair, reference);
-    scope.prepare(&acquisition).await?;
+    on_range(workshop, scope, correction, reference, &acquisition, set, tell, stop).await
+}
+
+/// Measures rejection on a reference, on the range of `acquisition`.
+#[expect(clippy::too_many_arguments, reason = "each is another thing, and there are two callers")]
+pub(crate) async fn on_range(
+    workshop: &Workshop,
+    scope: &Scope<'_>,
+    correction: &api::Correction,
+    reference: &ReferenceSpec,
+    acquisition: &Acquisition,
+    set: &[(String, f64)],
+    tell: &Tell,
+    stop: &CancellationToken,
+) -> Result<Vec<RejectionBand>, Trouble> {
+    scope.prepare(acquisition).await?;
     workshop.start_reference(reference, stop).await?;
-    let outcome = acquire_and_measure(scope, correction, acquisition, tell, stop).await;
+    let outcome = acquire_and_measure(scope, correction, *acquisition, tell, stop).await;
     let ended = workshop.stop_reference(reference, set, stop).await;
     let shown = outcome?;
     ended?;

@@ -11,6 +11,7 @@ use super::convert::{
     word,
 };
 use super::error::{Fault, StoreError};
+use super::transfers::{insert_transfer, read_transfer};
 
 impl Store {
     /// Stores a new correction.
@@ -29,6 +30,7 @@ impl Store {
                 let conditions = &correction.conditions;
                 insert_leg(&transaction, correction.id, "positive", &conditions.positive)?;
                 insert_leg(&transaction, correction.id, "negative", &conditions.negative)?;
+                insert_transfer(&transaction, &correction)?;
                 write_rejection(&transaction, correction.id, &correction.rejection)?;
                 Ok(transaction.commit()?)
             })
@@ -145,7 +147,11 @@ pub(super) fn read_correction(connection: &Connection, id: Uuid) -> Result<Optio
         })
     })?;
     let sql = "select * from corrections where id = ?1";
-    first(connection, sql, [&key], |row| read_head(row, leg("positive")?, leg("negative")?, rejection))
+    let transferred_from = read_transfer(connection, id)?;
+    first(connection, sql, [&key], |row| {
+        let head = read_head(row, leg("positive")?, leg("negative")?, rejection)?;
+        Ok(Correction { transferred_from, ..head })
+    })
 }
 
 /// Inserts the row of `corrections`.
@@ -268,6 +274,7 @@ fn read_head(
             gain_reference: row.get("gain_reference")?,
             carried,
         },
+        transferred_from: None,
         acquisitions: row.get("acquisitions")?,
         warnings: from_json("a correction's warnings", &row.get::<_, String>("warnings_json")?)?,
     })

@@ -32,6 +32,7 @@ mod rows;
 mod runs;
 mod schema;
 mod sweep;
+mod transfers;
 mod waveform;
 
 use std::fs::File;

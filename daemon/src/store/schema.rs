@@ -10,7 +10,11 @@ use rusqlite::{Connection, TransactionBehavior};
 use super::error::StoreError;
 
 /// Every step, in order.
-pub(super) const STEPS: &[&str] = &[include_str!("schema/0001.sql"), include_str!("schema/0002-response.sql")];
+pub(super) const STEPS: &[&str] = &[
+    include_str!("schema/0001.sql"),
+    include_str!("schema/0002-response.sql"),
+    include_str!("schema/0003-transfers.sql"),
+];
 
 /// Marks a database file as ours (SQLite's `application_id`): the letters `EvPr`.
 const APPLICATION: i64 = 0x4576_5072;

@@ -111,6 +111,7 @@ pub(super) fn a_correction(pair: &str, second: i64) -> Correction {
             gain_reference: "node".to_owned(),
             carried: Some(Carried { from_span: Quantity::exact(8.0, "V"), added: Quantity::exact(20e-12, "s") }),
         },
+        transferred_from: None,
         acquisitions: 12,
         warnings: vec!["little dither".to_owned()],
     }

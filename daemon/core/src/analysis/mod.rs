@@ -30,6 +30,7 @@ pub mod saved;
 pub mod signal;
 pub mod skew;
 pub mod spectrum;
+pub mod transfer;
 pub mod transition;
 
 pub use beyond::Beyond;

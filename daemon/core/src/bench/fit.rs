@@ -94,6 +94,29 @@ impl Bench {
         why
     }
 
+    /// Why a correction of `pair` must not be transferred to the range of `new` by `reference`, each in words; empty if
+    /// it may. Both ranges have to show the whole reference.
+    #[must_use]
+    pub fn misfits_between(&self, pair: &PairSpec, reference: &ReferenceSpec, new: &Acquisition) -> Vec<String> {
+        let on = |range: &Acquisition| {
+            let (mut pair, mut reference) = (pair.clone(), reference.clone());
+            (reference.overrides.span_v, reference.overrides.offset_v) = (Some(range.span_v), Some(range.offset_v));
+            (pair.acquisition.span_v, pair.acquisition.offset_v) = (range.span_v, range.offset_v);
+            self.misfits(&pair, &reference, Role::Gain)
+        };
+        let mut why = on(&pair.acquisition);
+        why.extend(on(new).into_iter().filter(|reason| !why.contains(reason)).collect::<Vec<_>>());
+        if new.same_range(&pair.acquisition) {
+            why.push(format!(
+                "pair `{}` measures on a span of {} around {}: a deskew makes the correction of that range",
+                pair.name,
+                plain(new.span_v, Unit::Volt),
+                plain(new.offset_v, Unit::Volt)
+            ));
+        }
+        why
+    }
+
     /// Why setting `name` to `value` must not be done while the probes of `pair` are on the device; `None` if it may.
     #[must_use]
     pub fn over_rating(&self, name: &str, value: f64, pair: &PairSpec) -> Option<String> {

@@ -20,6 +20,7 @@ pub use call::BenchCall;
 pub use fit::Role;
 pub(crate) use read::overrides;
 pub use read::read;
+pub use read::{OFFSETS_V, SPANS_V};
 pub use spec::{
     Bench, Coupling, InstrumentSpec, LegSpec, PairSpec, ProbeSpec, ReferenceKind, ReferenceSpec, RouteSpec, SettingSpec,
 };

@@ -6,12 +6,14 @@
 pub mod machine;
 mod read;
 pub mod step;
+pub mod transfer;
 
 pub use read::read;
 pub use step::{
     Action, CapturePlan, DeskewPlan, Limit, OnLimit, OnVoid, PlanError, Sequence, Step, VerifyPlan, deskew_alone,
     verify_alone,
 };
+pub use transfer::{TransferPlan, transfer_alone};
 
 #[cfg(test)]
 mod tests;

@@ -1,7 +1,8 @@
 //! What a checked sequence is made of.
 
 use super::machine::{Plan, StepPlan};
-use crate::bench::{Acquisition, Bench, Role};
+use super::transfer::TransferPlan;
+use crate::bench::{Acquisition, Bench, PairSpec, ReferenceSpec, Role};
 use crate::units::Unit;
 
 /// A checked sequence, its sweeps unrolled.
@@ -88,6 +89,8 @@ pub enum Action {
         /// The value in the setting's unit.
         value: f64,
     },
+    /// Transfers a correction to another vertical range.
+    Transfer(TransferPlan),
     /// Shows the rejection that a correction reaches.
     Verify(VerifyPlan),
     /// Waits for [`Step::rest_s`].
@@ -258,7 +261,8 @@ pub fn verify_alone(bench: &Bench, plan: VerifyPlan) -> Sequence {
     alone(bench, text, Action::Verify(plan))
 }
 
-fn alone(bench: &Bench, text: String, action: Action) -> Sequence {
+/// A sequence of one step, after the bench is prepared.
+pub(super) fn alone(bench: &Bench, text: String, action: Action) -> Sequence {
     let mut steps: Vec<Step> = prepare(bench).into_iter().collect();
     steps.push(Step { action, conditions: Vec::new(), text: text.clone(), rest_s: 0.0 });
     Sequence { title: text, steps, always: Vec::new() }
@@ -274,19 +278,23 @@ pub(super) fn prepare(bench: &Bench) -> Option<Step> {
     })
 }
 
-fn known_pair<'b>(bench: &'b Bench, name: &str) -> Result<&'b crate::bench::PairSpec, PlanError> {
+pub(super) fn known_pair<'b>(bench: &'b Bench, name: &str) -> Result<&'b PairSpec, PlanError> {
     bench.pair(name).ok_or_else(|| PlanError::UnknownPair {
         name: name.to_owned(),
         known: bench.pairs.iter().map(|pair| pair.name.as_str()).collect::<Vec<_>>().join(", "),
     })
 }
 
+pub(super) fn known_reference<'b>(bench: &'b Bench, name: &str) -> Result<&'b ReferenceSpec, PlanError> {
+    bench.reference(name).ok_or_else(|| PlanError::UnknownReference {
+        name: name.to_owned(),
+        known: bench.references.iter().map(|spec| spec.name.as_str()).collect::<Vec<_>>().join(", "),
+    })
+}
+
 fn suits(bench: &Bench, pair: &str, reference: &str, role: Role) -> Result<(), PlanError> {
     let pair = known_pair(bench, pair)?;
-    let spec = bench.reference(reference).ok_or_else(|| PlanError::UnknownReference {
-        name: reference.to_owned(),
-        known: bench.references.iter().map(|spec| spec.name.as_str()).collect::<Vec<_>>().join(", "),
-    })?;
+    let spec = known_reference(bench, reference)?;
     let why = bench.misfits(pair, spec, role);
     if why.is_empty() { Ok(()) } else { Err(PlanError::Misfit { why }) }
 }

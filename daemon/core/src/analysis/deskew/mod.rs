@@ -110,7 +110,7 @@ pub fn enough(combined: &Combined, target_u_skew_s: f64) -> bool {
 }
 
 /// The weighted mean; `independent` repeats share nothing, others do not get better by their number.
-fn weighted(values: &[Estimate], independent: bool) -> Mean {
+pub(super) fn weighted(values: &[Estimate], independent: bool) -> Mean {
     let count = values.len() as f64;
     // Without any uncertainty to go by (data without noise) all count alike.
     let usable = values.iter().all(|one| one.u > 0.0 && one.u.is_finite());

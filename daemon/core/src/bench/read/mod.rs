@@ -13,6 +13,7 @@ use super::{Role, call, field};
 use crate::document::{self, Item, Mistake, Table};
 
 pub(crate) use reference::overrides;
+pub use reference::{OFFSETS_V, SPANS_V};
 
 /// The names that the file declares, whether or not their tables are right.
 #[derive(Debug, Default)]

@@ -1,5 +1,7 @@
 //! References, and what they and captures may acquire differently from the pair.
 
+use std::ops::RangeInclusive;
+
 use super::Declared;
 use crate::bench::spec::{ReferenceKind, ReferenceSpec, SettingSpec};
 use crate::bench::{Overrides, Slope, Trigger, call, field};
@@ -14,6 +16,12 @@ const FEWEST_POINTS: u32 = 100;
 
 /// The most sweeps of one record: at a hundred sweeps a second that takes ten minutes.
 const MOST_AVERAGES: u32 = 65_536;
+
+/// The spans at the tip that can be meant, in volts.
+pub const SPANS_V: RangeInclusive<f64> = 1e-4..=1e5;
+
+/// The middles of a span that can be meant, in volts.
+pub const OFFSETS_V: RangeInclusive<f64> = -1e5..=1e5;
 
 /// `[reference.NAME]`
 pub(super) fn reference(
@@ -85,8 +93,8 @@ fn needed(table: &mut Table<'_>, declared: &Declared, settings: &[SettingSpec]) 
 /// The keys that say how records are acquired; those that are absent stay as the pair has them.
 pub(crate) fn overrides(table: &mut Table<'_>) -> Overrides {
     Overrides {
-        span_v: field::amount(table, "span", Unit::Volt, &(1e-4..=1e5)),
-        offset_v: field::amount(table, "offset", Unit::Volt, &(-1e5..=1e5)),
+        span_v: field::amount(table, "span", Unit::Volt, &SPANS_V),
+        offset_v: field::amount(table, "offset", Unit::Volt, &OFFSETS_V),
         interval_s: field::amount(table, "interval", Unit::Second, &(1e-13..=10.0)),
         points: field::whole(table, "points", &(FEWEST_POINTS..=MOST_POINTS)),
         averages: field::whole(table, "averages", &(1..=MOST_AVERAGES)),

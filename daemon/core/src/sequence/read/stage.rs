@@ -4,9 +4,11 @@ use std::ops::Range;
 
 use super::Context;
 use super::axis::{self, Axis};
-use crate::bench::{field, overrides};
+use crate::analysis::transfer::Choice;
+use crate::bench::{OFFSETS_V, SPANS_V, field, overrides};
 use crate::document::Table;
 use crate::sequence::step::{CapturePlan, DeskewPlan, Limit, OnLimit, OnVoid, VerifyPlan};
+use crate::sequence::transfer::TransferPlan;
 use crate::units::Unit;
 
 /// How deeply sweeps may be nested: three axes in each is more than any night has time for.
@@ -49,6 +51,7 @@ pub(super) enum What {
     Send { instrument: String, command: String },
     Set { setting: String, value: f64 },
     Sweep { axes: Vec<Axis>, inner: Vec<Stage> },
+    Transfer(TransferPlan),
     Verify(VerifyPlan),
     Wait { time_s: f64 },
 }
@@ -62,11 +65,12 @@ enum Kind {
     Send,
     Set,
     Sweep,
+    Transfer,
     Verify,
     Wait,
 }
 
-const KINDS: [(&str, Kind); 9] = [
+const KINDS: [(&str, Kind); 10] = [
     ("ask", Kind::Ask),
     ("capture", Kind::Capture),
     ("deskew", Kind::Deskew),
@@ -74,6 +78,7 @@ const KINDS: [(&str, Kind); 9] = [
     ("send", Kind::Send),
     ("set", Kind::Set),
     ("sweep", Kind::Sweep),
+    ("transfer", Kind::Transfer),
     ("verify", Kind::Verify),
     ("wait", Kind::Wait),
 ];
@@ -95,7 +100,8 @@ pub(super) fn read_list(table: &mut Table<'_>, key: &str, context: &Context<'_>,
 }
 
 fn read(table: &mut Table<'_>, kind: Kind, context: &Context<'_>, part: Part) -> Option<What> {
-    if matches!(part, Part::Always) && matches!(kind, Kind::Capture | Kind::Deskew | Kind::Sweep | Kind::Verify) {
+    let measures = matches!(kind, Kind::Capture | Kind::Deskew | Kind::Sweep | Kind::Transfer | Kind::Verify);
+    if matches!(part, Part::Always) && measures {
         table.mistakes().add(
             table.span(),
             "the `always` part neither measures nor sweeps",
@@ -115,6 +121,7 @@ fn read(table: &mut Table<'_>, kind: Kind, context: &Context<'_>, part: Part) ->
         Kind::Send => command(table, context, false).map(|(instrument, command)| What::Send { instrument, command }),
         Kind::Set => set(table, context),
         Kind::Sweep => sweep(table, context, part),
+        Kind::Transfer => transfer(table, context).map(What::Transfer),
         Kind::Verify => verify(table, context).map(What::Verify),
         Kind::Wait => field::amount(table, "time", Unit::Second, &(0.0..=LONGEST_WAIT_S))
             .or_else(|| table.missing("time", "say how long, such as `time = \"5 s\"`"))
@@ -219,6 +226,25 @@ fn deskew(table: &mut Table<'_>, context: &Context<'_>) -> Option<DeskewPlan> {
     Some(plan)
 }
 
+fn transfer(table: &mut Table<'_>, context: &Context<'_>) -> Option<TransferPlan> {
+    let pair = pair(table, context);
+    let reference = reference(table, "reference", context)
+        .or_else(|| table.missing("reference", "name a signal that both ranges can show"));
+    let span_v = field::amount(table, "span", Unit::Volt, &SPANS_V)
+        .or_else(|| table.missing("span", "the full vertical span of the new range at the tip"));
+    let offset_v = field::amount(table, "offset", Unit::Volt, &OFFSETS_V);
+    let choice = field::choice(table, "by", &Choice::NAMES);
+    let target = field::amount(table, "target_u_skew", Unit::Second, &(1e-15..=1e-6));
+    let most = field::whole(table, "most_acquisitions", &(2..=10_000));
+    let plan = TransferPlan::of(context.bench, &pair?, &reference?, span_v?, offset_v);
+    let help = "take another reference or range; both ranges have to show all of the reference";
+    let mut plan = plan.map_err(|error| table.mistakes().add(table.span(), error.to_string(), help)).ok()?;
+    plan.choice = choice.unwrap_or(plan.choice);
+    plan.target_u_skew_s = target.unwrap_or(plan.target_u_skew_s);
+    plan.most_acquisitions = most.unwrap_or(plan.most_acquisitions);
+    Some(plan)
+}
+
 fn verify(table: &mut Table<'_>, context: &Context<'_>) -> Option<VerifyPlan> {
     let pair = pair(table, context);
     let reference = reference(table, "reference", context);
@@ -241,16 +267,6 @@ fn capture(table: &mut Table<'_>, context: &Context<'_>) -> Option<CapturePlan> 
         .collect();
     let spec = context.bench.pair(&pair?)?;
     let acquisition = spec.acquisition.with(&overrides);
-    if on_void == OnVoid::Refuse && !acquisition.same_range(&spec.acquisition) {
-        table.mistakes().add(
-            table.span(),
-            format!(
-                "this capture is on another range than the corrections of pair `{}`, so it would be refused",
-                spec.name
-            ),
-            "leave `span` and `offset` out, declare a pair of its own for that range, or write `on_void = \"mark\"`",
-        );
-    }
     let channel = acquisition.trigger.channel;
     if channel != 0 && spec.leg_on(channel).is_none() {
         table.mistakes().add(

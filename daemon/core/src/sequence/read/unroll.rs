@@ -3,7 +3,8 @@
 use super::stage::{Stage, What};
 use crate::bench::{Bench, field::plain};
 use crate::document::Table;
-use crate::sequence::step::{Action, Step};
+use crate::sequence::step::{Action, CapturePlan, OnVoid, Step};
+use crate::sequence::transfer::TransferPlan;
 use crate::units::Unit;
 
 /// The most steps of a sequence: one each second is fourteen hours, and the journal of so many stays below 20 MB.
@@ -17,6 +18,7 @@ pub(super) fn unroll(stages: &[Stage], bench: &Bench, first: Option<Step>, top: 
         steps: first.into_iter().collect(),
         conditions: Vec::new(),
         tips: Tips::Unknown,
+        transfers: Vec::new(),
         wrong: false,
     };
     unrolling.stages(stages);
@@ -26,7 +28,7 @@ pub(super) fn unroll(stages: &[Stage], bench: &Bench, first: Option<Step>, top: 
 /// Where the tips are.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 enum Tips {
-    /// As a deskew or a verification left them.
+    /// As a deskew, a transfer or a verification left them.
     OnReference,
     /// As a route put them.
     Routed,
@@ -40,11 +42,13 @@ struct Unrolling<'a, 't> {
     steps: Vec<Step>,
     conditions: Vec<(String, f64)>,
     tips: Tips,
+    /// The transfers so far: a capture on one of their ranges has a correction.
+    transfers: Vec<&'a TransferPlan>,
     wrong: bool,
 }
 
-impl Unrolling<'_, '_> {
-    fn stages(&mut self, stages: &[Stage]) {
+impl<'a> Unrolling<'a, '_> {
+    fn stages(&mut self, stages: &'a [Stage]) {
         for stage in stages {
             if self.wrong {
                 return;
@@ -53,7 +57,7 @@ impl Unrolling<'_, '_> {
         }
     }
 
-    fn stage(&mut self, stage: &Stage) {
+    fn stage(&mut self, stage: &'a Stage) {
         match &stage.what {
             What::Ask { instrument, command } => {
                 let action = Action::Ask { instrument: instrument.clone(), command: command.clone() };
@@ -61,6 +65,7 @@ impl Unrolling<'_, '_> {
             }
             What::Capture(plan) => {
                 self.needs_route(stage);
+                self.needs_correction(stage, plan);
                 self.push(stage, Action::Capture(plan.clone()), format!("capture {}", plan.pair), 0.0);
             }
             What::Deskew(plan) => {
@@ -78,6 +83,11 @@ impl Unrolling<'_, '_> {
             }
             What::Set { setting, value } => self.set(stage, setting, *value),
             What::Sweep { axes, inner } => self.sweep(stage, axes, inner),
+            What::Transfer(plan) => {
+                self.tips = Tips::OnReference;
+                self.transfers.push(plan);
+                self.push(stage, Action::Transfer(plan.clone()), plan.in_words(), 0.0);
+            }
             What::Verify(plan) => {
                 self.tips = Tips::OnReference;
                 let text = format!("verify {} on {}", plan.pair, plan.reference);
@@ -90,7 +100,7 @@ impl Unrolling<'_, '_> {
     }
 
     /// The first axis turns slowest; each is set only when its value changes.
-    fn sweep(&mut self, stage: &Stage, axes: &[super::axis::Axis], inner: &[Stage]) {
+    fn sweep(&mut self, stage: &'a Stage, axes: &'a [super::axis::Axis], inner: &'a [Stage]) {
         let Some((axis, rest)) = axes.split_first() else {
             self.stages(inner);
             return;
@@ -130,11 +140,33 @@ impl Unrolling<'_, '_> {
         }
         let what = match self.tips {
             Tips::OnReference => {
-                "this capture comes after a deskew or a verification: the tips are still on its reference"
+                "this capture comes after a deskew, a transfer or a verification: the tips are still on its reference"
             }
             _ => "nothing is routed to the tips before this capture",
         };
         self.top.mistakes().add(stage.span.clone(), what, "put a stage with `do = \"route\"` before it");
+        self.wrong = true;
+    }
+
+    /// Where the pair's corrections do not hold a capture would be refused in the middle of the night.
+    fn needs_correction(&mut self, stage: &Stage, plan: &CapturePlan) {
+        let own = |pair: &crate::bench::PairSpec| plan.acquisition.same_range(&pair.acquisition);
+        let transferred = |to: &&TransferPlan| to.pair == plan.pair && to.leads_to(&plan.acquisition);
+        if plan.on_void != OnVoid::Refuse
+            || self.bench.pair(&plan.pair).is_some_and(own)
+            || self.transfers.iter().any(transferred)
+        {
+            return;
+        }
+        self.top.mistakes().add(
+            stage.span.clone(),
+            format!(
+                "this capture is on another range than the corrections of pair `{}`, so it would be refused",
+                plan.pair
+            ),
+            "leave `span` and `offset` out, put a stage with `do = \"transfer\"` to that range before it, or write \
+             `on_void = \"mark\"`",
+        );
         self.wrong = true;
     }
 
