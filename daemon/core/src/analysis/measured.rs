@@ -3,11 +3,11 @@
 
 use super::apply::{self, ApplyError};
 use super::budget::Basis;
-use super::figures::{Allowance, Figure, FigureInput, FigureKind, compute};
+use super::figures::{Allowance, Asked, Figure, FigureInput, FigureKind, compute};
 use super::leak::{self, LeakBound};
 use super::noise::{self, PairNoise};
 use super::rejection::RejectionBand;
-use super::{Correction, Record};
+use super::{Correction, Drift, Freedom, Record};
 
 /// What the records of a capture show.
 #[derive(Debug, Clone, PartialEq)]
@@ -28,6 +28,21 @@ pub struct Measured {
     pub warnings: Vec<String>,
 }
 
+/// What is known beside the records, and what is asked of their figures.
+#[derive(Debug, Clone, Copy, Default)]
+pub struct Known<'a> {
+    /// What the correction was verified to reach; may be empty.
+    pub rejection: &'a [RejectionBand],
+    /// Half-width of the scope's gain specification, relative.
+    pub scale_spec: Option<f64>,
+    /// How far the correction may have drifted since it was made.
+    pub drift: Drift,
+    /// How well its standard uncertainties are known.
+    pub freedom: Freedom,
+    /// Thresholds and bands of figures.
+    pub asked: Asked,
+}
+
 /// Corrects two records and computes the figures. `rejection` is what the correction was verified to reach (may be
 /// empty), `scale_spec` the half-width of the scope's gain specification, relative.
 ///
@@ -40,6 +55,20 @@ pub fn measure(
     rejection: &[RejectionBand],
     scale_spec: Option<f64>,
 ) -> Result<Measured, ApplyError> {
+    measure_with(p, n, correction, &Known { rejection, scale_spec, ..Known::default() })
+}
+
+/// As [`measure`], with all that is known of the correction and asked of the figures.
+///
+/// # Errors
+/// As [`measure`].
+pub fn measure_with(
+    p: &Record,
+    n: &Record,
+    correction: &Correction,
+    known: &Known<'_>,
+) -> Result<Measured, ApplyError> {
+    let Known { rejection, scale_spec, drift, freedom, asked } = *known;
     let mut warnings = Vec::new();
     let clipped = (p.clipped(), n.clipped());
     for (leg, count) in [("positive", clipped.0), ("negative", clipped.1)] {
@@ -56,7 +85,7 @@ pub fn measure(
     let corrected = apply::correct(p, n, correction)?;
     let plain_v = apply::plain(p, n)?;
     let noise = measured_noise(p, n, correction.gain.value, &mut warnings);
-    let leak = leak::bound(&corrected.common(), corrected.interval_s, correction, rejection);
+    let leak = leak::bound_after(&corrected.common(), corrected.interval_s, correction, rejection, &drift);
     let figures = compute(&FigureInput {
         corrected: &corrected,
         plain_v: Some(&plain_v),
@@ -70,7 +99,8 @@ pub fn measure(
         clipped_p: clipped.0,
         clipped_n: clipped.1,
         averages: p.averages.min(n.averages),
-        allowance: Allowance { noise_bins: noise.bins, ..Allowance::default() },
+        allowance: Allowance { noise_bins: noise.bins, drift, freedom, ..Allowance::default() },
+        asked,
     });
     if figures.iter().any(|f| f.kind == FigureKind::Rms && f.coverage.is_some_and(|c| c.basis == Basis::CommonMode)) {
         warnings.push(

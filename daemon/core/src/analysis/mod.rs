@@ -13,6 +13,7 @@ pub mod correction;
 pub mod deskew;
 pub mod figures;
 pub mod grade;
+pub mod harmonics;
 pub mod interpolate;
 pub mod leak;
 pub mod levels;
@@ -28,7 +29,8 @@ pub mod saved;
 pub mod signal;
 pub mod skew;
 pub mod spectrum;
+pub mod steepest;
 pub mod transition;
 
-pub use correction::{Correction, Estimate};
+pub use correction::{Correction, Drift, Estimate, Freedom};
 pub use record::{Record, Samples};

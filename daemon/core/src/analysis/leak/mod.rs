@@ -2,7 +2,7 @@
 //!
 //! Per frequency the residual `|D/C|` is taken as the larger of two bounds on the same thing: what a verification found
 //! (`10^(−after/20)`, interpolated in dB over log f, flat below its first band, growing with f above its last) and
-//! what the correction's uncertainty allows (k = 2). They are not added: the verification already contains
+//! what the correction's uncertainty allows (k = 2; what it may have drifted is part of that). They are not added: the verification already contains
 //! the correction's present error, the uncertainty says what that error may be where the verification cannot tell.
 //!
 //! *Rms* follows from the powers. *Peak*: if every frequency's residual had the worst phase the sum of all
@@ -20,7 +20,7 @@ use realfft::num_complex::Complex;
 
 use super::rejection::{RejectionBand, residual_of_uncertainty};
 use super::signal::{Signal, mean_and_square};
-use super::{Correction, band, peaks};
+use super::{Correction, Drift, band, peaks};
 
 mod long;
 
@@ -43,7 +43,7 @@ pub struct LeakBound {
 }
 
 /// The leak bound of a capture whose common mode is `common_v`, corrected with `correction`, for which `rejection` was
-/// found (may be empty).
+/// found (may be empty), as if the correction had been made just now.
 #[must_use]
 pub fn bound<S: Signal + ?Sized>(
     common_v: &S,
@@ -51,16 +51,28 @@ pub fn bound<S: Signal + ?Sized>(
     correction: &Correction,
     rejection: &[RejectionBand],
 ) -> LeakBound {
+    bound_after(common_v, interval_s, correction, rejection, &Drift::default())
+}
+
+/// As [`bound`], for a correction that may have drifted.
+#[must_use]
+pub fn bound_after<S: Signal + ?Sized>(
+    common_v: &S,
+    interval_s: f64,
+    correction: &Correction,
+    rejection: &[RejectionBand],
+    drift: &Drift,
+) -> LeakBound {
     let n = common_v.points();
     if n == 0 {
         return LeakBound { rms_v: 0.0, peak_v: 0.0, mean_v: 0.0, common_rms_v: 0.0, common_swing_v: 0.0 };
     }
     let mut bands: Vec<RejectionBand> = rejection.iter().copied().filter(|b| b.frequency_hz > 0.0).collect();
     bands.sort_by(|a, b| a.frequency_hz.total_cmp(&b.frequency_hz));
-    let residual = |f: f64| measured(&bands, f).max(residual_of_uncertainty(correction, f));
+    let wide = widened(correction, drift);
+    let residual = |f: f64| measured(&bands, f).max(residual_of_uncertainty(&wide, f));
     let (mean, square) = mean_and_square(common_v);
-    let offset_v = 2.0 * (correction.offset_v.u / correction.gain.value).abs();
-    let mean_v = (mean * residual(0.0)).abs() + offset_v;
+    let mean_v = at_zero(mean, measured(&bands, 0.0), correction, drift);
     let noise = peaks::noise_of(common_v);
     let moving = if n > LONGEST {
         long::filtered(common_v, interval_s, mean, noise, &residual)
@@ -80,6 +92,28 @@ pub fn bound<S: Signal + ?Sized>(
         common_rms_v: square.sqrt(),
         common_swing_v: extremes.1.value - extremes.0.value,
     }
+}
+
+/// The correction with what gain and skew may have drifted in their standard uncertainties.
+fn widened(correction: &Correction, drift: &Drift) -> Correction {
+    let mut wide = *correction;
+    wide.gain.u = wide.gain.u.hypot(wide.gain.value * drift.gain / 3.0f64.sqrt());
+    wide.skew_s.u = wide.skew_s.u.hypot(drift.skew_s / 3.0f64.sqrt());
+    wide
+}
+
+/// What a mean common mode can leave in the difference's mean: `δD = C·δg/g + δo/g`, the errors of gain and offset
+/// correlated, at a coverage factor of 2; or what the verification found of the gain, with what the offset may be off
+/// once the gain is known.
+fn at_zero(mean: f64, verified: f64, correction: &Correction, drift: &Drift) -> f64 {
+    let gain = correction.gain.value;
+    let r = correction.gain_offset.clamp(-1.0, 1.0);
+    let (of_gain, of_offset) = (mean * correction.gain.u / gain.abs(), (correction.offset_v.u / gain).abs());
+    let drifted = [mean * drift.gain, drift.offset_v / gain].map(|half| half * half / 3.0);
+    let both = of_gain * of_gain + of_offset * of_offset + 2.0 * r * of_gain * of_offset;
+    let sure = 2.0 * (both + drifted[0] + drifted[1]).max(0.0).sqrt();
+    let left = of_offset * (1.0 - r * r).sqrt();
+    sure.max((mean * verified).abs() + 2.0 * (left * left + drifted[1]).sqrt())
 }
 
 /// What the alternating part of a common mode leaks.
