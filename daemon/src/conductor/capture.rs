@@ -3,7 +3,7 @@
 use std::collections::BTreeMap;
 
 use evenpair_api::{self as api, CorrectionState, Quantity};
-use evenpair_core::analysis::measured::measure_with;
+use evenpair_core::analysis::measured::{Known, measure_with};
 use evenpair_core::bench::PairSpec;
 use evenpair_core::sequence::{CapturePlan, OnVoid};
 use tokio_util::sync::CancellationToken;
@@ -53,7 +53,8 @@ pub(crate) async fn capture(
     let beyond = correction.beyond();
     let scale_spec = workshop.bench.instrument(&pair.scope).and_then(|scope| scope.scale_spec);
     let work = move || {
-        let measured = measure_with(&positive, &negative, &software, &beyond, &bands, scale_spec);
+        let known = Known { beyond: Some(&beyond), rejection: &bands, scale_spec, ..Known::default() };
+        let measured = measure_with(&positive, &negative, &software, &known);
         measured.map(|measured| (positive, negative, measured))
     };
     let (positive, negative, mut measured) = compute("correcting a capture", work)

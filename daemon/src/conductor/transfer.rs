@@ -118,8 +118,10 @@ async fn make(
     (correction.state, correction.reasons) = judge(&correction, pair, &conditions, workshop.clock.now());
     // With the tips on two nodes there is no common mode to reject.
     if both_on_one_node {
-        let bands = verify::on_range(workshop, scope, &correction, reference, new, wish.set, tell, stop).await?;
-        correction.rejection = super::correction::rejection_points(&bands);
+        let shown = verify::on_range(workshop, scope, &correction, reference, new, wish.set, tell, stop).await?;
+        correction.rejection = super::correction::rejection_points(&shown.bands);
+        let seen = shown.limit.as_ref().map(api::RejectionLimit::from);
+        correction.limit = seen.or(correction.limit);
     }
     workshop.store.put_correction(&correction).await?;
     tell.corrected(&correction).await?;

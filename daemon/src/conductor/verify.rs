@@ -81,7 +81,7 @@ pub(crate) async fn on_range(
     set: &[(String, f64)],
     tell: &Tell,
     stop: &CancellationToken,
-) -> Result<Vec<RejectionBand>, Trouble> {
+) -> Result<Shown, Trouble> {
     scope.prepare(acquisition).await?;
     workshop.start_reference(reference, stop).await?;
     let outcome = acquire_and_measure(scope, correction, *acquisition, tell, stop).await;

@@ -7,7 +7,7 @@
 
 mod scene;
 
-use evenpair_core::analysis::figures::{Allowance, Figure, FigureInput, FigureKind, compute};
+use evenpair_core::analysis::figures::{Allowance, Asked, Figure, FigureInput, FigureKind, compute};
 use evenpair_core::analysis::interpolate::TAPS;
 use evenpair_core::analysis::skew::{Reference, Shape, estimate_records};
 use evenpair_core::analysis::{Correction, Estimate, Record, Samples, apply, leak, rejection};
@@ -107,6 +107,7 @@ fn run(scene: &Scene, wish: &Wish) -> Result<(), Box<dyn Error>> {
             clipped_n: clipped.1,
             averages: 1,
             allowance: Allowance::default(),
+            asked: Asked::default(),
         })
     });
     if wish.show {
@@ -169,6 +170,7 @@ fn memory_beyond(scene: &Scene) -> Result<Option<u64>, Box<dyn Error>> {
         clipped_n: 0,
         averages: 1,
         allowance: Allowance::default(),
+        asked: Asked::default(),
     });
     check(&figures, SKEW_S)?;
     Ok(before.zip(memory_peak()).map(|(before, after)| after.saturating_sub(before)))

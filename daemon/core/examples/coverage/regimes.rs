@@ -5,7 +5,7 @@
 
 use std::f64::consts::TAU;
 
-use evenpair_core::analysis::figures::{Allowance, Drift, Figure, FigureInput, FigureKind, compute};
+use evenpair_core::analysis::figures::{Allowance, Asked, Drift, Figure, FigureInput, FigureKind, compute};
 use evenpair_core::analysis::leak::LeakBound;
 use evenpair_core::analysis::skew::{Reference, Shape, estimate_records};
 use evenpair_core::analysis::{Record, Samples, apply, noise};
@@ -160,6 +160,7 @@ pub(crate) fn case(regime: &Regime, seed: u64) -> Option<Outcome> {
         clipped_n: n.clipped(),
         averages: 1,
         allowance: Allowance { scale_u: u, noise_bins: noise.bins, drift: regime.drift, ..Allowance::default() },
+        asked: Asked::default(),
     });
     let truth: Vec<f64> =
         (corrected.first..corrected.first + corrected.difference_v.len()).map(|i| difference(i as f64)).collect();

@@ -27,6 +27,39 @@ pub struct Correction {
     pub gain_offset: f64,
 }
 
+/// How far a correction may have moved since it was made, as half-widths of rectangular distributions (JCGM 100, 4.3.7).
+#[derive(Debug, Clone, Copy, Default, PartialEq)]
+pub struct Drift {
+    /// Of the gain, relative: 0.002 for ±0.2 %.
+    pub gain: f64,
+    /// Of the skew in seconds.
+    pub skew_s: f64,
+    /// Of the offset in volts at the tips of the negative leg.
+    pub offset_v: f64,
+}
+
+impl Drift {
+    /// What may have moved after `age_s`, where these are the half-widths within `max_age_s`: they count whole from the
+    /// beginning, for warming up and a probe that is touched do not wait, and in proportion once it is older than that.
+    #[must_use]
+    pub fn after(self, age_s: f64, max_age_s: f64) -> Self {
+        let part = if age_s > max_age_s && max_age_s > 0.0 { age_s / max_age_s } else { 1.0 };
+        Self { gain: self.gain * part, skew_s: self.skew_s * part, offset_v: self.offset_v * part }
+    }
+}
+
+/// Degrees of freedom of a correction's standard uncertainties (JCGM 100, G.3): `None` where an uncertainty is not that of
+/// a few repeats' scatter, and is taken as well known.
+#[derive(Debug, Clone, Copy, Default, PartialEq)]
+pub struct Freedom {
+    /// Of the gain's.
+    pub gain: Option<f64>,
+    /// Of the skew's.
+    pub skew: Option<f64>,
+    /// Of the offset's.
+    pub offset: Option<f64>,
+}
+
 impl Correction {
     /// The correction that changes nothing and claims nothing: plain subtraction.
     #[must_use]

@@ -3,11 +3,11 @@
 
 use super::apply::{self, ApplyError};
 use super::budget::Basis;
-use super::figures::{Allowance, Figure, FigureInput, FigureKind, compute};
+use super::figures::{Allowance, Asked, Figure, FigureInput, FigureKind, compute};
 use super::leak::{self, LeakBound};
 use super::noise::{self, PairNoise};
 use super::rejection::RejectionBand;
-use super::{Beyond, Correction, Record, response};
+use super::{Beyond, Correction, Drift, Freedom, Record, response};
 
 /// What the records of a capture show.
 #[derive(Debug, Clone, PartialEq)]
@@ -28,7 +28,25 @@ pub struct Measured {
     pub warnings: Vec<String>,
 }
 
-/// As [`measure_with`], nothing being known beyond gain, skew and offset.
+/// What is known beside the records, and what is asked of their figures.
+#[derive(Debug, Clone, Copy, Default)]
+pub struct Known<'a> {
+    /// What is known beyond gain, skew and offset, if anything.
+    pub beyond: Option<&'a Beyond>,
+    /// What the correction was verified to reach; may be empty.
+    pub rejection: &'a [RejectionBand],
+    /// Half-width of the scope's gain specification, relative.
+    pub scale_spec: Option<f64>,
+    /// How far the correction may have drifted since it was made.
+    pub drift: Drift,
+    /// How well its standard uncertainties are known.
+    pub freedom: Freedom,
+    /// Thresholds and bands of figures.
+    pub asked: Asked,
+}
+
+/// Corrects two records and computes the figures. `rejection` is what the correction was verified to reach (may be
+/// empty), `scale_spec` the half-width of the scope's gain specification, relative.
 ///
 /// # Errors
 /// As [`measure_with`].
@@ -39,12 +57,11 @@ pub fn measure(
     rejection: &[RejectionBand],
     scale_spec: Option<f64>,
 ) -> Result<Measured, ApplyError> {
-    measure_with(p, n, correction, &Beyond::default(), rejection, scale_spec)
+    measure_with(p, n, correction, &Known { rejection, scale_spec, ..Known::default() })
 }
 
-/// Corrects two records and computes the figures. `rejection` is what the correction was verified to reach (may be
-/// empty), `scale_spec` the half-width of the scope's gain specification, relative. A response that does not hold for the
-/// records is left out, with a warning.
+/// As [`measure`], with all that is known of the correction and asked of the figures. A response that does not hold for
+/// the records is left out, with a warning.
 ///
 /// # Errors
 /// When the records do not belong together or the correction cannot be applied.
@@ -52,10 +69,11 @@ pub fn measure_with(
     p: &Record,
     n: &Record,
     correction: &Correction,
-    beyond: &Beyond,
-    rejection: &[RejectionBand],
-    scale_spec: Option<f64>,
+    known: &Known<'_>,
 ) -> Result<Measured, ApplyError> {
+    let Known { rejection, scale_spec, drift, freedom, asked, .. } = *known;
+    let nothing = Beyond::default();
+    let beyond = known.beyond.unwrap_or(&nothing);
     let mut warnings = Vec::new();
     let clipped = (p.clipped(), n.clipped());
     for (leg, count) in [("positive", clipped.0), ("negative", clipped.1)] {
@@ -92,7 +110,7 @@ pub fn measure_with(
     }
     let plain_v = apply::plain(p, n)?;
     let noise = measured_noise(p, n, correction.gain.value, &mut warnings);
-    let leak = leak::bound_with(&corrected.common(), corrected.interval_s, &correction, &rejection, &beyond);
+    let leak = leak::bound_with(&corrected.common(), corrected.interval_s, &correction, &rejection, &beyond, &drift);
     let figures = compute(&FigureInput {
         corrected: &corrected,
         plain_v: Some(&plain_v),
@@ -108,10 +126,13 @@ pub fn measure_with(
         averages: p.averages.min(n.averages),
         allowance: Allowance {
             noise_bins: noise.bins,
+            drift,
+            freedom,
             compensation: beyond.left(&corrected.negative_v, corrected.interval_s),
             response: beyond.remains(&corrected),
             ..Allowance::default()
         },
+        asked,
     });
     if figures.iter().any(|f| f.kind == FigureKind::Rms && f.coverage.is_some_and(|c| c.basis == Basis::CommonMode)) {
         warnings.push(

@@ -6,6 +6,7 @@
 //! `ψ(z) = z·Φ(z/u) + u·φ(z/u)`, the integral of the normal distribution's Φ (JCGM 101, 6.4.2 and 6.4.7 for the two
 //! distributions; the convolution is elementary).
 
+use statrs::distribution::{ContinuousCDF, StudentsT};
 use statrs::function::erf::erfc;
 
 use super::{Distribution, Term, variance};
@@ -70,8 +71,27 @@ impl Coverage {
     }
 }
 
+/// The effective degrees of freedom of terms by the Welch–Satterthwaite formula, `u⁴/Σ(u_i⁴/ν_i)` with u² the sum of their
+/// variances (JCGM 100, equation G.2b); `None` where every term is well known. Never below the fewest of any term,
+/// which the formula keeps to by itself only where terms are not correlated.
+#[must_use]
+pub fn effective_freedom(terms: &[Term], variance: f64) -> Option<f64> {
+    let few = || terms.iter().filter_map(|t| t.freedom.filter(|v| *v > 0.0).map(|v| (t.u, v)));
+    let sum: f64 = few().map(|(u, v)| u.powi(4) / v).sum();
+    let fewest = few().filter(|(u, _)| *u > 0.0).map(|(_, v)| v).reduce(f64::min)?;
+    (sum > 0.0).then(|| (variance * variance / sum).max(fewest))
+}
+
+/// How much wider than a normal distribution Student's is at 95 %, for so many degrees of freedom.
+#[must_use]
+pub fn widening(freedom: Option<f64>) -> f64 {
+    let student = freedom.and_then(|freedom| StudentsT::new(0.0, 1.0, freedom).ok());
+    student.map_or(1.0, |t| (t.inverse_cdf(0.5 * (1.0 + PROBABILITY)) / NORMAL).max(1.0))
+}
+
 /// The expanded uncertainty U95 of a budget: its largest rectangular term convolved with a normal distribution that has
-/// the variance of all others.
+/// the variance of all others. Where some of these come from few repeats the normal distribution is as wide as Student's
+/// is at 95 % with the effective degrees of freedom (JCGM 100, G.4.1).
 #[must_use]
 pub fn expanded(terms: &[Term]) -> (f64, Basis) {
     let rectangular = terms.iter().filter(|t| t.distribution == Distribution::Rectangular);
@@ -79,6 +99,7 @@ pub fn expanded(terms: &[Term]) -> (f64, Basis) {
     let rest = (variance(terms) - largest * largest).max(0.0).sqrt();
     // Below a fifth of the rest its shape moves the half-width by less than a part in 5000.
     let basis = if largest > 0.2 * rest { Basis::Rectangular } else { Basis::Normal };
+    let rest = rest * widening(effective_freedom(terms, rest * rest));
     (half_width(rest, 3.0f64.sqrt() * largest), basis)
 }
 

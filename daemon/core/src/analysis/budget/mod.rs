@@ -5,7 +5,7 @@ use nalgebra::{DMatrix, DVector};
 
 mod coverage;
 
-pub use coverage::{Basis, Coverage, PROBABILITY, expanded, half_width};
+pub use coverage::{Basis, Coverage, PROBABILITY, effective_freedom, expanded, half_width, widening};
 
 /// How a term was evaluated (JCGM 100, 4.2 and 4.3).
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -74,6 +74,8 @@ pub struct Term {
     pub sensitivity: Option<f64>,
     /// The other term that it is correlated with. Both of a pair say it.
     pub correlated: Option<Correlated>,
+    /// Degrees of freedom of `u` (JCGM 100, 4.2.6 and G.3); `None` where it is taken as well known.
+    pub freedom: Option<f64>,
 }
 
 impl Term {

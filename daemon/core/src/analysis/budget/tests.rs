@@ -54,7 +54,7 @@ fn terms_combine_in_quadrature_and_share_the_variance() {
 }
 
 fn term(name: &'static str, u: f64, distribution: Distribution) -> Term {
-    Term { name, u, kind: Kind::B, distribution, sensitivity: None, correlated: None }
+    Term { name, u, kind: Kind::B, distribution, sensitivity: None, correlated: None, freedom: None }
 }
 
 /// JCGM 100, equation 16, by hand: 3² + 4² + 2·r·3·4.
@@ -156,4 +156,26 @@ fn quantisation_matches_the_quantiser() {
     // Without noise the error is uniform; its fundamental has 0.225 of the step against the whole's 0.289.
     assert!((quantisation(2.0, 0.0) - 0.4502).abs() < 1e-4);
     assert!(quantisation(0.0, 0.1).abs() < 1e-300);
+}
+
+/// JCGM 100, H.1.6 (end gauge; from memory of the guide): 25 nm with 18 degrees of freedom, 9.7 nm with 25.6, 2.9 nm with 50
+/// and 16.6 nm with 2 are 31.7 nm with 16.7 together. Table G.2 (from memory): t₉₅(4) = 2.78, t₉₅(1) = 12.71.
+#[test]
+fn few_repeats_widen_the_interval() {
+    let known = |name, u, freedom| Term { freedom: Some(freedom), ..term(name, u, Distribution::Normal) };
+    let gauge = [known("a", 25.0, 18.0), known("b", 9.7, 25.6), known("c", 2.9, 50.0), known("d", 16.6, 2.0)];
+    let variance = gauge.iter().map(|t| t.u * t.u).sum();
+    let freedom = effective_freedom(&gauge, variance).unwrap();
+    assert!((freedom - 16.7).abs() < 0.1, "{freedom}");
+    assert!(effective_freedom(&[term("noise", 1.0, Distribution::Normal)], 1.0).is_none());
+    let (half, basis) = expanded(&[known("gain", 1.0, 4.0)]);
+    assert!((half - 2.776).abs() < 1e-3 && basis == Basis::Normal, "{half}");
+    assert!((expanded(&[known("gain", 1.0, 1.0)]).0 - 12.706).abs() < 1e-2);
+    // Beside a larger term that is well known, few repeats hardly count.
+    let beside = expanded(&[known("gain", 1.0, 4.0), term("noise", 5.0, Distribution::Normal)]).0;
+    assert!(beside / (1.96 * 26.0f64.sqrt()) < 1.001, "{beside}");
+    // Terms that cancel do not make the repeats better known than the poorest of them.
+    assert!(
+        (effective_freedom(&[known("gain", 1.0, 3.0), known("offset", 1.0, 3.0)], 0.1).unwrap() - 3.0).abs() < 1e-12
+    );
 }

@@ -18,6 +18,9 @@ pub struct Mean {
     pub estimate: Estimate,
     /// The factor k for 95 %: 2, or Student's for the few repeats whose scatter `u` is taken from (JCGM 100, G.3).
     pub coverage_factor: f64,
+    /// Degrees of freedom of the standard uncertainty where the scatter of few repeats made it; `None` where the single
+    /// estimates promise more than they scatter.
+    pub freedom: Option<f64>,
     /// Standard uncertainty that the single estimates promise together.
     pub promised: f64,
     /// Standard uncertainty that their scatter shows; `None` for a single one.
@@ -39,6 +42,16 @@ pub struct Combined {
     pub repeats: usize,
     /// Each kind of warning once, with the last repeat's values.
     pub warnings: Vec<Warning>,
+}
+
+impl Mean {
+    /// Degrees of freedom once a well-known standard uncertainty is added in quadrature (JCGM 100, equation G.2b).
+    #[must_use]
+    pub fn freedom_beside(&self, added: f64) -> Option<f64> {
+        let u = self.estimate.u;
+        let whole = if u > 0.0 { (u.hypot(added) / u).powi(4) } else { 1.0 };
+        self.freedom.map(|freedom| freedom * whole)
+    }
 }
 
 impl Combined {
@@ -127,7 +140,8 @@ pub(super) fn weighted(values: &[Estimate], independent: bool) -> Mean {
     });
     let shows = scatter.filter(|scatter| *scatter > promised);
     let coverage_factor = shows.map_or(2.0, |_| student(count - 1.0));
-    Mean { estimate: Estimate { value, u: shows.unwrap_or(promised) }, coverage_factor, promised, scatter }
+    let freedom = shows.map(|_| count - 1.0);
+    Mean { estimate: Estimate { value, u: shows.unwrap_or(promised) }, coverage_factor, freedom, promised, scatter }
 }
 
 /// Student's two-sided 95.45 % point for `freedom` degrees of freedom (2 in the limit).

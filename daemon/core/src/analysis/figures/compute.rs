@@ -13,26 +13,47 @@ use super::sums::without_noise;
 use super::{Figure, FigureInput, FigureKind};
 
 /// A figure before it is graded.
-struct Found {
-    value: f64,
-    parts: Parts,
+pub(super) struct Found {
+    pub(super) value: f64,
+    pub(super) parts: Parts,
     /// What the leak bound can have added to it, in its unit.
-    leak: f64,
+    pub(super) leak: f64,
     /// The magnitude the leak is weighed against: the figure's own, for a level the amplitude.
-    size: f64,
+    pub(super) size: f64,
+}
+
+impl Found {
+    /// The same in another unit.
+    pub(super) fn times(self, factor: f64) -> Self {
+        Self {
+            value: self.value * factor,
+            parts: self.parts.times(factor),
+            leak: self.leak * factor,
+            size: self.size * factor,
+        }
+    }
 }
 
 /// Every figure of a capture, in the order of [`FigureKind::all`].
 ///
 /// The leak bound counts for a figure as follows: its part at zero frequency for the mean and the area; its rms for the
 /// rms and each level, twice for the amplitude; its peak for the extremes, twice from peak to peak; its peak over the
-/// amplitude for overshoot and undershoot; its peak over the slopes for times. The common mode's own figures have none.
+/// amplitude for overshoot, undershoot and the pre-transition aberration; its peak over the slopes for times and slopes; its
+/// rms over the fundamental's for the distortion. The common mode's own figures have none.
+///
+/// A figure that needs a threshold is left out where none is asked for.
 #[must_use]
 pub fn compute(input: &FigureInput<'_>) -> Vec<Figure> {
     let bench = Bench::of(input);
     let plain = Plain::of(input);
     let clipped = input.clipped_p + input.clipped_n;
+    let asked = input.asked.thresholds;
     FigureKind::all()
+        .filter(|kind| match kind {
+            FigureKind::TimeAbove => asked.high_v.is_some(),
+            FigureKind::TimeBelow => asked.low_v.is_some(),
+            _ => true,
+        })
         .map(|kind| {
             let found = bench.figure(kind).and_then(|f| {
                 let sum = f.value + budget::combined(&f.parts.budget(&bench.sources));
@@ -53,6 +74,11 @@ pub fn compute(input: &FigureInput<'_>) -> Vec<Figure> {
                     let valid = why.is_none();
                     let coverage = valid.then(|| match kind {
                         FigureKind::Rms => power::coverage(input, &bench.sources, &bench.moments, found.value, &budget),
+                        // None of these can be less than nothing.
+                        FigureKind::Jitter | FigureKind::PreAberration | FigureKind::Thd => {
+                            let whole = Coverage::of(found.value, &budget);
+                            Coverage { low: whole.low.max(0.0), ..whole }
+                        }
                         _ => Coverage::of(found.value, &budget),
                     });
                     Figure { kind, value: found.value, u, coverage, plain, valid, why, budget, grade }
@@ -74,13 +100,13 @@ pub fn compute(input: &FigureInput<'_>) -> Vec<Figure> {
 }
 
 /// The capture, its shape, and its shape with gain and skew moved by their uncertainties.
-struct Bench<'a> {
-    input: &'a FigureInput<'a>,
-    sources: Sources,
-    layout: Layout,
-    shape: Shape,
+pub(super) struct Bench<'a> {
+    pub(super) input: &'a FigureInput<'a>,
+    pub(super) sources: Sources,
+    pub(super) layout: Layout,
+    pub(super) shape: Shape,
     /// Means of D, N_c, its slope N_c' and their products.
-    moments: Moments,
+    pub(super) moments: Moments,
     /// Means of N_c and of N_c' over the samples of the low and of the high state.
     at_states: [(f64, f64); 2],
     /// Shapes with the gain a standard uncertainty up and down.
@@ -115,23 +141,32 @@ impl<'a> Bench<'a> {
         Self { input, moments: corrected.moments(), sources, layout, shape, at_states, by_gain, by_skew }
     }
 
+    /// The levels once the difference is moved by `step` along what the gain (0) or the skew (1) adds to it.
+    pub(super) fn between(&self, derivative: usize, step: f64) -> (f64, f64) {
+        let ((low, high), at) = (self.layout.between(), self.at_states[derivative]);
+        (low + step * at.0, high + step * at.1)
+    }
+
     fn figure(&self, kind: FigureKind) -> Result<Found, String> {
         let interval_s = self.input.corrected.interval_s;
         match kind {
             FigureKind::Mean => Ok(self.mean()),
             FigureKind::Area => {
                 let duration_s = self.input.corrected.difference_v.len() as f64 * interval_s;
-                let mean = self.mean();
-                Ok(Found {
-                    value: mean.value * duration_s,
-                    parts: mean.parts.times(duration_s),
-                    leak: mean.leak * duration_s,
-                    size: mean.size * duration_s,
-                })
+                Ok(self.mean().times(duration_s))
             }
             FigureKind::Rms => Ok(self.rms()),
             FigureKind::CommonRms => Ok(self.common_rms()),
             FigureKind::CommonSwing => Ok(self.common_swing()),
+            FigureKind::CommonSlew => self.common_slew(),
+            FigureKind::RiseSlew => self.transition_slew(|s| &s.rise),
+            FigureKind::FallSlew => self.transition_slew(|s| &s.fall),
+            FigureKind::PreAberration => self.pre_aberration(),
+            FigureKind::SettlingTime => self.settling(),
+            FigureKind::Jitter => self.jitter(),
+            FigureKind::TimeAbove => self.dwell(self.input.asked.thresholds.high_v.unwrap_or(0.0), true),
+            FigureKind::TimeBelow => self.dwell(self.input.asked.thresholds.low_v.unwrap_or(0.0), false),
+            FigureKind::Thd => self.distortion(),
             FigureKind::HighLevel | FigureKind::LowLevel | FigureKind::Amplitude => self.level(kind),
             FigureKind::Maximum => Ok(self.extreme(|s| Ok(s.maximum), 1.0, 1.0)),
             FigureKind::Minimum => Ok(self.extreme(|s| Ok(s.minimum), 1.0, 1.0)),
@@ -236,7 +271,7 @@ impl<'a> Bench<'a> {
         Found { value, parts, leak: 0.0, size: value }
     }
 
-    fn level(&self, kind: FigureKind) -> Result<Found, String> {
+    pub(super) fn level(&self, kind: FigureKind) -> Result<Found, String> {
         let levels = self.layout.levels.as_ref().map_err(ToString::to_string)?;
         let s = &self.sources;
         // With noise unknown or too small a claim the samples' own spread counts.
@@ -287,7 +322,11 @@ impl<'a> Bench<'a> {
 
     /// A figure without scale and offset. `moves` says how far a disturbance, given in parts of the amplitude, can move
     /// it.
-    fn ratio(&self, read: impl Fn(&Shape) -> Reading, moves: impl Fn(f64, f64) -> f64) -> Result<Found, String> {
+    pub(super) fn ratio(
+        &self,
+        read: impl Fn(&Shape) -> Reading,
+        moves: impl Fn(f64, f64) -> f64,
+    ) -> Result<Found, String> {
         let Read { value, u } = read(&self.shape)?;
         let (low, high) = self.layout.between();
         let amplitude = high - low;
@@ -304,14 +343,7 @@ impl<'a> Bench<'a> {
 
     /// As [`Bench::ratio`], from samples to seconds.
     fn time(&self, read: impl Fn(&Shape) -> Reading, moves: impl Fn(f64, f64) -> f64) -> Result<Found, String> {
-        let found = self.ratio(read, moves)?;
-        let interval_s = self.input.corrected.interval_s;
-        Ok(Found {
-            value: found.value * interval_s,
-            parts: found.parts.times(interval_s),
-            leak: found.leak * interval_s,
-            size: found.size * interval_s,
-        })
+        Ok(self.ratio(read, moves)?.times(self.input.corrected.interval_s))
     }
 
     fn period(&self) -> Result<Found, String> {

@@ -36,6 +36,7 @@ fn every_term_of_mean_and_rms_is_gtcs() {
         clipped_n: 0,
         averages: 1,
         allowance: Allowance::default(),
+        asked: Asked::default(),
     });
     for (kind, name) in [(FigureKind::Mean, "mean"), (FigureKind::Rms, "rms")] {
         let expected = &file[name];
@@ -95,6 +96,7 @@ fn sensitivities_are_per_unit_of_their_source() {
         clipped_n: 0,
         averages: 1,
         allowance: Allowance { drift, scale_u: 1e-3, ..Allowance::default() },
+        asked: Asked::default(),
     };
     let figures = compute(&input);
     let mean = of(&figures, FigureKind::Mean);

@@ -12,8 +12,10 @@
 //! specification of it is known here.
 //!
 //! Every valid figure has an interval of 95 % ([`Coverage`]): from the budget, its largest rectangular term convolved with
-//! the rest; for an rms that the common mode limits, or that is hardly more than its uncertainty, by propagation
+//! the rest, which is as wide as Student's distribution where few repeats made it (JCGM 100, G.4); for an rms that the common mode limits, or that is hardly more than its uncertainty, by propagation
 //! ([`super::montecarlo`]).
+
+pub use super::correction::{Drift, Freedom};
 
 use super::Correction;
 use super::apply::{Corrected, Plain};
@@ -22,14 +24,23 @@ use super::compensation::Left;
 use super::grade::Grade;
 use super::leak::{LeakBound, Moving};
 
+mod asked;
+mod before;
 mod compute;
+mod distortion;
+mod dwell;
+mod jitter;
 mod kind;
+mod moving;
 mod plain;
 mod power;
+mod settle;
 mod shape;
+mod slew;
 mod sources;
 mod sums;
 
+pub use asked::{Asked, SETTLING_BAND, Thresholds};
 pub use compute::compute;
 pub use kind::FigureKind;
 
@@ -62,6 +73,8 @@ pub struct FigureInput<'a> {
     pub averages: u32,
     /// What the budget allows for beside that.
     pub allowance: Allowance,
+    /// Thresholds and bands that figures are read at.
+    pub asked: Asked,
 }
 
 /// What a budget allows for beside the correction's own uncertainty and the scope's specification. The default allows
@@ -78,17 +91,8 @@ pub struct Allowance {
     pub compensation: Left,
     /// What a response that was applied leaves of the common mode, its mean apart: rms, and peak of its envelope.
     pub response: Moving,
-}
-
-/// How far a correction may have moved, as half-widths of rectangular distributions (JCGM 100, 4.3.7).
-#[derive(Debug, Clone, Copy, Default, PartialEq)]
-pub struct Drift {
-    /// Of the gain, relative: 0.002 for ±0.2 %.
-    pub gain: f64,
-    /// Of the skew in seconds.
-    pub skew_s: f64,
-    /// Of the offset in volts at the tips of the negative leg.
-    pub offset_v: f64,
+    /// How well the correction's standard uncertainties are known themselves.
+    pub freedom: Freedom,
 }
 
 /// A figure of the corrected difference (or of the common mode).

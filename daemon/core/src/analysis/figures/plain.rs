@@ -49,7 +49,17 @@ impl Plain {
             FigureKind::Period => time(&self.shape.period),
             FigureKind::Frequency => time(&self.shape.period).map(|p| 1.0 / p),
             FigureKind::Duty => value(&self.shape.duty),
-            FigureKind::CommonRms | FigureKind::CommonSwing => None,
+            FigureKind::RiseSlew => time(&self.shape.rise).map(|t| 0.8 * self.shape.amplitude / t),
+            FigureKind::FallSlew => time(&self.shape.fall).map(|t| 0.8 * self.shape.amplitude / t),
+            FigureKind::CommonRms
+            | FigureKind::CommonSlew
+            | FigureKind::CommonSwing
+            | FigureKind::Jitter
+            | FigureKind::PreAberration
+            | FigureKind::SettlingTime
+            | FigureKind::Thd
+            | FigureKind::TimeAbove
+            | FigureKind::TimeBelow => None,
         }
     }
 }

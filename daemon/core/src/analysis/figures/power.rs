@@ -53,6 +53,9 @@ pub(super) fn coverage(
     }
     let added_v = sources.quantisation_v.hypot(sources.compensation.swing_v).hypot(sources.response.rms);
     let others = Others { scale_u: sources.scale_u, scale_half: sources.scale * 3.0f64.sqrt(), added_v };
+    // Few repeats: drawn as wide as Student's distribution is at 95 % (JCGM 101, 6.4.9, to that point).
+    let mut errors = sources.errors;
+    errors.u.iter_mut().zip(sources.freedom).for_each(|(u, freedom)| *u *= budget::widening(freedom));
     let (low, high) = montecarlo::interval(&model, &errors, &others);
     // The measured value lies within its own interval, also where noise has made its square negative.
     let basis = if limited { Basis::CommonMode } else { Basis::Propagated };

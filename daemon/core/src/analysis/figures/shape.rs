@@ -21,11 +21,11 @@ const ENOUGH_EDGES: usize = 24;
 const MOST_CYCLES: usize = 128;
 
 /// From this many repeats on, their scatter is trusted to show what the noise alone does not: jitter.
-const ENOUGH_REPEATS: usize = 5;
+pub(super) const ENOUGH_REPEATS: usize = 5;
 
 /// A flat stretch has its extreme where noise made it: what is left of that lift after the fit, in parts of a single
 /// fit's uncertainty. It is the same in every cycle (measured: 0.63).
-const CHOICE: f64 = 0.63;
+pub(super) const CHOICE: f64 = 0.63;
 
 /// Cycles that differ by more than this part of the period are none.
 const MOST_IRREGULARITY: f64 = 0.1;
@@ -45,9 +45,9 @@ pub(super) struct Layout {
     low: f64,
     high: f64,
     /// Every transition, and which of them are measured.
-    edges: Vec<Edge>,
+    pub(super) edges: Vec<Edge>,
     chosen: Vec<usize>,
-    cycles: Vec<Range<usize>>,
+    pub(super) cycles: Vec<Range<usize>>,
 }
 
 /// What a waveform reads.
@@ -62,6 +62,10 @@ pub(super) struct Shape {
     pub(super) minimum: Read,
     /// Where each cycle has its lowest and its highest value.
     extremes: Vec<(Extreme, Extreme)>,
+    /// The transitions that were measured, each with its place among the layout's.
+    pub(super) measured: Vec<(usize, Transition)>,
+    /// High level less low level.
+    pub(super) amplitude: f64,
     /// Longest mean duration of a transition, in samples; 0 without any.
     pub(super) slowest: f64,
     /// How many periods lie between the first and the last 50 % point that the period was taken from.
@@ -179,13 +183,15 @@ impl Layout {
             maximum: extreme(|both| both.1),
             minimum: extreme(|both| both.0),
             extremes: found,
+            measured,
+            amplitude: high - low,
             periods,
         }
     }
 }
 
 /// Mean of repeats; its uncertainty is the larger of what noise and what scatter say.
-fn mean(reads: impl Iterator<Item = Read>) -> Option<Read> {
+pub(super) fn mean(reads: impl Iterator<Item = Read>) -> Option<Read> {
     let reads: Vec<Read> = reads.collect();
     if reads.is_empty() {
         return None;

@@ -4,7 +4,7 @@ use super::super::budget::{self, Correlated, Distribution, Kind, Term};
 use super::super::compensation::Left;
 use super::super::leak::Moving;
 use super::super::montecarlo::Errors;
-use super::FigureInput;
+use super::{FigureInput, Freedom};
 
 /// The sources that all figures of a capture share.
 pub(super) struct Sources {
@@ -28,6 +28,10 @@ pub(super) struct Sources {
     pub(super) response: Moving,
     /// The correction's errors as they appear in the difference: gain relative, skew in seconds, offset over g.
     pub(super) errors: Errors,
+    /// Degrees of freedom of their standard uncertainties, in the same order.
+    pub(super) freedom: [Option<f64>; 3],
+    /// Degrees of freedom of the noise.
+    noise_freedom: Option<f64>,
 }
 
 /// What moves a figure: for the correction's errors sensitivities of either sign, for the rest standard uncertainties.
@@ -81,6 +85,11 @@ impl Sources {
                 drift: [drift.gain, drift.skew_s, drift.offset_v / gain.abs()],
                 gain_offset: correction.gain_offset.clamp(-1.0, 1.0),
             },
+            freedom: {
+                let Freedom { gain, skew, offset } = input.allowance.freedom;
+                [gain, skew, offset]
+            },
+            noise_freedom: (input.allowance.noise_bins > 0).then_some(input.allowance.noise_bins as f64),
         }
     }
 
@@ -126,6 +135,7 @@ impl Parts {
             distribution,
             sensitivity,
             correlated: None,
+            freedom: None,
         };
         let own = |name, u, kind| term(name, u, kind, Distribution::Normal, None);
         // As sensitivities to g, τ and o themselves.
@@ -149,6 +159,8 @@ impl Parts {
             own("compensation", self.compensation, Kind::B),
             own("response", self.response, Kind::B),
         ];
+        terms[0].freedom = sources.noise_freedom;
+        (1..=3).zip(sources.freedom).for_each(|(term, freedom)| terms[term].freedom = freedom);
         let coefficient = gain_offset * (self.gain * self.offset).signum();
         if gain_offset != 0.0 && terms[1].u > 0.0 && terms[3].u > 0.0 {
             terms[1].correlated = Some(Correlated { with: "offset", coefficient });

@@ -84,6 +84,7 @@ impl Scene {
             clipped_n: 0,
             averages: 1,
             allowance: Allowance::default(),
+            asked: Asked::default(),
         })
     }
 }
@@ -99,7 +100,7 @@ fn scene() -> Scene {
 #[test]
 fn names_are_unique_and_read_back() {
     let all: Vec<FigureKind> = FigureKind::all().collect();
-    assert_eq!(all.len(), 18);
+    assert_eq!(all.len(), 27);
     for kind in all {
         assert_eq!(FigureKind::parse(kind.name()), Some(kind));
     }
@@ -111,7 +112,7 @@ fn names_are_unique_and_read_back() {
 fn the_gate_s_figures_come_out_on_a_swinging_node() {
     let scene = scene();
     let figures = scene.figures(&scene.acquire(1, gate), &scene.correction(5e-12, 5e-5, 2e-3), 0.0);
-    assert_eq!(figures.len(), 18);
+    assert_eq!(figures.len(), 25);
     let near = |kind: FigureKind, expected: f64, within: f64| {
         let f = of(&figures, kind);
         assert!(f.valid, "{f:?}");
@@ -244,6 +245,7 @@ fn clipping_makes_every_figure_invalid_and_says_how_much() {
         clipped_n: 0,
         averages: 1,
         allowance: Allowance::default(),
+        asked: Asked::default(),
     };
     for f in compute(&input) {
         assert!(!f.valid && f.why.is_some() && f.plain.is_none() && f.coverage.is_none());

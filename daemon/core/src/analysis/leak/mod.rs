@@ -2,7 +2,7 @@
 //!
 //! Per frequency the residual `|D/C|` is taken as the larger of two bounds on the same thing: what a verification found
 //! (`10^(−after/20)`, interpolated in dB over log f, flat below its first band, growing with f above its last) and
-//! what the correction's uncertainty allows (k = 2). They are not added: the verification already contains
+//! what the correction's uncertainty allows (k = 2; what it may have drifted is part of that). They are not added: the verification already contains
 //! the correction's present error, the uncertainty says what that error may be where the verification cannot tell.
 //!
 //! *Rms* follows from the powers. *Peak*: if every frequency's residual had the worst phase the sum of all
@@ -23,7 +23,7 @@ use realfft::num_complex::Complex;
 
 use super::rejection::{RejectionBand, residual_of_uncertainty};
 use super::signal::{Signal, mean_and_square};
-use super::{Beyond, Correction, band, peaks};
+use super::{Beyond, Correction, Drift, band, peaks};
 
 mod long;
 
@@ -46,7 +46,7 @@ pub struct LeakBound {
 }
 
 /// The leak bound of a capture whose common mode is `common_v`, corrected with `correction`, for which `rejection` was
-/// found (may be empty).
+/// found (may be empty), as if the correction had been made just now.
 #[must_use]
 pub fn bound<S: Signal + ?Sized>(
     common_v: &S,
@@ -54,10 +54,10 @@ pub fn bound<S: Signal + ?Sized>(
     correction: &Correction,
     rejection: &[RejectionBand],
 ) -> LeakBound {
-    bound_with(common_v, interval_s, correction, rejection, &Beyond::default())
+    bound_with(common_v, interval_s, correction, rejection, &Beyond::default(), &Drift::default())
 }
 
-/// As [`bound`], with what is known beyond gain, skew and offset.
+/// As [`bound`], with what is known beyond gain, skew and offset, for a correction that may have drifted.
 #[must_use]
 pub fn bound_with<S: Signal + ?Sized>(
     common_v: &S,
@@ -65,6 +65,7 @@ pub fn bound_with<S: Signal + ?Sized>(
     correction: &Correction,
     rejection: &[RejectionBand],
     beyond: &Beyond,
+    drift: &Drift,
 ) -> LeakBound {
     let n = common_v.points();
     if n == 0 {
@@ -73,13 +74,14 @@ pub fn bound_with<S: Signal + ?Sized>(
     let mut bands: Vec<RejectionBand> = rejection.iter().copied().filter(|b| b.frequency_hz > 0.0).collect();
     bands.sort_by(|a, b| a.frequency_hz.total_cmp(&b.frequency_hz));
     let points: Vec<(f64, f64)> = bands.iter().map(|b| (b.frequency_hz, b.after_db)).collect();
+    let wide = widened(correction, drift);
     let residual = |f: f64| {
-        let linear = interpolated(&points, f).max(residual_of_uncertainty(correction, f));
+        let linear = interpolated(&points, f).max(residual_of_uncertainty(&wide, f));
         if f > 0.0 { linear.max(beyond.residual(f)) } else { linear }
     };
     let (mean, square) = mean_and_square(common_v);
-    let offset_v = 2.0 * (correction.offset_v.u / correction.gain.value).abs();
-    let mean_v = (mean * residual(0.0)).abs() + offset_v + 2.0 * beyond.left(common_v, interval_s).mean_v;
+    let mean_v = at_zero(mean, interpolated(&points, 0.0), correction, drift)
+        + 2.0 * beyond.left(common_v, interval_s).mean_v;
     let noise = peaks::noise_of(common_v);
     let moving = weighted(common_v, interval_s, mean, noise, &residual);
     let extremes = peaks::extremes(common_v, noise);
@@ -90,6 +92,28 @@ pub fn bound_with<S: Signal + ?Sized>(
         common_rms_v: square.sqrt(),
         common_swing_v: extremes.1.value - extremes.0.value,
     }
+}
+
+/// The correction with what gain and skew may have drifted in their standard uncertainties.
+fn widened(correction: &Correction, drift: &Drift) -> Correction {
+    let mut wide = *correction;
+    wide.gain.u = wide.gain.u.hypot(wide.gain.value * drift.gain / 3.0f64.sqrt());
+    wide.skew_s.u = wide.skew_s.u.hypot(drift.skew_s / 3.0f64.sqrt());
+    wide
+}
+
+/// What a mean common mode can leave in the difference's mean: `δD = C·δg/g + δo/g`, the errors of gain and offset
+/// correlated, at a coverage factor of 2; or what the verification found of the gain, with what the offset may be off
+/// once the gain is known.
+fn at_zero(mean: f64, verified: f64, correction: &Correction, drift: &Drift) -> f64 {
+    let gain = correction.gain.value;
+    let r = correction.gain_offset.clamp(-1.0, 1.0);
+    let (of_gain, of_offset) = (mean * correction.gain.u / gain.abs(), (correction.offset_v.u / gain).abs());
+    let drifted = [mean * drift.gain, drift.offset_v / gain].map(|half| half * half / 3.0);
+    let both = of_gain * of_gain + of_offset * of_offset + 2.0 * r * of_gain * of_offset;
+    let sure = 2.0 * (both + drifted[0] + drifted[1]).max(0.0).sqrt();
+    let left = of_offset * (1.0 - r * r).sqrt();
+    sure.max((mean * verified).abs() + 2.0 * (left * left + drifted[1]).sqrt())
 }
 
 /// What the alternating part of a common mode leaks, in volts.

@@ -55,7 +55,8 @@ fn the_larger_of_verification_and_uncertainty_counts() {
 #[test]
 fn the_part_at_zero_frequency_adds_up() {
     let found = bound(&cosine(30.0), 1e-9, &correction(1e-3, 0.0, 0.05), &[]);
-    assert!((found.mean_v - (30.0 * 2e-3 + 0.1)).abs() < 1e-8, "{found:?}");
+    // Independent errors of gain and offset: 2·√((30 V·10⁻³)² + (50 mV)²).
+    assert!((found.mean_v - f64::hypot(30.0 * 2e-3, 0.1)).abs() < 1e-8, "{found:?}");
     assert!((found.peak_v - (found.mean_v + 0.02)).abs() < 1e-5);
     assert!((found.rms_v - found.mean_v.hypot(0.02 / 2.0f64.sqrt())).abs() < 1e-6);
 }
@@ -118,4 +119,30 @@ fn segments_give_what_the_whole_gives() {
         assert!((found.rms / power.sqrt() - 1.0).abs() < 0.02, "{} {}", found.rms, power.sqrt());
         assert!((found.peak / peak - 1.0).abs() < 0.03, "{} {peak}", found.peak);
     }
+}
+
+/// JCGM 100, equation 16, worked by hand: 30 V of mean, u(g) = 0.1 %, u(o) = 50 mV and a correlation of −0.8 leave
+/// 2·√(0.03² + 0.05² − 2·0.8·0.03·0.05) V; drift of ±0.3 % and ±60 mV adds (0.09² + 0.06²)/3 to the variance.
+#[test]
+fn correlation_and_drift_count_at_zero_frequency() {
+    let together = Correction { gain_offset: -0.8, ..correction(1e-3, 0.0, 0.05) };
+    let found = bound(&cosine(30.0), 1e-9, &together, &[]);
+    let variance: f64 = 0.0009 + 0.0025 - 2.0 * 0.8 * 0.0015;
+    assert!((found.mean_v - 2.0 * variance.sqrt()).abs() < 1e-8, "{found:?}");
+    let drift = Drift { gain: 3e-3, skew_s: 0.0, offset_v: 0.06 };
+    let found = bound_with(&cosine(30.0), 1e-9, &together, &[], &Beyond::default(), &drift);
+    let drifted = variance + (0.0081 + 0.0036) / 3.0;
+    assert!((found.mean_v - 2.0 * drifted.sqrt()).abs() < 1e-8, "{found:?}");
+    // Where a verification says more about the gain, what is left of the offset is what the gain does not tell of it.
+    let verified = bound(&cosine(30.0), 1e-9, &together, &[band(1e6, 40.0)]);
+    assert!((verified.mean_v - (0.3 + 2.0 * 0.05 * 0.6)).abs() < 1e-8, "{verified:?}");
+}
+
+/// At 20 MHz: 2·√((0.2 %)²/3 + (2πf·30 ps)²/3) of 10 V.
+#[test]
+fn drift_widens_the_residual() {
+    let drift = Drift { gain: 2e-3, skew_s: 30e-12, offset_v: 0.0 };
+    let found = bound_with(&cosine(0.0), 1e-9, &correction(0.0, 0.0, 0.0), &[], &Beyond::default(), &drift);
+    let expected = 20.0 / 3.0f64.sqrt() * f64::hypot(2e-3, std::f64::consts::TAU * 20e6 * 30e-12);
+    assert!((found.peak_v - expected).abs() < 1e-5, "{found:?} {expected}");
 }

@@ -10,7 +10,7 @@ mod bands;
 mod beyond;
 
 use super::apply::ApplyError;
-use super::measured::{self, Measured};
+use super::measured::{self, Known, Measured};
 use super::rejection::{RejectionBand, measure_with};
 use super::response;
 use super::skew::{Reference, SkewError, SkewEstimate, estimate_records};
@@ -127,7 +127,9 @@ pub fn analyse(given: &Given) -> Result<Findings, SavedError> {
     let device = device
         .as_ref()
         .map(|legs| {
-            measured::measure_with(&legs.positive, &legs.negative, &correction, &beyond, &rejection, *scale_spec)
+            let known =
+                Known { beyond: Some(&beyond), rejection: &rejection, scale_spec: *scale_spec, ..Known::default() };
+            measured::measure_with(&legs.positive, &legs.negative, &correction, &known)
         })
         .transpose()
         .map_err(SavedError::Device)?;
