@@ -8,6 +8,7 @@ mod bench;
 mod commands;
 mod crash;
 mod demo;
+mod devices;
 mod deskew;
 mod files;
 mod refusals;

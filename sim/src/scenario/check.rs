@@ -1,6 +1,6 @@
 //! The values that the world can compute with.
 
-use super::{DeviceSpec, DividerSpec, HalfBridgeSpec, LegSpec, RectifierSpec, Scenario, ScenarioError};
+use super::{BalancedSpec, DeviceSpec, DividerSpec, HalfBridgeSpec, LegSpec, RectifierSpec, Scenario, ScenarioError};
 
 type Checked = Result<(), ScenarioError>;
 
@@ -33,6 +33,7 @@ pub(super) fn check(scenario: &Scenario) -> Checked {
         leg(one)?;
     }
     match &scenario.device {
+        DeviceSpec::Balanced(spec) => balanced(spec),
         DeviceSpec::Divider(spec) => divider(spec),
         DeviceSpec::HalfBridge(spec) => half_bridge(spec),
         DeviceSpec::Rectifier(spec) => rectifier(spec),
@@ -75,6 +76,20 @@ fn leg(leg: &LegSpec) -> Checked {
         finite("leg.range.delay_s", range.delay_s)?;
     }
     Ok(())
+}
+
+fn balanced(spec: &BalancedSpec) -> Checked {
+    positive("device.frequency_hz", spec.frequency_hz)?;
+    not_negative("device.swing_v", spec.swing_v)?;
+    finite("device.middle_v", spec.middle_v)?;
+    positive("device.edge_s", spec.edge_s)?;
+    let whole_edge = spec.edge_s / 0.8 * spec.frequency_hz;
+    require(whole_edge < 0.49, "device.edge_s", spec.edge_s, "such that an edge ends within half a period")?;
+    not_negative("device.source_ohm", spec.source_ohm)?;
+    not_negative("device.sine_v", spec.sine_v)?;
+    let multiple = spec.sine_hz / spec.frequency_hz;
+    let whole = multiple >= 1.0 && (multiple - multiple.round()).abs() < 1e-9 * multiple;
+    require(whole, "device.sine_hz", spec.sine_hz, "a whole multiple of frequency_hz")
 }
 
 fn divider(spec: &DividerSpec) -> Checked {

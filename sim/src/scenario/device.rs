@@ -6,12 +6,35 @@ use serde::Deserialize;
 #[derive(Debug, Clone, PartialEq, Deserialize)]
 #[serde(tag = "kind", rename_all = "kebab-case")]
 pub(crate) enum DeviceSpec {
+    /// Two inverted outputs with a sine mixed onto both.
+    Balanced(BalancedSpec),
     /// Three resistors in series on supply output 1.
     Divider(DividerSpec),
     /// A half bridge that drives a fan.
     HalfBridge(HalfBridgeSpec),
     /// Four diodes and a load.
     Rectifier(RectifierSpec),
+}
+
+/// Two outputs of opposite square waves, as of a balanced line, with a sine from elsewhere on both alike. P is the output
+/// that rises at the start of a period, N the inverted one, which is also the in-situ node.
+#[derive(Debug, Clone, PartialEq, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub(crate) struct BalancedSpec {
+    /// Frequency of the square wave, in hertz.
+    pub(crate) frequency_hz: f64,
+    /// How far each output moves, peak to peak, in volts.
+    pub(crate) swing_v: f64,
+    /// The middle that both move about, in volts.
+    pub(crate) middle_v: f64,
+    /// 10–90 % time of the edges, in seconds.
+    pub(crate) edge_s: f64,
+    /// Source resistance of each output, in ohms.
+    pub(crate) source_ohm: f64,
+    /// Peak of the sine on both, in volts.
+    pub(crate) sine_v: f64,
+    /// Its frequency in hertz, a whole multiple of the square wave's.
+    pub(crate) sine_hz: f64,
 }
 
 /// Three resistors in series on supply output 1, the lowest of them earthed. P is the upper end of the middle one, N

@@ -10,7 +10,7 @@ mod leg;
 #[cfg(test)]
 mod tests;
 
-pub(crate) use device::{DeviceSpec, DividerSpec, HalfBridgeSpec, RectifierSpec};
+pub(crate) use device::{BalancedSpec, DeviceSpec, DividerSpec, HalfBridgeSpec, RectifierSpec};
 pub(crate) use leg::{LegSpec, RangeSpec, Tip};
 
 use serde::Deserialize;

@@ -52,6 +52,23 @@ fn refuses_values_out_of_range_by_their_key() {
 }
 
 #[test]
+fn a_balanced_line_s_sine_is_a_multiple_and_its_edges_fit() {
+    let text = |edge_s: &str, sine_hz: &str| {
+        let device = "frequency_hz = 1e5\nswing_v = 2.0\nmiddle_v = 0.0\nsource_ohm = 50.0\nsine_v = 3.0\n";
+        format!(
+            "seed = 1\ninstrument = []\n[device]\nkind = \"balanced\"\n{device}edge_s = {edge_s}\nsine_hz = {sine_hz}\n"
+        )
+    };
+    assert!(Scenario::read(&text("20e-9", "1e6")).is_ok());
+    for (edge_s, sine_hz, key) in
+        [("20e-9", "1.05e6", "sine_hz"), ("20e-9", "5e4", "sine_hz"), ("4e-6", "1e6", "edge_s")]
+    {
+        let error = Scenario::read(&text(edge_s, sine_hz)).unwrap_err();
+        assert!(error.to_string().contains(&format!("`device.{key}`")), "{error}");
+    }
+}
+
+#[test]
 fn leaves_out_what_has_a_default() {
     let text = "seed = 1\ninstrument = []\n[device]\nkind = \"divider\"\nresistors_ohm = [1.0, 2.0, 3.0]\n";
     let scenario = Scenario::read(text).unwrap();

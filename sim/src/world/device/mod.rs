@@ -1,5 +1,6 @@
 //! What the tips see: the routes of the switch unit, and the device or the reference behind them.
 
+mod balanced;
 mod divider;
 mod half_bridge;
 mod rectifier;
@@ -83,6 +84,7 @@ pub(crate) fn supply_reading(scenario: &Scenario, controls: &Controls, output: u
 
 fn device(spec: &DeviceSpec, controls: &Controls, probes: Probes) -> Tips {
     match spec {
+        DeviceSpec::Balanced(spec) => balanced::tips(spec, probes),
         DeviceSpec::Divider(spec) => divider::tips(spec, controls, probes),
         DeviceSpec::HalfBridge(spec) => half_bridge::tips(spec, controls, probes),
         DeviceSpec::Rectifier(spec) => rectifier::tips(spec, probes),

@@ -1,7 +1,7 @@
 //! The devices by Ohm's and Kirchhoff's laws, by the trade's rules of thumb and by the scenario's figures.
 
 use super::*;
-use crate::scenario::{DividerSpec, RectifierSpec};
+use crate::scenario::{BalancedSpec, DividerSpec, RectifierSpec};
 use crate::world::Shape;
 use crate::world::controls::SupplyOutput;
 use crate::world::fixture::{bridge, ideal, reference, scenario};
@@ -81,6 +81,38 @@ fn a_rectifier_gives_the_magnitude_less_two_drops() {
             assert!((n.at(time_s) - (input.min(0.0) + 0.7)).abs() < 1e-3, "{time_s}");
         }
     }
+}
+
+#[test]
+fn the_sine_on_a_balanced_line_is_on_both_outputs_and_not_between_them() {
+    let spec = BalancedSpec {
+        frequency_hz: 100e3,
+        swing_v: 2.0,
+        middle_v: 2.5,
+        edge_s: 20e-9,
+        source_ohm: 50.0,
+        sine_v: 3.0,
+        sine_hz: 1e6,
+    };
+    let tips_of = |route| tips(&ideal(DeviceSpec::Balanced(spec.clone())), &ten_volts(route));
+    let measured = tips_of(103);
+    let (p, n) = (Sampler::new(&measured.p), Sampler::new(&measured.n));
+    for i in 0..1000 {
+        let time_s = f64::from(i) * 10e-9;
+        // An edge takes 25 ns whole, and what 50 Ω and the probe's 9.5 pF make of it 0.5 ns more.
+        if time_s.rem_euclid(5e-6) < 30e-9 {
+            continue;
+        }
+        // Two outputs of ±1 V, opposite: ±2 V between them, less the 5 millionths that 50 Ω lose to 10 MΩ.
+        let expected = if time_s < 5e-6 { 2.0 } else { -2.0 };
+        assert!((p.at(time_s) - n.at(time_s) - expected).abs() < 2e-5, "{time_s}");
+        // Half of their sum: the middle and the sine, late by the 50 Ω · 9.5 pF = 475 ps of the load.
+        let common = 0.5 * (p.at(time_s) + n.at(time_s));
+        let sine = 3.0 * (std::f64::consts::TAU * 1e6 * (time_s - 475e-12)).sin();
+        assert!((common - 2.5 - sine).abs() < 1e-4, "{time_s}: {common}");
+    }
+    let in_situ = tips_of(102);
+    assert_eq!(in_situ.p, in_situ.n);
 }
 
 #[test]

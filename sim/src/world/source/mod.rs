@@ -10,7 +10,7 @@ use super::controls::{Shape, SourceOutput};
 use super::wave::{Sampler, Tone, Wave};
 
 /// A linear edge takes this many times its 10–90 % time.
-const WHOLE_EDGE: f64 = 1.0 / 0.8;
+pub(crate) const WHOLE_EDGE: f64 = 1.0 / 0.8;
 
 /// The steepest duty and edge that a period can hold: each edge ends before the next begins.
 const EDGE_ROOM: f64 = 0.99;
