@@ -10,6 +10,7 @@ mod crash;
 mod demo;
 mod deskew;
 mod files;
+mod hislip;
 mod refusals;
 mod rest;
 mod scripts;

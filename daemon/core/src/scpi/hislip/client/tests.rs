@@ -102,11 +102,14 @@ fn a_long_message_goes_in_pieces_that_the_server_takes() {
     let mut client = ready_with(20);
     client.request(b"VOLT 48.0\n", Some(9)).unwrap();
     let bytes = |kind, id, text: &[u8]| (Channel::Sync, Header::new(kind).parameter(id).message(text));
-    assert_eq!(outputs(&mut client), [
-        bytes(Kind::Data, 0xFFFF_FF00, b"VOLT"),
-        bytes(Kind::Data, 0xFFFF_FF02, b" 48."),
-        bytes(Kind::DataEnd, 0xFFFF_FF04, b"0\n"),
-    ]);
+    assert_eq!(
+        outputs(&mut client),
+        [
+            bytes(Kind::Data, 0xFFFF_FF00, b"VOLT"),
+            bytes(Kind::Data, 0xFFFF_FF02, b" 48."),
+            bytes(Kind::DataEnd, 0xFFFF_FF04, b"0\n"),
+        ]
+    );
     // The reply carries the number of the message that ended the request.
     assert_eq!(sync(&mut client, Kind::DataEnd, 0, 0xFFFF_FF04, b"").unwrap(), [Event::Reply(Vec::new())]);
 }
@@ -222,10 +225,7 @@ fn messages_that_are_not_known_are_answered_and_change_nothing() {
 fn errors_are_told_with_their_words_and_say_whether_clearing_helps() {
     let fault = sync(&mut ready(), Kind::Error, 4, 0, b"too much\n").unwrap_err();
     assert_eq!(fault, Fault::Answered { code: ErrorCode::TooLarge, text: "too much".to_owned() });
-    assert_eq!(
-        fault.to_string(),
-        "the instrument answered with a HiSLIP error: message too large, \"too much\""
-    );
+    assert_eq!(fault.to_string(), "the instrument answered with a HiSLIP error: message too large, \"too much\"");
     assert!(fault.curable());
     let fault = asynchronous(&mut ready(), Kind::FatalError, 4, b"").unwrap_err();
     assert_eq!(fault, Fault::Fatal { code: FatalCode::TooManyClients, text: String::new() });

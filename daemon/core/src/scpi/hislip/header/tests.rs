@@ -10,10 +10,7 @@ use super::*;
 fn the_bytes_of_a_header_stand_where_the_standard_has_them() {
     // IVI-6.1, message header (from memory): "HS", type, control code, parameter, payload length, high bytes first.
     let data = Header::new(Kind::DataEnd).control(1).parameter(0xFFFF_FF02);
-    assert_eq!(
-        data.message(b"*IDN?\n"),
-        b"HS\x07\x01\xff\xff\xff\x02\x00\x00\x00\x00\x00\x00\x00\x06*IDN?\n"
-    );
+    assert_eq!(data.message(b"*IDN?\n"), b"HS\x07\x01\xff\xff\xff\x02\x00\x00\x00\x00\x00\x00\x00\x06*IDN?\n");
     let bytes = b"HS\x14\x50\x00\x00\x00\x00\x00\x00\x00\x00\x00\x00\x00\x00";
     assert_eq!(Header::read(bytes), Some(Header::new(Kind::AsyncServiceRequest).control(0x50)));
     assert_eq!(Header::read(b"HT\x14\x50\x00\x00\x00\x00\x00\x00\x00\x00\x00\x00\x00\x00"), None);
