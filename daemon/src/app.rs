@@ -22,7 +22,7 @@ use crate::conductor::{Conductor, Instruments, Refusal, Workshop};
 use crate::dialects::{self, DialectTrouble};
 use crate::http;
 use crate::mistakes;
-use crate::session::{self, Caps, SessionSpec, Timing};
+use crate::session::{self, Caps, Protocol, SessionSpec, Timing};
 use crate::store::{Store, StoreError};
 
 /// The longest that runs may take to end and the bench to come to rest.
@@ -48,7 +48,10 @@ pub(crate) enum StartError {
     NotLoopback { address: std::net::SocketAddr },
     #[error("reading {}: {source}", path.display())]
     Read { path: PathBuf, source: std::io::Error },
-    #[error("the instrument `{instrument}` is at {resource}; this daemon speaks to `TCPIP::host::port::SOCKET` only")]
+    #[error(
+        "the instrument `{instrument}` is at {resource}; this daemon speaks to `TCPIP::host::port::SOCKET` and \
+         `TCPIP::host::hislip0::INSTR` only"
+    )]
     Resource { instrument: String, resource: String },
     #[error("serving HTTP: {0}")]
     Serve(std::io::Error),
@@ -169,15 +172,20 @@ fn connect(
 ) -> Result<Instruments, StartError> {
     let mut handles = BTreeMap::new();
     for instrument in &bench.instruments {
-        let Resource::Socket { host, port, .. } = &instrument.resource else {
-            let resource = instrument.resource.to_string();
-            return Err(StartError::Resource { instrument: instrument.name.clone(), resource });
+        let (host, port, protocol) = match &instrument.resource {
+            Resource::Hislip { host, port, device, .. } => (host, port, Protocol::Hislip { device: device.clone() }),
+            Resource::Socket { host, port, .. } => (host, port, Protocol::Socket),
+            Resource::Instr { .. } => {
+                let resource = instrument.resource.to_string();
+                return Err(StartError::Resource { instrument: instrument.name.clone(), resource });
+            }
         };
         let Some(dialect) = dialects.get(&instrument.dialect) else { continue };
         let spec = SessionSpec {
             instrument: instrument.name.clone(),
             host: host.to_string(),
             port: *port,
+            protocol,
             dialect: Arc::clone(dialect),
             timing: Timing { reply: Duration::from_secs_f64(instrument.timeout_s), ..Timing::default() },
             caps: Caps::default(),

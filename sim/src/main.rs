@@ -11,6 +11,7 @@ mod status;
 mod world;
 
 use std::io::{Read, Write};
+use std::net::SocketAddr;
 use std::path::{Path, PathBuf};
 use std::process::ExitCode;
 use std::sync::Arc;
@@ -22,7 +23,7 @@ use tokio::sync::oneshot;
 use tracing_subscriber::EnvFilter;
 
 use crate::instrument::{Bench, Device, kind_name};
-use crate::scenario::{Scenario, ScenarioError};
+use crate::scenario::{Protocol, Scenario, ScenarioError};
 
 /// Exit status when the bench could not be started.
 const CANNOT_START: u8 = 2;
@@ -117,16 +118,13 @@ async fn run(scenario: &Scenario, arguments: &Arguments) -> Result<(), StartErro
         };
         let listener = TcpListener::bind((arguments.host.as_str(), spec.port)).await.map_err(failed)?;
         let address = listener.local_addr().map_err(failed)?;
-        let line = Announcement {
-            name: &spec.name,
-            kind: kind_name(spec.kind),
-            resource: format!("TCPIP::{}::{}::SOCKET", address.ip(), address.port()),
-        };
+        let line =
+            Announcement { name: &spec.name, kind: kind_name(spec.kind), resource: resource(spec.protocol, address) };
         let line = serde_json::to_string(&line).map_err(|error| failed(error.into()))?;
         lines.push_str(&line);
         lines.push('\n');
         let device = Arc::new(Device::new(spec, &bench));
-        tokio::spawn(server::serve(listener, device, spec.name.clone()));
+        tokio::spawn(server::serve(listener, device, spec.protocol, spec.name.clone()));
     }
     lines.push_str("ready\n");
     announce(&lines).map_err(system("tell where the instruments listen"))?;
@@ -136,6 +134,16 @@ async fn run(scenario: &Scenario, arguments: &Arguments) -> Result<(), StartErro
         () = stdin_end(arguments.exit_with_stdin) => {}
     }
     Ok(())
+}
+
+/// The VISA resource string (VPP-4.3) of an instrument that listens there.
+fn resource(protocol: Protocol, address: SocketAddr) -> String {
+    let (ip, port) = (address.ip(), address.port());
+    let host = if ip.is_ipv6() { format!("[{ip}]") } else { ip.to_string() };
+    match protocol {
+        Protocol::Hislip => format!("TCPIP::{host}::{},{port}::INSTR", server::SUB_ADDRESS),
+        Protocol::Socket => format!("TCPIP::{host}::{port}::SOCKET"),
+    }
 }
 
 fn announce(lines: &str) -> std::io::Result<()> {

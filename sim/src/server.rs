@@ -1,4 +1,6 @@
-//! Connections: bytes to a device and its replies back.
+//! Connections: bytes to a device and its replies back, as plain text or in HiSLIP messages.
+
+mod hislip;
 
 use std::io;
 use std::sync::Arc;
@@ -10,6 +12,9 @@ use tokio::sync::Semaphore;
 
 use crate::instrument::Device;
 use crate::message::{Arrival, Input};
+use crate::scenario::Protocol;
+
+pub(crate) use hislip::SUB_ADDRESS;
 
 /// Connections that an instrument takes at once; more wait. Plenty for a bench, and a bound on what strangers can cost.
 const MOST_CONNECTIONS: usize = 32;
@@ -17,7 +22,8 @@ const MOST_CONNECTIONS: usize = 32;
 const ACCEPT_PAUSE: Duration = Duration::from_millis(50);
 
 /// Serves an instrument until the task is dropped.
-pub(crate) async fn serve(listener: TcpListener, device: Arc<Device>, name: String) {
+pub(crate) async fn serve(listener: TcpListener, device: Arc<Device>, protocol: Protocol, name: String) {
+    let hislip = Arc::new(hislip::Server::new(Arc::clone(&device)));
     let places = Arc::new(Semaphore::new(MOST_CONNECTIONS));
     loop {
         // Never closed, so a place always comes.
@@ -35,9 +41,13 @@ pub(crate) async fn serve(listener: TcpListener, device: Arc<Device>, name: Stri
             tracing::debug!(instrument = name, %error, "replies may be delayed");
         }
         tracing::debug!(instrument = name, %peer, "connected");
-        let (device, name) = (Arc::clone(&device), name.clone());
+        let (device, hislip, name) = (Arc::clone(&device), Arc::clone(&hislip), name.clone());
         tokio::spawn(async move {
-            match converse(stream, &device).await {
+            let outcome = match protocol {
+                Protocol::Hislip => hislip.converse(stream).await,
+                Protocol::Socket => converse(stream, &device).await,
+            };
+            match outcome {
                 Ok(()) => tracing::debug!(instrument = name, %peer, "disconnected"),
                 Err(error) => tracing::debug!(instrument = name, %peer, %error, "connection lost"),
             }

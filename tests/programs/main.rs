@@ -11,6 +11,7 @@ mod demo;
 mod devices;
 mod deskew;
 mod files;
+mod hislip;
 mod refusals;
 mod response;
 mod rest;

@@ -5,6 +5,7 @@
 use std::time::Duration;
 
 use evenpair_core::dialect::DialectError;
+use evenpair_core::scpi::hislip::Fault;
 
 use super::codec::CodecError;
 
@@ -31,6 +32,9 @@ pub(crate) enum Trouble {
     /// The dialect cannot say what reconnecting needs.
     #[error("the dialect cannot greet the instrument: {0}")]
     Greeting(DialectError),
+    /// What a HiSLIP connection cannot go on with.
+    #[error(transparent)]
+    Hislip(#[from] Fault),
     /// The settings that had been made could not be made again.
     #[error("the instrument refuses the setting that it had before, `{command}`: error {number}, \"{text}\"")]
     NotRestored {
@@ -158,8 +162,8 @@ pub(crate) enum SessionError {
     },
     /// The reply did not come in time.
     #[error(
-        "{instrument}: {what}: no answer to `{command}` within {after:?}; the connection was closed so that a late \
-         reply does no harm; check that the command is one of the instrument's, or allow more time"
+        "{instrument}: {what}: no answer to `{command}` within {after:?}; the connection was cleared or closed so \
+         that a late reply does no harm; check that the command is one of the instrument's, or allow more time"
     )]
     TimedOut {
         /// The instrument.

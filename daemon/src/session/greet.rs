@@ -1,12 +1,12 @@
-//! What happens on a new connection before anything else: who is there, what went wrong, and setting again.
+//! What happens on a new or newly cleared connection before anything else: who is there, what went wrong, and setting again.
 
 use evenpair_core::dialect::{Call, Intent};
-use tokio::io::{AsyncRead, AsyncWrite};
 
 use super::error::Trouble;
 use super::link::{Entry, Failure, Link, Reply, Work};
 use super::memory::Memory;
 use super::spec::SessionSpec;
+use super::wire::Wire;
 
 /// What was learned by greeting.
 #[derive(Debug, Default)]
@@ -21,8 +21,8 @@ pub(super) struct Greeting {
 ///
 /// # Cancel safety
 /// Not safe: the link must be closed when this is dropped.
-pub(super) async fn greet<S: AsyncRead + AsyncWrite + Unpin>(
-    link: &mut Link<S>,
+pub(super) async fn greet<W: Wire>(
+    link: &mut Link<W>,
     spec: &SessionSpec,
     expected: Option<&str>,
     memory: &Memory,
@@ -53,8 +53,8 @@ pub(super) async fn greet<S: AsyncRead + AsyncWrite + Unpin>(
     Ok(greeting)
 }
 
-async fn perform<S: AsyncRead + AsyncWrite + Unpin>(
-    link: &mut Link<S>,
+async fn perform<W: Wire>(
+    link: &mut Link<W>,
     spec: &SessionSpec,
     call: Call,
     check_errors: bool,

@@ -24,6 +24,8 @@ pub(crate) struct LinkReport {
     /// How often the connection was made again. When it grows between the start of an acquisition and the reading of
     /// its records, the acquisition may be gone.
     pub(crate) reconnects: u64,
+    /// How often a device clear saved the connection after a time-out or the like.
+    pub(crate) clears: u64,
     /// Whether there ever was a connection.
     pub(crate) made_before: bool,
 }

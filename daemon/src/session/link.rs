@@ -1,20 +1,17 @@
 //! One connection: sends commands, awaits their replies, and does not forgive.
 //!
-//! A link knows nothing of reconnecting. Any [`Trouble`] means that it must be dropped: after one, nobody can tell
-//! which reply belongs to which query.
+//! A link knows nothing of reconnecting. Any [`Trouble`] means that it must be dropped, or cleared where its [`Wire`]
+//! can be: after one, nobody can tell which reply belongs to which query.
 
 use std::time::Duration;
 
 use evenpair_core::dialect::{Call, Dialect, Exchange, Expect, Fields, IntentKind, Message};
-use evenpair_core::scpi::frame::{Limits, Want};
-use futures_util::{FutureExt, SinkExt, StreamExt};
-use tokio::io::{AsyncRead, AsyncWrite};
+use futures_util::FutureExt;
 use tokio::time::{Instant, timeout_at};
-use tokio_util::codec::Framed;
 
-use super::codec::{Codec, CodecError};
 use super::error::{Trouble, shown};
 use super::spec::Caps;
+use super::wire::Wire;
 
 /// What to do in one go, planned already.
 #[derive(Debug, Clone)]
@@ -83,15 +80,15 @@ pub(super) const MOST_ENTRIES: usize = 64;
 
 /// One connection to one instrument.
 #[derive(Debug)]
-pub(super) struct Link<S> {
-    framed: Framed<S, Codec>,
+pub(super) struct Link<W> {
+    wire: W,
     /// A request was begun and did not come to an orderly end.
     in_flight: bool,
 }
 
-impl<S: AsyncRead + AsyncWrite + Unpin> Link<S> {
-    pub(super) fn new(stream: S) -> Self {
-        Self { framed: Framed::new(stream, Codec::new()), in_flight: false }
+impl<W: Wire> Link<W> {
+    pub(super) fn new(wire: W) -> Self {
+        Self { wire, in_flight: false }
     }
 
     /// Whether a request was begun that did not come to an orderly end: its reply may still come.
@@ -99,20 +96,35 @@ impl<S: AsyncRead + AsyncWrite + Unpin> Link<S> {
         self.in_flight
     }
 
+    /// Whether [`Link::clear`] may help after this trouble.
+    pub(super) fn clears_after(&self, trouble: &Trouble) -> bool {
+        self.wire.clears_after(trouble)
+    }
+
+    /// Has the instrument forget what is under way: afterwards nothing of it can come any more.
+    ///
+    /// # Cancel safety
+    /// Not safe: when it is dropped, the link must be closed.
+    pub(super) async fn clear(&mut self) -> Result<(), Trouble> {
+        self.wire.clear().await?;
+        self.in_flight = false;
+        Ok(())
+    }
+
     /// Waits until something happens that nobody asked for: the peer closes, or sends.
     ///
     /// # Cancel safety
     /// Safe: nothing that was read is lost.
     pub(super) async fn idle(&mut self) -> Trouble {
-        trouble_of(self.framed.next().await)
+        self.wire.idle().await
     }
 
     /// Whether nothing unasked-for has come, without waiting.
     pub(super) fn quiet(&mut self) -> Result<(), Trouble> {
         // Unconstrained: a task that has used up its share of time would be told "nothing yet" although there is.
-        match tokio::task::unconstrained(self.framed.next()).now_or_never() {
+        match tokio::task::unconstrained(self.wire.idle()).now_or_never() {
             None => Ok(()),
-            Some(event) => Err(trouble_of(event)),
+            Some(trouble) => Err(trouble),
         }
     }
 
@@ -142,11 +154,14 @@ impl<S: AsyncRead + AsyncWrite + Unpin> Link<S> {
         Ok(reply)
     }
 
-    /// Takes the line that some instruments send by themselves on a new connection.
+    /// Takes the line that some instruments send by themselves on a new connection, where the protocol allows that.
     ///
     /// # Cancel safety
     /// Not safe, as [`Link::perform`].
     pub(super) async fn take_greeting(&mut self, caps: Caps, timeout: Duration) -> Result<(), Trouble> {
+        if !W::GREETS {
+            return Ok(());
+        }
         let greeting = Exchange { send: Vec::new(), expect: Expect::Line, pause_after_s: 0.0 };
         self.exchange(&greeting, caps, 0, timeout).await.map(drop)
     }
@@ -184,7 +199,7 @@ impl<S: AsyncRead + AsyncWrite + Unpin> Link<S> {
     ) -> Result<Option<Message>, Trouble> {
         self.in_flight = true;
         let deadline = Instant::now() + timeout;
-        let message = timeout_at(deadline, self.send_and_await(exchange, caps, most_lead_bytes))
+        let message = timeout_at(deadline, self.wire.converse(exchange, caps, most_lead_bytes))
             .await
             .map_err(|_elapsed| Trouble::Silent { command: shown(&exchange.send), after: timeout })??;
         if exchange.pause_after_s > 0.0 {
@@ -192,34 +207,9 @@ impl<S: AsyncRead + AsyncWrite + Unpin> Link<S> {
             let pause = Duration::try_from_secs_f64(exchange.pause_after_s).unwrap_or_default();
             tokio::time::sleep(pause).await;
         }
-        // More than was asked for means that the reply just taken may be an older one.
-        if !self.framed.read_buffer().is_empty() {
-            return Err(CodecError::Unsolicited { shown: shown(self.framed.read_buffer()) }.into());
-        }
+        self.wire.surplus()?;
         self.in_flight = false;
         Ok(message)
-    }
-
-    async fn send_and_await(
-        &mut self,
-        exchange: &Exchange,
-        caps: Caps,
-        most_lead_bytes: usize,
-    ) -> Result<Option<Message>, Trouble> {
-        let limits = Limits { most_line_bytes: caps.line_bytes, most_lead_bytes };
-        match exchange.expect {
-            Expect::Nothing => {}
-            Expect::Line => self.framed.codec_mut().await_one(Want::Line, limits),
-            Expect::Block => self.framed.codec_mut().await_one(Want::Block { most_bytes: caps.block_bytes }, limits),
-        }
-        self.framed.send(exchange.send.as_slice()).await?;
-        match exchange.expect {
-            Expect::Nothing => Ok(None),
-            Expect::Line | Expect::Block => match self.framed.next().await {
-                Some(Ok(message)) => Ok(Some(message)),
-                other => Err(trouble_of(other)),
-            },
-        }
     }
 }
 
@@ -227,15 +217,4 @@ impl<S: AsyncRead + AsyncWrite + Unpin> Link<S> {
 fn has_fields(call: &Call) -> bool {
     let spec = call.intent.spec();
     !spec.reply.is_empty() && spec.kind != IntentKind::Data
-}
-
-/// What an event on a link means while nothing is awaited.
-fn trouble_of(event: Option<Result<Message, CodecError>>) -> Trouble {
-    match event {
-        None => Trouble::PeerClosed,
-        Some(Err(error)) => error.into(),
-        // The codec gives no message that was not awaited; if it did, that would be this.
-        Some(Ok(Message::Line(line))) => CodecError::Unsolicited { shown: shown(line.as_bytes()) }.into(),
-        Some(Ok(Message::Block(block))) => CodecError::Unsolicited { shown: shown(&block) }.into(),
-    }
 }

@@ -8,25 +8,34 @@
 //! Queries and settings are then tried once more by themselves; what has an effect of its own is not, for nobody
 //! knows whether it took effect.
 //!
-//! The floors of it, from below: [`codec`] cuts bytes into messages, [`link`] is one connection, [`greet`] is what
-//! happens first on a new one, [`memory`] holds what was set, [`task`] repairs and repeats, [`Handle`] asks.
+//! Over HiSLIP replies do carry a mark, and a *device clear* empties the connection in both directions. There a poisoned
+//! link is cleared, the instrument asked who it is and its error queue emptied; only if that fails is it closed too.
+//!
+//! The floors of it, from below: [`plain`] and [`hislip`] are the two kinds of [`wire`], [`link`] is one connection,
+//! [`greet`] is what happens first on a new one, [`memory`] holds what was set, [`task`] repairs and repeats,
+//! [`Handle`] asks.
 
 mod codec;
 mod connect;
 mod error;
 mod greet;
 mod handle;
+mod hislip;
 mod link;
 mod memory;
+mod plain;
 mod spec;
 mod task;
+mod wire;
 
 pub(crate) use error::SessionError;
 pub(crate) use handle::{Handle, LinkReport};
-pub(crate) use spec::{Caps, SessionSpec, Timing};
+pub(crate) use spec::{Caps, Protocol, SessionSpec, Timing};
 
 use connect::{Connect, Tcp};
 use handle::Shared;
+use hislip::OpenHislip;
+use plain::OpenPlain;
 use tokio::sync::{mpsc, watch};
 use tokio_util::sync::CancellationToken;
 use tokio_util::task::TaskTracker;
@@ -35,7 +44,7 @@ use tokio_util::task::TaskTracker;
 /// more mean that something asks without waiting for answers, and an early error is better than a late reply.
 pub(crate) const QUEUE: usize = 8;
 
-/// Starts a session over TCP. It connects by itself, at once and whenever the connection is lost, until `token` is
+/// Starts a session over TCP, in whichever protocol. It connects by itself, at once and whenever the connection is lost, until `token` is
 /// cancelled or the last handle is dropped; `tracker` waits for its end.
 pub(crate) fn spawn(spec: SessionSpec, token: CancellationToken, tracker: &TaskTracker) -> Handle {
     let connector = Tcp { host: spec.host.clone(), port: spec.port };
@@ -57,7 +66,15 @@ pub(crate) fn spawn_with<C: Connect>(
         timing: spec.timing,
         caps: spec.caps,
     };
-    tracker.spawn(task::Task::new(spec, connector, queue, report).run(token));
+    match spec.protocol.clone() {
+        Protocol::Hislip { device } => {
+            let opener = OpenHislip::new(connector, device);
+            tracker.spawn(task::Task::new(spec, opener, queue, report).run(token));
+        }
+        Protocol::Socket => {
+            tracker.spawn(task::Task::new(spec, OpenPlain(connector), queue, report).run(token));
+        }
+    }
     Handle::new(shared, sender, watch)
 }
 

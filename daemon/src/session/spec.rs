@@ -15,6 +15,8 @@ pub(crate) struct SessionSpec {
     pub(crate) host: String,
     /// TCP port.
     pub(crate) port: u16,
+    /// What is spoken below the dialect.
+    pub(crate) protocol: Protocol,
     /// How the instrument is spoken to.
     pub(crate) dialect: Arc<Dialect>,
     /// How long is waited for what.
@@ -23,11 +25,26 @@ pub(crate) struct SessionSpec {
     pub(crate) caps: Caps,
 }
 
+/// What carries the instrument's messages.
+#[derive(Debug, Clone, PartialEq, Eq)]
+pub(crate) enum Protocol {
+    /// HiSLIP: messages with an end and a number, on two connections.
+    Hislip {
+        /// The sub-address, such as `hislip0`.
+        device: String,
+    },
+    /// Text on one connection.
+    Socket,
+}
+
 /// How long a session waits for what.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub(crate) struct Timing {
     /// For a connection to be made: on a bench's network it takes milliseconds, or does not happen.
     pub(crate) connect: Duration,
+    /// For a device clear, where the protocol has one, before the connection is made anew instead: an instrument that
+    /// still answers does so at once, whatever it was busy with.
+    pub(crate) clear: Duration,
     /// For one reply, unless a call says otherwise.
     pub(crate) reply: Duration,
     /// Before the second attempt to connect in a row; the first is made at once, and each further one waits twice as
@@ -43,6 +60,7 @@ impl Default for Timing {
     fn default() -> Self {
         Self {
             connect: Duration::from_secs(2),
+            clear: Duration::from_secs(2),
             reply: Duration::from_secs(3),
             backoff_first: Duration::from_millis(100),
             backoff_most: Duration::from_secs(5),

@@ -9,6 +9,9 @@
 //!   │  failed: │ wait longer                 │ any trouble: close
 //!   └──────────┘ ◄──────────────────────────-┘
 //! ```
+//!
+//! Over HiSLIP a trouble that leaves messages apart is met with a device clear first; only when that does not help is the
+//! link closed.
 
 use std::time::Duration;
 
@@ -18,12 +21,12 @@ use tokio::time::{Instant, sleep_until, timeout, timeout_at};
 use tokio_util::sync::CancellationToken;
 
 use super::LinkReport;
-use super::connect::Connect;
 use super::error::{SessionError, Trouble};
 use super::greet::greet;
 use super::link::{Entry, Failure, Link, Reply, Work};
 use super::memory::Memory;
 use super::spec::SessionSpec;
+use super::wire::Open;
 
 /// Work, and who waits for it.
 #[derive(Debug)]
@@ -34,12 +37,14 @@ pub(super) struct Request {
 }
 
 /// The owner of a connection.
-pub(super) struct Task<C: Connect> {
+pub(super) struct Task<O: Open> {
     spec: SessionSpec,
-    connector: C,
+    opener: O,
     queue: mpsc::Receiver<Request>,
     report: watch::Sender<LinkReport>,
-    link: Option<Link<C::Stream>>,
+    link: Option<Link<O::Wire>>,
+    /// A link that is no longer trusted, but may be after a device clear.
+    ailing: Option<Link<O::Wire>>,
     /// Who answered first.
     identity: Option<String>,
     memory: Memory,
@@ -53,19 +58,20 @@ pub(super) struct Task<C: Connect> {
     up_since: Instant,
 }
 
-impl<C: Connect> Task<C> {
+impl<O: Open> Task<O> {
     pub(super) fn new(
         spec: SessionSpec,
-        connector: C,
+        opener: O,
         queue: mpsc::Receiver<Request>,
         report: watch::Sender<LinkReport>,
     ) -> Self {
         Self {
             spec,
-            connector,
+            opener,
             queue,
             report,
             link: None,
+            ailing: None,
             identity: None,
             memory: Memory::default(),
             leftovers: Vec::new(),
@@ -192,13 +198,7 @@ impl<C: Connect> Task<C> {
             // Waiting brings nobody back who was replaced.
             if let Some(Trouble::Stranger { expected, found }) = self.trouble.clone() {
                 let (instrument, what) = (self.spec.instrument.clone(), work.what.clone());
-                return Err(SessionError::Stranger {
-                    instrument,
-                    what,
-                    place: self.connector.place(),
-                    expected,
-                    found,
-                });
+                return Err(SessionError::Stranger { instrument, what, place: self.opener.place(), expected, found });
             }
             sleep_until(self.next_attempt.min(deadline)).await;
             let in_time = Instant::now() < deadline && timeout_at(deadline, self.attempt()).await.is_ok();
@@ -208,28 +208,23 @@ impl<C: Connect> Task<C> {
         }
     }
 
-    /// Tries once to make a link. What stood in the way is noted.
+    /// Tries once to clear the link that there was, or else to make one. What stood in the way is noted.
     ///
     /// # Cancel safety
     /// Safe: the half-made link is closed, and the wait before the next attempt holds.
     async fn attempt(&mut self) {
         self.attempts = self.attempts.saturating_add(1);
         self.next_attempt = Instant::now() + self.spec.timing.pause(self.attempts);
-        match self.make_link().await {
-            Ok(link) => {
-                self.link = Some(link);
-                self.trouble = None;
-                self.up_since = Instant::now();
-                let identity = self.identity.clone();
-                self.report.send_modify(|report| {
-                    report.reconnects += u64::from(report.made_before);
-                    report.made_before = true;
-                    report.up = true;
-                    report.identity = identity;
-                    report.trouble = None;
-                });
-                tracing::info!(instrument = %self.spec.instrument, place = %self.connector.place(), "connected");
+        if let Some(link) = self.ailing.take() {
+            match self.clear(link).await {
+                Ok(link) => return self.is_up(link, true),
+                Err(trouble) => {
+                    tracing::info!(instrument = %self.spec.instrument, %trouble, "a device clear did not help");
+                }
             }
+        }
+        match self.make_link().await {
+            Ok(link) => self.is_up(link, false),
             Err(trouble) => {
                 // The pause counts from the end of an attempt: one that took long was not a short wait.
                 self.next_attempt = Instant::now() + self.spec.timing.pause(self.attempts);
@@ -238,24 +233,55 @@ impl<C: Connect> Task<C> {
         }
     }
 
-    async fn make_link(&mut self) -> Result<Link<C::Stream>, Trouble> {
-        let place = self.connector.place();
+    /// The link is good: takes note and tells everyone who watches.
+    fn is_up(&mut self, link: Link<O::Wire>, cleared: bool) {
+        self.link = Some(link);
+        self.trouble = None;
+        self.up_since = Instant::now();
+        let identity = self.identity.clone();
+        self.report.send_modify(|report| {
+            report.clears += u64::from(cleared);
+            report.reconnects += u64::from(report.made_before && !cleared);
+            report.made_before = true;
+            report.up = true;
+            report.identity = identity;
+            report.trouble = None;
+        });
+        let how = if cleared { "cleared" } else { "connected" };
+        tracing::info!(instrument = %self.spec.instrument, place = %self.opener.place(), "{how}");
+    }
+
+    /// Clears a link, and asks who is there and what went wrong. The settings are not made again: a device clear leaves
+    /// them alone (488.2, 5.8, from memory), and an instrument that lost them has lost its connection too.
+    async fn clear(&mut self, mut link: Link<O::Wire>) -> Result<Link<O::Wire>, Trouble> {
+        let limit = self.spec.timing.clear;
+        let silent = |_| Trouble::Silent { command: "device clear".to_owned(), after: limit };
+        timeout(limit, link.clear()).await.map_err(silent)??;
+        let greeting = greet(&mut link, &self.spec, self.identity.as_deref(), &Memory::default()).await?;
+        self.leftovers = greeting.leftovers;
+        Ok(link)
+    }
+
+    async fn make_link(&mut self) -> Result<Link<O::Wire>, Trouble> {
         let limit = self.spec.timing.connect;
-        let stream = match timeout(limit, self.connector.connect()).await {
-            Ok(Ok(stream)) => stream,
-            Ok(Err(error)) => return Err(Trouble::Connect { place, reason: error.to_string() }),
-            Err(_elapsed) => return Err(Trouble::Connect { place, reason: format!("no answer within {limit:?}") }),
+        let wire = match timeout(limit, self.opener.open()).await {
+            Ok(opened) => opened?,
+            Err(_elapsed) => {
+                let reason = format!("no answer within {limit:?}");
+                return Err(Trouble::Connect { place: self.opener.place(), reason });
+            }
         };
-        let mut link = Link::new(stream);
+        let mut link = Link::new(wire);
         let greeting = greet(&mut link, &self.spec, self.identity.as_deref(), &self.memory).await?;
         self.identity = self.identity.take().or(greeting.identity);
         self.leftovers = greeting.leftovers;
         Ok(link)
     }
 
-    /// Closes the link. The next attempt to make one comes at once, unless the links of late did not last.
+    /// Closes the link, or puts it aside when a device clear may save it. The next attempt to do so or to make a new one
+    /// comes at once, unless the links of late did not last.
     fn poison(&mut self, trouble: Trouble) {
-        self.link = None;
+        self.ailing = self.link.take().filter(|link| link.clears_after(&trouble));
         let now = Instant::now();
         if now.duration_since(self.up_since) >= self.spec.timing.backoff_most {
             self.attempts = 0;
@@ -304,7 +330,7 @@ impl<C: Connect> Task<C> {
             waited,
             reason: match &self.trouble {
                 Some(trouble) => trouble.to_string(),
-                None => format!("the first attempt to reach {} is still under way", self.connector.place()),
+                None => format!("the first attempt to reach {} is still under way", self.opener.place()),
             },
         }
     }

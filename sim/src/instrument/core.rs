@@ -12,6 +12,8 @@ use crate::status::{Fault, Status, event};
 pub(crate) struct Core {
     /// Registers and error queue.
     pub(crate) status: Mutex<Status>,
+    /// Counts moments at which the status may have changed.
+    changes: watch::Sender<u64>,
     pending: watch::Sender<Pending>,
 }
 
@@ -26,18 +28,34 @@ struct Pending {
 impl Core {
     /// An idle instrument just switched on.
     pub(crate) fn new() -> Self {
-        Self { status: Mutex::new(Status::new()), pending: watch::Sender::new(Pending::default()) }
+        Self {
+            status: Mutex::new(Status::new()),
+            changes: watch::Sender::new(0),
+            pending: watch::Sender::new(Pending::default()),
+        }
+    }
+
+    /// Tells those who watch the status that it may have changed.
+    pub(crate) fn touch(&self) {
+        self.changes.send_modify(|count| *count = count.wrapping_add(1));
+    }
+
+    /// Notices every [`touch`](Self::touch) from now on.
+    pub(crate) fn changes(&self) -> watch::Receiver<u64> {
+        self.changes.subscribe()
     }
 
     /// Puts an error into the queue.
     pub(crate) fn report(&self, fault: Fault) {
         lock(&self.status).report(fault);
+        self.touch();
     }
 
     /// An overlapped operation begins or goes on in another condition.
     pub(crate) fn begin(&self, condition: u16) {
         lock(&self.status).operation.set_condition(condition);
         self.pending.send_modify(|pending| pending.busy = true);
+        self.touch();
     }
 
     /// The overlapped operation has ended, one way or another.
@@ -49,6 +67,8 @@ impl Core {
                 status.raise(event::OPERATION_COMPLETE);
             }
         });
+        drop(status);
+        self.touch();
     }
 
     /// `*OPC`: sets the bit when nothing is pending any more (IEEE 488.2 10.18).

@@ -14,8 +14,9 @@ mod tree;
 
 use std::sync::Arc;
 
-pub(crate) use bench::Bench;
-use bench::lock;
+use tokio::sync::watch;
+
+pub(crate) use bench::{Bench, lock};
 
 use self::core::Core;
 use crate::message::{Args, Header, Path, Reply, Unit, Units};
@@ -74,12 +75,36 @@ impl Device {
                 }
             }
         }
+        // Masks, events and the queue of errors may have changed.
+        self.core.touch();
         reply.finish()
     }
 
     /// Reports a message that was thrown away because it was too long.
     pub(crate) fn overrun(&self) {
         self.core.report(Fault::InputOverrun);
+    }
+
+    /// Reports that a reply was thrown away because the next message came before it was taken. On a raw socket, where
+    /// nobody says that a reply was taken, this cannot be seen.
+    pub(crate) fn interrupted(&self) {
+        self.core.report(Fault::QueryInterrupted);
+    }
+
+    /// The status byte with MSS in bit 6, and the mask of `*SRE`.
+    pub(crate) fn status_byte(&self, message_available: bool) -> (u8, u8) {
+        let status = lock(&self.core.status);
+        (status.status_byte(message_available), status.request_enable())
+    }
+
+    /// Says that the part of the status that belongs to a connection has changed.
+    pub(crate) fn touch_status(&self) {
+        self.core.touch();
+    }
+
+    /// Notices whenever the status may have changed.
+    pub(crate) fn status_changes(&self) -> watch::Receiver<u64> {
+        self.core.changes()
     }
 
     async fn execute(&self, unit: Unit, path: &mut Path, reply: &mut Reply) -> Result<(), Fault> {

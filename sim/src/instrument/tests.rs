@@ -18,7 +18,9 @@ fn rack() -> Rack {
     let bench = Arc::new(Bench::new(&Scenario::read(SCENARIO).unwrap()));
     let device = |kind, serial: Option<&str>| {
         let name = kind_name(kind).to_owned();
-        Device::new(&InstrumentSpec { name, kind, port: 0, serial: serial.map(str::to_owned), identity: None }, &bench)
+        let serial = serial.map(str::to_owned);
+        let protocol = crate::scenario::Protocol::Socket;
+        Device::new(&InstrumentSpec { name, kind, protocol, port: 0, serial, identity: None }, &bench)
     };
     Rack {
         scope: device(Kind::Scope, Some("SN7")),

@@ -49,6 +49,13 @@ impl Input {
         arrivals
     }
 
+    /// The peer says that a message ends here (END, where the transport has it); gives what stands behind the last NL.
+    pub(crate) fn end(&mut self) -> Option<Arrival> {
+        let discarded = std::mem::take(&mut self.state) == State::Discarding;
+        let message = std::mem::take(&mut self.message);
+        (!discarded && !message.is_empty()).then_some(Arrival::Message(message))
+    }
+
     fn take(&mut self, byte: u8) -> Option<Arrival> {
         if let State::Block { left } = self.state {
             self.message.push(byte);

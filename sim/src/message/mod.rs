@@ -11,6 +11,7 @@
 //! - Replies leave as soon as they are formed and messages are carried out in the order they came, so query errors
 //!   -410 (a new message before the reply was read), -420 (reading without a query) and -430 (both buffers full)
 //!   cannot arise. -440 can, and does.
+//!   Over HiSLIP, where a client says that it took a reply, -410 can arise too, and a message ends with END or NL.
 //! - No macros, no expressions but channel lists.
 
 mod args;

@@ -45,6 +45,9 @@ pub(crate) struct InstrumentSpec {
     pub(crate) name: String,
     /// What it is.
     pub(crate) kind: Kind,
+    /// What carries its messages.
+    #[serde(default)]
+    pub(crate) protocol: Protocol,
     /// TCP port on the loopback interface; 0 takes any free one.
     #[serde(default)]
     pub(crate) port: u16,
@@ -54,6 +57,17 @@ pub(crate) struct InstrumentSpec {
     /// The whole answer to `*IDN?` instead of the usual one.
     #[serde(default)]
     pub(crate) identity: Option<String>,
+}
+
+/// What carries the messages of an instrument.
+#[derive(Debug, Clone, Copy, Default, PartialEq, Eq, Deserialize)]
+#[serde(rename_all = "kebab-case")]
+pub(crate) enum Protocol {
+    /// HiSLIP (IVI-6.1).
+    Hislip,
+    /// Plain text over TCP.
+    #[default]
+    Socket,
 }
 
 /// What an instrument is.

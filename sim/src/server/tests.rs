@@ -8,16 +8,23 @@ use super::*;
 use crate::instrument::Bench;
 use crate::scenario::{InstrumentSpec, Kind, Scenario};
 
-fn device(kind: Kind) -> Arc<Device> {
+pub(super) fn device(kind: Kind) -> Arc<Device> {
     let scenario = Scenario::read(include_str!("../../../configs/scenarios/greenhouse-fan.toml")).unwrap();
-    let spec = InstrumentSpec { name: "one".into(), kind, port: 0, serial: None, identity: Some("A,B,C,D".into()) };
+    let spec = InstrumentSpec {
+        name: "one".into(),
+        kind,
+        protocol: Protocol::Socket,
+        port: 0,
+        serial: None,
+        identity: Some("A,B,C,D".into()),
+    };
     Arc::new(Device::new(&spec, &Arc::new(Bench::new(&scenario))))
 }
 
 async fn start(kind: Kind) -> std::net::SocketAddr {
     let listener = TcpListener::bind("127.0.0.1:0").await.unwrap();
     let address = listener.local_addr().unwrap();
-    tokio::spawn(serve(listener, device(kind), "one".into()));
+    tokio::spawn(serve(listener, device(kind), Protocol::Socket, "one".into()));
     address
 }
 

@@ -88,6 +88,9 @@ pub(crate) enum Fault {
     /// A message longer than the input buffer.
     #[error("Input buffer overrun")]
     InputOverrun,
+    /// A reply was thrown away because the next message came before it was taken.
+    #[error("Query INTERRUPTED")]
+    QueryInterrupted,
     /// A query behind one whose reply has no recognisable end.
     #[error("Query UNTERMINATED after indefinite response")]
     QueryAfterIndefinite,
@@ -125,6 +128,7 @@ impl Fault {
             Self::System => -310,
             Self::QueueOverflow => -350,
             Self::InputOverrun => -363,
+            Self::QueryInterrupted => -410,
             Self::QueryAfterIndefinite => -440,
         }
     }

@@ -11,6 +11,7 @@
 
 pub mod address;
 pub mod frame;
+pub mod hislip;
 pub mod status;
 pub mod value;
 pub mod write;

@@ -75,6 +75,7 @@ async fn a_session_over_tcp_connects_asks_and_closes() {
         instrument: "supply".to_owned(),
         host: "127.0.0.1".to_owned(),
         port: listener.local_addr().unwrap().port(),
+        protocol: Protocol::Socket,
         dialect: Arc::new(Dialect::read(bundled("scpi-99").unwrap()).unwrap()),
         timing: Timing::default(),
         caps: Caps::default(),

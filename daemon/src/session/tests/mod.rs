@@ -5,6 +5,7 @@
 
 #![allow(clippy::unwrap_used)]
 
+mod hislip;
 mod life;
 mod repair;
 mod timing;
@@ -72,6 +73,10 @@ impl Bench {
     }
 
     fn with(dialect: &str) -> Self {
+        Self::speaking(Protocol::Socket, dialect)
+    }
+
+    fn speaking(protocol: Protocol, dialect: &str) -> Self {
         let (sender, peers) = mpsc::unbounded_channel();
         let (open, attempts) = (Arc::new(AtomicBool::new(true)), Arc::default());
         let (token, tracker) = (CancellationToken::new(), TaskTracker::new());
@@ -79,6 +84,7 @@ impl Bench {
             instrument: "supply".to_owned(),
             host: "fan".to_owned(),
             port: 5025,
+            protocol,
             dialect: Arc::new(Dialect::read(dialect).unwrap()),
             timing: Timing { reply: REPLY, ..Timing::default() },
             caps: Caps::default(),

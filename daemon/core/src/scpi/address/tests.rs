@@ -18,6 +18,7 @@ fn the_forms_that_are_understood() {
         ("TCPIP::scope::inst1::INSTR", "TCPIP::scope::inst1::INSTR"),
         ("TCPIP::scope::hislip0::INSTR", "TCPIP::scope::hislip0::INSTR"),
         ("TCPIP::[::1]::hislip0,4881::instr", "TCPIP::[::1]::hislip0,4881::INSTR"),
+        ("TCPIP1::192.0.2.7::hislip0::INSTR", "TCPIP1::192.0.2.7::hislip0::INSTR"),
         ("  TCPIP::scope::HiSLIP1,4880::INSTR ", "TCPIP::scope::HiSLIP1::INSTR"),
     ] {
         let resource = Resource::parse(text).unwrap();
@@ -50,6 +51,12 @@ fn what_is_wrong_is_named() {
         let error = refused(&format!("TCPIP::a::{port}::SOCKET"));
         assert!(matches!(error, AddressError::BadPort { .. }), "{port}: {error}");
     }
+    for port in ["0", "65536", "", "4880,1", "x"] {
+        let error = refused(&format!("TCPIP::a::hislip0,{port}::INSTR"));
+        assert!(matches!(error, AddressError::BadPort { .. }), "{port}: {error}");
+    }
+    assert!(matches!(refused("TCPIP::a::hislip0::SOCKET"), AddressError::BadPort { .. }));
+    assert!(matches!(refused("TCPIP::a::hislip0::4880::INSTR"), AddressError::Form { .. }));
     assert!(matches!(refused("TCPIP::a::inst0,5::INSTR"), AddressError::BadDevice { .. }));
     assert!(matches!(refused("TCPIP::a::in st::INSTR"), AddressError::BadDevice { .. }));
     assert!(matches!(refused(&format!("TCPIP::{}::1::SOCKET", "a".repeat(600))), AddressError::Form { .. }));
