@@ -65,12 +65,14 @@ pub(crate) async fn serve(arguments: Arguments) -> Result<(), StartError> {
     if !arguments.listen.ip().is_loopback() {
         return Err(StartError::NotLoopback { address: arguments.listen });
     }
-    let Some(bench_file) = &arguments.bench else { return check(&arguments.data).await };
+    // The command line asks for it.
+    let data = arguments.data.clone().unwrap_or_default();
+    let Some(bench_file) = &arguments.bench else { return check(&data).await };
     let mut signals = Signals::new(arguments.exit_with_stdin).map_err(StartError::Signals)?;
     let bench = read_bench(bench_file)?;
     let dialects = dialects::read(&bench, bench_file)?;
     let sequences = bench.sequences.as_ref().map(|folder| beside(bench_file, folder));
-    let store = open(&arguments.data).await?;
+    let store = open(&data).await?;
     let swept = store.swept();
     if swept.parts + swept.orphans > 0 {
         tracing::warn!(parts = swept.parts, orphans = swept.orphans, "swept up what a crash left in the data folder");

@@ -58,6 +58,12 @@ pub(crate) enum Trouble {
     /// The store did not take what was measured.
     #[error(transparent)]
     Store(#[from] StoreError),
+    /// The scope gave a leg a smaller window than was asked for.
+    #[error(
+        "preparing the pair `{pair}`: `{instrument}` set the {leg} leg to {got}, but {asked} was asked for; ask for a \
+         window that it has, or use a probe that attenuates more"
+    )]
+    TooSmall { pair: String, instrument: String, leg: &'static str, asked: String, got: String },
     /// A long computation ended in a fault.
     #[error("{what} ended in a fault of the daemon; its log has more")]
     Computation { what: &'static str },

@@ -8,7 +8,7 @@ use std::time::Duration;
 use evenpair_core::dialect::{Call, Dialect, Exchange, Expect, Fields, IntentKind, Message};
 use evenpair_core::scpi::frame::{Limits, Want};
 use futures_util::{FutureExt, SinkExt, StreamExt};
-use tokio::io::{AsyncRead, AsyncWrite};
+use tokio::io::{AsyncRead, AsyncReadExt, AsyncWrite, AsyncWriteExt};
 use tokio::time::{Instant, timeout_at};
 use tokio_util::codec::Framed;
 
@@ -105,6 +105,23 @@ impl<S: AsyncRead + AsyncWrite + Unpin> Link<S> {
     /// Safe: nothing that was read is lost.
     pub(super) async fn idle(&mut self) -> Trouble {
         trouble_of(self.framed.next().await)
+    }
+
+    /// Hangs up, and waits until the other end has done so too, at most so long.
+    ///
+    /// # Cancel safety
+    /// Safe: dropping it closes the connection at once.
+    pub(super) async fn leave(self, within: Duration) {
+        let mut stream = self.framed.into_inner();
+        let gone = async {
+            let mut scrap = [0; 4096];
+            // Whatever still comes belongs to nobody; a connection that broke is gone already.
+            if stream.shutdown().await.is_ok() {
+                while stream.read(&mut scrap).await.is_ok_and(|read| read > 0) {}
+            }
+        };
+        // An instrument that does not hang up in time may still do so; the next attempt shows it.
+        let _ = timeout_at(Instant::now() + within, gone).await;
     }
 
     /// Whether nothing unasked-for has come, without waiting.

@@ -40,6 +40,8 @@ pub(super) struct Task<C: Connect> {
     queue: mpsc::Receiver<Request>,
     report: watch::Sender<LinkReport>,
     link: Option<Link<C::Stream>>,
+    /// The link before, where the instrument serves one connection at a time: it has to be gone first.
+    leaving: Option<Link<C::Stream>>,
     /// Who answered first.
     identity: Option<String>,
     memory: Memory,
@@ -66,6 +68,7 @@ impl<C: Connect> Task<C> {
             queue,
             report,
             link: None,
+            leaving: None,
             identity: None,
             memory: Memory::default(),
             leftovers: Vec::new(),
@@ -215,6 +218,9 @@ impl<C: Connect> Task<C> {
     async fn attempt(&mut self) {
         self.attempts = self.attempts.saturating_add(1);
         self.next_attempt = Instant::now() + self.spec.timing.pause(self.attempts);
+        if let Some(link) = self.leaving.take() {
+            link.leave(self.spec.timing.connect).await;
+        }
         match self.make_link().await {
             Ok(link) => {
                 self.link = Some(link);
@@ -255,7 +261,8 @@ impl<C: Connect> Task<C> {
 
     /// Closes the link. The next attempt to make one comes at once, unless the links of late did not last.
     fn poison(&mut self, trouble: Trouble) {
-        self.link = None;
+        let link = self.link.take();
+        self.leaving = link.filter(|_| self.spec.dialect.one_client());
         let now = Instant::now();
         if now.duration_since(self.up_since) >= self.spec.timing.backoff_most {
             self.attempts = 0;

@@ -50,7 +50,7 @@ impl Conversions {
         for (name, kind, expression) in &self.fields {
             let number = expression.evaluate(&borrowed(&known))?;
             if *kind == ReplyKind::Whole {
-                let whole = nearest_whole(number).ok_or_else(|| DialectError::NotWhole { name, found: number })?;
+                let whole = nearest_whole(number).ok_or(DialectError::NotWhole { name, found: number })?;
                 fields.set(*name, whole);
             } else {
                 fields.set(*name, number);

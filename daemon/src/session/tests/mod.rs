@@ -6,6 +6,7 @@
 #![allow(clippy::unwrap_used)]
 
 mod life;
+mod one_client;
 mod repair;
 mod timing;
 mod wire;
