@@ -10,7 +10,6 @@ use std::time::Duration;
 
 use evenpair_core::bench::{self, Bench};
 use evenpair_core::dialect::Dialect;
-use evenpair_core::scpi::address::Resource;
 use tokio::io::AsyncReadExt;
 use tokio::signal::unix::{Signal, SignalKind, signal};
 use tokio_util::sync::CancellationToken;
@@ -22,7 +21,7 @@ use crate::conductor::{Conductor, Instruments, Refusal, Workshop};
 use crate::dialects::{self, DialectTrouble};
 use crate::http;
 use crate::mistakes;
-use crate::session::{self, Caps, Protocol, SessionSpec, Timing};
+use crate::session::{self, Caps, SessionSpec, Timing, place_of};
 use crate::store::{Store, StoreError};
 
 /// The longest that runs may take to end and the bench to come to rest.
@@ -68,12 +67,14 @@ pub(crate) async fn serve(arguments: Arguments) -> Result<(), StartError> {
     if !arguments.listen.ip().is_loopback() {
         return Err(StartError::NotLoopback { address: arguments.listen });
     }
-    let Some(bench_file) = &arguments.bench else { return check(&arguments.data).await };
+    // The command line asks for it.
+    let data = arguments.data.clone().unwrap_or_default();
+    let Some(bench_file) = &arguments.bench else { return check(&data).await };
     let mut signals = Signals::new(arguments.exit_with_stdin).map_err(StartError::Signals)?;
     let bench = read_bench(bench_file)?;
     let dialects = dialects::read(&bench, bench_file)?;
     let sequences = bench.sequences.as_ref().map(|folder| beside(bench_file, folder));
-    let store = open(&arguments.data).await?;
+    let store = open(&data).await?;
     let swept = store.swept();
     if swept.parts + swept.orphans > 0 {
         tracing::warn!(parts = swept.parts, orphans = swept.orphans, "swept up what a crash left in the data folder");
@@ -172,19 +173,15 @@ fn connect(
 ) -> Result<Instruments, StartError> {
     let mut handles = BTreeMap::new();
     for instrument in &bench.instruments {
-        let (host, port, protocol) = match &instrument.resource {
-            Resource::Hislip { host, port, device, .. } => (host, port, Protocol::Hislip { device: device.clone() }),
-            Resource::Socket { host, port, .. } => (host, port, Protocol::Socket),
-            Resource::Instr { .. } => {
-                let resource = instrument.resource.to_string();
-                return Err(StartError::Resource { instrument: instrument.name.clone(), resource });
-            }
+        let Some((host, port, protocol)) = place_of(&instrument.resource) else {
+            let resource = instrument.resource.to_string();
+            return Err(StartError::Resource { instrument: instrument.name.clone(), resource });
         };
         let Some(dialect) = dialects.get(&instrument.dialect) else { continue };
         let spec = SessionSpec {
             instrument: instrument.name.clone(),
-            host: host.to_string(),
-            port: *port,
+            host,
+            port,
             protocol,
             dialect: Arc::clone(dialect),
             timing: Timing { reply: Duration::from_secs_f64(instrument.timeout_s), ..Timing::default() },

@@ -3,20 +3,23 @@
 use std::net::SocketAddr;
 use std::path::PathBuf;
 
-use clap::{Parser, ValueEnum};
+use clap::{Args, Parser, Subcommand, ValueEnum};
+use evenpair_core::dialect::HIGHEST_CHANNEL;
 
 /// The daemon that owns a bench: it talks to the instruments, runs sequences, and answers on HTTP.
 ///
 /// It listens on loopback only.
 #[derive(Debug, Parser)]
-#[command(name = "evenpaird", version)]
+#[command(name = "evenpaird", version, subcommand_negates_reqs = true, args_conflicts_with_subcommands = true)]
 pub(crate) struct Arguments {
+    #[command(subcommand)]
+    pub(crate) command: Option<Command>,
     /// The bench file.
     #[arg(long, value_name = "FILE", required_unless_present = "check")]
     pub(crate) bench: Option<PathBuf>,
     /// The folder for everything that is measured; made if it is not there.
-    #[arg(long, value_name = "DIR")]
-    pub(crate) data: PathBuf,
+    #[arg(long, value_name = "DIR", required = true)]
+    pub(crate) data: Option<PathBuf>,
     /// Check the data folder instead of serving: whether everything that the store promises holds.
     #[arg(long, conflicts_with = "bench")]
     pub(crate) check: bool,
@@ -41,4 +44,58 @@ pub(crate) enum LogFormat {
     Human,
     /// A JSON object a line.
     Json,
+}
+
+/// What the program does instead of serving a bench.
+#[derive(Debug, Subcommand)]
+pub(crate) enum Command {
+    /// Try a dialect on one instrument, outside any bench: what works, what differs, what is refused.
+    ///
+    /// It only asks, unless `--allow-set` is given. Sources, outputs and routes are never set. Exit status: 0 when
+    /// everything that was tried works, 1 when something differs or is refused, 2 when nothing could be tried.
+    Dialect(DialectArguments),
+}
+
+/// What a trial of a dialect needs to know.
+#[derive(Debug, Args)]
+pub(crate) struct DialectArguments {
+    /// The dialect: a file that ends in `.toml`, or the name of one that comes with the daemon.
+    #[arg(value_name = "FILE")]
+    pub(crate) file: String,
+    /// The instrument's address, such as `TCPIP::192.168.1.20::5025::SOCKET`.
+    #[arg(long, value_name = "RESOURCE")]
+    pub(crate) at: String,
+    /// Also change settings: each is set to something near by, asked for, compared, and given back. An acquisition is
+    /// started too.
+    #[arg(long)]
+    pub(crate) allow_set: bool,
+    /// Try only what an instrument in this role needs; without it, all that the dialect has words for.
+    #[arg(long = "as", value_name = "ROLE")]
+    pub(crate) role: Option<Role>,
+    /// The channel or output that is asked about.
+    #[arg(long, value_name = "N", default_value_t = 1, value_parser = clap::value_parser!(i64).range(1..=HIGHEST_CHANNEL))]
+    pub(crate) channel: i64,
+    /// How long to wait for a reply, in seconds.
+    #[arg(long = "timeout", value_name = "SECONDS", default_value_t = 2.0, value_parser = patience)]
+    pub(crate) timeout_s: f64,
+}
+
+/// What an instrument is on a bench.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, ValueEnum)]
+pub(crate) enum Role {
+    /// It acquires records.
+    Scope,
+    /// It makes signals.
+    Source,
+    /// It supplies voltage and current.
+    Supply,
+    /// It closes and opens routes.
+    Switch,
+}
+
+fn patience(text: &str) -> Result<f64, String> {
+    match text.parse::<f64>() {
+        Ok(seconds) if (0.01..=600.0).contains(&seconds) => Ok(seconds),
+        _ => Err("0.01 to 600 seconds".to_owned()),
+    }
 }

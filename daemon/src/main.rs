@@ -1,7 +1,8 @@
 //! `evenpaird`: the daemon that owns a bench.
 //!
 //! Floors, each using only those below it: [`app`] starts and ends everything; [`http`] answers; [`conductor`] carries
-//! runs out; [`session`], [`store`] and [`clock`] touch instruments, disk and time.
+//! runs out; [`session`], [`store`] and [`clock`] touch instruments, disk and time. Beside them, [`probe`] tries a
+//! dialect on one instrument without a bench.
 
 mod app;
 mod arguments;
@@ -10,6 +11,7 @@ mod conductor;
 mod dialects;
 mod http;
 mod mistakes;
+mod probe;
 mod session;
 mod store;
 
@@ -17,7 +19,7 @@ use std::process::ExitCode;
 
 use clap::Parser;
 
-use arguments::{Arguments, LogFormat};
+use arguments::{Arguments, Command, LogFormat};
 
 /// Exit status when the daemon could not start: 2, as for a command that could not be completed.
 const NOT_STARTED: u8 = 2;
@@ -30,6 +32,9 @@ fn main() -> ExitCode {
             return ExitCode::from(if error.use_stderr() { 3 } else { 0 });
         }
     };
+    if let Some(Command::Dialect(arguments)) = &arguments.command {
+        return dialect(arguments);
+    }
     let filter = tracing_subscriber::EnvFilter::try_new(&arguments.log).unwrap_or_else(|_| "info".into());
     let subscriber = tracing_subscriber::fmt().with_writer(std::io::stderr).with_env_filter(filter);
     match arguments.log_format {
@@ -48,6 +53,27 @@ fn main() -> ExitCode {
     runtime.shutdown_timeout(std::time::Duration::from_secs(1));
     match ended {
         Ok(()) => ExitCode::SUCCESS,
+        Err(error) => {
+            eprintln!("evenpaird: {error}");
+            ExitCode::from(NOT_STARTED)
+        }
+    }
+}
+
+/// Tries a dialect: 0 when all that was tried works, 1 when not, 2 when nothing could be tried.
+fn dialect(arguments: &arguments::DialectArguments) -> ExitCode {
+    let runtime = match tokio::runtime::Builder::new_current_thread().enable_all().build() {
+        Ok(runtime) => runtime,
+        Err(error) => {
+            eprintln!("evenpaird: starting: {error}");
+            return ExitCode::from(NOT_STARTED);
+        }
+    };
+    match runtime.block_on(probe::run(arguments)) {
+        Ok(findings) => {
+            println!("{findings}");
+            ExitCode::from(if findings.good() { 0 } else { 1 })
+        }
         Err(error) => {
             eprintln!("evenpaird: {error}");
             ExitCode::from(NOT_STARTED)

@@ -18,7 +18,10 @@ pub(crate) fn bench(bench: &Bench) -> String {
     for instrument in &bench.instruments {
         let link = if instrument.link == LinkState::Up { "up" } else { "down" };
         let says = instrument.identity.as_deref().or(instrument.trouble.as_deref()).unwrap_or("");
-        instruments.add_row([&instrument.name, link, &format!("{}\n{says}", instrument.resource)]);
+        // `0` says that there are none (IEEE 488.2 10.20).
+        let options = instrument.options.as_deref().filter(|options| !matches!(*options, "" | "0"));
+        let options = options.map(|options| format!("\noptions {options}")).unwrap_or_default();
+        instruments.add_row([&instrument.name, link, &format!("{}\n{says}{options}", instrument.resource)]);
     }
     parts.push(lines(&instruments));
 

@@ -51,6 +51,9 @@ pub struct Instrument {
     /// What it answered to `*IDN?`, once it has.
     #[serde(default, skip_serializing_if = "Option::is_none")]
     pub identity: Option<String>,
+    /// What it answered when it was asked for its model's options (`*OPT?`), once it has.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub options: Option<String>,
     /// The state of the link.
     pub link: LinkState,
     /// Why the link is down, in words.

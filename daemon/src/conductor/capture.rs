@@ -37,15 +37,15 @@ pub(crate) async fn capture(
         return Err(Trouble::NoCorrection { pair: pair.name.clone() });
     }
     let scope = workshop.scope(pair)?;
-    scope.prepare(&plan.acquisition).await?;
-    let settings = scope.settings().await?;
+    let prepared = scope.prepare(&plan.acquisition).await?;
+    let settings = prepared.settings;
     let now = conditions_now(pair, workshop.scope_identity(pair), &settings);
     let correction = newest_for(workshop, pair, &now).await?;
     let (state, reasons) = judge(&correction, pair, &now, workshop.clock.now());
     if state == CorrectionState::Void && plan.on_void == OnVoid::Refuse {
         return Err(Trouble::CorrectionVoid { pair: pair.name.clone(), reasons });
     }
-    let (positive, negative) = scope.acquire(&plan.acquisition, stop).await?;
+    let (positive, negative) = scope.acquire(&prepared.acquisition, stop).await?;
     let made_at = workshop.clock.now();
     let [settings_p, settings_n] = &settings;
     let software = for_software(&correction, settings_n.delay_s - settings_p.delay_s);
@@ -61,6 +61,7 @@ pub(crate) async fn capture(
         .await?
         .map_err(|source| Trouble::Apply { pair: pair.name.clone(), source })?;
     let state_name = if state == CorrectionState::Void { "void" } else { "stale" };
+    measured.warnings.extend(prepared.told);
     measured.warnings.extend(reasons.iter().map(|reason| format!("the correction is {state_name}: {reason}")));
 
     let figures: Vec<api::Figure> = measured.figures.iter().map(api::Figure::from).collect();

@@ -3,6 +3,7 @@
 //! Everything that takes time is a run, also a deskew asked for by itself. A run is a task of its own: it waits for the
 //! bench, carries out what the state machine asks for, and persists a record of each thing before doing it.
 
+mod adjusted;
 mod analyse;
 mod beyond;
 mod capture;

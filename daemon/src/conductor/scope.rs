@@ -8,6 +8,7 @@ use evenpair_core::dialect::{Call, Fields, Intent, Value};
 use evenpair_core::units::{Unit, show};
 use tokio_util::sync::CancellationToken;
 
+use super::adjusted::{TooSmall, judge};
 use super::trouble::Trouble;
 use crate::session::{Handle, SessionError};
 
@@ -34,6 +35,17 @@ pub(crate) struct LegSettings {
     pub(crate) coupling: String,
     /// The scope's own skew setting: how much earlier it shifts this leg's record.
     pub(crate) delay_s: f64,
+}
+
+/// What the scope made of an acquisition that it was asked for.
+#[derive(Debug, Clone)]
+pub(crate) struct Prepared {
+    /// The acquisition as the scope says that it will be.
+    pub(crate) acquisition: Acquisition,
+    /// Both legs, positive first, as the scope tells them.
+    pub(crate) settings: [LegSettings; 2],
+    /// What it rounded or clamped, in words.
+    pub(crate) told: Vec<String>,
 }
 
 /// The calls that give the scope back what it was set to.
@@ -92,8 +104,8 @@ impl Scope<'_> {
         Ok(call)
     }
 
-    /// Sets both legs alike, the time base, the trigger and the averaging.
-    pub(crate) async fn prepare(&self, acquisition: &Acquisition) -> Result<(), Trouble> {
+    /// Sets both legs alike, the time base, the trigger and the averaging, and reads back what the scope made of it.
+    pub(crate) async fn prepare(&self, acquisition: &Acquisition) -> Result<Prepared, Trouble> {
         for (_, leg) in self.legs() {
             let channel = i64::from(leg.channel);
             let attenuation = leg.probe.attenuation;
@@ -120,7 +132,47 @@ impl Scope<'_> {
             .with("slope", Value::Keyword(trigger.slope.name().to_owned()));
         self.handle.call(call).await?;
         self.handle.call(Call::new(Intent::AverageSet).with("count", i64::from(acquisition.averages))).await?;
-        Ok(self.handle.call(Call::new(Intent::FormatSet)).await.map(|_| ())?)
+        self.handle.call(Call::new(Intent::FormatSet)).await?;
+        let settings = self.settings().await?;
+        let got = self.read_back(acquisition).await?;
+        let [(positive, _), (negative, _)] = self.legs();
+        let legs = [(positive, &settings[0]), (negative, &settings[1])];
+        let told = judge(acquisition, &got, legs).map_err(|TooSmall { leg, asked, got }| Trouble::TooSmall {
+            pair: self.pair.name.clone(),
+            instrument: self.pair.scope.clone(),
+            leg,
+            asked,
+            got,
+        })?;
+        for told in &told {
+            tracing::warn!(pair = %self.pair.name, instrument = %self.pair.scope, "{told}");
+        }
+        Ok(Prepared { acquisition: got, settings, told })
+    }
+
+    /// The time base, the trigger's level and the averaging as the scope tells them, where its dialect can ask.
+    async fn read_back(&self, asked: &Acquisition) -> Result<Acquisition, Trouble> {
+        let mut got = *asked;
+        let speaks = |intent| self.handle.dialect().supports(intent);
+        let whole = |fields: &Fields, name: &str| {
+            let whole = fields.whole(name).map_err(|source| self.unreadable(source))?;
+            Ok::<u32, Trouble>(u32::try_from(whole.max(0)).unwrap_or(u32::MAX))
+        };
+        if speaks(Intent::TimebaseGet) {
+            let timebase = self.handle.call(Call::new(Intent::TimebaseGet)).await?;
+            got.interval_s = self.number(&timebase, "interval_s")?;
+            got.points = whole(&timebase, "points")?;
+            got.position = self.number(&timebase, "position")?;
+        }
+        if speaks(Intent::TriggerGet) {
+            let trigger = self.handle.call(Call::new(Intent::TriggerGet)).await?;
+            let attenuation = self.pair.leg_on(asked.trigger.channel).map_or(1.0, |leg| leg.probe.attenuation);
+            got.trigger.level_v = self.number(&trigger, "level_v")? * attenuation;
+        }
+        if speaks(Intent::AverageGet) {
+            got.averages = whole(&self.handle.call(Call::new(Intent::AverageGet)).await?, "count")?;
+        }
+        Ok(got)
     }
 
     /// What both legs are set to, read back: a scope rounds and clamps.
@@ -168,6 +220,10 @@ impl Scope<'_> {
         let mut mixed = (0, 0);
         for _ in 0..TRIES {
             self.sweep(acquisition, stop).await?;
+            if self.handle.dialect().runs_freely() {
+                // Otherwise the scope would have acquired anew before the second leg is read.
+                self.handle.call(Call::new(Intent::AcquireAbort)).await?;
+            }
             let (positive, first) = self.record(&self.pair.positive).await?;
             let (negative, second) = self.record(&self.pair.negative).await?;
             // Asked once more, since another client's sweep may have come between preamble and samples.
@@ -222,9 +278,13 @@ impl Scope<'_> {
     async fn record(&self, leg: &LegSpec) -> Result<(Record, i64), Trouble> {
         let channel = i64::from(leg.channel);
         let preamble = self.handle.call(Call::new(Intent::RecordPreamble).with("channel", channel)).await?;
-        let points = preamble.whole("points").ok().and_then(|points| u64::try_from(points).ok()).unwrap_or(0);
-        let block = self.handle.data(Call::new(Intent::RecordData).with("channel", channel), points).await?;
-        let raw = self.handle.dialect().record(&preamble, &block).map_err(|source| self.unreadable(source))?;
+        let points = preamble.whole("points").map_err(|source| self.unreadable(source))?;
+        let mut blocks = Vec::new();
+        for call in self.handle.dialect().data_calls(channel, points) {
+            let expected = call.args.whole("count").unwrap_or(points);
+            blocks.push(self.handle.data(call, u64::try_from(expected).unwrap_or(0)).await?);
+        }
+        let raw = self.handle.dialect().record(&preamble, &blocks).map_err(|source| self.unreadable(source))?;
         let attenuation = leg.probe.attenuation;
         let record = Record {
             samples: raw.samples,

@@ -62,6 +62,12 @@ pub(crate) enum Trouble {
     /// Two ranges could not be compared.
     #[error("transferring the correction of the pair `{pair}` by the reference `{reference}`: {source}")]
     Transfer { pair: String, reference: String, source: Box<TransferError> },
+    /// The scope gave a leg a smaller window than was asked for.
+    #[error(
+        "preparing the pair `{pair}`: `{instrument}` set the {leg} leg to {got}, but {asked} was asked for; ask for a \
+         window that it has, or use a probe that attenuates more"
+    )]
+    TooSmall { pair: String, instrument: String, leg: &'static str, asked: String, got: String },
     /// A long computation ended in a fault.
     #[error("{what} ended in a fault of the daemon; its log has more")]
     Computation { what: &'static str },

@@ -153,6 +153,19 @@ impl Handle {
         }
     }
 
+    /// Carries out a call as [`Handle::call`] does, reads the error queue after queries too, and gives what came back
+    /// both as it came and as it was read: for a look at an instrument that nobody has spoken to yet. A reply's line or
+    /// block may have `most_bytes`.
+    ///
+    /// # Errors
+    /// As [`Handle::call`].
+    pub(crate) async fn look(&self, call: Call, most_bytes: usize) -> Result<(Vec<Message>, Fields), SessionError> {
+        let work = self.plan(call, self.shared.timing.reply)?;
+        let caps = Caps { line_bytes: most_bytes, block_bytes: most_bytes };
+        let reply = self.ask(Work { check_errors: true, caps, ..work }).await?;
+        Ok((reply.messages, reply.fields))
+    }
+
     /// Sends one line as it is. It is not remembered, and never sent again by itself.
     ///
     /// # Errors

@@ -119,6 +119,15 @@ impl<W: Wire> Link<W> {
         self.wire.idle().await
     }
 
+    /// Hangs up, and waits until the other end has done so too, at most so long.
+    ///
+    /// # Cancel safety
+    /// Safe: dropping it closes the connection at once.
+    pub(super) async fn leave(self, within: Duration) {
+        // An instrument that does not hang up in time may still do so; the next attempt shows it.
+        let _ = timeout_at(Instant::now() + within, self.wire.leave()).await;
+    }
+
     /// Whether nothing unasked-for has come, without waiting.
     pub(super) fn quiet(&mut self) -> Result<(), Trouble> {
         // Unconstrained: a task that has used up its share of time would be told "nothing yet" although there is.

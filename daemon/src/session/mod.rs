@@ -30,7 +30,7 @@ mod wire;
 
 pub(crate) use error::SessionError;
 pub(crate) use handle::{Handle, LinkReport};
-pub(crate) use spec::{Caps, Protocol, SessionSpec, Timing};
+pub(crate) use spec::{Caps, Protocol, SessionSpec, Timing, place_of};
 
 use connect::{Connect, Tcp};
 use handle::Shared;

@@ -10,7 +10,7 @@ use super::codec::{Codec, CodecError};
 use super::connect::Connect;
 use super::error::{Trouble, shown};
 use super::spec::Caps;
-use super::wire::{Open, Wire};
+use super::wire::{Open, Wire, part};
 
 /// A raw socket.
 #[derive(Debug)]
@@ -82,6 +82,10 @@ impl<S: AsyncRead + AsyncWrite + Send + Unpin + 'static> Wire for Plain<S> {
 
     async fn clear(&mut self) -> Result<(), Trouble> {
         Err(Trouble::Abandoned)
+    }
+
+    async fn leave(self) {
+        part(self.0.into_inner()).await;
     }
 }
 

@@ -5,6 +5,7 @@ use std::time::Duration;
 
 use evenpair_core::dialect::Dialect;
 use evenpair_core::scpi::frame::MOST_LINE_BYTES;
+use evenpair_core::scpi::address::Resource;
 
 /// Everything that a session is made from.
 #[derive(Debug, Clone)]
@@ -23,6 +24,18 @@ pub(crate) struct SessionSpec {
     pub(crate) timing: Timing,
     /// How much is read.
     pub(crate) caps: Caps,
+}
+
+/// Where an instrument is, and by what its messages are carried there: host, port, protocol. `None` for what this daemon
+/// does not speak.
+pub(crate) fn place_of(resource: &Resource) -> Option<(String, u16, Protocol)> {
+    match resource {
+        Resource::Hislip { host, port, device, .. } => {
+            Some((host.clone(), *port, Protocol::Hislip { device: device.clone() }))
+        }
+        Resource::Socket { host, port, .. } => Some((host.clone(), *port, Protocol::Socket)),
+        Resource::Instr { .. } => None,
+    }
 }
 
 /// What carries the instrument's messages.

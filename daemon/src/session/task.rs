@@ -45,6 +45,8 @@ pub(super) struct Task<O: Open> {
     link: Option<Link<O::Wire>>,
     /// A link that is no longer trusted, but may be after a device clear.
     ailing: Option<Link<O::Wire>>,
+    /// The link before, where the instrument serves one connection at a time: it has to be gone first.
+    leaving: Option<Link<O::Wire>>,
     /// Who answered first.
     identity: Option<String>,
     memory: Memory,
@@ -72,6 +74,7 @@ impl<O: Open> Task<O> {
             report,
             link: None,
             ailing: None,
+            leaving: None,
             identity: None,
             memory: Memory::default(),
             leftovers: Vec::new(),
@@ -223,6 +226,9 @@ impl<O: Open> Task<O> {
                 }
             }
         }
+        if let Some(link) = self.leaving.take() {
+            link.leave(self.spec.timing.connect).await;
+        }
         match self.make_link().await {
             Ok(link) => self.is_up(link, false),
             Err(trouble) => {
@@ -281,7 +287,10 @@ impl<O: Open> Task<O> {
     /// Closes the link, or puts it aside when a device clear may save it. The next attempt to do so or to make a new one
     /// comes at once, unless the links of late did not last.
     fn poison(&mut self, trouble: Trouble) {
-        self.ailing = self.link.take().filter(|link| link.clears_after(&trouble));
+        match self.link.take() {
+            Some(link) if link.clears_after(&trouble) => self.ailing = Some(link),
+            link => self.leaving = link.filter(|_| self.spec.dialect.one_client()),
+        }
         let now = Instant::now();
         if now.duration_since(self.up_since) >= self.spec.timing.backoff_most {
             self.attempts = 0;

@@ -3,6 +3,7 @@
 use std::future::Future;
 
 use evenpair_core::dialect::{Exchange, Message};
+use tokio::io::{AsyncRead, AsyncReadExt, AsyncWrite, AsyncWriteExt};
 
 use super::error::Trouble;
 use super::spec::Caps;
@@ -41,6 +42,21 @@ pub(super) trait Wire: Send + 'static {
     /// # Cancel safety
     /// When it is dropped, the connection must be closed.
     fn clear(&mut self) -> impl Future<Output = Result<(), Trouble>> + Send;
+
+    /// Hangs up, and waits until the other end has done so too.
+    ///
+    /// # Cancel safety
+    /// Safe: dropping it closes the connection at once.
+    fn leave(self) -> impl Future<Output = ()> + Send;
+}
+
+/// Closes a stream and waits until the other end has closed it too. Whatever still comes belongs to nobody.
+pub(super) async fn part<S: AsyncRead + AsyncWrite + Unpin>(mut stream: S) {
+    let mut scrap = [0; 4096];
+    if stream.shutdown().await.is_ok() {
+        // A connection that broke is gone already.
+        while stream.read(&mut scrap).await.is_ok_and(|read| read > 0) {}
+    }
 }
 
 /// Opens wires, one after another.

@@ -28,20 +28,22 @@ impl Call {
         self
     }
 
-    /// Whether every argument is there, of its kind and in its range, and none is left over.
+    /// Whether every argument that is always given is there, each of its kind and in its range, and none is left over.
     ///
     /// # Errors
     /// The first thing that is wrong.
     pub fn check(&self) -> Result<(), DialectError> {
         let spec = self.intent.spec();
-        if let Some((name, _)) = self.args.iter().find(|(name, _)| !spec.args.iter().any(|(known, _)| known == name)) {
+        let every = || spec.args.iter().chain(spec.optional);
+        if let Some((name, _)) = self.args.iter().find(|(name, _)| !every().any(|(known, _)| known == name)) {
             return Err(DialectError::UnknownArgument {
                 intent: self.intent,
                 name: name.clone(),
-                known: spec.args.iter().map(|(known, _)| *known).collect::<Vec<_>>().join(", "),
+                known: every().map(|(known, _)| *known).collect::<Vec<_>>().join(", "),
             });
         }
-        spec.args.iter().try_for_each(|(name, kind)| self.check_one(name, *kind))
+        let given = spec.optional.iter().filter(|(name, _)| self.args.value(name).is_some());
+        spec.args.iter().chain(given).try_for_each(|(name, kind)| self.check_one(name, *kind))
     }
 
     /// Under which name a session remembers this setting, so that a later one replaces it: the intent and its channel.

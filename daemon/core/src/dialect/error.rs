@@ -156,7 +156,7 @@ pub enum DialectError {
         source: ValueError,
     },
     /// An expression of the dialect cannot be evaluated.
-    #[error("the expression `{text}` of the dialect's `record.{name}` cannot be evaluated: {reason}")]
+    #[error("the expression `{text}` at the dialect's `{name}` cannot be evaluated: {reason}")]
     Expression {
         /// The key it stands at.
         name: String,
@@ -164,6 +164,38 @@ pub enum DialectError {
         text: String,
         /// Why.
         reason: String,
+    },
+    /// An expression gives a number with a fraction where a whole one belongs.
+    #[error("the dialect's expression for `{name}` gives {found}, which is no whole number")]
+    NotWhole {
+        /// The field's name.
+        name: &'static str,
+        /// What it gives.
+        found: f64,
+    },
+    /// A reply lacks a key.
+    #[error("the reply to `{command}` was `{reply}`: it has {found} entries for `{key}`, but must have one")]
+    Key {
+        /// What was sent.
+        command: String,
+        /// What came, shortened.
+        reply: String,
+        /// The instrument's key.
+        key: String,
+        /// How many there are.
+        found: usize,
+    },
+    /// A window of a record does not hold as many samples as were asked for.
+    #[error(
+        "the samples from number {first} on were asked for by {wanted}, but {found} came; see the dialect's `[window]`"
+    )]
+    Window {
+        /// The first sample's number, from 0.
+        first: i64,
+        /// How many were asked for.
+        wanted: i64,
+        /// How many came.
+        found: usize,
     },
     /// A preamble says something that cannot be.
     #[error("the preamble says `{name}` = {found}, which cannot be: {allowed} is expected")]

@@ -1,4 +1,4 @@
-//! Expressions over a preamble's numbers, in the Common Expression Language (CEL).
+//! Expressions over the numbers of a call or a reply, in the Common Expression Language (CEL).
 //!
 //! Every number is a double there, and CEL mixes no kinds: a constant is written `2.0`, not `2`.
 
@@ -15,28 +15,36 @@ pub(super) struct Expression {
     name: String,
     text: String,
     program: Program,
+    /// The names that it uses.
+    uses: Vec<String>,
 }
 
 impl Expression {
-    /// Compiles `text`, which stands at the key `name` and may use `known` names.
-    pub(super) fn compile(name: &str, text: &str, known: &[&str]) -> Result<Self, String> {
+    /// Compiles `text`, which stands at the key `name` and may use `known` names; a name that is none of them is
+    /// refused as what `nobody` gives.
+    pub(super) fn compile(name: &str, text: &str, known: &[&str], nobody: &str) -> Result<Self, String> {
         if text.len() > LONGEST {
             return Err(format!("it has more than {LONGEST} characters"));
         }
         let program = Program::compile(text).map_err(|error| one_line(&error.to_string()))?;
-        let mut unknown: Vec<String> = program.references().variables().into_iter().map(str::to_owned).collect();
-        unknown.retain(|used| !known.contains(&used.as_str()));
-        unknown.sort_unstable();
+        let mut uses: Vec<String> = program.references().variables().into_iter().map(str::to_owned).collect();
+        uses.sort_unstable();
+        let unknown: Vec<&str> = uses.iter().map(String::as_str).filter(|used| !known.contains(used)).collect();
         if !unknown.is_empty() {
-            return Err(format!("it uses {}, which no reply gives", unknown.join(", ")));
+            return Err(format!("it uses {}, which {nobody} gives", unknown.join(", ")));
         }
-        let expression = Self { name: name.to_owned(), text: text.to_owned(), program };
+        let expression = Self { name: name.to_owned(), text: text.to_owned(), program, uses };
         // Mixed kinds show only when it is evaluated; ones are as good as any numbers for that.
         let ones: Vec<(&str, f64)> = known.iter().map(|name| (*name, 1.0)).collect();
         match expression.run(&ones) {
             Ok(_) => Ok(expression),
             Err(reason) => Err(format!("{reason}; every name is a double, so write constants as `2.0`")),
         }
+    }
+
+    /// Whether it uses this name.
+    pub(super) fn uses(&self, name: &str) -> bool {
+        self.uses.iter().any(|used| used == name)
     }
 
     /// Its value for these numbers.

@@ -10,6 +10,8 @@ use ArgKind::{Channel, Channels, Flag, Keyword, Number, Whole};
 pub enum Intent {
     /// Who are you?
     Identify,
+    /// Which options does this model have?
+    Options,
     /// Clear the status registers and the error queue.
     Clear,
     /// Go to the known default settings.
@@ -147,8 +149,10 @@ pub enum ReplyKind {
 /// An intent's arguments, its reply's fields and its kind.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct IntentSpec {
-    /// Every argument, all of them required.
+    /// Every argument that is always given.
     pub args: &'static [(&'static str, ArgKind)],
+    /// Arguments that are given only to a dialect that wants them, see `[window]` of dialect files.
+    pub optional: &'static [(&'static str, ArgKind)],
     /// Every field of the reply.
     pub reply: &'static [(&'static str, ReplyKind)],
     /// What sort of thing it is.
@@ -174,14 +178,23 @@ const fn spec(
     args: &'static [(&'static str, ArgKind)],
     reply: &'static [(&'static str, ReplyKind)],
 ) -> IntentSpec {
-    IntentSpec { args, reply, kind }
+    IntentSpec { args, optional: &[], reply, kind }
 }
+
+/// Samples are read as a whole, or window after window: `count` samples from the one numbered `first`, from 0.
+const SAMPLES: IntentSpec = IntentSpec {
+    args: &[CHANNEL],
+    optional: &[("first", Whole(0, MANY)), ("count", Whole(1, MANY))],
+    reply: &[("block", ReplyKind::Block)],
+    kind: Data,
+};
 
 use IntentKind::{Acquire, Action, Data, Query, Setting};
 
 /// Every intent with its name and its specification.
 const TABLE: &[(Intent, &str, IntentSpec)] = &[
     (Intent::Identify, "identify", spec(Query, &[], &[("identity", ReplyKind::Text)])),
+    (Intent::Options, "options", spec(Query, &[], &[("options", ReplyKind::Text)])),
     (Intent::Clear, "clear", spec(Action, &[], &[])),
     (Intent::Reset, "reset", spec(Action, &[], &[])),
     // Asking takes the entry out of the queue, so it is an action.
@@ -229,7 +242,7 @@ const TABLE: &[(Intent, &str, IntentSpec)] = &[
     (Intent::AcquireStart, "acquire.start", spec(Acquire, &[], &[])),
     (Intent::AcquireAbort, "acquire.abort", spec(Action, &[], &[])),
     (Intent::RecordPreamble, "record.preamble", spec(Query, &[CHANNEL], PREAMBLE)),
-    (Intent::RecordData, "record.data", spec(Data, &[CHANNEL], &[("block", ReplyKind::Block)])),
+    (Intent::RecordData, "record.data", SAMPLES),
     (Intent::SkewSet, "skew.set", spec(Setting, &[CHANNEL, ("delay_s", Number)], &[])),
     (Intent::SkewGet, "skew.get", spec(Query, &[CHANNEL], &[("delay_s", ReplyKind::Number)])),
     (

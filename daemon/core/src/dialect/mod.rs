@@ -5,14 +5,17 @@
 //! its type. What a dialect file may hold is described in `configs/dialects/README.md`.
 
 mod call;
+mod convert;
 mod error;
 mod exchange;
 mod expression;
 mod intent;
+mod like;
 mod read;
 mod record;
 mod reply;
 mod samples;
+mod split;
 mod step;
 mod template;
 mod value;
@@ -24,14 +27,16 @@ pub use call::{Call, MOST_CHANNELS};
 pub use error::DialectError;
 pub use exchange::{Completion, Exchange, Expect, Message, RawRecord, SkewSetting};
 pub use intent::{ArgKind, COUPLINGS, HIGHEST_CHANNEL, Intent, IntentKind, IntentSpec, ReplyKind, SLOPES};
+pub use like::{Mistaken, Source};
 pub use value::{Args, Fields, Value};
 
 use record::Reading;
 use reply::Manner;
-use step::{Errors, Step, Waiting, Wanted};
+use step::{Errors, Spoken, Step, Waiting, Wanted};
 use words::Words;
 
-use crate::document::{self, Mistake};
+use crate::analysis::record::Samples;
+use crate::document::Mistake;
 use crate::scpi::write;
 
 /// A checked dialect.
@@ -41,11 +46,16 @@ pub struct Dialect {
     about: String,
     ending: &'static str,
     greeting: bool,
+    one_client: bool,
     manner: Manner,
     words: BTreeMap<String, Words>,
-    intents: BTreeMap<Intent, Vec<Step>>,
+    intents: BTreeMap<Intent, Spoken>,
     errors: Option<Errors>,
     completion: Option<Waiting>,
+    /// Whether it goes on acquiring by itself.
+    free: bool,
+    /// The most samples that are asked for at once.
+    window: Option<i64>,
     /// The setting, and whether a positive value shifts a record later.
     skew: Option<(SkewSetting, bool)>,
     reading: Option<Reading>,
@@ -67,12 +77,24 @@ pub fn bundled_names() -> impl Iterator<Item = &'static str> {
 }
 
 impl Dialect {
-    /// Reads a dialect file.
+    /// Reads a dialect's text, which may be `like` one that comes with the program, but not like another file.
     ///
     /// # Errors
     /// Every mistake in it.
     pub fn read(text: &str) -> Result<Self, Vec<Mistake>> {
-        document::read(text, read::dialect)
+        like::read_alone(text)
+    }
+
+    /// Reads a dialect file. When it is `like` another file, `find` is asked for that with the path as it is written
+    /// and the place of the file that says so; the place that it gives back must be the same for the same file.
+    ///
+    /// # Errors
+    /// Every mistake, by the file it stands in.
+    pub fn read_from(
+        source: Source,
+        find: &mut dyn FnMut(&str, &str) -> Result<Source, String>,
+    ) -> Result<Self, Vec<Mistaken>> {
+        like::read(source, find)
     }
 
     /// Its name.
@@ -111,12 +133,13 @@ impl Dialect {
                 self.error_query().map(|exchange| vec![exchange]).ok_or_else(|| self.unsupported(call.intent))
             }
             intent => {
-                let args = self.turned(call)?;
+                let spoken = self.spoken(intent)?;
+                let args = spoken.conversions.outwards(self.turned(call)?)?;
                 let exchange = |step: &Step| {
                     let command = step.template.render(intent, &args, &self.words)?;
                     Ok(self.exchange(&command, step.wanted.expect(), step.pause_s))
                 };
-                self.steps(intent)?.iter().map(exchange).collect()
+                spoken.steps.iter().map(exchange).collect()
             }
         }
     }
@@ -148,14 +171,16 @@ impl Dialect {
                 fields.set("done", waiting.done(line, command, self.manner)?);
             }
             (intent, ..) => {
-                let wanted = self.steps(intent)?.iter().map(|step| &step.wanted);
-                let asking = wanted.filter(|wanted| !matches!(wanted, Wanted::Nothing));
-                for (wanted, (command, line)) in asking.zip(&pairs) {
+                let spoken = self.spoken(intent)?;
+                let asking = spoken.steps.iter().filter(|step| !matches!(step.wanted, Wanted::Nothing));
+                for (step, (command, line)) in asking.zip(&pairs) {
                     // Megabytes of samples in text are not copied into a field.
-                    if let (Wanted::Line(shape), Some(line), true) = (wanted, line, intent != Intent::RecordData) {
-                        shape.read(line, command, self.manner, &self.words, &mut fields)?;
+                    if let (Wanted::Line(shape), Some(line), true) = (&step.wanted, line, intent != Intent::RecordData)
+                    {
+                        shape.read(line, command, step.manner, &self.words, &mut fields)?;
                     }
                 }
+                fields = spoken.conversions.inwards(intent, &call.args, fields)?;
             }
         }
         match (call.intent, &self.reading) {
@@ -176,13 +201,48 @@ impl Dialect {
         Ok(fields)
     }
 
-    /// Reads a record out of its preamble's fields and the reply to `record.data`.
+    /// The calls that ask for the `points` samples of one channel, in order: one, or one for each window.
+    #[must_use]
+    pub fn data_calls(&self, channel: i64, points: i64) -> Vec<Call> {
+        let call = || Call::new(Intent::RecordData).with("channel", channel);
+        let Some(most) = self.window else { return vec![call()] };
+        let step = usize::try_from(most).unwrap_or(usize::MAX);
+        (0..points.max(1))
+            .step_by(step)
+            .map(|first| call().with("first", first).with("count", most.min(points.max(1) - first)))
+            .collect()
+    }
+
+    /// Reads a record out of its preamble's fields and the replies to [`Dialect::data_calls`].
     ///
     /// # Errors
     /// When they do not fit each other or the dialect.
-    pub fn record(&self, preamble: &Fields, data: &Message) -> Result<RawRecord, DialectError> {
+    pub fn record(&self, preamble: &Fields, data: &[Message]) -> Result<RawRecord, DialectError> {
         let reading = self.reading.as_ref().ok_or_else(|| self.unsupported(Intent::RecordData))?;
-        reading.record(preamble, data, Intent::RecordData.name(), self.manner)
+        let steps = self.intents.get(&Intent::RecordData).map(|spoken| spoken.steps.as_slice()).unwrap_or_default();
+        let manner = steps.last().map_or(self.manner, |step| step.manner);
+        let calls = self.data_calls(1, preamble.whole("points")?);
+        if calls.len() != data.len() {
+            let (wanted, found) = (calls.len(), data.len());
+            return Err(DialectError::Replies { intent: Intent::RecordData, wanted, found });
+        }
+        let mut all: Option<Samples> = None;
+        for (call, message) in calls.iter().zip(data) {
+            let samples = reading.samples(message, Intent::RecordData.name(), manner)?;
+            if let Ok(wanted) = call.args.whole("count")
+                && i64::try_from(samples.len()).ok() != Some(wanted)
+            {
+                let first = call.args.whole("first")?;
+                return Err(DialectError::Window { first, wanted, found: samples.len() });
+            }
+            match (&mut all, samples) {
+                (Some(Samples::Codes(all)), Samples::Codes(more)) => all.extend(more),
+                (Some(Samples::Numbers(all)), Samples::Numbers(more)) => all.extend(more),
+                // A dialect has one format, so the first is the only one that is left.
+                (_, first) => all = Some(first),
+            }
+        }
+        reading.record(preamble, all.unwrap_or_else(|| Samples::Codes(Vec::new())))
     }
 
     /// The most bytes that a block of so many samples may have.
@@ -222,17 +282,32 @@ impl Dialect {
         self.skew.map(|(setting, _)| setting)
     }
 
+    /// Whether the scope goes on acquiring by itself: it must be stopped by [`Intent::AcquireAbort`] before both legs
+    /// are read.
+    #[must_use]
+    pub fn runs_freely(&self) -> bool {
+        self.free
+    }
+
+    /// Whether the instrument serves one connection at a time.
+    #[must_use]
+    pub fn one_client(&self) -> bool {
+        self.one_client
+    }
+
     /// Whether the instrument sends a line by itself when a connection is made.
     #[must_use]
     pub fn greeting(&self) -> bool {
         self.greeting
     }
 
-    /// The most bytes of text that may stand before a block: the repeated header, where replies have one.
+    /// The most bytes of text that may stand before a block: the repeated header, where replies have one, or what the
+    /// dialect allows.
     #[must_use]
     pub fn most_lead_bytes(&self) -> usize {
         // A header is no longer than the longest command that a dialect may hold.
-        if self.manner.header { template::LONGEST } else { 0 }
+        let header = if self.manner.header { template::LONGEST } else { 0 };
+        self.reading.as_ref().map_or(header, |reading| reading.most_lead_bytes.max(header))
     }
 
     /// Text as it was typed, for benches that allow it. It is one line; what it does is its author's business.
@@ -259,8 +334,8 @@ impl Dialect {
         Exchange { send: format!("{command}{}", self.ending).into_bytes(), expect, pause_after_s }
     }
 
-    fn steps(&self, intent: Intent) -> Result<&[Step], DialectError> {
-        self.intents.get(&intent).map(Vec::as_slice).ok_or_else(|| self.unsupported(intent))
+    fn spoken(&self, intent: Intent) -> Result<&Spoken, DialectError> {
+        self.intents.get(&intent).ok_or_else(|| self.unsupported(intent))
     }
 
     fn shifts_later(&self) -> bool {

@@ -3,6 +3,7 @@
 use super::expression::Expression;
 use super::reply::{Manner, without_header};
 use super::samples::{Format, Order, SHIFT};
+use super::value::nearest_whole;
 use super::{DialectError, Fields, Message, RawRecord, Value};
 use crate::analysis::record::Samples;
 
@@ -11,6 +12,8 @@ use crate::analysis::record::Samples;
 pub(super) struct Reading {
     pub(super) format: Format,
     pub(super) order: Order,
+    /// The most bytes of text before a block.
+    pub(super) most_lead_bytes: usize,
     /// Volts of `raw`.
     pub(super) volts: Option<Expression>,
     /// Seconds of `index`.
@@ -53,25 +56,24 @@ impl Reading {
             fields.set("start_s", zero);
         }
         for name in ["points", "averages", "acquisition"] {
-            let whole = fields.whole(name)?;
+            let found = fields.number(name)?;
+            let whole = nearest_whole(found).ok_or(DialectError::NotWhole { name, found })?;
             fields.set(name, Value::Whole(whole));
         }
         Ok(())
     }
 
-    /// The record that a preamble and the samples make.
-    pub(super) fn record(
-        &self,
-        preamble: &Fields,
-        data: &Message,
-        command: &str,
-        manner: Manner,
-    ) -> Result<RawRecord, DialectError> {
+    /// The samples of one reply.
+    pub(super) fn samples(&self, data: &Message, command: &str, manner: Manner) -> Result<Samples, DialectError> {
         let bare = match data {
             Message::Line(line) if manner.header => Some(Message::Line(without_header(line, manner).to_owned())),
             _ => None,
         };
-        let samples = self.format.decode(self.order, bare.as_ref().unwrap_or(data), command)?;
+        self.format.decode(self.order, bare.as_ref().unwrap_or(data), command, manner.units)
+    }
+
+    /// The record that a preamble and the samples make.
+    pub(super) fn record(&self, preamble: &Fields, samples: Samples) -> Result<RawRecord, DialectError> {
         let wanted = preamble.whole("points")?;
         if i64::try_from(samples.len()).ok() != Some(wanted) {
             return Err(DialectError::Length { wanted, found: samples.len() });

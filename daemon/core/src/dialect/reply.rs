@@ -3,8 +3,9 @@
 use std::collections::BTreeMap;
 
 use super::intent::BESIDES;
+use super::split::parts;
 use super::template::{Refusal, Spelling};
-use super::words::Words;
+use super::words::{Words, same};
 use super::{DialectError, Fields, Intent, ReplyKind, Value};
 use crate::scpi::value::{self, ValueError};
 
@@ -25,27 +26,61 @@ struct Field {
     spelling: Spelling,
 }
 
-/// The shape of a line: a comma list, or one field that takes it as a whole.
+/// How the parts of a line are told apart.
+#[derive(Debug, Clone, PartialEq)]
+enum Form {
+    /// By their place in a comma list.
+    List,
+    /// By their keys, one for each field.
+    Keys { keys: Vec<String>, signs: Signs },
+    /// There is one part, the line.
+    Whole,
+}
+
+/// What stands between the entries of a line with keys, and between a key and its value.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub(super) struct Signs {
+    pub(super) between: char,
+    pub(super) joint: char,
+}
+
+/// The shape of a line.
 #[derive(Debug, Clone, PartialEq)]
 pub(super) struct Shape {
     fields: Vec<Field>,
-    whole_line: bool,
+    form: Form,
+}
+
+/// Whose reply a shape is of, and which fields it may have.
+#[derive(Debug, Clone, Copy)]
+pub(super) struct Whose<'w> {
+    pub(super) intent: Intent,
+    /// Whether fields of the dialect's own are taken, for the expressions that use them.
+    pub(super) free: bool,
+    pub(super) words: &'w BTreeMap<String, Words>,
 }
 
 impl Shape {
     /// A comma list of these places, each `name`, `name:spelling` or `_`.
-    pub(super) fn list<'p>(
-        places: impl Iterator<Item = &'p str>,
-        intent: Intent,
-        words: &BTreeMap<String, Words>,
-    ) -> Result<Self, Refusal> {
-        let fields = places.map(|place| field(place, intent, words)).collect::<Result<_, _>>()?;
-        Ok(Self { fields, whole_line: false })
+    pub(super) fn list<'p>(places: impl Iterator<Item = &'p str>, whose: Whose<'_>) -> Result<Self, Refusal> {
+        let fields = places.map(|place| field(place, whose)).collect::<Result<_, _>>()?;
+        Ok(Self { fields, form: Form::List })
+    }
+
+    /// Entries with keys: the place of each, and the instrument's key for it.
+    pub(super) fn keyed(entries: &[(String, String)], signs: Signs, whose: Whose<'_>) -> Result<Self, Refusal> {
+        let fields = entries.iter().map(|(place, _)| field(place, whose)).collect::<Result<_, _>>()?;
+        Ok(Self { fields, form: Form::Keys { keys: entries.iter().map(|(_, key)| key.clone()).collect(), signs } })
     }
 
     /// The whole line as one field.
-    pub(super) fn line(place: &str, intent: Intent, words: &BTreeMap<String, Words>) -> Result<Self, Refusal> {
-        Ok(Self { fields: vec![field(place, intent, words)?], whole_line: true })
+    pub(super) fn line(place: &str, whose: Whose<'_>) -> Result<Self, Refusal> {
+        Ok(Self { fields: vec![field(place, whose)?], form: Form::Whole })
+    }
+
+    /// How many parts it has.
+    pub(super) fn len(&self) -> usize {
+        self.fields.len()
     }
 
     /// The names of its fields.
@@ -69,14 +104,31 @@ impl Shape {
     ) -> Result<(), DialectError> {
         let shown = || value::shorten(line);
         let body = without_header(line, manner);
-        let parts = if self.whole_line {
-            vec![body]
-        } else {
-            value::list(body).map_err(|source| DialectError::Reply {
-                command: command.to_owned(),
-                reply: shown(),
-                source,
-            })?
+        let unparted = |source| DialectError::Reply { command: command.to_owned(), reply: shown(), source };
+        let parts = match &self.form {
+            Form::Whole => vec![body],
+            Form::List => parts(body, ',').map_err(unparted)?,
+            Form::Keys { keys, signs } => {
+                let entries = parts(body, signs.between).map_err(unparted)?;
+                let pairs: Vec<(&str, &str)> = entries
+                    .into_iter()
+                    .filter_map(|entry| entry.split_once(signs.joint))
+                    .map(|(key, value)| (key.trim(), value.trim()))
+                    .collect();
+                let one = |key: &String| {
+                    let mut found = pairs.iter().filter(|(name, _)| same(key, name)).map(|(_, value)| *value);
+                    match (found.next(), found.count()) {
+                        (Some(value), 0) => Ok(value),
+                        (first, more) => Err(DialectError::Key {
+                            command: command.to_owned(),
+                            reply: shown(),
+                            key: key.clone(),
+                            found: usize::from(first.is_some()) + more,
+                        }),
+                    }
+                };
+                keys.iter().map(one).collect::<Result<_, _>>()?
+            }
         };
         if parts.len() != self.fields.len() {
             return Err(DialectError::Parts {
@@ -137,25 +189,20 @@ fn in_words(part: &str, name: &str, map: &str, words: &BTreeMap<String, Words>) 
     })
 }
 
-fn field(place: &str, intent: Intent, words: &BTreeMap<String, Words>) -> Result<Field, Refusal> {
+fn field(place: &str, whose: Whose<'_>) -> Result<Field, Refusal> {
+    let Whose { intent, words, .. } = whose;
     let (name, spelling) = place.split_once(':').map_or((place, None), |(name, spelling)| (name, Some(spelling)));
     let (name, spelling) = (name.trim(), spelling.map(|spelling| Spelling::parse(spelling.trim())));
     if name == "_" {
         return Ok(Field { name: None, spelling: Spelling::Text });
     }
-    let spec = intent.spec();
-    let besides = BESIDES.iter().filter(|(known, ..)| *known == intent).map(|(_, name, kind)| (*name, *kind));
-    let kind = match spec.reply.iter().copied().chain(besides).find(|(known, _)| *known == name) {
-        Some((_, kind)) => kind,
-        // A preamble may hold numbers of the instrument's own, for the expressions of `[record]`.
-        None if intent == Intent::RecordPreamble && is_name(name) => ReplyKind::Number,
-        None => {
-            let known: Vec<&str> = spec.reply.iter().map(|(name, _)| *name).collect();
-            return Err((
-                format!("`{name}` is no field of `{intent}`"),
-                format!("known here: _, {}", known.join(", ")),
-            ));
+    let kind = match kind_of(intent, name) {
+        Some(kind) => kind,
+        None if whose.free && is_name(name) => {
+            // Numbers, or words that stand for numbers.
+            if matches!(spelling, Some(Spelling::Words(_))) { ReplyKind::Whole } else { ReplyKind::Number }
         }
+        None => return Err(no_field(intent, name)),
     };
     if let Some(Spelling::Words(map)) = &spelling {
         refuse_words(name, kind, map, words)?;
@@ -206,6 +253,18 @@ fn refuse_words(name: &str, kind: ReplyKind, map: &str, words: &BTreeMap<String,
         return Ok(());
     }
     Err((format!("`{map}` has nothing for {}", lacking.join(", ")), format!("add it to `[words.{map}]`")))
+}
+
+/// The kind of the field of this name, if the intent's reply may have it.
+pub(super) fn kind_of(intent: Intent, name: &str) -> Option<ReplyKind> {
+    let besides = BESIDES.iter().filter(|(known, ..)| *known == intent).map(|(_, name, kind)| (*name, *kind));
+    intent.spec().reply.iter().copied().chain(besides).find(|(known, _)| *known == name).map(|(_, kind)| kind)
+}
+
+/// The refusal of a field that nothing uses.
+pub(super) fn no_field(intent: Intent, name: &str) -> Refusal {
+    let known: Vec<&str> = intent.spec().reply.iter().map(|(name, _)| *name).collect();
+    (format!("`{name}` is no field of `{intent}`"), format!("known here: _, {}", known.join(", ")))
 }
 
 /// A name that an expression can use.

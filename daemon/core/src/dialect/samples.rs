@@ -57,12 +57,18 @@ impl Format {
         }
     }
 
-    /// Reads the reply to `command`. Codes of [`Format::U16`] come out lower by [`SHIFT`].
-    pub(super) fn decode(self, order: Order, data: &Message, command: &str) -> Result<Samples, DialectError> {
+    /// Reads the reply to `command`; numbers in text may have `units`. Codes of [`Format::U16`] come out lower by [`SHIFT`].
+    pub(super) fn decode(
+        self,
+        order: Order,
+        data: &Message,
+        command: &str,
+        units: bool,
+    ) -> Result<Samples, DialectError> {
         let wrong = |wanted, found| DialectError::WrongMessage { command: command.to_owned(), wanted, found };
         match (self, data) {
-            (Self::Text, Message::Line(text)) => numbers(text),
-            (Self::Text, Message::Block(bytes)) => numbers(&String::from_utf8_lossy(bytes)),
+            (Self::Text, Message::Line(text)) => numbers(text, units),
+            (Self::Text, Message::Block(bytes)) => numbers(&String::from_utf8_lossy(bytes), units),
             (_, Message::Line(_)) => Err(wrong("a block", "a line of text")),
             (Self::I8, Message::Block(bytes)) => {
                 Ok(Samples::Codes(bytes.iter().map(|&byte| i16::from(byte.cast_signed())).collect()))
@@ -98,14 +104,15 @@ fn parts<const N: usize>(bytes: &[u8]) -> Result<&[[u8; N]], DialectError> {
     if rest.is_empty() { Ok(parts) } else { Err(DialectError::Ragged { bytes: bytes.len(), each: N }) }
 }
 
-fn numbers(text: &str) -> Result<Samples, DialectError> {
+fn numbers(text: &str, units: bool) -> Result<Samples, DialectError> {
+    let read = if units { value::number_with_unit } else { value::number };
     let text = text.trim();
     if text.is_empty() {
         return Ok(Samples::Numbers(Vec::new()));
     }
     let one = |(index, part)| {
         // Single precision holds seven digits: more than any converter has.
-        let sample = value::number(part).map_err(|source| DialectError::Sample { index, source })? as f32;
+        let sample = read(part).map_err(|source| DialectError::Sample { index, source })? as f32;
         let overflow = || ValueError::NotANumber(value::shorten(part));
         if sample.is_finite() { Ok(sample) } else { Err(DialectError::Sample { index, source: overflow() }) }
     };

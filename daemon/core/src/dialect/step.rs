@@ -1,9 +1,18 @@
 //! The steps of an intent, and the questions about errors and completion.
 
+use super::convert::Conversions;
 use super::reply::{Manner, Shape, without_header};
+use super::split::{between, parts};
 use super::template::Template;
 use super::{Completion, DialectError, Expect};
 use crate::scpi::value;
+
+/// How an intent is spoken.
+#[derive(Debug)]
+pub(super) struct Spoken {
+    pub(super) steps: Vec<Step>,
+    pub(super) conversions: Conversions,
+}
 
 /// What comes back for one step.
 #[derive(Debug)]
@@ -49,6 +58,8 @@ impl Wanted {
 pub(super) struct Step {
     pub(super) template: Template,
     pub(super) wanted: Wanted,
+    /// How the reply looks in general.
+    pub(super) manner: Manner,
     pub(super) pause_s: f64,
 }
 
@@ -57,8 +68,18 @@ pub(super) struct Step {
 pub(super) struct Errors {
     pub(super) ask: Template,
     pub(super) shape: Shape,
-    /// The number that says that the queue is empty.
-    pub(super) empty: i64,
+    /// What stands between the parts of a reply.
+    pub(super) between: char,
+    pub(super) empty: Empty,
+}
+
+/// What says that the error queue is empty.
+#[derive(Debug, Clone, PartialEq)]
+pub(super) enum Empty {
+    /// This number.
+    Number(i64),
+    /// This text, in the place of everything else.
+    Text(String),
 }
 
 impl Errors {
@@ -70,7 +91,10 @@ impl Errors {
         manner: Manner,
     ) -> Result<Option<(i64, String)>, DialectError> {
         let body = without_header(line, manner);
-        let parts = value::list(body).unwrap_or_else(|_| body.splitn(2, ',').collect());
+        if matches!(&self.empty, Empty::Text(text) if value::loose_text(body).eq_ignore_ascii_case(text.trim())) {
+            return Ok(None);
+        }
+        let parts = self.parts(body);
         let part = |name| self.shape.place_of(name).and_then(|place| parts.get(place).copied());
         let number = value::whole(part("number").unwrap_or_default()).map_err(|source| DialectError::Read {
             command: command.to_owned(),
@@ -78,10 +102,21 @@ impl Errors {
             name: "number".to_owned(),
             source,
         })?;
-        if number == self.empty {
+        if self.empty == Empty::Number(number) {
             return Ok(None);
         }
         Ok(Some((number, part("text").map(value::loose_text).unwrap_or_default())))
+    }
+
+    /// The parts of a reply. A text at its end that stands in no quotes may hold what parts the others.
+    fn parts<'l>(&self, body: &'l str) -> Vec<&'l str> {
+        let count = self.shape.len();
+        let few = || between(body, self.between, count);
+        let Ok(parts) = parts(body, self.between) else { return few() };
+        let quoted =
+            count.checked_sub(1).and_then(|last| parts.get(last)).is_some_and(|last| last.starts_with(['"', '\'']));
+        let text_last = self.shape.place_of("text").is_some_and(|place| place + 1 == count);
+        if parts.len() > count && text_last && !quoted { few() } else { parts }
     }
 }
 

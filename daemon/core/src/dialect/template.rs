@@ -50,6 +50,17 @@ impl Spelling {
         }
     }
 
+    /// Why a number that an expression gives cannot be spelled so; `None` if it can.
+    fn refuse_derived(&self, words: &BTreeMap<String, Words>) -> Option<String> {
+        match self {
+            Self::Number | Self::Percent | Self::Whole => None,
+            // Which numbers come is not known before: one without a word is refused when it does.
+            Self::Words(name) if words.contains_key(name) => None,
+            Self::Words(name) => Some(format!("`{name}` is neither a spelling nor a map of words")),
+            Self::Flag | Self::List | Self::Text => Some("an expression gives a number".to_owned()),
+        }
+    }
+
     /// Why a value of this kind cannot be spelled so; `None` if it can.
     fn refuse(&self, kind: ArgKind, words: &BTreeMap<String, Words>) -> Option<String> {
         let lacks = |map: &Words, keys: &[&str]| {
@@ -83,9 +94,26 @@ impl Spelling {
     }
 }
 
+/// What may stand in the places of a command.
+#[derive(Debug, Clone, Default)]
+pub(super) struct Places<'p> {
+    /// The arguments of the call.
+    pub(super) args: Vec<(&'static str, ArgKind)>,
+    /// Numbers that expressions make of them; they come before an argument of the same name.
+    pub(super) derived: Vec<&'p str>,
+}
+
 #[derive(Debug, Clone, PartialEq)]
 enum Part {
-    Argument { name: &'static str, spelling: Spelling },
+    Argument {
+        name: String,
+        spelling: Spelling,
+    },
+    /// A number out of an expression, which need not be whole where a whole one is written.
+    Derived {
+        name: String,
+        spelling: Spelling,
+    },
     Literal(String),
 }
 
@@ -100,21 +128,13 @@ pub(super) type Refusal = (String, String);
 pub(super) const LONGEST: usize = 512;
 
 impl Template {
-    /// Reads a template of this intent's arguments.
-    pub(super) fn parse(text: &str, intent: Intent, words: &BTreeMap<String, Words>) -> Result<Self, Refusal> {
-        Self::parse_with(text, intent.spec().args, words)
-    }
-
     /// Reads a command without arguments.
     pub(super) fn plain(text: &str) -> Result<Self, Refusal> {
-        Self::parse_with(text, &[], &BTreeMap::new())
+        Self::parse(text, &Places::default(), &BTreeMap::new())
     }
 
-    fn parse_with(
-        text: &str,
-        args: &'static [(&'static str, ArgKind)],
-        words: &BTreeMap<String, Words>,
-    ) -> Result<Self, Refusal> {
+    /// Reads a command with places for arguments.
+    pub(super) fn parse(text: &str, places: &Places<'_>, words: &BTreeMap<String, Words>) -> Result<Self, Refusal> {
         if text.trim().is_empty() || text.len() > LONGEST {
             return Err((format!("a command must have 1 to {LONGEST} characters"), "write the command".to_owned()));
         }
@@ -128,7 +148,7 @@ impl Template {
                 return Err(("a `{` has no `}`".to_owned(), "write a place as `{name}`".to_owned()));
             };
             parts.push(Part::Literal(literal.to_owned()));
-            parts.push(argument(place, args, words)?);
+            parts.push(argument(place, places, words)?);
             rest = tail;
         }
         parts.push(Part::Literal(rest.to_owned()));
@@ -140,9 +160,9 @@ impl Template {
     }
 
     /// The arguments that it uses.
-    pub(super) fn uses(&self) -> impl Iterator<Item = &'static str> {
+    pub(super) fn uses(&self) -> impl Iterator<Item = &str> {
         self.0.iter().filter_map(|part| match part {
-            Part::Argument { name, .. } => Some(*name),
+            Part::Argument { name, .. } | Part::Derived { name, .. } => Some(name.as_str()),
             Part::Literal(_) => None,
         })
     }
@@ -164,34 +184,50 @@ impl Template {
             match part {
                 Part::Literal(literal) => command.push_str(literal),
                 Part::Argument { name, spelling } => command.push_str(&spell(intent, name, spelling, args, words)?),
+                Part::Derived { name, spelling } => {
+                    let number = args.number(name)?;
+                    let mut rounded = Args::new();
+                    // The instrument takes whole numbers here; what it then has is read back.
+                    let whole = matches!(spelling, Spelling::Whole | Spelling::Words(_));
+                    rounded.set(name.clone(), if whole { number.round() } else { number });
+                    command.push_str(&spell(intent, name, spelling, &rounded, words)?);
+                }
             }
         }
         Ok(command)
     }
 }
 
-fn argument(
-    place: &str,
-    args: &'static [(&'static str, ArgKind)],
-    words: &BTreeMap<String, Words>,
-) -> Result<Part, Refusal> {
+fn argument(place: &str, places: &Places<'_>, words: &BTreeMap<String, Words>) -> Result<Part, Refusal> {
     let (name, spelling) = place.split_once(':').map_or((place, None), |(name, spelling)| (name, Some(spelling)));
-    let known = || args.iter().map(|(name, _)| *name).collect::<Vec<_>>().join(", ");
-    let Some((name, kind)) = args.iter().find(|(known, _)| *known == name.trim()) else {
-        let help =
-            if args.is_empty() { "there are no arguments here".to_owned() } else { format!("known here: {}", known()) };
+    let (name, spelling) = (name.trim(), spelling.map(|spelling| Spelling::parse(spelling.trim())));
+    let unfit = |why: String| {
+        let help = "spellings are flag, list, number, percent, text, whole, or the name of a `[words.…]`";
+        (format!("`{{{place}}}` cannot be spelled so: {why}"), help.to_owned())
+    };
+    if places.derived.contains(&name) {
+        let spelling = spelling.unwrap_or(Spelling::Number);
+        return match spelling.refuse_derived(words) {
+            Some(why) => Err(unfit(why)),
+            None => Ok(Part::Derived { name: name.to_owned(), spelling }),
+        };
+    }
+    let Some((name, kind)) = places.args.iter().find(|(known, _)| *known == name) else {
+        let known: Vec<&str> =
+            places.args.iter().map(|(name, _)| *name).chain(places.derived.iter().copied()).collect();
+        let none = "there are no arguments here".to_owned();
+        let help = if known.is_empty() { none } else { format!("known here: {}", known.join(", ")) };
         return Err((format!("`{{{place}}}` names no argument"), help));
     };
-    let help = "spellings are flag, list, number, percent, text, whole, or the name of a `[words.…]`";
     let spelling = match spelling {
-        Some(spelling) => Spelling::parse(spelling.trim()),
+        Some(spelling) => spelling,
         None => Spelling::usual(*kind).ok_or_else(|| {
             (format!("`{name}` is a keyword"), format!("say its map of words: `{{{name}:MAP}}` and `[words.MAP]`"))
         })?,
     };
     match spelling.refuse(*kind, words) {
-        Some(why) => Err((format!("`{{{place}}}` cannot be spelled so: {why}"), help.to_owned())),
-        None => Ok(Part::Argument { name, spelling }),
+        Some(why) => Err(unfit(why)),
+        None => Ok(Part::Argument { name: (*name).to_owned(), spelling }),
     }
 }
 

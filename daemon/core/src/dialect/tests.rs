@@ -3,8 +3,11 @@
 #![allow(clippy::unwrap_used, clippy::float_cmp)]
 
 mod bundled;
+mod convert;
 mod files;
+mod forms;
 mod hostile;
+mod like;
 mod records;
 
 use super::*;

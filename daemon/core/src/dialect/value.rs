@@ -36,7 +36,7 @@ impl Value {
         }
     }
 
-    fn as_number(&self) -> Option<f64> {
+    pub(super) fn as_number(&self) -> Option<f64> {
         match *self {
             Self::Number(number) => Some(number),
             // Exact up to 2^53, far above any setting.
@@ -59,6 +59,13 @@ impl Value {
 
 /// 2^53: every whole number up to here is a double of its own.
 pub(super) const EXACT: f64 = 9_007_199_254_740_992.0;
+
+/// The whole number that a number out of an expression stands for: rounding leaves a few parts in 2^52 of its terms.
+pub(super) fn nearest_whole(number: f64) -> Option<i64> {
+    let whole = number.round();
+    let near = (number - whole).abs() <= 1e-6 * number.abs().max(1.0);
+    (near && whole.abs() <= EXACT).then_some(whole as i64)
+}
 
 impl From<f64> for Value {
     fn from(number: f64) -> Self {

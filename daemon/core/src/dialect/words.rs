@@ -91,7 +91,8 @@ fn short(word: &str) -> String {
     word.chars().filter(|c| !c.is_ascii_lowercase()).collect()
 }
 
-fn same(word: &str, reply: &str) -> bool {
+/// Whether what came back is this word, in its long or its short form.
+pub(super) fn same(word: &str, reply: &str) -> bool {
     if word.eq_ignore_ascii_case(reply) {
         return true;
     }

@@ -4,11 +4,15 @@
 //! wrong kind or left over becomes a [`Mistake`] with the bytes it stands at; reading goes on, so a person sees all
 //! of them at once. Who prints them (with line and caret) is the reader's business, not this module's.
 
+mod layers;
 mod table;
 
 use std::ops::Range;
 
+pub use layers::{Rules, peek, read_layers};
 pub use table::{Item, Table};
+use toml::Spanned;
+use toml::de::DeTable;
 
 /// Something wrong in a TOML text.
 #[derive(Debug, Clone, PartialEq, Eq)]
@@ -60,29 +64,31 @@ pub fn read<T>(text: &str, read: impl FnOnce(&mut Table<'_>) -> Option<T>) -> Re
         mistakes.add(0..0, format!("the text has {} bytes", text.len()), format!("at most {LONGEST_TEXT} are read"));
         return Err(mistakes.into_sorted());
     }
-    let parsed = match toml::de::DeTable::parse(text) {
-        Ok(parsed) => parsed,
-        Err(error) => {
-            mistakes.add(
-                error.span().unwrap_or(0..0),
-                error.message().to_owned(),
-                "this is not TOML 1.0; see the place marked",
-            );
-            return Err(mistakes.into_sorted());
-        }
+    let value = parse(text, &mistakes).and_then(|parsed| {
+        let mut top = Table::new(parsed.get_ref(), 0..text.len().min(1), String::new(), &mistakes);
+        let value = read(&mut top);
+        top.refuse_others();
+        value
+    });
+    understood(value, mistakes)
+}
+
+fn parse<'t>(text: &'t str, mistakes: &Mistakes) -> Option<Spanned<DeTable<'t>>> {
+    let note = |error: &toml::de::Error| {
+        let span = error.span().unwrap_or(0..0);
+        mistakes.add(span, error.message().to_owned(), "this is not TOML 1.0; see the place marked");
     };
-    let mut top = Table::new(parsed.get_ref(), 0..text.len().min(1), String::new(), &mistakes);
-    let value = read(&mut top);
-    top.refuse_others();
+    DeTable::parse(text).inspect_err(note).ok()
+}
+
+/// What was read, if it was read without a mistake.
+fn understood<T>(value: Option<T>, mistakes: Mistakes) -> Result<T, Vec<Mistake>> {
     match value {
         Some(value) if mistakes.is_empty() => Ok(value),
         _ => {
             if mistakes.is_empty() {
-                mistakes.add(
-                    0..0,
-                    "the text could not be understood",
-                    "this is a fault of the program: it gave no reason",
-                );
+                let help = "this is a fault of the program: it gave no reason";
+                mistakes.add(0..0, "the text could not be understood", help);
             }
             Err(mistakes.into_sorted())
         }

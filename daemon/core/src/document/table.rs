@@ -67,6 +67,12 @@ impl<'t> Table<'t> {
         self.entries.iter().any(|(name, value)| name.get_ref() == key && text(value))
     }
 
+    /// Whether the key is there and holds a table, without marking it as known.
+    #[must_use]
+    pub fn has_table(&self, key: &str) -> bool {
+        self.entries.iter().any(|(name, value)| name.get_ref() == key && matches!(value.get_ref(), DeValue::Table(_)))
+    }
+
     /// Every key of the table, in the text's order of names, with its place; marks none as known.
     #[must_use]
     pub fn keys(&self) -> Vec<Item<String>> {

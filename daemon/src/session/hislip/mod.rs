@@ -19,7 +19,7 @@ use super::connect::Connect;
 use super::error::Trouble;
 use super::plain::unconnected;
 use super::spec::Caps;
-use super::wire::{Open, Wire};
+use super::wire::{Open, Wire, part};
 
 /// Opens HiSLIP connections to one sub-address.
 #[derive(Debug)]
@@ -195,6 +195,11 @@ impl<S: AsyncRead + AsyncWrite + Send + Unpin + 'static> Wire for Hislip<S> {
                 other => note(&other),
             }
         }
+    }
+
+    async fn leave(self) {
+        drop(self.r#async);
+        part(self.sync.into_inner()).await;
     }
 }
 

@@ -2,15 +2,17 @@
 
 use std::collections::BTreeMap;
 
-use super::{Maps, pause, refuse};
+use super::convert::{self, Draft, arguments};
+use super::{General, Maps, choice_of_sign, pause, refuse};
 use crate::dialect::Intent;
-use crate::dialect::reply::Shape;
-use crate::dialect::step::{Step, Wanted};
-use crate::dialect::template::Template;
+use crate::dialect::reply::{Manner, Shape, Signs, Whose};
+use crate::dialect::step::{Spoken, Step, Wanted};
+use crate::dialect::template::{Places, Template};
 use crate::document::{Item, Table};
 
 /// Every intent that the file has words for.
-pub(super) fn intents(top: &mut Table<'_>, words: &Maps, pause_s: f64) -> BTreeMap<Intent, Vec<Step>> {
+pub(super) fn intents(top: &mut Table<'_>, words: &Maps, general: General) -> BTreeMap<Intent, Spoken> {
+    let mut drafts = convert::drafts(top, general.windowed);
     let mut intents = BTreeMap::new();
     for (name, table) in top.named_tables("intent") {
         match Intent::parse(&name.value) {
@@ -21,8 +23,9 @@ pub(super) fn intents(top: &mut Table<'_>, words: &Maps, pause_s: f64) -> BTreeM
                 table.mistakes().add(name.span, format!("the {what} has a table of its own"), help);
             }
             Some(intent) => {
-                if let Some(steps) = steps(table, intent, words, pause_s, &name) {
-                    intents.insert(intent, steps);
+                let draft = drafts.remove(&intent).unwrap_or_default();
+                if let Some(spoken) = spoken(table, intent, words, general, &name, draft) {
+                    intents.insert(intent, spoken);
                 }
             }
             None => {
@@ -32,15 +35,26 @@ pub(super) fn intents(top: &mut Table<'_>, words: &Maps, pause_s: f64) -> BTreeM
             }
         }
     }
+    convert::refuse_left(top, drafts);
     intents
 }
 
-fn steps(mut table: Table<'_>, intent: Intent, words: &Maps, pause_s: f64, name: &Item<String>) -> Option<Vec<Step>> {
-    let pause_s = pause(&mut table).unwrap_or(pause_s);
+fn spoken(
+    mut table: Table<'_>,
+    intent: Intent,
+    words: &Maps,
+    general: General,
+    name: &Item<String>,
+    draft: Draft,
+) -> Option<Spoken> {
+    let pause_s = pause(&mut table).unwrap_or(general.pause_s);
+    let args = arguments(intent, general.windowed);
+    let places = Places { args: args.clone(), derived: draft.derived() };
+    let whose = Whose { intent, free: intent == Intent::RecordPreamble || draft.reads_replies(), words };
     let mut good = true;
     let mut steps = Vec::new();
     for command in table.texts("send").unwrap_or_default() {
-        let template = Template::parse(&command.value, intent, words).and_then(|template| {
+        let template = Template::parse(&command.value, &places, words).and_then(|template| {
             if template.asks() {
                 let help = "an unread reply would be taken for the next one: put it under `ask`";
                 return Err((format!("`{}` asks for something", command.value), help.to_owned()));
@@ -48,7 +62,7 @@ fn steps(mut table: Table<'_>, intent: Intent, words: &Maps, pause_s: f64, name:
             Ok(template)
         });
         match template {
-            Ok(template) => steps.push(Step { template, wanted: Wanted::Nothing, pause_s }),
+            Ok(template) => steps.push(Step { template, wanted: Wanted::Nothing, manner: general.manner, pause_s }),
             Err(refusal) => {
                 refuse(&table, command.span, refusal);
                 good = false;
@@ -59,7 +73,7 @@ fn steps(mut table: Table<'_>, intent: Intent, words: &Maps, pause_s: f64, name:
         let asks = table.tables("ask");
         good &= asks.is_some();
         for ask in asks.unwrap_or_default() {
-            match question(ask, intent, words, pause_s) {
+            match question(ask, whose, &places, General { pause_s, ..general }) {
                 Some(step) => steps.push(step),
                 None => good = false,
             }
@@ -74,9 +88,8 @@ fn steps(mut table: Table<'_>, intent: Intent, words: &Maps, pause_s: f64, name:
     if steps.is_empty() {
         complaint(format!("`{intent}` says nothing"), "give it `send` or `ask`".to_owned());
     }
-    let spec = intent.spec();
-    for (argument, _) in spec.args {
-        let used = steps.iter().any(|step| step.template.uses().any(|name| name == *argument));
+    for (argument, _) in &args {
+        let used = steps.iter().any(|step| step.template.uses().any(|name| name == *argument)) || draft.uses(argument);
         if used == ignored.iter().any(|item| item.value == *argument) {
             let what = if used { "is used and ignored at once" } else { "is used nowhere" };
             complaint(
@@ -86,43 +99,51 @@ fn steps(mut table: Table<'_>, intent: Intent, words: &Maps, pause_s: f64, name:
         }
     }
     for item in &ignored {
-        if !spec.args.iter().any(|(name, _)| *name == item.value) {
+        if !args.iter().any(|(name, _)| *name == item.value) {
             let what = format!("`{}` is no argument of `{intent}`", item.value);
             table.mistakes().add(item.span.clone(), what, "leave it out of `ignore`");
         }
     }
     let given = |field: &str| steps.iter().any(|step| step.wanted.gives(field));
     // A preamble's fields may also come from `[record]`; that is looked at when both are known.
-    let lacking: Vec<&str> = spec.reply.iter().map(|(name, _)| *name).filter(|field| !given(field)).collect();
+    let gives = |field: &&str| given(field) || draft.gives(field);
+    let lacking: Vec<&str> = intent.spec().reply.iter().map(|(name, _)| *name).filter(|field| !gives(field)).collect();
     if !lacking.is_empty() && intent != Intent::RecordPreamble {
-        let help = "name them in `reply` or `line` of an `ask`".to_owned();
+        let help = "name them in `reply`, `keys` or `line` of an `ask`, or make them under `[convert]`".to_owned();
         complaint(format!("no reply of `{intent}` gives {}", lacking.join(", ")), help);
     }
-    Some(steps)
+    let conversions = convert::finish(&table, intent, draft, &steps, general.windowed);
+    Some(Spoken { steps, conversions })
 }
 
-fn question(mut table: Table<'_>, intent: Intent, words: &Maps, pause_s: f64) -> Option<Step> {
-    let pause_s = pause(&mut table).unwrap_or(pause_s);
+fn question(mut table: Table<'_>, whose: Whose<'_>, places: &Places<'_>, general: General) -> Option<Step> {
+    let pause_s = pause(&mut table).unwrap_or(general.pause_s);
+    let header = table.flag("header").map_or(general.manner.header, |item| item.value);
     let send = table.text("send").or_else(|| table.missing("send", "give the question"));
     let template = send.and_then(|send| {
-        Template::parse(&send.value, intent, words).map_err(|refusal| refuse(&table, send.span, refusal)).ok()
+        Template::parse(&send.value, places, whose.words).map_err(|refusal| refuse(&table, send.span, refusal)).ok()
     });
-    let ways = ["reply", "line", "block"].iter().filter(|key| table.has(key)).count();
+    let ways = ["reply", "keys", "line", "block"].iter().filter(|key| table.has(key)).count();
     let wanted = if ways != 1 {
-        let help = "one of `reply = [\"…\"]` (a comma list), `line = \"…\"` (the whole line), `block = true`";
+        let help = "one of `reply = [\"…\"]` (a comma list), `keys = { … }` (entries with keys), `line = \"…\"` (the \
+                    whole line), `block = true`";
         table.mistakes().add(table.span(), "how the reply looks must be said once", help);
         None
     } else if let Some(places) = table.texts("reply") {
         let begin = places.first().map_or_else(|| table.span(), |first| first.span.clone());
-        Shape::list(places.iter().map(|item| item.value.as_str()), intent, words)
+        Shape::list(places.iter().map(|item| item.value.as_str()), whose)
             .map_err(|refusal| refuse(&table, begin, refusal))
             .ok()
             .map(Wanted::Line)
+    } else if let Some(keys) = table.table("keys") {
+        let between = choice_of_sign(&mut table, "between", ',');
+        let joint = choice_of_sign(&mut table, "joint", ' ');
+        keyed(keys, Signs { between, joint }, whose)
     } else if let Some(place) = table.text("line") {
         let span = place.span.clone();
-        Shape::line(&place.value, intent, words).map_err(|refusal| refuse(&table, span, refusal)).ok().map(Wanted::Line)
+        Shape::line(&place.value, whose).map_err(|refusal| refuse(&table, span, refusal)).ok().map(Wanted::Line)
     } else if let Some(block) = table.flag("block") {
-        if block.value && intent == Intent::RecordData {
+        if block.value && whose.intent == Intent::RecordData {
             Some(Wanted::Block)
         } else {
             table.mistakes().add(block.span, "a block belongs to `record.data` alone", "leave `block` out");
@@ -132,5 +153,23 @@ fn question(mut table: Table<'_>, intent: Intent, words: &Maps, pause_s: f64) ->
         None
     };
     table.refuse_others();
-    Some(Step { template: template?, wanted: wanted?, pause_s })
+    let manner = Manner { header, ..general.manner };
+    Some(Step { template: template?, wanted: wanted?, manner, pause_s })
+}
+
+/// A reply of entries with keys: each field, and the instrument's key for it.
+fn keyed(mut table: Table<'_>, signs: Signs, whose: Whose<'_>) -> Option<Wanted> {
+    let mut entries = Vec::new();
+    for place in table.keys() {
+        let key = table.text(&place.value)?;
+        if key.value.trim().is_empty() || key.value.contains([signs.between, signs.joint]) {
+            let help = "the signs are `between` (two entries, a comma unless given) and `joint` (a key and its value, a \
+                        blank unless given)";
+            table.mistakes().add(key.span, format!("`{}` cannot be found between its signs", key.value), help);
+            return None;
+        }
+        entries.push((place.value, key.value));
+    }
+    let refused = |refusal| refuse(&table, table.span(), refusal);
+    Shape::keyed(&entries, signs, whose).map_err(refused).ok().map(Wanted::Line)
 }

@@ -1,17 +1,19 @@
 //! A dialect's text read into a checked dialect, with every mistake collected.
 
+mod asking;
+mod convert;
 mod intents;
 mod record;
 
 use std::collections::BTreeMap;
 use std::ops::Range;
 
-use super::reply::{Manner, Shape, is_name};
-use super::step::{Errors, Until, Waiting};
-use super::template::{Refusal, Template};
+use super::reply::{Manner, is_name};
+use super::split::refuse_sign;
+use super::template::Refusal;
 use super::words::Words;
-use super::{Completion, Dialect, Intent, SkewSetting};
-use crate::document::{Item, Table};
+use super::{Dialect, Intent, SkewSetting};
+use crate::document::Table;
 use crate::units::Unit;
 
 /// Every map of words that the file holds.
@@ -20,16 +22,41 @@ type Maps = BTreeMap<String, Words>;
 /// The longest pause that a dialect may ask for after a command: longer ones belong into a sequence.
 const LONGEST_PAUSE_S: f64 = 60.0;
 
+/// The longest window: what a 32-bit counter holds.
+const LONGEST_WINDOW: i64 = u32::MAX as i64;
+
+/// What holds for all intents of a file.
+#[derive(Debug, Clone, Copy)]
+struct General {
+    manner: Manner,
+    pause_s: f64,
+    /// Whether samples are read in windows.
+    windowed: bool,
+}
+
+/// What `[line]` says.
+struct Line {
+    ending: &'static str,
+    pause_s: f64,
+    greeting: bool,
+    one_client: bool,
+}
+
 /// Reads the top of a dialect file. Every part is read even when an earlier one had mistakes.
 pub(super) fn dialect(top: &mut Table<'_>) -> Option<Dialect> {
     let name = top.text("name").or_else(|| top.missing("name", "such as `name = \"my-scope\"`"));
+    // Whom it is like was looked at before the texts were laid over one another.
+    let _ = top.text("like");
     let about = top.text("about").map(|item| item.value).unwrap_or_default();
     let words = words(top);
-    let (ending, pause_s, greeting) = line(top);
+    let line = line(top);
     let manner = manner(top);
-    let intents = intents::intents(top, &words, pause_s);
-    let errors = top.table("errors").and_then(|table| errors(table, &words));
-    let completion = top.table("completion").and_then(completion);
+    let window = top.table("window").and_then(window);
+    let general = General { manner, pause_s: line.pause_s, windowed: top.has("window") };
+    let intents = intents::intents(top, &words, general);
+    let errors = top.table("errors").and_then(|table| asking::errors(table, &words));
+    let completion = top.table("completion").and_then(asking::completion);
+    let free = free_running(top, intents.contains_key(&Intent::AcquireAbort));
     let skew = top.table("skew").and_then(skew);
     let reading = record::reading(top, &intents);
     for (intent, needed, there) in [
@@ -45,16 +72,19 @@ pub(super) fn dialect(top: &mut Table<'_>) -> Option<Dialect> {
     Some(Dialect {
         name: name?.value,
         about,
-        ending,
-        greeting,
+        ending: line.ending,
+        greeting: line.greeting,
+        one_client: line.one_client,
         manner,
         words,
         intents,
         errors,
         completion,
+        free,
+        window,
         skew,
         reading,
-        pause_s,
+        pause_s: line.pause_s,
     })
 }
 
@@ -85,14 +115,52 @@ fn words(top: &mut Table<'_>) -> Maps {
     maps
 }
 
-/// The ending of a line, the pause after a command in seconds, and whether the instrument greets.
-fn line(top: &mut Table<'_>) -> (&'static str, f64, bool) {
-    let Some(mut table) = top.table("line") else { return ("\n", 0.0, false) };
-    let ending = choice(&mut table, "ending", &[("lf", "\n"), ("crlf", "\r\n")]).unwrap_or("\n");
-    let pause_s = pause(&mut table).unwrap_or(0.0);
-    let greeting = table.flag("greeting").is_some_and(|item| item.value);
+fn line(top: &mut Table<'_>) -> Line {
+    let mut line = Line { ending: "\n", pause_s: 0.0, greeting: false, one_client: false };
+    let Some(mut table) = top.table("line") else { return line };
+    line.ending = choice(&mut table, "ending", &[("lf", "\n"), ("crlf", "\r\n")]).unwrap_or("\n");
+    line.pause_s = pause(&mut table).unwrap_or(0.0);
+    line.greeting = table.flag("greeting").is_some_and(|item| item.value);
+    line.one_client = table.flag("one_client").is_some_and(|item| item.value);
     table.refuse_others();
-    (ending, pause_s, greeting)
+    line
+}
+
+/// The most samples that are asked for at once.
+fn window(mut table: Table<'_>) -> Option<i64> {
+    let most = table.whole("most").or_else(|| table.missing("most", "such as `most = 25_000`, in samples"));
+    table.refuse_others();
+    let most = most?;
+    if (1..=LONGEST_WINDOW).contains(&most.value) {
+        return Some(most.value);
+    }
+    table.mistakes().add(most.span, format!("a window of {} samples", most.value), format!("1 to {LONGEST_WINDOW}"));
+    None
+}
+
+/// Whether the scope goes on acquiring by itself, so that it must be stopped before it is read.
+fn free_running(top: &mut Table<'_>, stops: bool) -> bool {
+    let Some(mut table) = top.table("acquisition") else { return false };
+    let free = choice(&mut table, "mode", &[("held", false), ("free", true)])
+        .or_else(|| table.missing("mode", "`\"held\"`, or `\"free\"` when each read may be of a new acquisition"));
+    table.refuse_others();
+    let free = free.unwrap_or(false);
+    if free {
+        let complain = |what: &str, help: &str| table.mistakes().add(table.span(), what, help);
+        if !stops {
+            complain(
+                "a scope that goes on acquiring and cannot be stopped cannot give both legs of one acquisition",
+                "give `[intent.\"acquire.abort\"]` the command that stops it; without one, it serves no pair",
+            );
+        }
+        if !top.has("completion") {
+            complain(
+                "a scope that goes on acquiring must tell when an acquisition with the new settings is there",
+                "give `[completion]`",
+            );
+        }
+    }
+    free
 }
 
 fn manner(top: &mut Table<'_>) -> Manner {
@@ -126,61 +194,16 @@ fn choice<T: Copy>(table: &mut Table<'_>, key: &str, choices: &[(&str, T)]) -> O
     found
 }
 
-fn errors(mut table: Table<'_>, words: &Maps) -> Option<Errors> {
-    let ask = table.text("ask").or_else(|| table.missing("ask", "such as `ask = \"SYSTem:ERRor?\"`"));
-    let template =
-        ask.and_then(|ask| Template::plain(&ask.value).map_err(|refusal| refuse(&table, ask.span, refusal)).ok());
-    let places = table.texts("reply").or_else(|| table.missing("reply", "such as `reply = [\"number\", \"text\"]`"));
-    let shape = places.and_then(|places| {
-        let span = places.first().map_or_else(|| table.span(), |first| first.span.clone());
-        let shape = Shape::list(places.iter().map(|item| item.value.as_str()), Intent::Error, words);
-        match shape {
-            Ok(shape) if shape.place_of("number").is_some() => Some(shape),
-            Ok(_) => {
-                refuse(&table, span, ("the reply has no `number`".to_owned(), "name it in `reply`".to_owned()));
-                None
-            }
-            Err(refusal) => {
-                refuse(&table, span, refusal);
-                None
-            }
+/// A sign that stands between the parts of a reply.
+fn choice_of_sign(table: &mut Table<'_>, key: &str, usual: char) -> char {
+    let Some(item) = table.text(key) else { return usual };
+    match refuse_sign(&item.value) {
+        None => item.value.chars().next().unwrap_or(usual),
+        Some(why) => {
+            table.mistakes().add(item.span, format!("`{key}` cannot be `{}`", item.value), why);
+            usual
         }
-    });
-    let empty = table.whole("empty").map_or(0, |item| item.value);
-    table.refuse_others();
-    Some(Errors { ask: template?, shape: shape?, empty })
-}
-
-fn completion(mut table: Table<'_>) -> Option<Waiting> {
-    let ask = table.text("ask").or_else(|| table.missing("ask", "such as `ask = \"*OPC?\"`"));
-    let ask = ask.and_then(|ask| Template::plain(&ask.value).map_err(|refusal| refuse(&table, ask.span, refusal)).ok());
-    let equals = table.text("equals").map(|item| Until::Equals(item.value));
-    let bits = |item: Item<i64>, make: fn(u16) -> Until, table: &Table<'_>| match u16::try_from(item.value) {
-        Ok(bits) if bits != 0 => Some(make(bits)),
-        _ => {
-            table.mistakes().add(item.span, format!("{} is no set of bits", item.value), "1 to 65535");
-            None
-        }
-    };
-    let clear = table.whole("clear").and_then(|item| bits(item, Until::Clear, &table));
-    let set = table.whole("set").and_then(|item| bits(item, Until::Set, &table));
-    let ways = ["equals", "clear", "set"].iter().filter(|key| table.has(key)).count();
-    if ways != 1 {
-        let help = "one of `equals = \"1\"`, `clear = 56` (these bits are 0), `set = 1` (these bits are 1)";
-        table.mistakes().add(table.span(), "which reply means complete must be said once", help);
     }
-    let every = table.amount("every", Unit::Second);
-    let how = match &every {
-        None => Completion::Answer,
-        Some(every) if every.value > 0.0 && every.value <= LONGEST_PAUSE_S => Completion::Poll { every_s: every.value },
-        Some(every) => {
-            let help = format!("more than 0 and at most {LONGEST_PAUSE_S} s");
-            table.mistakes().add(every.span.clone(), format!("asking every {} s", every.value), help);
-            return None;
-        }
-    };
-    table.refuse_others();
-    Some(Waiting { ask: ask?, until: equals.or(clear).or(set)?, how })
 }
 
 /// The skew setting, and whether a positive value shifts a record later.

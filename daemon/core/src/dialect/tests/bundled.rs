@@ -30,6 +30,7 @@ fn table() -> Vec<Row> {
     let channels = || vec![("channels", Value::List(vec![101, 103]))];
     vec![
         (Identify, vec![], "~*IDN?\n"),
+        (Options, vec![], "~*OPT?\n"),
         (Clear, vec![], "*CLS\n"),
         (Reset, vec![], "*RST\n"),
         (Error, vec![], "~SYSTem:ERRor?\n"),
@@ -133,6 +134,7 @@ fn every_query_reads_literal_replies() {
             &["ACME,Model 1,\"a,b\",Joe's 1.0"],
             vec![("identity", Value::Text("ACME,Model 1,\"a,b\",Joe's 1.0".to_owned()))],
         ),
+        (Options, &["LONG,0"], vec![("options", Value::Text("LONG,0".to_owned()))]),
         (
             Error,
             &["-222,\"Data out of range; 5 V\""],

@@ -4,6 +4,9 @@ use proptest::prelude::*;
 
 use super::*;
 
+/// How many intents there are.
+const INTENTS: usize = 37;
+
 fn vertical(channel: impl Into<Value>, span_v: impl Into<Value>) -> Call {
     Call::new(Intent::VerticalSet).with("channel", channel).with("span_v", span_v).with("offset_v", 0.0)
 }
@@ -77,7 +80,7 @@ fn value() -> impl Strategy<Value = Value> {
 
 proptest! {
     #[test]
-    fn one_exchange_is_one_command(which in 0_usize..36, values in prop::collection::vec(value(), 6)) {
+    fn one_exchange_is_one_command(which in 0_usize..INTENTS, values in prop::collection::vec(value(), 6)) {
         let dialect = scpi_99();
         let intent = Intent::all().nth(which).unwrap();
         let call = intent.spec().args.iter().zip(values).fold(Call::new(intent), |call, ((name, _), value)| call.with(*name, value));
@@ -91,7 +94,7 @@ proptest! {
     }
 
     #[test]
-    fn no_reply_panics(which in 0_usize..36, replies in prop::collection::vec("\\PC{0,40}", 0..4), block in any::<bool>()) {
+    fn no_reply_panics(which in 0_usize..INTENTS, replies in prop::collection::vec("\\PC{0,40}", 0..4), block in any::<bool>()) {
         let dialect = scpi_99();
         let intent = Intent::all().nth(which).unwrap();
         let call = intent.spec().args.iter().fold(Call::new(intent), |call, (name, kind)| match kind {
@@ -118,6 +121,39 @@ proptest! {
         let good = bundled("scpi-99").unwrap();
         let (at, end) = (at.min(good.len()), (at + cut).min(good.len()));
         let _ = Dialect::read(&format!("{}{text}{}", &good[..at], &good[end..]));
+    }
+
+    #[test]
+    fn no_variant_panics(lines in prop::collection::vec(0_usize..400, 1..12), to in prop::collection::vec(0_usize..400, 12), word in "[ -~]{0,12}") {
+        // Lines of the bundled file moved about and mutilated, laid over the whole of it.
+        let all: Vec<&str> = bundled("scpi-99").unwrap().lines().collect();
+        let picked = |at: usize| all[at % all.len()];
+        let mut text = "like = \"scpi-99\"\n".to_owned();
+        for (at, to) in lines.iter().zip(&to) {
+            let line = picked(*at);
+            let cut = line.char_indices().nth(to % 40).map_or(line.len(), |(cut, _)| cut);
+            text += &if to % 3 == 0 { format!("{}{word}{}\n", &line[..cut], &line[cut..]) } else { format!("{line}\n") };
+        }
+        if let Err(found) = Dialect::read(&text) {
+            prop_assert!(!found.is_empty());
+            for mistake in found {
+                prop_assert!(text.get(mistake.span.clone()).is_some(), "{:?} lies outside", mistake);
+            }
+        }
+    }
+
+    #[test]
+    fn no_expression_panics(text in "[a-z0-9_ .+*/()?:<>=!&|\\[\\]\"'{},-]{0,40}") {
+        let quoted = text.replace('\\', "").replace('"', "'");
+        let file = format!("name = \"x\"\n[convert.\"source.voltage\"]\nx = \"{quoted}\"\n[intent.\"source.voltage\"]\nsend = [\"V{{channel}} {{x}}\"]\n");
+        if let Ok(dialect) = Dialect::read(&file) {
+            let call = Call::new(Intent::SourceVoltage).with("channel", 1).with("value", 3.0);
+            if let Ok(exchanges) = dialect.plan(&call) {
+                for exchange in exchanges {
+                    prop_assert!(exchange.command().bytes().all(|byte| matches!(byte, b' '..=b'~') && byte != b';'));
+                }
+            }
+        }
     }
 
     #[test]

@@ -16,7 +16,7 @@ fn with_samples(samples: &str) -> Dialect {
 
 fn decoded(samples: &str, data: &Message) -> RawRecord {
     let dialect = with_samples(samples);
-    dialect.record(&preamble(&dialect, PREAMBLE), data).unwrap()
+    dialect.record(&preamble(&dialect, PREAMBLE), std::slice::from_ref(data)).unwrap()
 }
 
 #[test]
@@ -71,7 +71,7 @@ fn a_whole_record_in_the_bundled_dialect() {
     assert_eq!(dialect.parse(&call, std::slice::from_ref(&data)).unwrap(), Fields::new());
     assert_eq!(dialect.most_block_bytes(3), 6);
     assert_eq!(
-        dialect.record(&preamble(&dialect, PREAMBLE), &data).unwrap(),
+        dialect.record(&preamble(&dialect, PREAMBLE), std::slice::from_ref(&data)).unwrap(),
         RawRecord {
             samples: Samples::Codes(vec![256, -1, -32768]),
             volts_per_code: 0.5,
@@ -109,7 +109,7 @@ ask = [
     let dialect = dialect(text);
     let call = Call::new(Intent::RecordPreamble).with("channel", 1);
     let fields = dialect.parse(&call, &lines(&["2", "2,64,1E-9,-1E-3,10,0.04,1.5,128,\"x\""])).unwrap();
-    let record = dialect.record(&fields, &Message::Block(vec![128, 255])).unwrap();
+    let record = dialect.record(&fields, &[Message::Block(vec![128, 255])]).unwrap();
     // By hand: (0 - 128)·0.04 + 1.5 = -3.62 and (0 - 10)·1e-9 - 1e-3 = -1.00001e-3.
     assert!((record.zero_v + 3.62).abs() < 1e-14);
     assert!((record.volts_per_code - 0.04).abs() < 1e-15);
@@ -123,7 +123,7 @@ ask = [
 fn records_that_cannot_be_are_refused() {
     let dialect = scpi_99();
     let refused = |line: &str, bytes: &[u8]| {
-        dialect.record(&preamble(&dialect, line), &Message::Block(bytes.to_vec())).unwrap_err()
+        dialect.record(&preamble(&dialect, line), &[Message::Block(bytes.to_vec())]).unwrap_err()
     };
     assert!(matches!(refused(PREAMBLE, &[0; 4]), DialectError::Length { wanted: 3, found: 2 }));
     assert!(matches!(refused(PREAMBLE, &[0; 5]), DialectError::Ragged { bytes: 5, each: 2 }));
@@ -140,10 +140,10 @@ fn records_that_cannot_be_are_refused() {
     let nan = f32::NAN.to_be_bytes();
     let floats = with_samples("format = \"f32\"\norder = \"big\"");
     let data = Message::Block([nan, nan, nan].concat());
-    let error = floats.record(&preamble(&floats, PREAMBLE), &data).unwrap_err();
+    let error = floats.record(&preamble(&floats, PREAMBLE), &[data]).unwrap_err();
     assert!(matches!(error, DialectError::Sample { index: 0, .. }));
     assert!(matches!(
-        dialect.record(&preamble(&dialect, PREAMBLE), &Message::Line("1,2,3".to_owned())),
+        dialect.record(&preamble(&dialect, PREAMBLE), &[Message::Line("1,2,3".to_owned())]),
         Err(DialectError::WrongMessage { .. })
     ));
 }
@@ -162,5 +162,5 @@ ask = [{ send = "PRE? {channel}", reply = ["points", "interval_s", "start_s", "g
     let dialect = dialect(text);
     let call = Call::new(Intent::RecordPreamble).with("channel", 1);
     let error = dialect.parse(&call, &lines(&["2,1,0,1,0,255,1,1,1"])).unwrap_err();
-    assert!(matches!(error, DialectError::Expression { name, .. } if name == "volts"));
+    assert!(matches!(error, DialectError::Expression { name, .. } if name == "record.volts"));
 }
