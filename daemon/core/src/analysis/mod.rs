@@ -29,6 +29,7 @@ pub mod signal;
 pub mod skew;
 pub mod spectrum;
 pub mod transition;
+mod wide;
 
 pub use correction::{Correction, Estimate};
 pub use record::{Record, Samples};

@@ -54,9 +54,7 @@ pub(super) fn filtered<S: Signal + ?Sized>(
     let outline = Outline::of(common);
     let moves = |from: usize| {
         let end = (from + SEGMENT).min(n).div_ceil(BLOCK).min(outline.blocks.len());
-        let blocks = &outline.blocks[from / BLOCK..end];
-        let low = blocks.iter().fold(f32::INFINITY, |low, block| low.min(block.0));
-        let high = blocks.iter().fold(f32::NEG_INFINITY, |high, block| high.max(block.1));
+        let (low, high) = outline.within(from / BLOCK..end);
         f64::from(high - low) > MOVES * noise
     };
     // At a sample, the slow part lies between the middles of two blocks.

@@ -28,7 +28,8 @@ pub(super) struct Histogram {
 impl Histogram {
     /// Of a whole signal between its lowest and highest value; `None` when they are equal or one is not finite.
     pub(super) fn of<S: Signal + ?Sized>(signal: &S, outline: &Outline) -> Option<Self> {
-        Self::within(signal, std::iter::once(0..signal.points()), outline.low, outline.high)
+        let (low, high) = outline.range();
+        Self::within(signal, std::iter::once(0..signal.points()), low, high)
     }
 
     /// Of some stretches of a signal; samples below `low` or above `high` count in the first or the last bin.

@@ -141,7 +141,7 @@ pub(super) fn outer<S: Signal + ?Sized>(signal: &S) -> (f64, f64) {
     let outline = Outline::of(signal);
     match Histogram::of(signal, &outline) {
         Some(histogram) => (histogram.quantile(0.05), histogram.quantile(0.95)),
-        None if outline.low.is_finite() => (outline.low, outline.low),
+        None if outline.range().0.is_finite() => (outline.range().0, outline.range().0),
         None => (0.0, 0.0),
     }
 }

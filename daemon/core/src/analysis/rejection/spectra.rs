@@ -162,9 +162,8 @@ fn segments(captures: &[Corrected], points: usize) -> (Average, Option<Quiet>) {
         let outline = Outline::of(&common);
         let limit = MOVES * peaks::noise_of(&common);
         let moves = |from: &usize| {
-            let blocks = &outline.blocks[from / BLOCK..(from + SEGMENT).div_ceil(BLOCK).min(outline.blocks.len())];
-            let low = blocks.iter().fold(f32::INFINITY, |low, block| low.min(block.0));
-            let high = blocks.iter().fold(f32::NEG_INFINITY, |high, block| high.max(block.1));
+            let end = (from + SEGMENT).div_ceil(BLOCK).min(outline.blocks.len());
+            let (low, high) = outline.within(from / BLOCK..end);
             f64::from(high - low) > limit
         };
         let (mut move_at, mut still_at): (Vec<usize>, Vec<usize>) = starts(points, SEGMENT).partition(moves);
