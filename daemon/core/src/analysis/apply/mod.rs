@@ -96,6 +96,10 @@ impl Signal for Difference<'_> {
         self.0.difference_v.load(from, out);
     }
 
+    fn samples(&self) -> Option<&[f32]> {
+        Some(&self.0.difference_v)
+    }
+
     fn outline(&self) -> Option<&Outline> {
         Some(&self.0.outlines[0])
     }

@@ -21,6 +21,11 @@ pub trait Signal {
     /// terms carry noise far above 2⁻²⁴ of the value. The caller stays within [`Signal::points`].
     fn load(&self, from: usize, out: &mut [f32]);
 
+    /// The samples themselves, where they are held in single precision.
+    fn samples(&self) -> Option<&[f32]> {
+        None
+    }
+
     /// Lowest and highest sample of every block, where they are known already.
     fn outline(&self) -> Option<&Outline> {
         None
@@ -38,6 +43,10 @@ impl Signal for [f32] {
 
     fn load(&self, from: usize, out: &mut [f32]) {
         out.copy_from_slice(&self[from..from + out.len()]);
+    }
+
+    fn samples(&self) -> Option<&[f32]> {
+        Some(self)
     }
 }
 
@@ -73,6 +82,10 @@ where
     fn load(&self, from: usize, out: &mut [f32]) {
         self.as_slice().load(from, out);
     }
+
+    fn samples(&self) -> Option<&[f32]> {
+        self.as_slice().samples()
+    }
 }
 
 impl<T, const N: usize> Signal for [T; N]
@@ -90,6 +103,10 @@ where
     fn load(&self, from: usize, out: &mut [f32]) {
         self.as_slice().load(from, out);
     }
+
+    fn samples(&self) -> Option<&[f32]> {
+        self.as_slice().samples()
+    }
 }
 
 impl<S: Signal + ?Sized> Signal for &S {
@@ -103,6 +120,10 @@ impl<S: Signal + ?Sized> Signal for &S {
 
     fn load(&self, from: usize, out: &mut [f32]) {
         (**self).load(from, out);
+    }
+
+    fn samples(&self) -> Option<&[f32]> {
+        (**self).samples()
     }
 
     fn outline(&self) -> Option<&Outline> {
@@ -145,6 +166,14 @@ pub(super) fn blocks<S: Signal + ?Sized>(
     range: Range<usize>,
     mut visit: impl FnMut(usize, &[f32]),
 ) {
+    if let Some(samples) = signal.samples() {
+        let mut from = range.start;
+        for part in samples[range].chunks(BLOCK) {
+            visit(from, part);
+            from += part.len();
+        }
+        return;
+    }
     let mut buffer = [0.0; BLOCK];
     let mut from = range.start;
     while from < range.end {
@@ -157,9 +186,20 @@ pub(super) fn blocks<S: Signal + ?Sized>(
 
 /// The mean and the mean square of a signal; zero without samples.
 pub(super) fn mean_and_square<S: Signal + ?Sized>(signal: &S) -> (f64, f64) {
-    const LANES: usize = 4;
-    let (mut sums, mut squares) = ([0.0f64; LANES], [0.0f64; LANES]);
+    let (mut sum, mut square) = (0.0, 0.0);
     blocks(signal, 0..signal.points(), |_, part| {
+        let (s, q) = sum_and_square(part);
+        sum += s;
+        square += q;
+    });
+    let n = signal.points().max(1) as f64;
+    (sum / n, square / n)
+}
+
+widest! {
+    fn sum_and_square(part: &[f32]) -> (f64, f64) {
+        const LANES: usize = 16;
+        let (mut sums, mut squares) = ([0.0f64; LANES], [0.0f64; LANES]);
         let (chunks, rest) = part.as_chunks::<LANES>();
         for chunk in chunks {
             for k in 0..LANES {
@@ -168,13 +208,12 @@ pub(super) fn mean_and_square<S: Signal + ?Sized>(signal: &S) -> (f64, f64) {
                 squares[k] += x * x;
             }
         }
-        for &x in rest {
-            sums[0] += f64::from(x);
-            squares[0] += f64::from(x) * f64::from(x);
+        for (k, &x) in rest.iter().enumerate() {
+            sums[k] += f64::from(x);
+            squares[k] += f64::from(x) * f64::from(x);
         }
-    });
-    let n = signal.points().max(1) as f64;
-    (sums.iter().sum::<f64>() / n, squares.iter().sum::<f64>() / n)
+        (sums.iter().sum(), squares.iter().sum())
+    }
 }
 
 /// So many values side by side that the compiler keeps the loop over them and makes vectors of it, instead of unrolling
