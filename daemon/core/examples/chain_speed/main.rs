@@ -1,9 +1,11 @@
 //! How long each stage of the analysis takes on two pairs of long records:
-//! `cargo run --release -p evenpair-core --example chain_speed -- [POINTS] [--json FILE] [--write FOLDER] [--show]`.
+//! `cargo run --release -p evenpair-core --example chain_speed -- [POINTS] [--json FILE] [--write FOLDER] [--show]
+//! [--only STAGE]`.
 //!
 //! Each stage is repeated for about a second, at least three times; printed is the processor time of one run (so that
 //! what else the machine does counts little), and the shortest time by the clock. `--write` leaves the samples as 16-bit codes,
 //! so that `tests/reference/compare_speed` can run the script that an engineer would write in numpy on the same ones.
+//! `--only` repeats one stage, for a profiler; the others run once.
 
 mod scene;
 
@@ -23,16 +25,18 @@ struct Wish {
     json: Option<String>,
     folder: Option<String>,
     show: bool,
+    only: Option<String>,
 }
 
 fn main() -> Result<(), Box<dyn Error>> {
-    let mut wish = Wish { points: 1_000_000, json: None, folder: None, show: false };
+    let mut wish = Wish { points: 1_000_000, json: None, folder: None, show: false, only: None };
     let mut arguments = std::env::args().skip(1);
     while let Some(argument) = arguments.next() {
         match argument.as_str() {
             "--json" => wish.json = arguments.next(),
             "--write" => wish.folder = arguments.next(),
             "--show" => wish.show = true,
+            "--only" => wish.only = arguments.next(),
             number => wish.points = number.parse()?,
         }
     }
@@ -50,8 +54,15 @@ struct Stage {
     shortest: f64,
 }
 
+/// The stages so far, and which of them is wanted.
+struct Stages<'a> {
+    done: Vec<Stage>,
+    only: Option<&'a str>,
+}
+
 /// Repeats a stage, and hands back what it made the last time.
-fn time<T>(stages: &mut Vec<Stage>, name: &'static str, mut work: impl FnMut() -> T) -> T {
+fn time<T>(stages: &mut Stages<'_>, name: &'static str, mut work: impl FnMut() -> T) -> T {
+    let wanted = stages.only.is_none_or(|only| only == name);
     let (begun, used) = (Instant::now(), processor_ms());
     let mut shortest = f64::INFINITY;
     let mut runs = 0;
@@ -60,12 +71,12 @@ fn time<T>(stages: &mut Vec<Stage>, name: &'static str, mut work: impl FnMut() -
         let made = work();
         shortest = shortest.min(lap.elapsed().as_secs_f64() * 1e3);
         runs += 1;
-        if runs >= 3 && begun.elapsed().as_secs_f64() > 1.0 {
+        if !wanted || runs >= 3 && begun.elapsed().as_secs_f64() > 1.0 {
             let processor = match (used, processor_ms()) {
                 (Some(before), Some(after)) => (after - before) / f64::from(runs),
                 _ => shortest,
             };
-            stages.push(Stage { name, processor, shortest });
+            stages.done.push(Stage { name, processor, shortest });
             return made;
         }
     }
@@ -79,7 +90,7 @@ fn processor_ms() -> Option<f64> {
 }
 
 fn run(scene: &Scene, wish: &Wish) -> Result<(), Box<dyn Error>> {
-    let mut stages = Vec::new();
+    let mut stages = Stages { done: Vec::new(), only: wish.only.as_deref() };
     let beyond = memory_beyond(scene)?;
     let (p, n) = &scene.reference;
     let reference = Reference { shape: Shape::Edges, period_s: None };
@@ -117,6 +128,7 @@ fn run(scene: &Scene, wish: &Wish) -> Result<(), Box<dyn Error>> {
         }
     }
     check(&figures, correction.skew_s.value)?;
+    let stages = stages.done;
     println!("2 × {} samples; milliseconds of processor time, and shortest by the clock", wish.points);
     for stage in &stages {
         println!("{:<12} {:9.3} {:9.3}", stage.name, stage.processor, stage.shortest);

@@ -34,6 +34,7 @@ pub mod spectrum;
 pub mod steepest;
 pub mod transfer;
 pub mod transition;
+mod wide;
 
 pub use beyond::Beyond;
 pub use correction::{Correction, Drift, Estimate, Freedom};

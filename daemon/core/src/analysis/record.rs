@@ -1,5 +1,7 @@
 //! The samples of one leg from one acquisition.
 
+use super::wide::widest;
+
 /// Samples as the instrument sent them.
 #[derive(Debug, Clone, PartialEq)]
 pub enum Samples {
@@ -65,8 +67,24 @@ impl Record {
         let (low, high) = self.end_codes;
         let beyond = |code: f64| code <= low || code >= high;
         match &self.samples {
-            Samples::Codes(codes) => codes.iter().filter(|&&code| beyond(f64::from(code))).count(),
+            Samples::Codes(codes) => {
+                // As whole codes; ends that are no numbers are never reached.
+                let low = if low.is_nan() { i32::MIN } else { low.floor() as i32 };
+                let high = if high.is_nan() { i32::MAX } else { high.ceil() as i32 };
+                beyond_codes(codes, low, high)
+            }
             Samples::Numbers(numbers) => numbers.iter().filter(|&&number| beyond(f64::from(number))).count(),
         }
+    }
+}
+
+widest! {
+    /// How many codes are not between two others.
+    fn beyond_codes(codes: &[i16], low: i32, high: i32) -> usize {
+        let count = |part: &[i16]| {
+            let beyond = |code: &i16| u32::from(i32::from(*code) <= low) | u32::from(i32::from(*code) >= high);
+            part.iter().map(beyond).sum::<u32>() as usize
+        };
+        codes.chunks(4096).map(count).sum()
     }
 }

@@ -6,7 +6,8 @@
 //! the interpolation cannot reach with all its taps are left out at both ends.
 
 use super::interpolate::Interpolator;
-use super::signal::Signal;
+use super::signal::{BLOCK, Outline, Signal, extremes_of};
+use super::wide::widest;
 use super::{Correction, Record, Samples};
 
 mod fused;
@@ -33,6 +34,8 @@ pub struct Corrected {
     pub interval_s: f64,
     /// Time of the first sample here relative to the trigger, in seconds.
     pub start_s: f64,
+    /// Lowest and highest value per block, of the difference and of the common mode.
+    pub(in crate::analysis) outlines: [Outline; 2],
     /// `Σ h²` of the interpolation: the factor on the power of the negative leg's white noise (before division by g²).
     pub noise_gain: f64,
 }
@@ -42,13 +45,23 @@ impl Corrected {
     #[must_use]
     pub fn of(difference_v: Vec<f32>, negative_v: Vec<f32>, interval_s: f64, start_s: f64, noise_gain: f64) -> Self {
         let sums = Sums::of(&difference_v, &negative_v);
-        Self { difference_v, negative_v, sums, first: 0, interval_s, start_s, noise_gain }
+        let mut outlines = [(); 2].map(|()| Outline::with_capacity(difference_v.len()));
+        for (d, n) in difference_v.chunks(BLOCK).zip(negative_v.chunks(BLOCK)) {
+            outlines.iter_mut().zip(extremes_of(d, n)).for_each(|(outline, both)| outline.push(both));
+        }
+        Self { difference_v, negative_v, sums, outlines, first: 0, interval_s, start_s, noise_gain }
     }
 
     /// Means of difference, negative leg, its slope and of their products.
     #[must_use]
     pub fn moments(&self) -> Moments {
         self.sums.moments(self.interval_s)
+    }
+
+    /// D in volts.
+    #[must_use]
+    pub fn difference(&self) -> Difference<'_> {
+        Difference(self)
     }
 
     /// C in volts: the mean of the positive leg and the corrected negative leg.
@@ -63,6 +76,32 @@ impl Corrected {
     #[must_use]
     pub fn slope(&self) -> Slope<'_> {
         Slope(self)
+    }
+}
+
+/// The difference of a corrected capture, in volts.
+#[derive(Debug, Clone, Copy)]
+pub struct Difference<'a>(&'a Corrected);
+
+impl Signal for Difference<'_> {
+    fn points(&self) -> usize {
+        self.0.difference_v.len()
+    }
+
+    fn at(&self, index: usize) -> f64 {
+        f64::from(self.0.difference_v[index])
+    }
+
+    fn load(&self, from: usize, out: &mut [f32]) {
+        self.0.difference_v.load(from, out);
+    }
+
+    fn samples(&self) -> Option<&[f32]> {
+        Some(&self.0.difference_v)
+    }
+
+    fn outline(&self) -> Option<&Outline> {
+        Some(&self.0.outlines[0])
     }
 }
 
@@ -81,7 +120,17 @@ impl Signal for Common<'_> {
 
     fn load(&self, from: usize, out: &mut [f32]) {
         let range = from..from + out.len();
-        let both = self.0.negative_v[range.clone()].iter().zip(&self.0.difference_v[range]);
+        common_of(&self.0.negative_v[range.clone()], &self.0.difference_v[range], out);
+    }
+
+    fn outline(&self) -> Option<&Outline> {
+        Some(&self.0.outlines[1])
+    }
+}
+
+widest! {
+    fn common_of(negative: &[f32], difference: &[f32], out: &mut [f32]) {
+        let both = negative.iter().zip(difference);
         out.iter_mut().zip(both).for_each(|(out, (n, d))| *out = n + 0.5 * d);
     }
 }
@@ -184,11 +233,13 @@ pub fn correct(p: &Record, n: &Record, correction: &Correction) -> Result<Correc
         return Err(too_short(valid.len()));
     }
     let first = valid.start;
-    let pass = fused::pass(p, n, &interpolator, valid, (gain, correction.offset_v.value));
+    let offset_v = correction.offset_v.value;
+    let pass = fused::pass(&fused::Task { p, n, interpolator: &interpolator, gain, offset_v, valid });
     Ok(Corrected {
         difference_v: pass.difference_v,
         negative_v: pass.negative_v,
         sums: pass.sums,
+        outlines: pass.outlines,
         first,
         interval_s: p.interval_s,
         start_s: (first as f64).mul_add(p.interval_s, p.start_s),
@@ -245,10 +296,10 @@ impl Signal for Plain<'_> {
 
     fn load(&self, from: usize, out: &mut [f32]) {
         fused::load_volts(self.p, self.skip_p + from, out);
-        let mut negative = [0.0; super::signal::BLOCK];
+        let mut negative = [0.0; BLOCK];
         for (i, out) in out.chunks_mut(negative.len()).enumerate() {
             let negative = &mut negative[..out.len()];
-            fused::load_volts(self.n, self.skip_n + from + i * super::signal::BLOCK, negative);
+            fused::load_volts(self.n, self.skip_n + from + i * BLOCK, negative);
             out.iter_mut().zip(negative).for_each(|(p, n)| *p -= *n);
         }
     }

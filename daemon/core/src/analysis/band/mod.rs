@@ -1,9 +1,13 @@
 //! Spectra for the rejection and the leak bound: a window of very low leakage, and the transforms.
 
 use realfft::num_complex::Complex;
-use realfft::{RealFftPlanner, RealToComplex};
+use realfft::RealToComplex;
 
 use super::signal::Signal;
+use super::spectrum::cosines;
+use super::wide::widest;
+
+pub(super) mod plans;
 
 /// How far the main lobe of [`window`] reaches to each side, in bins.
 pub(super) const LOBE: usize = 4;
@@ -16,10 +20,10 @@ pub(super) const NOISE_BANDWIDTH: f64 = 2.0;
 /// that records which do not hold whole periods do no harm.
 pub(super) fn window(points: usize) -> Vec<f64> {
     let step = std::f64::consts::TAU / points as f64;
-    (0..points)
-        .map(|i| {
+    cosines(0.0, step)
+        .take(points)
+        .map(|c| {
             // cos 2x and cos 3x by their polynomials in cos x: a third of the work for long windows.
-            let c = (step * i as f64).cos();
             0.358_75 - 0.488_29 * c + 0.141_28 * (2.0 * c * c - 1.0) - 0.011_68 * c * (4.0 * c * c - 3.0)
         })
         .collect()
@@ -48,7 +52,7 @@ fn is_fast(points: usize) -> bool {
 
 /// The spectrum of a real signal, bins 0 to n/2, not normalised (`X_k = Σ x_i·e^{−j2πik/n}`).
 pub(super) fn forward(mut signal: Vec<f64>) -> Vec<Complex<f64>> {
-    let plan = RealFftPlanner::<f64>::new().plan_fft_forward(signal.len());
+    let plan = plans::double(|planner| planner.plan_fft_forward(signal.len()));
     let mut spectrum = plan.make_output_vec();
     let outcome = plan.process(&mut signal, &mut spectrum);
     debug_assert!(outcome.is_ok(), "the plan made its own buffer");
@@ -57,7 +61,7 @@ pub(super) fn forward(mut signal: Vec<f64>) -> Vec<Complex<f64>> {
 
 /// The real signal of `points` samples with this spectrum, normalised so that it undoes [`forward`].
 pub(super) fn inverse(mut spectrum: Vec<Complex<f64>>, points: usize) -> Vec<f64> {
-    let plan = RealFftPlanner::<f64>::new().plan_fft_inverse(points);
+    let plan = plans::double(|planner| planner.plan_fft_inverse(points));
     // A real signal has a real bin at zero frequency and, for an even length, at half the sample rate.
     if let Some(first) = spectrum.first_mut() {
         first.im = 0.0;
@@ -98,7 +102,7 @@ pub(super) struct Transform {
 
 impl Transform {
     pub(super) fn new(points: usize) -> Self {
-        let plan = RealFftPlanner::<f32>::new().plan_fft_forward(points);
+        let plan = plans::single(|planner| planner.plan_fft_forward(points));
         let mut window = window(points);
         let scale = 1.0 / window.iter().map(|w| w * w).sum::<f64>().sqrt();
         window.iter_mut().for_each(|w| *w *= scale);
@@ -122,22 +126,39 @@ impl Transform {
     }
 
     fn one(&mut self, second: bool) {
-        const LANES: usize = 8;
-        let mut total = 0.0f64;
-        for (x, w) in self.buffer.chunks(128).zip(self.window.chunks(128)) {
-            let mut sums = [0.0f32; LANES];
-            for (x, w) in x.chunks(LANES).zip(w.chunks(LANES)) {
-                for ((sum, x), w) in sums.iter_mut().zip(x).zip(w) {
-                    *sum += x * w;
-                }
-            }
-            total += sums.into_iter().map(f64::from).sum::<f64>();
-        }
-        let mean = (total / self.weight) as f32;
-        self.buffer.iter_mut().zip(&self.window).for_each(|(x, w)| *x = (*x - mean) * w);
+        let mean = (weighted_sum(&self.buffer, &self.window) / self.weight) as f32;
+        apply_window(&mut self.buffer, &self.window, mean);
         let out = if second { &mut self.second } else { &mut self.first };
         let outcome = self.plan.process_with_scratch(&mut self.buffer, out, &mut self.scratch);
         debug_assert!(outcome.is_ok(), "the plan made its own buffers");
+    }
+}
+
+widest! {
+    /// `Σ x·w`, in single precision over 128 samples at a time.
+    fn weighted_sum(x: &[f32], w: &[f32]) -> f64 {
+        const LANES: usize = 16;
+        let mut total = 0.0f64;
+        for (x, w) in x.chunks(128).zip(w.chunks(128)) {
+            let mut sums = [0.0f32; LANES];
+            let ((x, last_x), (w, last_w)) = (x.as_chunks::<LANES>(), w.as_chunks::<LANES>());
+            for (x, w) in x.iter().zip(w) {
+                for k in 0..LANES {
+                    sums[k] += x[k] * w[k];
+                }
+            }
+            for ((sum, x), w) in sums.iter_mut().zip(last_x).zip(last_w) {
+                *sum += x * w;
+            }
+            total += sums.iter().map(|sum| f64::from(*sum)).sum::<f64>();
+        }
+        total
+    }
+}
+
+widest! {
+    fn apply_window(x: &mut [f32], window: &[f32], mean: f32) {
+        x.iter_mut().zip(window).for_each(|(x, w)| *x = (*x - mean) * w);
     }
 }
 

@@ -119,7 +119,7 @@ impl<'a> Bench<'a> {
     fn of(input: &'a FigureInput<'a>) -> Self {
         let sources = Sources::of(input);
         let corrected = input.corrected;
-        let d = &corrected.difference_v;
+        let d = &corrected.difference();
         let layout = Layout::of(d, sources.mean_noise_v);
         let shape = layout.read(d, sources.mean_noise_v, layout.between());
         let (negative, slope) = (&corrected.negative_v, corrected.slope());

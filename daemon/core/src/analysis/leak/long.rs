@@ -7,10 +7,12 @@
 //! nothing above the crossover but noise, whose share is worked out from its power.
 
 use realfft::num_complex::Complex;
-use realfft::{ComplexToReal, RealFftPlanner, RealToComplex};
+use realfft::{ComplexToReal, RealToComplex};
 use std::sync::Arc;
 
+use super::super::band::plans;
 use super::super::signal::{BLOCK, Outline, Signal, blocks, range_of};
+use super::super::wide::widest;
 use super::{Moving, quadrature};
 
 const SEGMENT: usize = 4096;
@@ -54,17 +56,8 @@ pub(super) fn filtered<S: Signal + ?Sized>(
     let outline = Outline::of(common);
     let moves = |from: usize| {
         let end = (from + SEGMENT).min(n).div_ceil(BLOCK).min(outline.blocks.len());
-        let blocks = &outline.blocks[from / BLOCK..end];
-        let low = blocks.iter().fold(f32::INFINITY, |low, block| low.min(block.0));
-        let high = blocks.iter().fold(f32::NEG_INFINITY, |high, block| high.max(block.1));
+        let (low, high) = outline.within(from / BLOCK..end);
         f64::from(high - low) > MOVES * noise
-    };
-    // At a sample, the slow part lies between the middles of two blocks.
-    let slow_at = |values: &[f64], i: usize| {
-        let place = ((i as f64 + 0.5) / STEP as f64 - 0.5).clamp(0.0, (values.len() - 1) as f64);
-        let low = (place as usize).min(values.len().saturating_sub(2));
-        let high = (low + 1).min(values.len() - 1);
-        (values[high] - values[low]).mul_add(place - low as f64, values[low])
     };
     let (mut power, mut peak) = (0.0, 0.0f64);
     let mut from = 0;
@@ -75,12 +68,10 @@ pub(super) fn filtered<S: Signal + ?Sized>(
         let moved = segments.moving;
         segments.load(common, from, false, mean, moves(from));
         if moved || segments.moving {
-            for (k, i) in here.clone().enumerate() {
-                let (a, b) = segments.sum(k);
-                let (a, b) = (a + slow_at(&slow_phase, i), b + slow_at(&slow_quadrature, i));
-                power += a * a;
-                peak = peak.max(a * a + b * b);
-            }
+            let halves = [&slow_phase, &slow_quadrature].map(|slow| between_blocks(slow, from));
+            let (sum, most) = segments.sum(&halves, here.len());
+            power += sum;
+            peak = peak.max(most);
         } else {
             let means = here.start / STEP..(here.end.div_ceil(STEP)).min(slow_phase.len());
             let share = here.len() as f64 / means.len().max(1) as f64;
@@ -96,12 +87,69 @@ pub(super) fn filtered<S: Signal + ?Sized>(
     Moving { rms: (power / n as f64).sqrt(), peak: peak.sqrt() }
 }
 
+/// The slow part at each sample of half a segment that begins at `from`: on straight lines between the middles of blocks.
+fn between_blocks(values: &[f64], from: usize) -> [f32; HALF] {
+    let at = |block: isize| {
+        let last = values.len().saturating_sub(1);
+        values.get(usize::try_from(block).unwrap_or(0).min(last)).copied().unwrap_or(0.0) as f32
+    };
+    let mut out = [0.0; HALF];
+    let first = (from / STEP) as isize;
+    for (half, out) in out.chunks_exact_mut(STEP / 2).enumerate() {
+        // The first half of a block lies behind the middle of the block before, the second behind its own.
+        let block = first + (half as isize - 1).div_euclid(2);
+        let (start, end) = (at(block), at(block + 1));
+        let place = if half % 2 == 0 { 0.5 } else { 0.0 };
+        for (k, out) in out.iter_mut().enumerate() {
+            *out = start + (end - start) * (place + (k as f32 + 0.5) / STEP as f32);
+        }
+    }
+    out
+}
+
+widest! {
+    fn sum_of(part: &[f32]) -> f32 {
+        const LANES: usize = 16;
+        let mut sums = [0.0f32; LANES];
+        let (chunks, rest) = part.as_chunks::<LANES>();
+        for chunk in chunks {
+            for k in 0..LANES {
+                sums[k] += chunk[k];
+            }
+        }
+        sums.iter().chain(rest).sum()
+    }
+}
+
+widest! {
+    /// The sum of the squares of `a`, and the largest sum of squares of both, where each is a sum of three.
+    fn power_and_peak(a: [&[f32]; 3], b: [&[f32]; 3]) -> (f64, f32) {
+        const LANES: usize = 16;
+        let (mut squares, mut most) = ([0.0f64; LANES], [0.0f32; LANES]);
+        let count = a[0].len();
+        let (a0, a1, a2) = (&a[0][..count], &a[1][..count], &a[2][..count]);
+        let (b0, b1, b2) = (&b[0][..count], &b[1][..count], &b[2][..count]);
+        let mut from = 0;
+        while from < count {
+            for k in 0..LANES.min(count - from) {
+                let i = from + k;
+                let (x, y) = (a0[i] + a1[i] + a2[i], b0[i] + b1[i] + b2[i]);
+                squares[k] += f64::from(x * x);
+                let both = x * x + y * y;
+                most[k] = if both > most[k] { both } else { most[k] };
+            }
+            from += LANES;
+        }
+        (squares.iter().sum(), most.iter().copied().fold(0.0, f32::max))
+    }
+}
+
 /// Means of blocks of [`STEP`] samples, less the mean of all.
 fn block_means<S: Signal + ?Sized>(common: &S, mean: f64) -> Vec<f64> {
     let mut means = Vec::with_capacity(common.points() / STEP + 1);
     blocks(common, 0..common.points(), |_, part| {
         for part in part.chunks(STEP) {
-            means.push(f64::from(part.iter().sum::<f32>()) / part.len() as f64 - mean);
+            means.push(f64::from(sum_of(part)) / part.len() as f64 - mean);
         }
     });
     means
@@ -128,8 +176,8 @@ struct Segments {
 
 impl Segments {
     fn new(bin_hz: f64, weight: impl Fn(f64) -> f64) -> Self {
-        let mut planner = RealFftPlanner::<f32>::new();
-        let (forward, inverse) = (planner.plan_fft_forward(SEGMENT), planner.plan_fft_inverse(SEGMENT));
+        let (forward, inverse) =
+            plans::single(|planner| (planner.plan_fft_forward(SEGMENT), planner.plan_fft_inverse(SEGMENT)));
         let weights: Vec<f64> = (0..=HALF).map(|k| weight(k as f64 * bin_hz)).collect();
         let scratch = forward.get_scratch_len().max(inverse.get_scratch_len());
         let angle = |i: usize| std::f64::consts::TAU * (i as f64 + 0.5) / SEGMENT as f64;
@@ -185,9 +233,11 @@ impl Segments {
         }
     }
 
-    /// In phase and in quadrature at the `k`th sample of the half that both segments share.
-    fn sum(&self, k: usize) -> (f64, f64) {
-        let both = |part: usize| f64::from(self.before[part][HALF + k] + self.now[part][k]);
-        (both(0), both(1))
+    /// Over the half that both segments share and with the slow parts added: the sum of the squares in phase, and the
+    /// largest square of the envelope.
+    fn sum(&self, slow: &[[f32; HALF]; 2], count: usize) -> (f64, f64) {
+        let parts = |i: usize| [&self.before[i][HALF..HALF + count], &self.now[i][..count], &slow[i][..count]];
+        let (power, peak) = power_and_peak(parts(0), parts(1));
+        (power, f64::from(peak))
     }
 }

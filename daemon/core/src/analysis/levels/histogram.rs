@@ -3,12 +3,23 @@
 use std::ops::Range;
 
 use super::super::signal::{BLOCK, Outline, Signal, blocks};
+use super::super::wide::widest;
 
 /// Bins over the record's range.
 pub(super) const BINS: usize = 4096;
 
 /// The last bin, as a place.
 const LAST: f32 = (BINS - 1) as f32;
+
+/// So many samples are enough for where a level is cut: its centre is right to a hundredth of the spread, of which the
+/// mean within three spreads keeps a fortieth.
+const ENOUGH: usize = 65_536;
+
+/// A block whose samples range over less than this part of the whole range belongs to one state.
+const STILL: f64 = 0.125;
+
+/// At most every so many-th sample of a block is counted, so that at least eight are.
+const MOST_STEP: usize = BLOCK / 8;
 
 /// What [`Histogram::settle`] finds.
 pub(super) struct Settled {
@@ -25,45 +36,98 @@ pub(super) struct Histogram {
     counts: Vec<f64>,
 }
 
-impl Histogram {
-    /// Of a whole signal between its lowest and highest value; `None` when they are equal or one is not finite.
-    pub(super) fn of<S: Signal + ?Sized>(signal: &S, outline: &Outline) -> Option<Self> {
-        Self::within(signal, std::iter::once(0..signal.points()), outline.low, outline.high)
+/// Counts samples in bins.
+struct Counter {
+    bin: f64,
+    origin: f32,
+    scale: f32,
+    /// Neighbouring samples often fall into one bin; four tables spare them waiting for each other.
+    tables: Vec<[u32; BINS]>,
+}
+
+impl Counter {
+    fn new(low: f64, high: f64) -> Option<Self> {
+        let bin = (high - low) / BINS as f64;
+        (bin > 0.0 && bin.is_finite()).then(|| Self {
+            bin,
+            origin: low as f32,
+            scale: (1.0 / bin) as f32,
+            tables: vec![[0; BINS]; 4],
+        })
     }
 
-    /// Of some stretches of a signal; samples below `low` or above `high` count in the first or the last bin.
+    /// Counts every `step`th sample of a block, `step` times over; all of them for steps up to one.
+    fn count(&mut self, part: &[f32], step: usize) {
+        let mut chosen = [0.0f32; BLOCK];
+        let step = step.clamp(1, MOST_STEP);
+        let (part, weight) = if step == 1 {
+            (part, 1)
+        } else {
+            let count = part.len() / step;
+            chosen.iter_mut().zip(part.iter().step_by(step)).take(count).for_each(|(out, x)| *out = *x);
+            (&chosen[..count], step as u32)
+        };
+        let mut places = [0u16; BLOCK];
+        let places = &mut places[..part.len()];
+        places_of(part, self.origin, self.scale, places);
+        for four in places.chunks(4) {
+            for (table, place) in self.tables.iter_mut().zip(four) {
+                table[usize::from(*place) % BINS] += weight;
+            }
+        }
+    }
+
+    fn finish(self, low: f64) -> Histogram {
+        let counts = (0..BINS).map(|i| self.tables.iter().map(|table| f64::from(table[i])).sum()).collect();
+        Histogram { low, bin: self.bin, counts }
+    }
+}
+
+widest! {
+    /// The bins of some samples.
+    fn places_of(part: &[f32], origin: f32, scale: f32, places: &mut [u16]) {
+        for (place, x) in places.iter_mut().zip(part) {
+            // Clamped as a number: what is no number counts as the lowest.
+            let at = (x - origin) * scale;
+            let at = if at > 0.0 { at } else { 0.0 };
+            let at = if at < LAST { at } else { LAST };
+            *place = at as i32 as u16;
+        }
+    }
+}
+
+impl Histogram {
+    /// Of a whole signal between its lowest and highest value; `None` when they are equal or one is not finite. In
+    /// blocks of a long record that range over little, a part of the samples stands for all.
+    pub(super) fn of<S: Signal + ?Sized>(signal: &S, outline: &Outline) -> Option<Self> {
+        let (low, high) = outline.range();
+        let mut counter = Counter::new(low, high)?;
+        let points = signal.points();
+        let part = points / ENOUGH;
+        let little = ((high - low) * STILL) as f32;
+        for (block, (least, most)) in outline.blocks.iter().enumerate() {
+            let from = block * BLOCK;
+            let step = if most - least < little { part } else { 1 };
+            blocks(signal, from..(from + BLOCK).min(points), |_, part| counter.count(part, step));
+        }
+        Some(counter.finish(low))
+    }
+
+    /// Of some stretches of a signal; samples below `low` or above `high` count in the first or the last bin. In long
+    /// stretches a part of the samples stands for all.
     pub(super) fn within<S: Signal + ?Sized>(
         signal: &S,
-        stretches: impl Iterator<Item = Range<usize>>,
+        stretches: &[Range<usize>],
         low: f64,
         high: f64,
     ) -> Option<Self> {
-        let bin = (high - low) / BINS as f64;
-        if !(bin > 0.0 && bin.is_finite()) {
-            return None;
-        }
-        // Neighbouring samples often fall into one bin; four tables spare them waiting for each other.
-        let mut tables = vec![[0u32; BINS]; 4];
-        let (origin, scale) = (low as f32, (1.0 / bin) as f32);
-        let mut places = [0u16; BLOCK];
+        let mut counter = Counter::new(low, high)?;
+        let step = stretches.iter().map(Range::len).sum::<usize>() / ENOUGH;
         for stretch in stretches {
-            blocks(signal, stretch, |_, part| {
-                for (place, x) in places.iter_mut().zip(part) {
-                    // Clamped as a number: what is no number counts as the lowest.
-                    let at = (x - origin) * scale;
-                    let at = if at > 0.0 { at } else { 0.0 };
-                    let at = if at < LAST { at } else { LAST };
-                    *place = at as i32 as u16;
-                }
-                for four in places[..part.len()].chunks(4) {
-                    for (table, place) in tables.iter_mut().zip(four) {
-                        table[usize::from(*place) % BINS] += 1;
-                    }
-                }
-            });
+            let step = if stretch.len() >= BLOCK { step } else { 1 };
+            blocks(signal, stretch.clone(), |_, part| counter.count(part, step));
         }
-        let counts = (0..BINS).map(|i| tables.iter().map(|table| f64::from(table[i])).sum()).collect();
-        Some(Self { low, bin, counts })
+        Some(counter.finish(low))
     }
 
     /// The value below which a share of the samples lies.

@@ -12,6 +12,7 @@ use std::ops::Range;
 
 use super::signal::{Outline, Signal, blocks};
 use super::transition::{self, Edge};
+use super::wide::widest;
 
 mod histogram;
 
@@ -141,7 +142,7 @@ pub(super) fn outer<S: Signal + ?Sized>(signal: &S) -> (f64, f64) {
     let outline = Outline::of(signal);
     match Histogram::of(signal, &outline) {
         Some(histogram) => (histogram.quantile(0.05), histogram.quantile(0.95)),
-        None if outline.low.is_finite() => (outline.low, outline.low),
+        None if outline.range().0.is_finite() => (outline.range().0, outline.range().0),
         None => (0.0, 0.0),
     }
 }
@@ -151,7 +152,7 @@ pub(super) fn outer<S: Signal + ?Sized>(signal: &S) -> (f64, f64) {
 fn refine<S: Signal + ?Sized>(signal: &S, stays: &[Range<usize>], rough: Level, least: f64) -> Level {
     let half = 0.5 * FINENESS * BINS as f64 * rough.spread;
     let (low, high) = (rough.value - half, rough.value + half);
-    let fine = (!stays.is_empty()).then(|| Histogram::within(signal, stays.iter().cloned(), low, high)).flatten();
+    let fine = (!stays.is_empty()).then(|| Histogram::within(signal, stays, low, high)).flatten();
     let Some(settled) = fine.map(|histogram| histogram.settle(None, rough.value, least)) else { return rough };
     let (centre, reach) = (settled.centre, 3.0 * settled.spread);
     let (mut sum, mut count) = (0.0, 0.0);
@@ -166,25 +167,33 @@ fn refine<S: Signal + ?Sized>(signal: &S, stays: &[Range<usize>], rough: Level, 
     Level { value, spread: settled.spread, count: count as usize, reach, centre }
 }
 
-/// The sum of `other` over the samples of `part` within `reach` of `centre`, and their number; for `other` the same as
-/// `part` relative to the centre.
-fn inside(part: &[f32], other: &[f32], centre: f64, reach: f64) -> (f64, f64) {
-    // As many as keep the loop over them a loop, see `range_of`.
-    const LANES: usize = 64;
-    let (middle, reach) = (centre as f32, reach as f32);
-    let zero = if std::ptr::eq(part, other) { middle } else { 0.0 };
-    let (mut sums, mut counts) = ([0.0f32; LANES], [0.0f32; LANES]);
-    for (x, y) in part.chunks(LANES).zip(other.chunks(LANES)) {
-        for (((sum, count), x), y) in sums.iter_mut().zip(&mut counts).zip(x).zip(y) {
-            let weight = if (x - middle).abs() <= reach { 1.0 } else { 0.0 };
-            *sum += weight * (y - zero);
-            *count += weight;
+widest! {
+    /// The sum of `other` over the samples of `part` within `reach` of `centre`, and their number; for `other` the same
+    /// as `part` relative to the centre.
+    fn inside(part: &[f32], other: &[f32], centre: f64, reach: f64) -> (f64, f64) {
+        // As many as keep the loop over them a loop, see `range_of`.
+        const LANES: usize = 32;
+        let (middle, reach) = (centre as f32, reach as f32);
+        let zero = if std::ptr::eq(part, other) { middle } else { 0.0 };
+        let (mut sums, mut counts) = ([0.0f32; LANES], [0.0f32; LANES]);
+        let ((x, last_x), (y, last_y)) = (part.as_chunks::<LANES>(), other.as_chunks::<LANES>());
+        for (x, y) in x.iter().zip(y) {
+            for k in 0..LANES {
+                let inside = (x[k] - middle).abs() <= reach;
+                sums[k] += if inside { y[k] - zero } else { 0.0 };
+                counts[k] += if inside { 1.0 } else { 0.0 };
+            }
         }
+        for (k, (x, y)) in last_x.iter().zip(last_y).enumerate() {
+            let inside = (x - middle).abs() <= reach;
+            sums[k] += if inside { y - zero } else { 0.0 };
+            counts[k] += if inside { 1.0 } else { 0.0 };
+        }
+        let count: f64 = counts.iter().map(|count| f64::from(*count)).sum();
+        // What the centre lost in single precision is given back.
+        let lost = if zero.abs() > 0.0 { (f64::from(middle) - centre) * count } else { 0.0 };
+        (sums.iter().map(|sum| f64::from(*sum)).sum::<f64>() + lost, count)
     }
-    let count: f64 = counts.into_iter().map(f64::from).sum();
-    // What the centre lost in single precision is given back.
-    let lost = if zero.abs() > 0.0 { (f64::from(middle) - centre) * count } else { 0.0 };
-    (sums.into_iter().map(f64::from).sum::<f64>() + lost, count)
 }
 
 /// The stretches between the transitions, low and high, without their neighbourhoods.
@@ -217,8 +226,13 @@ fn mean_of<S: Signal + ?Sized, T: Signal + ?Sized>(
     let mut buffer = [0.0f32; super::signal::BLOCK];
     for stretch in stays {
         blocks(signal, stretch.clone(), |from, part| {
-            let others = &mut buffer[..part.len()];
-            other.load(from, others);
+            let others = match other.samples() {
+                Some(samples) => &samples[from..from + part.len()],
+                None => {
+                    other.load(from, &mut buffer[..part.len()]);
+                    &buffer[..part.len()]
+                }
+            };
             let (total, inside) = inside(part, others, level.centre, level.reach);
             sum += total;
             count += inside;

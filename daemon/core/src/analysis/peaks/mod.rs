@@ -8,6 +8,7 @@
 use std::ops::Range;
 
 use super::signal::{BLOCK, Signal, blocks, range_of};
+use super::wide::widest;
 
 /// Half-widths of the window in samples begin here.
 const LEAST_HALF: usize = 2;
@@ -137,6 +138,16 @@ fn extreme<S: Signal + ?Sized>(
     accepted.pop().unwrap_or(single)
 }
 
+widest! {
+    fn means_of_five(part: &[f32], means: &mut [f32]) {
+        let n = means.len();
+        let (a, b, c, d, e) = (&part[..n], &part[1..n + 1], &part[2..n + 2], &part[3..n + 3], &part[4..n + 4]);
+        for k in 0..n {
+            means[k] = 0.2 * (a[k] + b[k] + c[k] + d[k] + e[k]);
+        }
+    }
+}
+
 /// Where to begin: the places at which the mean of five neighbours is lowest and highest, and the range's spread.
 struct Start {
     lowest: usize,
@@ -165,9 +176,7 @@ impl Start {
             // A mean is never beyond its samples.
             if count >= 5 && (least < best.0 || most > best.1) {
                 let smooth = &mut smooth[..count - 4];
-                for (k, smooth) in smooth.iter_mut().enumerate() {
-                    *smooth = 0.2 * (part[k] + part[k + 1] + part[k + 2] + part[k + 3] + part[k + 4]);
-                }
+                means_of_five(part, smooth);
                 let (least, most) = range_of(smooth);
                 let place = |x: f32| from + 2 + smooth.iter().position(|y| (y - x).abs() <= 0.0).unwrap_or(0);
                 if least < best.0 {

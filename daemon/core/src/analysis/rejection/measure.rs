@@ -48,19 +48,18 @@ pub fn measure_with(
     // Plain subtraction takes the nearest sample: whole intervals between the time axes are made up for.
     let apart = first_p.start_s - first_n.start_s;
     let delay_s = correction.skew_s.value + apart - (apart / first_p.interval_s).round() * first_p.interval_s;
-    let undone = |s: &Spectra| s.uncorrected(correction.gain.value, delay_s);
-    let before: Vec<_> = linear.iter().map(undone).collect();
-    let after = match response {
-        None => linear,
-        Some(_) => averaged(p, n, |p, n| response::correct(p, n, correction, response))?,
+    let with_response = match response {
+        None => None,
+        Some(_) => Some(averaged(p, n, |p, n| response::correct(p, n, correction, response))?),
     };
+    let after = with_response.as_ref().unwrap_or(&linear);
     let mut sorted: Vec<f64> = bands.iter().copied().filter(|f| f.is_finite() && *f > 0.0).collect();
     sorted.sort_by(f64::total_cmp);
     sorted.dedup();
     let edges = edges(&sorted);
     let found = sorted.iter().zip(edges).filter_map(|(&frequency_hz, (from, to))| {
-        let raw = fitting(&before, frequency_hz)?.residual(from, to)?;
-        let fine = fitting(&after, frequency_hz)?.residual(from, to)?;
+        let raw = fitting(&linear, frequency_hz)?.uncorrected(correction.gain.value, delay_s).residual(from, to)?;
+        let fine = fitting(after, frequency_hz)?.corrected().residual(from, to)?;
         let at_least = fine.power <= fine.floor;
         Some(RejectionBand {
             frequency_hz,

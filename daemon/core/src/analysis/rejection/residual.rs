@@ -59,57 +59,68 @@ impl Noise {
 }
 
 impl Spectra {
+
+    /// The spectra as they are.
+    pub(super) fn corrected(&self) -> View<'_> {
+        View { spectra: self, undo: None }
+    }
+
     /// What plain subtraction would show: the negative leg with `gain` and later by `delay_s`, undoing the correction.
-    /// With `A = g·e^{−jωτ}`, `u = 1 − A` and `v = (1 + A)/2` it has `D = uC + vD`, `C = vC + uD/4` of the corrected ones.
     /// Exact but for the part of the window that the skew moves.
-    pub(super) fn uncorrected(&self, gain: f64, delay_s: f64) -> Self {
-        let undone = |k: usize, cross: Complex<f64>, common: f64, difference: f64| {
-            let a = Complex::from_polar(gain, -std::f64::consts::TAU * self.bin_hz * k as f64 * delay_s);
-            let (u, v) = (1.0 - a, (1.0 + a) * 0.5);
-            let cross_after = u * v.conj() * common
-                + cross.conj() * (0.25 * u.norm_sqr())
-                + cross * v.norm_sqr()
-                + v * u.conj() * (0.25 * difference);
-            let common_after =
-                v.norm_sqr() * common + u.norm_sqr() / 16.0 * difference + 0.5 * (v * u.conj() * cross.conj()).re;
-            let difference_after =
-                u.norm_sqr() * common + v.norm_sqr() * difference + 2.0 * (u * v.conj() * cross.conj()).re;
-            (cross_after, common_after, difference_after)
-        };
-        let all: Vec<_> =
-            (0..self.common.len()).map(|k| undone(k, self.cross[k], self.common[k], self.difference[k])).collect();
-        // Noise alone has no common part to speak of: its spectra serve as they are.
-        Self {
-            averages: self.averages,
-            bin_hz: self.bin_hz,
-            cross: all.iter().map(|x| x.0).collect(),
-            common: all.iter().map(|x| x.1).collect(),
-            difference: all.iter().map(|x| x.2).collect(),
-            signal: self.signal.clone(),
-            quiet: self.quiet.clone(),
-            measured: self.measured.clone(),
-            elsewhere: self.elsewhere,
-        }
+    pub(super) fn uncorrected(&self, gain: f64, delay_s: f64) -> View<'_> {
+        View { spectra: self, undo: Some((gain, delay_s)) }
+    }
+
+    /// The noise, from whichever bins show it.
+    pub(super) fn noise_anywhere(&self) -> Option<Noise> {
+        self.corrected().noise(0.0, f64::INFINITY)
+    }
+}
+
+/// Averaged spectra, with the correction or with the correction undone.
+#[derive(Clone, Copy)]
+pub(super) struct View<'a> {
+    spectra: &'a Spectra,
+    /// Gain and delay in seconds that the correction took away.
+    undo: Option<(f64, f64)>,
+}
+
+impl View<'_> {
+    /// `⟨D·C*⟩`, `⟨|C|²⟩` and `⟨|D|²⟩` of a bin. With `A = g·e^{−jωτ}`, `u = 1 − A` and `v = (1 + A)/2` plain subtraction
+    /// has `D = uC + vD`, `C = vC + uD/4` of the corrected ones.
+    fn at(&self, k: usize) -> (Complex<f64>, f64, f64) {
+        let (cross, common, difference) =
+            (self.spectra.cross[k], self.spectra.common[k], self.spectra.difference[k]);
+        let Some((gain, delay_s)) = self.undo else { return (cross, common, difference) };
+        let a = Complex::from_polar(gain, -std::f64::consts::TAU * self.spectra.bin_hz * k as f64 * delay_s);
+        let (u, v) = (1.0 - a, (1.0 + a) * 0.5);
+        let cross_after = u * v.conj() * common
+            + cross.conj() * (0.25 * u.norm_sqr())
+            + cross * v.norm_sqr()
+            + v * u.conj() * (0.25 * difference);
+        let common_after =
+            v.norm_sqr() * common + u.norm_sqr() / 16.0 * difference + 0.5 * (v * u.conj() * cross.conj()).re;
+        let difference_after =
+            u.norm_sqr() * common + v.norm_sqr() * difference + 2.0 * (u * v.conj() * cross.conj()).re;
+        (cross_after, common_after, difference_after)
     }
 
     pub(super) fn residual(&self, from_hz: f64, to_hz: f64) -> Option<Residual> {
-        let bins: Vec<usize> = self.inside(from_hz, to_hz).filter(|&k| self.signal[k]).collect();
+        let bins: Vec<usize> = self.inside(from_hz, to_hz).filter(|&k| self.spectra.signal[k]).collect();
         if bins.is_empty() {
             return None;
         }
         let noise = self.noise(from_hz, to_hz)?;
-        let common: f64 = bins.iter().map(|&k| self.common[k]).sum();
-        let found: f64 = bins
-            .iter()
-            .map(|&k| {
-                // Legs of unequal noise show a common part of noise in D and C; it is no residual.
-                let cross = self.cross[k] - noise.cross;
-                cross.norm_sqr() / self.common[k]
-            })
-            .sum();
+        let (mut common, mut found) = (0.0, 0.0);
+        for &k in &bins {
+            let (cross, power, _) = self.at(k);
+            common += power;
+            // Legs of unequal noise show a common part of noise in D and C; it is no residual.
+            found += (cross - noise.cross).norm_sqr() / power;
+        }
         // White noise in D leaves its power, divided by the number of averages, in every bin of the estimate.
         let count = bins.len() as f64;
-        let each = noise.difference / self.averages;
+        let each = noise.difference / self.spectra.averages;
         let scatter = each * (count * band::NOISE_BANDWIDTH).sqrt();
         let unsure = each * count * (band::NOISE_BANDWIDTH / noise.looks).sqrt();
         Some(Residual {
@@ -121,37 +132,48 @@ impl Spectra {
 
     /// The bins from one frequency up to another.
     fn inside(&self, from_hz: f64, to_hz: f64) -> std::ops::Range<usize> {
-        let place = |f: f64| ((f / self.bin_hz).ceil().max(0.0) as usize).min(self.common.len());
+        let place = |f: f64| ((f / self.spectra.bin_hz).ceil().max(0.0) as usize).min(self.spectra.common.len());
         place(from_hz)..place(to_hz).max(place(from_hz))
-    }
-
-    /// The noise, from whichever bins show it.
-    pub(super) fn noise_anywhere(&self) -> Option<Noise> {
-        self.noise(0.0, f64::INFINITY)
     }
 
     /// The noise from segments without signal, or else from the bins without signal of the band, widened step by step
     /// until there are enough of them.
     fn noise(&self, from_hz: f64, to_hz: f64) -> Option<Noise> {
         let (mut low, mut high) = (from_hz, to_hz);
-        let (cross, difference, averages) = match &self.measured {
-            Some((cross, difference, averages)) => (cross, difference, *averages),
-            None => (&self.cross, &self.difference, self.averages),
-        };
-        let last = (super::super::interpolate::BAND * 2.0 * (self.common.len() - 1) as f64) as usize;
-        let usable = |k: usize| if self.measured.is_some() { k >= band::LOBE && k <= last } else { self.quiet[k] };
-        let end = self.common.len() as f64 * self.bin_hz;
+        let spectra = self.spectra;
+        let points = spectra.common.len();
+        let last = (super::super::interpolate::BAND * 2.0 * (points - 1) as f64) as usize;
+        let end = points as f64 * spectra.bin_hz;
         loop {
-            let bins: Vec<usize> = self.inside(low, high).filter(|&k| usable(k)).collect();
-            let whole = low < self.bin_hz && high > end;
-            if bins.len() >= LEAST_NOISE_BINS || (whole && !bins.is_empty()) {
-                let count = bins.len() as f64;
-                let cross = bins.iter().map(|&k| cross[k]).sum::<Complex<f64>>() / count;
-                let difference = bins.iter().map(|&k| difference[k]).sum::<f64>() / count;
-                return Some(Noise { cross, difference, looks: count * averages });
+            let (mut cross, mut difference, mut count) = (Complex::default(), 0.0, 0usize);
+            for k in self.inside(low, high) {
+                match &spectra.measured {
+                    // Noise alone has no common part to speak of: its spectra serve as they are.
+                    Some((crosses, differences, _)) if k >= band::LOBE && k <= last => {
+                        cross += crosses[k];
+                        difference += differences[k];
+                    }
+                    None if spectra.quiet[k] => {
+                        let (own, _, power) = self.at(k);
+                        cross += own;
+                        difference += power;
+                    }
+                    _ => continue,
+                }
+                count += 1;
             }
-            if whole || self.elsewhere.is_some() {
-                return self.elsewhere;
+            let whole = low < spectra.bin_hz && high > end;
+            if count >= LEAST_NOISE_BINS || (whole && count > 0) {
+                let averages = spectra.measured.as_ref().map_or(spectra.averages, |(.., averages)| *averages);
+                let count = count as f64;
+                return Some(Noise {
+                    cross: cross / count,
+                    difference: difference / count,
+                    looks: count * averages,
+                });
+            }
+            if whole || spectra.elsewhere.is_some() {
+                return spectra.elsewhere;
             }
             low /= 2.0;
             high *= 2.0;

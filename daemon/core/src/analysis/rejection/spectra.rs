@@ -2,8 +2,8 @@
 //!
 //! A record of up to [`LONGEST`] samples is one segment. A longer one is cut into half-overlapping segments, in three
 //! resolutions: [`SEGMENT`] samples of the record itself, and longer segments of the record brought to a 16th and a
-//! 256th of its rate by a triangular average, so that every band has at least [`LEAST_PLACE`] bins below it while no
-//! transform is long. (The triangle's slope acts on difference and common mode alike; what it folds down is at least
+//! 256th of its rate by a smooth average, so that every band has at least [`LEAST_PLACE`] bins below it while no
+//! transform is long. (The average's slope acts on difference and common mode alike; what it folds down is at least
 //! 80 dB lower in the bands that are read there.) At the full rate only segments in which the common mode moves are
 //! transformed, and a few of the others, which hold nothing but noise.
 
@@ -14,12 +14,13 @@ use super::super::band::{self, Transform};
 use super::super::interpolate::BAND;
 use super::super::peaks;
 use super::super::signal::{BLOCK, Outline, Signal};
+use super::super::wide::widest;
 use super::residual::{Noise, Spectra, sort_bins};
 
 /// The longest record that is transformed as a whole.
 const LONGEST: usize = 32_768;
 /// Samples per segment at the full rate, and at the lower rates.
-const SEGMENT: usize = 16_384;
+const SEGMENT: usize = 4096;
 const SLOW_SEGMENT: usize = 65_536;
 /// Each resolution's rate is this part of the one before.
 const STEP: usize = 16;
@@ -50,12 +51,7 @@ impl Average {
     }
 
     fn add(&mut self, d: &[Complex<f32>], c: &[Complex<f32>]) {
-        for (k, (d, c)) in d.iter().zip(c).enumerate() {
-            let product = d * c.conj();
-            self.cross[k] += Complex::new(f64::from(product.re), f64::from(product.im));
-            self.common[k] += f64::from(c.norm_sqr());
-            self.difference[k] += f64::from(d.norm_sqr());
-        }
+        accumulate(d, c, &mut self.cross, &mut self.common, &mut self.difference);
         self.segments += 1;
     }
 
@@ -64,6 +60,24 @@ impl Average {
         self.cross.iter_mut().for_each(|x| *x *= share);
         self.common.iter_mut().chain(&mut self.difference).for_each(|x| *x *= share);
         self
+    }
+}
+
+widest! {
+    fn accumulate(
+        d: &[Complex<f32>],
+        c: &[Complex<f32>],
+        cross: &mut [Complex<f64>],
+        common: &mut [f64],
+        difference: &mut [f64],
+    ) {
+        let sums = cross.iter_mut().zip(common).zip(difference);
+        for (((cross, common), difference), (d, c)) in sums.zip(d.iter().zip(c)) {
+            cross.re += f64::from(d.re * c.re + d.im * c.im);
+            cross.im += f64::from(d.im * c.re - d.re * c.im);
+            *common += f64::from(c.re * c.re + c.im * c.im);
+            *difference += f64::from(d.re * d.re + d.im * d.im);
+        }
     }
 }
 
@@ -162,9 +176,8 @@ fn segments(captures: &[Corrected], points: usize) -> (Average, Option<Quiet>) {
         let outline = Outline::of(&common);
         let limit = MOVES * peaks::noise_of(&common);
         let moves = |from: &usize| {
-            let blocks = &outline.blocks[from / BLOCK..(from + SEGMENT).div_ceil(BLOCK).min(outline.blocks.len())];
-            let low = blocks.iter().fold(f32::INFINITY, |low, block| low.min(block.0));
-            let high = blocks.iter().fold(f32::NEG_INFINITY, |high, block| high.max(block.1));
+            let end = (from + SEGMENT).div_ceil(BLOCK).min(outline.blocks.len());
+            let (low, high) = outline.within(from / BLOCK..end);
             f64::from(high - low) > limit
         };
         let (mut move_at, mut still_at): (Vec<usize>, Vec<usize>) = starts(points, SEGMENT).partition(moves);
@@ -184,23 +197,50 @@ fn segments(captures: &[Corrected], points: usize) -> (Average, Option<Quiet>) {
     (moving.finish(), quiet)
 }
 
-/// The signal at a [`STEP`]th of its rate: `y[m] = Σ (16 − |k|)/256·x[16m + k]`, `|k| < 16`.
+/// The signal at a [`STEP`]th of its rate, under the threefold convolution of a block of [`STEP`] equal weights: at the
+/// frequencies that are read there what is folded down is at least 80 dB lower.
 fn slower<S: Signal + ?Sized>(signal: &S, points: usize) -> Vec<f32> {
-    let scale = 1.0 / (STEP * STEP) as f32;
-    let mut before = None;
+    let weights = weights();
+    let mut before: [Option<f32>; 2] = [None; 2];
     let mut found = Vec::with_capacity(points / STEP);
     super::super::signal::blocks(signal, 0..points / STEP * STEP, |_, part| {
-        for x in part.chunks_exact(STEP) {
-            let (mut sum, mut ramp) = (0.0f32, 0.0f32);
-            for (k, x) in x.iter().enumerate() {
-                sum += x;
-                ramp += k as f32 * x;
-            }
+        let mut sums = [[0.0f32; 3]; BLOCK / STEP];
+        let blocks = part.len() / STEP;
+        weighted(part, &weights, &mut sums[..blocks]);
+        for [first, middle, last] in &sums[..blocks] {
             // Before the first sample the record is taken to go on as its first block.
-            let earlier = before.unwrap_or(ramp);
-            before = Some(ramp);
-            found.push((STEP as f32 * sum - ramp + earlier) * scale);
+            let sum = first + middle + last;
+            found.push(first + before[0].unwrap_or(sum - first));
+            before = [Some(before[1].unwrap_or(*last) + middle), Some(*last)];
         }
     });
     found
+}
+
+/// The weights of a block's samples for the outputs at its own place, one block later and two blocks later.
+fn weights() -> [[f32; STEP]; 3] {
+    let mut triple = [0.0f64; 3 * STEP];
+    for a in 0..STEP {
+        for b in 0..STEP {
+            for c in 0..STEP {
+                triple[a + b + c] += 1.0 / (STEP * STEP * STEP) as f64;
+            }
+        }
+    }
+    // The newest samples have the first weights.
+    [0, 1, 2].map(|block| std::array::from_fn(|k| triple[block * STEP + STEP - 1 - k] as f32))
+}
+
+widest! {
+    fn weighted(part: &[f32], weights: &[[f32; STEP]; 3], sums: &mut [[f32; 3]]) {
+        for (x, sums) in part.as_chunks::<STEP>().0.iter().zip(sums) {
+            for (sum, weights) in sums.iter_mut().zip(weights) {
+                let mut lanes = [0.0f32; 8];
+                for k in 0..8 {
+                    lanes[k] = x[k] * weights[k] + x[k + 8] * weights[k + 8];
+                }
+                *sum = lanes.iter().sum();
+            }
+        }
+    }
 }
