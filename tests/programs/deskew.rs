@@ -55,16 +55,16 @@ async fn deskew(lab: &Lab, request: &Value) -> Value {
 }
 
 #[derive(Default)]
-struct Tally {
+pub(crate) struct Tally {
     scores: Vec<f64>,
 }
 
 impl Tally {
-    fn add(&mut self, found: Estimate, truth: f64) {
+    pub(crate) fn add(&mut self, found: Estimate, truth: f64) {
         self.scores.push(found.score(truth));
     }
 
-    fn judge(&self, what: &str) {
+    pub(crate) fn judge(&self, what: &str) {
         let covered = self.scores.iter().filter(|score| score.abs() <= 2.0).count();
         println!("{what}: {covered} of {}, (estimate - truth)/u = {:.2?}", self.scores.len(), self.scores);
         assert!(covered >= LEAST_COVERED, "{what}: {covered} of {} covered, {:.2?}", self.scores.len(), self.scores);

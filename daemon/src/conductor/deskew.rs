@@ -3,8 +3,8 @@
 use evenpair_api as api;
 use evenpair_api::Quantity;
 use evenpair_core::analysis::Correction;
-use evenpair_core::analysis::deskew::{Combined, combine, enough};
-use evenpair_core::analysis::skew::{Reference, Shape, SkewError, SkewEstimate, estimate_records};
+use evenpair_core::analysis::deskew::{Combined, combine, enough, whole_periods};
+use evenpair_core::analysis::skew::{Reference, Shape, SkewError, SkewEstimate, Warning, estimate_records};
 use evenpair_core::bench::conditions::Carried;
 use evenpair_core::bench::{Acquisition, PairSpec, ReferenceKind, ReferenceSpec};
 use evenpair_core::sequence::DeskewPlan;
@@ -82,22 +82,24 @@ async fn make(
     conditions.gain_reference.clone_from(&wish.gain_reference.name);
 
     let mut skew = on_skew.combined.skew_s.estimate;
+    let turns = if one_for_all { None } else { told_by(&on_gain.combined, &on_skew.combined, wish.skew_reference) };
+    skew.value += turns.unwrap_or(0.0) / wish.skew_reference.frequency_hz;
     if !on_skew.acquisition.same_range(&on_gain.acquisition) {
         let carry_u_s = wish.skew_reference.carry_u_s.unwrap_or(0.0);
         skew.u = skew.u.hypot(carry_u_s);
         conditions.carried = Some(Carried { from_span_v: on_skew.acquisition.span_v, u_s: carry_u_s });
         if carry_u_s == 0.0 {
             warnings.push(format!(
-                "skew was taken on a span of {} and is used on one of {}; the bench file states no `carry_u` for that",
+                "skew was taken on a span of {} and is used on one of {}; its reference's `carry` adds nothing for that",
                 show(on_skew.acquisition.span_v, Unit::Volt, 3),
                 show(on_gain.acquisition.span_v, Unit::Volt, 3)
             ));
         }
     }
     warnings.extend(disagreement(skew, &on_gain.combined, wish));
-    for combined in [&on_skew.combined, &on_gain.combined] {
-        warnings.extend(combined.warnings.iter().map(ToString::to_string));
-    }
+    let resolved = |warning: &&Warning| !(turns.is_some() && matches!(warning, Warning::Ambiguous { .. }));
+    warnings.extend(on_skew.combined.warnings.iter().filter(resolved).map(ToString::to_string));
+    warnings.extend(on_gain.combined.warnings.iter().map(ToString::to_string));
     let (gain, offset) = (on_gain.combined.gain.estimate, on_gain.combined.offset_v.estimate);
     let whole = Correction { skew_s: skew, gain, offset_v: offset, gain_offset: on_gain.combined.gain_offset };
     let on_other = (!one_for_all).then(|| on_skew.seen(on_skew.combined.correction()));
@@ -238,6 +240,16 @@ pub(crate) fn shape_of(kind: ReferenceKind) -> Shape {
     }
 }
 
+/// The whole periods by which an ambiguous skew is off, as the gain reference tells them; `None` where it is not
+/// ambiguous, or the gain reference cannot tell.
+fn told_by(on_gain: &Combined, on_skew: &Combined, reference: &ReferenceSpec) -> Option<f64> {
+    let ambiguous = |combined: &Combined| combined.warnings.iter().any(|one| matches!(one, Warning::Ambiguous { .. }));
+    if !ambiguous(on_skew) || ambiguous(on_gain) {
+        return None;
+    }
+    whole_periods(on_skew.skew_s.estimate.value, on_gain.skew_s.estimate, 1.0 / reference.frequency_hz)
+}
+
 /// A warning when the gain reference, on the measuring range, sees a skew that the other cannot explain.
 fn disagreement(skew: evenpair_core::analysis::Estimate, on_gain: &Combined, wish: &Wish<'_>) -> Option<String> {
     let other = on_gain.skew_s.estimate;
@@ -245,7 +257,7 @@ fn disagreement(skew: evenpair_core::analysis::Estimate, on_gain: &Combined, wis
     (apart.abs() > 3.0 * skew.u.hypot(other.u)).then(|| {
         format!(
             "on the measuring range the reference `{}` sees {} more skew than `{}` did; the legs' bandwidths or the \
-             delays of the two ranges differ by more than `carry_u` says",
+             delays of the two ranges differ by more than `carry` says",
             wish.gain_reference.name,
             show(apart, Unit::Second, 3),
             wish.skew_reference.name

@@ -122,6 +122,17 @@ pub fn enough(combined: &Combined, target_u_skew_s: f64) -> bool {
     combined.repeats > 1 && combined.skew_s.estimate.u <= target_u_skew_s
 }
 
+/// The whole periods to add to a skew found on a reference that repeats every `period_s`, so that it is the one that
+/// `coarse` saw on another reference; `None` where `coarse` cannot tell one period from the next.
+#[must_use]
+pub fn whole_periods(skew_s: f64, coarse: Estimate, period_s: f64) -> Option<f64> {
+    let turns = ((coarse.value - skew_s) / period_s).round();
+    // Beyond a quarter of a period the two references do not agree on anything.
+    let left_s = coarse.value - skew_s - turns * period_s;
+    let told = left_s.abs() + 3.0 * coarse.u < 0.25 * period_s;
+    (told && turns.is_finite()).then_some(turns)
+}
+
 /// The weighted mean; `independent` repeats share nothing, others do not get better by their number.
 pub(super) fn weighted(values: &[Estimate], independent: bool) -> Mean {
     let count = values.len() as f64;

@@ -1,6 +1,6 @@
 //! Means by hand, and repeats of simulated acquisitions.
 
-#![allow(clippy::unwrap_used)]
+#![allow(clippy::unwrap_used, clippy::float_cmp)]
 
 use super::*;
 use crate::analysis::skew::signals::{Dice, Signal, Truth};
@@ -80,4 +80,16 @@ fn without_dither_repeats_do_not_average_down() {
     assert!(locked.warnings.iter().any(|w| matches!(w, Warning::LittleDither { .. })));
     assert_eq!(locked.warnings.len(), 1, "each kind once");
     assert!(locked.skew_s.estimate.u > 2.9 * free.skew_s.promised, "{locked:?} {free:?}");
+}
+
+#[test]
+fn a_coarse_skew_picks_the_period_or_does_not() {
+    let period = 20e-9;
+    assert_eq!(whole_periods(-7.7e-9, one(12.4e-9, 50e-12), period), Some(1.0));
+    assert_eq!(whole_periods(2.3e-9, one(2.4e-9, 50e-12), period), Some(0.0));
+    assert_eq!(whole_periods(2.3e-9, one(-37.6e-9, 50e-12), period), Some(-2.0));
+    // Half a period off, or too uncertain: nothing is told.
+    assert_eq!(whole_periods(2.3e-9, one(12.0e-9, 50e-12), period), None);
+    assert_eq!(whole_periods(2.3e-9, one(2.3e-9, 2e-9), period), None);
+    assert_eq!(whole_periods(f64::NAN, one(0.0, 0.0), period), None);
 }

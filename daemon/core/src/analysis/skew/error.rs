@@ -41,7 +41,9 @@ pub enum SkewError {
     },
     /// One leg is upside down.
     #[error(
-        "the legs mirror each other (correlation {correlation:.3}): a probe's tip and ground are swapped, or a channel is inverted"
+        "the legs mirror each other (correlation {correlation:.3}): a probe's tip and ground are swapped, a channel is \
+         inverted, or the skew is near half a period of a reference that mirrors itself, such as a sine: then use a longer \
+         period"
     )]
     Inverted {
         /// Correlation coefficient at the mirrored place.

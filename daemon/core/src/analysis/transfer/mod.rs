@@ -209,7 +209,11 @@ pub fn transfer(
         level_way,
         disagreements,
         repeats: repeats.len(),
-        warnings: warnings(&[&positive, &negative]),
+        warnings: {
+            let taken = [skew_way, level_way].contains(&Way::Common);
+            let of_common = common.iter().filter(|_| taken).flat_map(|[_, new]| new.warnings.clone());
+            warnings(&[&positive, &negative]).into_iter().chain(of_common).collect()
+        },
     })
 }
 
