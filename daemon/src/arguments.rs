@@ -9,7 +9,7 @@ use clap::{Parser, ValueEnum};
 ///
 /// It listens on loopback only.
 #[derive(Debug, Parser)]
-#[command(name = "evenpaird", version)]
+#[command(name = "evenpaird", version, max_term_width = 80)]
 pub(crate) struct Arguments {
     /// The bench file.
     #[arg(long, value_name = "FILE", required_unless_present = "check")]
