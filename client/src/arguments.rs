@@ -11,7 +11,7 @@ use crate::commands::{BudgetFlags, TransferArguments};
 /// Both probe grounds are at earth. Never defeat a scope's earth; stay inside the probes' rating and measurement
 /// category; hot circuits are for qualified people, and local codes come first.
 #[derive(Debug, Parser)]
-#[command(name = "evenpair", version)]
+#[command(name = "evenpair", version, max_term_width = 80)]
 pub(crate) struct Arguments {
     /// The daemon's address.
     #[arg(long, global = true, env = "EVENPAIR_SERVER", default_value = "http://127.0.0.1:7488", value_name = "URL")]

@@ -10,8 +10,6 @@ use std::time::Duration;
 
 use evenpair_core::bench::{self, Bench};
 use evenpair_core::dialect::Dialect;
-use tokio::io::AsyncReadExt;
-use tokio::signal::unix::{Signal, SignalKind, signal};
 use tokio_util::sync::CancellationToken;
 use tokio_util::task::TaskTracker;
 
@@ -19,6 +17,7 @@ use crate::arguments::Arguments;
 use crate::clock::RealClock;
 use crate::conductor::{Conductor, Instruments, Refusal, Workshop};
 use crate::dialects::{self, DialectTrouble};
+use crate::endings::Endings;
 use crate::http;
 use crate::mistakes;
 use crate::session::{self, Caps, SessionSpec, Timing, place_of};
@@ -70,7 +69,7 @@ pub(crate) async fn serve(arguments: Arguments) -> Result<(), StartError> {
     // The command line asks for it.
     let data = arguments.data.clone().unwrap_or_default();
     let Some(bench_file) = &arguments.bench else { return check(&data).await };
-    let mut signals = Signals::new(arguments.exit_with_stdin).map_err(StartError::Signals)?;
+    let mut endings = Endings::listen(arguments.exit_with_stdin).map_err(StartError::Signals)?;
     let bench = read_bench(bench_file)?;
     let dialects = dialects::read(&bench, bench_file)?;
     let sequences = bench.sequences.as_ref().map(|folder| beside(bench_file, folder));
@@ -99,12 +98,12 @@ pub(crate) async fn serve(arguments: Arguments) -> Result<(), StartError> {
     tracing::info!(%address, "listening");
 
     let why = tokio::select! {
-        why = signals.next() => why,
+        why = endings.first() => why,
         ended = &mut server => return Err(StartError::Serve(ended.map_or_else(std::io::Error::other, |ended| {
             ended.err().unwrap_or_else(|| std::io::Error::other("the server ended by itself"))
         }))),
     };
-    tracing::info!(why, "shutting down; once more ends at once");
+    tracing::info!(why, "shutting down; a second signal ends at once");
     let down = async {
         if tokio::time::timeout(REST_WITHIN, conductor.end("the daemon was shut down")).await.is_err() {
             tracing::error!("the bench did not come to rest in time; look at it");
@@ -122,7 +121,7 @@ pub(crate) async fn serve(arguments: Arguments) -> Result<(), StartError> {
     };
     tokio::select! {
         closed = down => Ok(closed?),
-        why = signals.next_signal() => {
+        why = endings.at_once() => {
             tracing::warn!(why, "ending at once; the bench may not be at rest");
             std::process::exit(1)
         }
@@ -190,45 +189,4 @@ fn connect(
         handles.insert(instrument.name.clone(), session::spawn(spec, hang_up.clone(), sessions));
     }
     Ok(Instruments::new(handles))
-}
-
-/// What ends the daemon.
-struct Signals {
-    terminate: Signal,
-    interrupt: Signal,
-    with_stdin: bool,
-}
-
-impl Signals {
-    fn new(with_stdin: bool) -> std::io::Result<Self> {
-        Ok(Self {
-            terminate: signal(SignalKind::terminate())?,
-            interrupt: signal(SignalKind::interrupt())?,
-            with_stdin,
-        })
-    }
-
-    /// The first of them, in words.
-    async fn next(&mut self) -> &'static str {
-        if !self.with_stdin {
-            return self.next_signal().await;
-        }
-        tokio::select! {
-            why = self.next_signal() => why,
-            () = end_of_stdin() => "standard input was closed",
-        }
-    }
-
-    async fn next_signal(&mut self) -> &'static str {
-        tokio::select! {
-            _ = self.terminate.recv() => "SIGTERM",
-            _ = self.interrupt.recv() => "SIGINT",
-        }
-    }
-}
-
-async fn end_of_stdin() {
-    let mut stdin = tokio::io::stdin();
-    let mut scrap = [0; 64];
-    while stdin.read(&mut scrap).await.is_ok_and(|read| read > 0) {}
 }

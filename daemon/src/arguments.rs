@@ -10,7 +10,13 @@ use evenpair_core::dialect::HIGHEST_CHANNEL;
 ///
 /// It listens on loopback only.
 #[derive(Debug, Parser)]
-#[command(name = "evenpaird", version, subcommand_negates_reqs = true, args_conflicts_with_subcommands = true)]
+#[command(
+    name = "evenpaird",
+    version,
+    max_term_width = 80,
+    subcommand_negates_reqs = true,
+    args_conflicts_with_subcommands = true
+)]
 pub(crate) struct Arguments {
     #[command(subcommand)]
     pub(crate) command: Option<Command>,

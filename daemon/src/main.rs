@@ -9,6 +9,7 @@ mod arguments;
 mod clock;
 mod conductor;
 mod dialects;
+mod endings;
 mod http;
 mod mistakes;
 mod probe;

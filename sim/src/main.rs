@@ -30,7 +30,7 @@ const CANNOT_START: u8 = 2;
 
 /// Starts the instruments of a scenario, prints where each one listens, then `ready`. Stops on SIGTERM or SIGINT.
 #[derive(Debug, Parser)]
-#[command(name = "evenpair-sim", version)]
+#[command(name = "evenpair-sim", version, max_term_width = 80)]
 struct Arguments {
     /// Scenario file: instruments, legs and device
     #[arg(long, value_name = "FILE")]

@@ -136,3 +136,15 @@ async fn a_route_that_connects_nothing_is_noticed() {
     broken_deskew(&lab, &["deskew", "gate", "trigger", "signal"]).await;
     still_serves(&mut lab).await;
 }
+
+/// Catches: a daemon that leaves the bench in the middle of coming to rest, because whoever started it closes its standard
+/// input and sends it a signal besides: that is one wish to end, not two.
+#[tokio::test]
+async fn closed_standard_input_and_a_signal_are_one_wish_to_end() {
+    // A supply that says nothing keeps the daemon at it for a while.
+    let silent = Fake::silent().await;
+    let mut lab = Lab::start(&LabPlan::default().with_instrument_at("supply", &silent.resource)).await;
+    lab.daemon.close_stdin();
+    assert_eq!(lab.daemon.signal("TERM").await.code(), Some(0), "{}", lab.log());
+    assert!(lab.log().contains("shutting down"), "{}", lab.log());
+}

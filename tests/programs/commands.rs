@@ -197,3 +197,23 @@ async fn check_looks_at_files_without_a_daemon() {
     assert_eq!(wrong["mistakes"][0]["line"], 3, "{wrong}");
     complained(&run_to_end("evenpair", &["check", "/nowhere/at-all.toml"]).await, 2, &["/nowhere/at-all.toml"]);
 }
+
+/// Catches: help that a terminal of eighty columns breaks anywhere, in any program and any command.
+#[tokio::test]
+async fn help_fits_eighty_columns() {
+    for program in ["evenpaird", "evenpair-sim"] {
+        printed(&run_to_end(program, &["--help"]).await, 0);
+    }
+    let help = printed(&run_to_end("evenpair", &["--help"]).await, 0);
+    let listed = help.split("Commands:").nth(1).and_then(|rest| rest.split("\n\n").next()).expect("a list of commands");
+    // A command stands two columns in, what is said of it further.
+    let commands: Vec<&str> = listed
+        .lines()
+        .filter(|line| line.starts_with("  ") && !line.starts_with("   "))
+        .filter_map(|line| line.split_whitespace().next())
+        .collect();
+    assert!(commands.len() > 10 && commands.contains(&"deskew"), "{commands:?}");
+    for command in commands {
+        printed(&run_to_end("evenpair", &["help", command]).await, 0);
+    }
+}

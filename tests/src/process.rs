@@ -34,7 +34,7 @@ pub struct Program {
     child: Child,
     lines: Lines<BufReader<ChildStdout>>,
     /// Kept open: waiting for a child would close it, and its end is a reason to end of its own.
-    _stdin: Option<ChildStdin>,
+    stdin: Option<ChildStdin>,
 }
 
 impl Program {
@@ -55,7 +55,7 @@ impl Program {
             .unwrap_or_else(|error| panic!("starting {name}: {error}"));
         let stdout = child.stdout.take().expect("standard output is piped");
         let stdin = child.stdin.take();
-        Self { name: name.to_owned(), child, lines: BufReader::new(stdout).lines(), _stdin: stdin }
+        Self { name: name.to_owned(), child, lines: BufReader::new(stdout).lines(), stdin }
     }
 
     /// The next line of its standard output; none once it has ended.
@@ -71,6 +71,11 @@ impl Program {
     #[must_use]
     pub fn id(&self) -> Option<u32> {
         self.child.id()
+    }
+
+    /// Closes its standard input.
+    pub fn close_stdin(&mut self) {
+        self.stdin = None;
     }
 
     /// Asks it to end by `signal` (such as `TERM`) and waits until it has.

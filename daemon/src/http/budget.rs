@@ -2,9 +2,7 @@
 
 use axum::Json;
 use evenpair_api::{Budget, BudgetRequest, Problem, ProblemCode};
-use evenpair_core::planning::{self, Plan};
-use serde::Serialize;
-use serde::de::DeserializeOwned;
+use evenpair_core::planning;
 use utoipa_axum::router::OpenApiRouter;
 use utoipa_axum::routes;
 
@@ -26,19 +24,10 @@ async fn budget(Body(request): Body<BudgetRequest>) -> Result<Json<Budget>, Faul
 }
 
 fn answer(request: &BudgetRequest) -> Result<Budget, Fault> {
-    let plan: Plan = carry(request)?;
-    let budget = planning::budget(&plan).map_err(|flaws| {
+    planning::budget(request).map_err(|flaws| {
         let told: Vec<String> = flaws.iter().map(ToString::to_string).collect();
         Fault::new(ProblemCode::InvalidRequest, told.join(". "))
-    })?;
-    carry(&budget)
-}
-
-/// The same data in the other vocabulary. The API's types and the core's have one JSON form, which a test compares.
-fn carry<From: Serialize, To: DeserializeOwned>(value: &From) -> Result<To, Fault> {
-    serde_json::to_value(value)
-        .and_then(serde_json::from_value)
-        .map_err(|error| Fault::new(ProblemCode::Internal, format!("carrying a budget over: {error}")))
+    })
 }
 
 #[cfg(test)]

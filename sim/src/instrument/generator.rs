@@ -2,14 +2,21 @@
 
 use std::sync::Arc;
 
-use super::bench::{Bench, lock};
-use super::tree::{Action, Call, Model, Number, Place, Word, number};
+use super::bench::Bench;
+use super::outputs::{self, Outputs};
+use super::tree::{Action, Call, Model, Number, Word, number};
 use crate::message::{Limits, Quantity};
 use crate::status::Fault;
 use crate::world::{Controls, Shape};
 
-/// Outputs of the generator.
+/// Outputs of the generator; their level is the amplitude.
 const OUTPUTS: usize = 2;
+const OUTPUT: Outputs = Outputs {
+    count: OUTPUTS,
+    level: &[AMPLITUDE],
+    level_v: |all, output| &mut all.generator[output].amplitude_vpp,
+    on: |all, output| &mut all.generator[output].on,
+};
 
 const FREQUENCY: Limits = Limits { min: 1e-3, max: 50e6, default: 1e3 };
 /// Peak to peak, open circuit.
@@ -40,7 +47,7 @@ impl Model for Generator {
     type Settings = Controls;
 
     fn with<R>(&self, act: impl FnOnce(&mut Controls) -> R) -> R {
-        act(&mut lock(&self.bench.controls))
+        outputs::with(&self.bench, act)
     }
 
     fn changed(&self) {
@@ -74,9 +81,6 @@ impl Model for Generator {
         let frequency = number(Quantity::Hertz, &[FREQUENCY], OUTPUTS, |all: &mut Controls, output| {
             &mut all.generator[output].frequency_hz
         });
-        let amplitude = number(Quantity::Volt, &[AMPLITUDE], OUTPUTS, |all: &mut Controls, output| {
-            &mut all.generator[output].amplitude_vpp
-        });
         let offset = number(Quantity::Volt, &[OFFSET], OUTPUTS, |all: &mut Controls, output| {
             &mut all.generator[output].offset_v
         });
@@ -86,25 +90,19 @@ impl Model for Generator {
         };
         let edge =
             number(Quantity::Second, &[EDGE], OUTPUTS, |all: &mut Controls, output| &mut all.generator[output].edge_s);
-        let on = Place { count: OUTPUTS, of: |all: &mut Controls, output| &mut all.generator[output].on };
-        vec![
+        OUTPUT.headers(vec![
             ("[:SOURce#]:FUNCtion[:SHAPe]", Action::Word(shape)),
             ("[:SOURce#]:FREQuency[:CW]", Action::Number(frequency)),
-            ("[:SOURce#]:VOLTage[:LEVel][:IMMediate][:AMPLitude]", Action::Number(amplitude)),
             ("[:SOURce#]:VOLTage[:LEVel][:IMMediate]:OFFSet", Action::Number(offset)),
             ("[:SOURce#]:PULSe:DCYCle", Action::Number(duty)),
             ("[:SOURce#]:PULSe:TRANsition", Action::Number(edge)),
-            (":OUTPut#[:STATe]", Action::Flag(on)),
             (":OUTPut#:IMPedance", Action::Query(impedance)),
-        ]
+        ])
     }
 }
 
 fn impedance(_: &Generator, call: &mut Call<'_>) -> Result<(), Fault> {
-    call.args.finish()?;
-    if call.index >= OUTPUTS {
-        return Err(Fault::HeaderSuffix);
-    }
+    OUTPUT.asked(call)?;
     call.answer("50");
     Ok(())
 }

@@ -6,6 +6,7 @@
 mod bench;
 mod core;
 mod generator;
+mod outputs;
 mod scope;
 mod supply;
 mod switch;

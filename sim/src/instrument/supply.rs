@@ -3,7 +3,8 @@
 use std::sync::Arc;
 
 use super::bench::{Bench, lock};
-use super::tree::{Action, Call, Model, Place, number};
+use super::outputs::{self, Outputs};
+use super::tree::{Action, Call, Model, number};
 use crate::message::{Limits, Quantity, nr3};
 use crate::status::Fault;
 use crate::world::Controls;
@@ -13,7 +14,12 @@ const VOLTAGE: [Limits; 2] =
     [Limits { min: 0.0, max: 60.0, default: 0.0 }, Limits { min: 0.0, max: 30.0, default: 0.0 }];
 /// The bus may draw all that its output can give; the brake is released.
 const CURRENT: [Limits; 2] = [Limits { min: 0.0, max: 5.0, default: 5.0 }, Limits { min: 0.0, max: 2.0, default: 0.0 }];
-const OUTPUTS: usize = VOLTAGE.len();
+const OUTPUT: Outputs = Outputs {
+    count: VOLTAGE.len(),
+    level: &VOLTAGE,
+    level_v: |all, output| &mut all.supply[output].voltage_v,
+    on: |all, output| &mut all.supply[output].on,
+};
 
 /// The supply on a bench; its settings are the bench's controls.
 pub(crate) struct Supply {
@@ -28,12 +34,9 @@ impl Supply {
 
     /// Voltage and current at an output, as its meters show them.
     fn reading(&self, call: &mut Call<'_>) -> Result<(f64, f64), Fault> {
-        call.args.finish()?;
-        if call.index >= OUTPUTS {
-            return Err(Fault::HeaderSuffix);
-        }
+        let output = OUTPUT.asked(call)?;
         let controls = lock(&self.bench.controls).clone();
-        Ok(lock(&self.bench.world).supply_reading(&controls, call.index))
+        Ok(lock(&self.bench.world).supply_reading(&controls, output))
     }
 }
 
@@ -41,7 +44,7 @@ impl Model for Supply {
     type Settings = Controls;
 
     fn with<R>(&self, act: impl FnOnce(&mut Controls) -> R) -> R {
-        act(&mut lock(&self.bench.controls))
+        outputs::with(&self.bench, act)
     }
 
     fn changed(&self) {
@@ -58,18 +61,14 @@ impl Model for Supply {
     }
 
     fn commands() -> Vec<(&'static str, Action<Self>)> {
-        let voltage =
-            number(Quantity::Volt, &VOLTAGE, OUTPUTS, |all: &mut Controls, output| &mut all.supply[output].voltage_v);
-        let current =
-            number(Quantity::Ampere, &CURRENT, OUTPUTS, |all: &mut Controls, output| &mut all.supply[output].current_a);
-        let on = Place { count: OUTPUTS, of: |all: &mut Controls, output| &mut all.supply[output].on };
-        vec![
-            ("[:SOURce#]:VOLTage[:LEVel][:IMMediate][:AMPLitude]", Action::Number(voltage)),
+        let current = number(Quantity::Ampere, &CURRENT, OUTPUT.count, |all: &mut Controls, output| {
+            &mut all.supply[output].current_a
+        });
+        OUTPUT.headers(vec![
             ("[:SOURce#]:CURRent[:LEVel][:IMMediate][:AMPLitude]", Action::Number(current)),
-            (":OUTPut#[:STATe]", Action::Flag(on)),
             (":MEASure#[:SCALar]:VOLTage[:DC]", Action::Query(measure_voltage)),
             (":MEASure#[:SCALar]:CURRent[:DC]", Action::Query(measure_current)),
-        ]
+        ])
     }
 }
 

@@ -9,6 +9,9 @@
 //! Every error in volts is an expanded uncertainty, k = 2 (JCGM 100, 6.2.1), so that the terms add by their squares to
 //! the total (JCGM 100, 5.1.2). A limit `a` of which nothing else is known counts as a rectangular distribution,
 //! `u = a/√3` (JCGM 100, 4.3.7), so `2·a/√3` at k = 2. Voltages are at the probes' tips unless a name says otherwise.
+//!
+//! Plan and budget are documents too: the API takes and gives them as they are. With the feature `schema` they describe
+//! themselves for its OpenAPI document, under the names that it knows them by.
 
 mod agreement;
 mod check;

@@ -1,9 +1,10 @@
 //! What a budget says. Errors in volts are expanded uncertainties, k = 2, at the tips.
 
-use serde::Serialize;
+use serde::{Deserialize, Serialize};
 
 /// A predicted error budget.
-#[derive(Debug, Clone, PartialEq, Serialize)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[cfg_attr(feature = "schema", derive(utoipa::ToSchema))]
 pub struct Budget {
     /// The answer in one word.
     pub verdict: Verdict,
@@ -38,7 +39,8 @@ pub struct Budget {
 }
 
 /// The answer.
-#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize)]
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
+#[cfg_attr(feature = "schema", derive(utoipa::ToSchema), schema(as = BudgetVerdict))]
 #[serde(rename_all = "kebab-case")]
 pub enum Verdict {
     /// Two probes will do once they are deskewed.
@@ -62,7 +64,8 @@ impl Verdict {
 }
 
 /// The voltage that a tip sees, to earth.
-#[derive(Debug, Clone, Copy, PartialEq, Serialize)]
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+#[cfg_attr(feature = "schema", derive(utoipa::ToSchema), schema(as = BudgetTip))]
 pub struct TipVoltage {
     /// The lowest, in volts.
     pub low_v: f64,
@@ -75,7 +78,8 @@ pub struct TipVoltage {
 }
 
 /// A vertical range.
-#[derive(Debug, Clone, Copy, PartialEq, Serialize)]
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+#[cfg_attr(feature = "schema", derive(utoipa::ToSchema), schema(as = BudgetRange))]
 pub struct RangeChoice {
     /// Full span at the scope's input, in volts.
     pub input_span_v: f64,
@@ -90,7 +94,8 @@ pub struct RangeChoice {
 }
 
 /// When an error is there.
-#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize)]
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
+#[cfg_attr(feature = "schema", derive(utoipa::ToSchema), schema(as = BudgetWhen))]
 #[serde(rename_all = "kebab-case")]
 pub enum When {
     /// Always.
@@ -100,7 +105,8 @@ pub enum When {
 }
 
 /// One source of error.
-#[derive(Debug, Clone, PartialEq, Serialize)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[cfg_attr(feature = "schema", derive(utoipa::ToSchema), schema(as = BudgetTerm))]
 pub struct Term {
     /// What it comes from.
     pub name: String,
@@ -117,7 +123,8 @@ pub struct Term {
 }
 
 /// Root sums of squares of the terms (JCGM 100, 5.1.2), in volts, k = 2.
-#[derive(Debug, Clone, Copy, PartialEq, Serialize)]
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+#[cfg_attr(feature = "schema", derive(utoipa::ToSchema), schema(as = BudgetTotals))]
 pub struct Totals {
     /// Before a deskew, all terms.
     pub before_v: f64,
@@ -130,7 +137,8 @@ pub struct Totals {
 }
 
 /// Common-mode rejection at the budget's frequency in dB; absent where the fault is absent.
-#[derive(Debug, Clone, Copy, PartialEq, Serialize)]
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+#[cfg_attr(feature = "schema", derive(utoipa::ToSchema), schema(as = BudgetRejection))]
 pub struct Rejection {
     /// Before a deskew, with the gain mismatch alone.
     pub gain_before_db: Option<f64>,
@@ -147,7 +155,8 @@ pub struct Rejection {
 }
 
 /// How well two legs must agree for the accuracy that is wanted, with everything else as it is.
-#[derive(Debug, Clone, Copy, PartialEq, Serialize)]
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+#[cfg_attr(feature = "schema", derive(utoipa::ToSchema), schema(as = BudgetNeeded))]
 pub struct Needed {
     /// The largest skew in seconds; absent where any will do.
     pub skew_s: Option<f64>,
@@ -156,7 +165,8 @@ pub struct Needed {
 }
 
 /// What one node loses to the probe on it, as a ratio of its voltage.
-#[derive(Debug, Clone, PartialEq, Serialize)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[cfg_attr(feature = "schema", derive(utoipa::ToSchema), schema(as = BudgetLoading))]
 pub struct Loading {
     /// `positive` or `negative`.
     pub tip: String,
@@ -169,7 +179,8 @@ pub struct Loading {
 }
 
 /// What a differential probe must offer.
-#[derive(Debug, Clone, PartialEq, Serialize)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[cfg_attr(feature = "schema", derive(utoipa::ToSchema), schema(as = BudgetDifferential))]
 pub struct Differential {
     /// −3 dB bandwidth of at least this, in hertz.
     pub bandwidth_hz: f64,

@@ -2,8 +2,9 @@
 
 use serde::{Deserialize, Serialize};
 
-/// Everything that a budget is made from. Volts are at the probes' tips, but the scope's, which are at its input.
+/// Everything that a budget is made from; what is left out is assumed and told, or asked for. Volts are at the probes' tips, but the scope's, which are at its input.
 #[derive(Debug, Clone, Default, PartialEq, Serialize, Deserialize)]
+#[cfg_attr(feature = "schema", derive(utoipa::ToSchema), schema(as = BudgetRequest))]
 #[serde(default, deny_unknown_fields)]
 pub struct Plan {
     /// What is to be measured, and how well.
@@ -22,6 +23,7 @@ pub struct Plan {
 
 /// The common mode, the difference, and the accuracy wanted of it.
 #[derive(Debug, Clone, Default, PartialEq, Serialize, Deserialize)]
+#[cfg_attr(feature = "schema", derive(utoipa::ToSchema), schema(as = BudgetSignal))]
 #[serde(default, deny_unknown_fields)]
 pub struct Signal {
     /// Swing of the common mode in volts, peak to peak.
@@ -44,6 +46,7 @@ pub struct Signal {
 
 /// Source resistance of the two nodes in ohms.
 #[derive(Debug, Clone, Default, PartialEq, Serialize, Deserialize)]
+#[cfg_attr(feature = "schema", derive(utoipa::ToSchema), schema(as = BudgetSource))]
 #[serde(default, deny_unknown_fields)]
 pub struct Source {
     /// Under the positive tip.
@@ -54,6 +57,7 @@ pub struct Source {
 
 /// A single-ended probe: two of a kind are used.
 #[derive(Debug, Clone, Default, PartialEq, Serialize, Deserialize)]
+#[cfg_attr(feature = "schema", derive(utoipa::ToSchema), schema(as = BudgetProbe))]
 #[serde(default, deny_unknown_fields)]
 pub struct Probe {
     /// Volts at the tip per volt at the scope.
@@ -76,6 +80,7 @@ pub struct Probe {
 
 /// A point of a rating that falls with frequency.
 #[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+#[cfg_attr(feature = "schema", derive(utoipa::ToSchema), schema(as = BudgetDerating))]
 #[serde(deny_unknown_fields)]
 pub struct Derating {
     /// In hertz.
@@ -86,6 +91,7 @@ pub struct Derating {
 
 /// The scope. Its volts are at its input, behind the probe.
 #[derive(Debug, Clone, Default, PartialEq, Serialize, Deserialize)]
+#[cfg_attr(feature = "schema", derive(utoipa::ToSchema), schema(as = BudgetScope))]
 #[serde(default, deny_unknown_fields)]
 pub struct Scope {
     /// Bits of the converter; this or an effective number.
@@ -114,6 +120,7 @@ pub struct Scope {
 
 /// How far two legs agree; each is a limit, either way.
 #[derive(Debug, Clone, Default, PartialEq, Serialize, Deserialize)]
+#[cfg_attr(feature = "schema", derive(utoipa::ToSchema), schema(as = BudgetAgreement))]
 #[serde(default, deny_unknown_fields)]
 pub struct Agreement {
     /// Skew in seconds.

@@ -74,3 +74,22 @@ fn between_samples_the_value_is_scipys() {
         assert!((y - expected).abs() < 2e-5, "{y} {expected}");
     }
 }
+
+#[test]
+fn the_taps_are_numpys_sinc_times_scipys_window() {
+    // tests/reference/make_vectors.py, kernel(): numpy.sinc and scipy.special.i0; on the grid scipy's own Kaiser window.
+    let file: serde_json::Value =
+        serde_json::from_str(include_str!("../../../../../tests/reference/vectors/kernel.json")).unwrap_or_default();
+    let cases = file["cases"].as_array().cloned().unwrap_or_default();
+    assert_eq!(cases.len(), 7);
+    for case in &cases {
+        let expected: Vec<f64> = case["taps"].as_array().into_iter().flatten().filter_map(|tap| tap.as_f64()).collect();
+        let interpolator = Interpolator::with_taps(case["advance"].as_f64().unwrap_or(f64::NAN), expected.len());
+        let (taps, first) = interpolator.kernel();
+        assert_eq!((taps.len(), Some(first as i64)), (expected.len(), case["first"].as_i64()));
+        for (tap, expected) in taps.iter().zip(&expected) {
+            // Sines of up to 22π, a Bessel function and a division: a few of the last digits of 1.
+            assert!((tap - expected).abs() < 2e-15, "{}: {tap} {expected}", case["advance"]);
+        }
+    }
+}

@@ -85,6 +85,23 @@ fn pearsons_data_with_yorks_weights() {
 }
 
 #[test]
+fn demings_line_is_scipys() {
+    // tests/reference/make_vectors.py, deming(): scipy.odr, which stops at eight digits of the slope and five of the
+    // covariance (its Jacobian is of differences).
+    let file: serde_json::Value =
+        serde_json::from_str(include_str!("../../../../../tests/reference/vectors/deming.json")).unwrap();
+    let number = |key: &str| file[key].as_f64().unwrap();
+    let line = deming(&values(&file, "x"), &values(&file, "y"), number("u_x"), number("u_y")).unwrap();
+    assert!((line.slope.value - number("slope")).abs() < 2e-9, "{line:?}");
+    assert!((line.intercept.value - number("intercept")).abs() < 2e-9, "{line:?}");
+    assert!((line.residual.powi(2) - number("residual_variance")).abs() < 1e-10, "{line:?}");
+    let covariance = |i: usize, j: usize| file["covariance"][i][j].as_f64().unwrap();
+    assert!(digits(line.slope.u.powi(2), covariance(0, 0)) > 5.0, "{line:?}");
+    assert!(digits(line.intercept.u.powi(2), covariance(1, 1)) > 5.0, "{line:?}");
+    assert!(digits(line.covariance, covariance(0, 1)) > 5.0, "{line:?}");
+}
+
+#[test]
 fn far_from_the_origin_scipys_line_comes_back() {
     let file: serde_json::Value =
         serde_json::from_str(include_str!("../../../../../tests/reference/vectors/line.json")).unwrap();

@@ -200,3 +200,25 @@ fn non_linearity_shows_in_a_sine_and_not_in_a_square() {
     let (p, n) = acquire(&NEGATIVE, 25_100, 0.05, 13, 1);
     assert_eq!(nonlinearity(&p, &n, &Correction::none(), None).unwrap(), None);
 }
+
+#[test]
+fn the_low_pass_is_scipys_exact_one() {
+    // tests/reference/make_vectors.py, low_pass(): scipy.signal.lsim of 1/(1 + s·T) on a seeded walk with steps.
+    let file: serde_json::Value =
+        serde_json::from_str(include_str!("../../../../../tests/reference/vectors/low_pass.json")).unwrap();
+    let values = |value: &serde_json::Value| -> Vec<f64> {
+        value.as_array().unwrap().iter().map(|x| x.as_f64().unwrap()).collect()
+    };
+    let signal = values(&file["signal"]);
+    let cases = file["cases"].as_array().unwrap();
+    assert_eq!(cases.len(), 3);
+    for case in cases {
+        let samples = case["samples"].as_f64().unwrap();
+        let (found, expected) = (LowPass::new(samples).apply(&signal), values(&case["output"]));
+        assert_eq!(found.len(), expected.len());
+        for (i, (y, expected)) in found.iter().zip(&expected).enumerate() {
+            // At 400 samples the first coefficient is a difference of nearly equal numbers: 400·2⁻⁵³ a step.
+            assert!((y - expected).abs() < 1e-11, "{samples} {i}: {y} {expected}");
+        }
+    }
+}
