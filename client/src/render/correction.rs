@@ -35,7 +35,7 @@ pub(crate) fn correction(correction: &Correction) -> String {
         text.push(format!("  skew was taken on a span of {from}; carrying it adds {added} to its u"));
     }
     text.extend(correction.compensation.as_ref().map(|found| compensation(found, &correction.response)));
-    text.extend(correction.response.as_ref().map(response));
+    text.extend(correction.response.iter().flat_map(lines_of));
     text.extend(correction.limit.as_ref().map(limit));
     text.extend(correction.transferred_from.as_ref().map(transferred));
     if correction.scope_skew.value != 0.0 {
@@ -43,7 +43,7 @@ pub(crate) fn correction(correction: &Correction) -> String {
     }
     text.extend(correction.reasons.iter().map(|reason| format!("  {state}: {reason}")));
     text.extend(correction.warnings.iter().map(|warning| format!("  note: {warning}")));
-    text.iter().map(|line| wrap(line, 4)).collect::<Vec<_>>().join("\n")
+    text.iter().map(|line| wrap(line, 6)).collect::<Vec<_>>().join("\n")
 }
 
 /// Where the offset holds, and what it is worth elsewhere.
@@ -63,6 +63,10 @@ fn compensation(found: &Compensation, response: &Option<Response>) -> String {
 
 /// What is applied after gain, skew and offset, in words and by bands.
 pub(crate) fn response(response: &Response) -> String {
+    lines_of(response).iter().map(|line| wrap(line, 6)).collect::<Vec<_>>().join("\n")
+}
+
+fn lines_of(response: &Response) -> Vec<String> {
     let mut text = vec!["  response, applied after gain, skew and offset:".to_owned()];
     text.extend(response.words.iter().map(|words| format!("    {words}")));
     for band in &response.improved {
@@ -75,7 +79,7 @@ pub(crate) fn response(response: &Response) -> String {
             band.after_db
         ));
     }
-    text.iter().map(|line| wrap(line, 4)).collect::<Vec<_>>().join("\n")
+    text
 }
 
 fn limit(limit: &RejectionLimit) -> String {

@@ -174,11 +174,12 @@ impl From<&Nonlinearity> for RejectionLimit {
 }
 
 impl crate::Correction {
-    /// What is known beyond gain, skew and offset, as the mathematics takes it.
+    /// What is known beyond gain, skew and offset, as the mathematics takes it. A response that helped nothing is left out:
+    /// what it would leave is no different from what there is.
     #[must_use]
     pub fn beyond(&self) -> Beyond {
         Beyond {
-            response: self.response.as_ref().map(CoreResponse::from),
+            response: self.response.as_ref().map(CoreResponse::from).filter(CoreResponse::corrects),
             compensation: self.compensation.as_ref().map(CoreCompensation::from),
             limit_db: self.limit.as_ref().filter(|limit| !limit.at_least).map(|limit| limit.limit_db),
         }

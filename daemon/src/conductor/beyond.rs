@@ -4,6 +4,8 @@
 //! it is asked for: the response that is left, from both references (`evenpair_core::analysis::response::combined` says
 //! what is taken from which).
 
+use std::sync::Arc;
+
 use evenpair_core::analysis::compensation::{self, Compensation};
 use evenpair_core::analysis::response::{Acquired, Response, combined};
 use evenpair_core::analysis::skew::Reference;
@@ -19,7 +21,7 @@ const MOST_SAMPLES: usize = 16_000_000;
 const MOST_KEPT: usize = 64;
 
 /// Acquisitions of one reference.
-#[derive(Debug, Clone, Default)]
+#[derive(Debug, Default)]
 pub(super) struct Kept {
     pub(super) positive: Vec<Record>,
     pub(super) negative: Vec<Record>,
@@ -42,7 +44,7 @@ impl Kept {
 /// One reference: what was acquired, what is known of it, and the correction that holds for it.
 #[derive(Debug, Clone)]
 pub(super) struct Seen {
-    pub(super) kept: Kept,
+    pub(super) kept: Arc<Kept>,
     pub(super) reference: Reference,
     pub(super) correction: Correction,
 }

@@ -1,5 +1,7 @@
 //! Deskew: acquire the references on both legs, estimate, make a correction, verify it, give the scope back.
 
+use std::sync::Arc;
+
 use evenpair_api as api;
 use evenpair_api::Quantity;
 use evenpair_core::analysis::Correction;
@@ -144,14 +146,14 @@ struct OnReference {
     combined: Combined,
     /// How it was acquired in the end.
     acquisition: Acquisition,
-    kept: Kept,
+    kept: Arc<Kept>,
     known: Reference,
 }
 
 impl OnReference {
     /// Its acquisitions, with the correction that holds for them.
     fn seen(&self, correction: Correction) -> Seen {
-        Seen { kept: self.kept.clone(), reference: self.known, correction }
+        Seen { kept: Arc::clone(&self.kept), reference: self.known, correction }
     }
 }
 
@@ -225,7 +227,7 @@ async fn acquire_until_enough(
         let gain_enough = !is_gain_reference || combined.gain.estimate.u <= TARGET_U_GAIN;
         let count = u32::try_from(repeats.len()).unwrap_or(u32::MAX);
         if count >= most || (count >= LEAST_ACQUISITIONS && skew_enough && gain_enough) {
-            return Ok(OnReference { combined, acquisition, kept, known });
+            return Ok(OnReference { combined, acquisition, kept: Arc::new(kept), known });
         }
     }
 }

@@ -8,10 +8,9 @@ use std::sync::Mutex;
 use std::sync::atomic::{AtomicUsize, Ordering};
 
 use evenpair_api::{
-    Capture, Carried, Compensation, Condition, Correction, CorrectionConditions, CorrectionState, CorrelatedTerm,
-    Coverage, CoverageBasis, Figure, Grade, LeakBound, LegConditions, LimitFailure, LimitVerdict, PoleZero, Quantity,
-    RejectionLimit, RejectionPoint, Response, ResponseBand, Run, RunKind, RunProgress, RunState, StageReport,
-    UncertaintyTerm,
+    Capture, Carried, Condition, Correction, CorrectionConditions, CorrectionState, CorrelatedTerm, Coverage,
+    CoverageBasis, Figure, Grade, LeakBound, LegConditions, LimitFailure, LimitVerdict, Quantity, RejectionPoint, Run,
+    RunKind, RunProgress, RunState, StageReport, UncertaintyTerm,
 };
 use evenpair_core::analysis::{Record, Samples};
 use rusqlite::types::Value;
@@ -48,22 +47,6 @@ pub(super) fn a_run(second: i64) -> Run {
     }
 }
 
-fn a_response() -> Response {
-    Response {
-        interval: Quantity::exact(1e-9, "s"),
-        skew: Quantity::exact(-3e-12, "s"),
-        pole_zero: Some(PoleZero {
-            time_constant: Quantity::new(95e-6, 11e-6, "s"),
-            relative: Quantity::new(0.03, 1.0 / 3.0e4, "1"),
-        }),
-        taps: vec![0.01, -0.02, 1.0 / 3.0, -0.02, 0.01],
-        gain_u: 2e-6,
-        level: Quantity::exact(-0.1 - 0.2, "V"),
-        improved: vec![ResponseBand { from_hz: 1e5, to_hz: 3e5, before_db: 44.0, after_db: 70.5, floor_db: 70.5 }],
-        words: vec!["trim its probe".to_owned()],
-    }
-}
-
 pub(super) fn a_correction(pair: &str, second: i64) -> Correction {
     let leg = |channel, offset| LegConditions {
         channel,
@@ -81,18 +64,9 @@ pub(super) fn a_correction(pair: &str, second: i64) -> Correction {
         gain: Quantity::new(0.987_654_321, 1.0 / 3.0e4, "1"),
         offset: Quantity::new(-0.1 - 0.2, 1e-3, "V"),
         gain_offset_correlation: Some(-0.7),
-        compensation: Some(Compensation {
-            relative: Quantity::new(1.5e-4, 4.7e-4, "1"),
-            time_constant: Quantity::exact(95e-6, "s"),
-            level: Quantity::exact(24.0, "V"),
-        }),
-        response: Some(a_response()),
-        limit: Some(RejectionLimit {
-            limit_db: 52.5,
-            at_least: false,
-            amplitude: Quantity::exact(24.0, "V"),
-            error: Quantity::new(0.05, 0.01, "V"),
-        }),
+        compensation: None,
+        response: None,
+        limit: None,
         scope_skew: Quantity::exact(1.2e-9, "s"),
         state: CorrectionState::Fresh,
         reasons: Vec::new(),

@@ -158,3 +158,6 @@ fn measured_noise(p: &Record, n: &Record, gain: f64, warnings: &mut Vec<String>)
     let own = |record: &Record| record.step_v / (12.0 * f64::from(record.averages.max(1))).sqrt();
     PairNoise { p_v: own(p), n_v: own(n), bins: 0 }
 }
+
+#[cfg(test)]
+mod tests;

@@ -1,7 +1,9 @@
 //! Corrections come back digit for digit; what can change does, the rest does not.
 #![allow(clippy::unwrap_used)]
 
-use evenpair_api::{CorrectionState, Quantity};
+use evenpair_api::{
+    Compensation, Correction, CorrectionState, PoleZero, Quantity, RejectionLimit, Response, ResponseBand,
+};
 use tempfile::TempDir;
 use uuid::Uuid;
 
@@ -63,4 +65,50 @@ async fn what_does_not_fit_is_refused() {
     store.put_correction(&correction).await.unwrap();
     let refused = store.put_correction(&correction).await.unwrap_err();
     assert!(matches!(refused, StoreError::AlreadyThere { what: "correction", .. }), "{refused}");
+}
+
+fn a_response() -> Response {
+    Response {
+        interval: Quantity::exact(1e-9, "s"),
+        skew: Quantity::exact(-3e-12, "s"),
+        pole_zero: Some(PoleZero {
+            time_constant: Quantity::new(95e-6, 11e-6, "s"),
+            relative: Quantity::new(0.03, 1.0 / 3.0e4, "1"),
+        }),
+        taps: vec![0.01, -0.02, 1.0 / 3.0, -0.02, 0.01],
+        gain_u: 2e-6,
+        level: Quantity::exact(-0.1 - 0.2, "V"),
+        improved: vec![ResponseBand { from_hz: 1e5, to_hz: 3e5, before_db: 44.0, after_db: 70.5, floor_db: 70.5 }],
+        words: vec!["trim its probe".to_owned()],
+    }
+}
+
+/// Catches: what is beyond gain, skew and offset lost on the disk, or a limit that a verification does not renew.
+#[tokio::test]
+async fn response_compensation_and_limit_are_kept() {
+    let folder = TempDir::new().unwrap();
+    let store = open(&folder);
+    let mut correction = Correction {
+        compensation: Some(Compensation {
+            relative: Quantity::new(1.5e-4, 4.7e-4, "1"),
+            time_constant: Quantity::exact(95e-6, "s"),
+            level: Quantity::exact(24.0, "V"),
+        }),
+        response: Some(a_response()),
+        limit: Some(RejectionLimit {
+            limit_db: 52.5,
+            at_least: false,
+            amplitude: Quantity::exact(24.0, "V"),
+            error: Quantity::new(0.05, 0.01, "V"),
+        }),
+        ..a_correction("gate", 0)
+    };
+    store.put_correction(&correction).await.unwrap();
+    assert_eq!(store.correction(correction.id).await.unwrap().as_ref(), Some(&correction));
+    let limit = RejectionLimit { limit_db: 55.0, ..correction.limit.clone().unwrap() };
+    store.set_rejection(correction.id, &correction.rejection, None).await.unwrap();
+    assert_eq!(store.latest_correction("gate").await.unwrap().unwrap().limit, correction.limit);
+    store.set_rejection(correction.id, &correction.rejection, Some(&limit)).await.unwrap();
+    correction.limit = Some(limit);
+    assert_eq!(store.latest_correction("gate").await.unwrap().as_ref(), Some(&correction));
 }

@@ -28,6 +28,10 @@ const SHORTEST: f64 = 50.0;
 /// By how much `χ²` must fall for a shorter time constant to be believed: 3.5 standard deviations.
 const SHOWN: f64 = 12.0;
 
+/// From this standard uncertainty on nothing is known: a probe that was trimmed by eye is nearer than that (common
+/// practice, no source).
+const MOST_U: f64 = 0.01;
+
 /// Samples are near an edge where the signal moves by this part of its swing within [`REACH`] samples to either side.
 const MOVES: f64 = 0.1;
 const REACH: usize = 16;
@@ -91,7 +95,7 @@ impl Compensation {
             return Left::default();
         }
         let u = self.u(corrected);
-        let slow = LowPass::new(samples / block as f64).settled(&means);
+        let slow = LowPass::new(samples / block as f64).settled(&means, means.len());
         let (low, high) = slow.iter().fold((f64::INFINITY, f64::NEG_INFINITY), |(l, h), v| (l.min(*v), h.max(*v)));
         let mean = line::mean(&means);
         let past = if samples * 4.0 > negative_v.points() as f64 {
@@ -156,19 +160,22 @@ pub fn estimate(
     }
     let relative = best.relative;
     let u = relative.u.hypot(relative.value * KNOWN_TO / 3.0f64.sqrt());
-    Ok(Some(Compensation {
+    let found = Compensation {
         relative: Estimate { value: relative.value, u },
         time_constant_s: best.samples * mean.interval_s,
-        level_v: line::mean(&mean.x),
-    }))
+        level_v: line::mean(&mean.x[..mean.whole]),
+    };
+    Ok((relative.u <= MOST_U).then_some(found))
 }
 
-/// The mean of all acquisitions, cut to whole periods.
+/// The mean of all acquisitions.
 struct Mean {
     d: Vec<f64>,
     x: Vec<f64>,
     /// Which samples are far from edges.
     still: Vec<bool>,
+    /// How many samples are whole periods.
+    whole: usize,
     interval_s: f64,
 }
 
@@ -203,16 +210,10 @@ impl Mean {
         }
         let Some((mut d, mut x)) = sums else { return Ok(None) };
         d.iter_mut().chain(&mut x).for_each(|v| *v /= count);
-        if let Some(period) = period_s.map(|period| period / interval_s).filter(|period| *period >= 16.0) {
-            let whole = ((d.len() as f64 / period).floor() * period).round() as usize;
-            // Less than a period shows no mean.
-            if whole == 0 {
-                return Ok(None);
-            }
-            d.truncate(whole);
-            x.truncate(whole);
-        }
-        if d.len() < 16 * REACH {
+        let period = period_s.map(|period| period / interval_s).filter(|period| *period >= 16.0);
+        let whole = period.map_or(d.len(), |period| ((d.len() as f64 / period).floor() * period).round() as usize);
+        // Less than a period shows no mean.
+        if whole == 0 || d.len() < 16 * REACH {
             return Ok(None);
         }
         let (low, high) = x.iter().fold((f64::INFINITY, f64::NEG_INFINITY), |(l, h), v| (l.min(*v), h.max(*v)));
@@ -223,12 +224,12 @@ impl Mean {
             still[i.saturating_sub(REACH)..=(i + REACH).min(last)].fill(false);
         }
         let left = still.iter().filter(|still| **still).count() as f64;
-        Ok((left >= LEAST_LEFT * x.len() as f64).then_some(Self { d, x, still, interval_s }))
+        Ok((left >= LEAST_LEFT * x.len() as f64).then_some(Self { d, x, still, whole, interval_s }))
     }
 
     /// `D = a + b·N + c·N' + ε·L` by least squares; `None` where these cannot be told apart.
     fn fit(&self, samples: f64) -> Option<Fit> {
-        let slow = LowPass::new(samples).settled(&self.x);
+        let slow = LowPass::new(samples).settled(&self.x, self.whole);
         let (centre, level) = (line::mean(&self.x), line::mean(&slow));
         let swing = self.x.iter().fold(0.0f64, |top, v| top.max((v - centre).abs()));
         let last = self.x.len() - 1;

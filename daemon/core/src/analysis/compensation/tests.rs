@@ -7,7 +7,6 @@ use crate::analysis::skew::signals::Dice;
 use crate::analysis::skew::{Reference, Shape, estimate_records};
 use crate::analysis::{Samples, deskew};
 
-
 const INTERVAL_S: f64 = 1e-9;
 /// ±24 V about 0 V, 100 kHz.
 const NODE: Square = Square { amplitude: 24.0, period_s: 10e-6, edge_s: 2.5e-6, sigma_s: 25e-9 / 2.563_103_131 };
@@ -52,8 +51,9 @@ fn the_droop_of_levels_shows_it_within_its_uncertainty() {
     for seed in 0..40 {
         for relative in [0.0, 1.5e-4, -2e-3] {
             let one = found(95e-6, relative, 0.034, seed);
-            // 34 mV over four records against a triangle of 0.36 V rms: 24 V·2.5 µs/95 µs/√3, and the known T's 11.5 %.
-            assert!(one.relative.u < 5e-4 + 0.2 * relative.abs(), "{one:?}");
+            // By hand 4.7e-4: 24 mV of D over 20,000 samples against a triangle of 24 V·2.5 µs/95 µs/√3 = 0.36 V rms; and
+            // 11.5 % for T.
+            assert!(one.relative.u < 6e-4 + 0.2 * relative.abs(), "{one:?}");
             scores.push((one.relative.value - relative) / one.relative.u);
         }
     }

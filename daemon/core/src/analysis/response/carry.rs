@@ -31,15 +31,16 @@ impl LowPass {
         self.from(super::super::line::mean(signal), signal)
     }
 
-    /// Its output for `signal`, as if the record had always repeated: it ends where it began, and its mean is the
-    /// signal's. The way for records that are short beside the time constant, and that show the signal's mean.
-    pub(in crate::analysis) fn settled(&self, signal: &[f64]) -> Vec<f64> {
-        let mean = super::super::line::mean(signal);
+    /// Its output for `signal`, as if the first `repeats` samples had always repeated: it is there at their end where it
+    /// was at their beginning, and has their mean. The way for records that are short beside the time constant, and that
+    /// show the signal's mean.
+    pub(in crate::analysis) fn settled(&self, signal: &[f64], repeats: usize) -> Vec<f64> {
+        let repeats = repeats.min(signal.len());
+        let mean = super::super::line::mean(&signal[..repeats]);
         let mut slow = self.from(mean, signal);
-        let whole = self.rho.powf(signal.len() as f64);
-        let Some(&end) = slow.last() else { return slow };
-        // Whatever is added to the beginning comes out `whole` of it at the end.
-        let mut more = (end - mean) / (1.0 - whole);
+        let Some(&end) = slow[..repeats].last() else { return slow };
+        // Whatever is added to the beginning comes out so many times smaller at the end.
+        let mut more = (end - mean) / (1.0 - self.rho.powf(repeats as f64));
         for u in &mut slow {
             more *= self.rho;
             *u += more;
@@ -113,7 +114,7 @@ impl Response {
         negative_v.iter_mut().for_each(|y| *y += self.level_v);
         if let Some((beta, samples)) = low_pass {
             let filter = LowPass::new(samples);
-            let slow = if repeats { filter.settled(&x) } else { filter.apply(&x) };
+            let slow = if repeats { filter.settled(&x, points) } else { filter.apply(&x) };
             negative_v.iter_mut().zip(&slow[first..]).for_each(|(y, u)| *y += beta * u);
         }
         // P is the corrected negative leg, as it was before the response, plus the difference.

@@ -53,9 +53,11 @@ pub fn combined(
     }
     let filter = filter_of(&fast);
     let slow = gain.fit(&Prior { time_constant_s, filter: Some(&filter) })?;
-    let both = join(&filter, slow, &alone, &fast);
-    let in_situ = &both.improved[..alone.improved.len().min(both.improved.len())];
-    Ok(if gained_db(in_situ) < gained_db(&alone.improved) - YIELDS_DB { alone } else { both })
+    let lost = |band: &BandGain| same(&slow, band).map_or(0.0, |other| band.after_db - other.after_db);
+    if alone.improved.iter().map(lost).sum::<f64>() > YIELDS_DB {
+        return Ok(alone);
+    }
+    Ok(join(&filter, &slow, &alone, &fast))
 }
 
 /// The filter alone, passing slow signals unchanged.
@@ -66,12 +68,17 @@ fn filter_of(fast: &Response) -> Response {
 }
 
 /// What was fitted after the filter, and the filter, as one.
-fn join(filter: &Response, slow: Response, alone: &Response, fast: &Response) -> Response {
+fn join(filter: &Response, slow: &Response, alone: &Response, fast: &Response) -> Response {
     let factor: f64 = slow.taps.iter().sum();
     let before = |band: &BandGain| {
         // Without the filter.
-        let same = alone.improved.iter().find(|other| (other.from_hz / band.from_hz - 1.0).abs() < 1e-6);
-        BandGain { before_db: same.map_or(band.before_db, |other| other.before_db), ..*band }
+        let before_db = same(alone, band).map_or(band.before_db, |other| other.before_db);
+        // What noise hides in situ the fast edges may show: the filter was judged on them too.
+        let hidden = band.after_db >= band.floor_db;
+        match same(fast, band).filter(|other| hidden && other.after_db > band.after_db) {
+            Some(BandGain { after_db, floor_db, .. }) => BandGain { before_db, after_db, floor_db, ..*band },
+            None => BandGain { before_db, ..*band },
+        }
     };
     let mut improved: Vec<BandGain> = slow.improved.iter().map(before).collect();
     let highest = improved.last().map_or(0.0, |band| band.to_hz);
@@ -80,12 +87,13 @@ fn join(filter: &Response, slow: Response, alone: &Response, fast: &Response) ->
         skew_s: filter.skew_s + slow.skew_s,
         taps: filter.taps.iter().map(|tap| tap * factor).collect(),
         improved,
-        ..slow
+        ..slow.clone()
     };
     both.words = words::tell(&both, &[], true);
     both
 }
 
-fn gained_db(bands: &[BandGain]) -> f64 {
-    bands.iter().map(|band| band.after_db - band.before_db).sum()
+/// What a response did in the same band.
+fn same(response: &Response, band: &BandGain) -> Option<BandGain> {
+    response.improved.iter().find(|other| (other.from_hz / band.from_hz - 1.0).abs() < 1e-6).copied()
 }
