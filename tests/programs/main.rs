@@ -14,3 +14,4 @@ mod refusals;
 mod rest;
 mod scripts;
 mod sequences;
+mod spectrum;

@@ -7,11 +7,15 @@ the same files (up to the last digit of another build of the libraries).
 """
 
 import json
+import sys
 import warnings
 from pathlib import Path
 
 import numpy as np
 from scipy import signal, special, stats
+
+sys.dont_write_bytecode = True  # no cache beside the sources
+import figure_vectors
 
 with warnings.catch_warnings():
     warnings.simplefilter("ignore")
@@ -99,3 +103,5 @@ if __name__ == "__main__":
     HERE.mkdir(exist_ok=True)
     for make in (spectrum, correlation, line, both_errors, interpolation, edge):
         make()
+    for make in figure_vectors.MAKERS:
+        make(write)

@@ -17,6 +17,7 @@ mod problem;
 mod quantity;
 mod run;
 mod sequence;
+mod spectrum;
 
 pub use analysis::{Analysis, AnalysisRequest, Guess, Reading, ReferenceShape, SavedRecords, SavedText, VerifiedOn};
 pub use bench::{Bench, Instrument, Leg, LinkState, Pair, Probe, Reference, Rest, Route, Setting};
@@ -30,14 +31,15 @@ pub use capture::{
     UncertaintyTerm,
 };
 pub use correction::{
-    Carried, Correction, CorrectionConditions, CorrectionState, DeskewRequest, LegConditions, RejectionPoint,
-    VerifyRequest,
+    Carried, Correction, CorrectionConditions, CorrectionFreedom, CorrectionState, DeskewRequest, LegConditions,
+    RejectionPoint, VerifyRequest,
 };
 pub use event::{Event, EventKind};
 pub use problem::{Problem, ProblemCode};
 pub use quantity::Quantity;
 pub use run::{LimitFailure, Run, RunKind, RunProgress, RunRequest, RunState, Runs, StageReport};
 pub use sequence::{CheckReport, MistakeReport, SequenceInfo, Sequences};
+pub use spectrum::{Spectrum, SpectrumLine};
 
 /// Where every path of this API begins.
 pub const PREFIX: &str = "/api/v1";

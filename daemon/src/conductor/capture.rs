@@ -3,13 +3,13 @@
 use std::collections::BTreeMap;
 
 use evenpair_api::{self as api, CorrectionState, Quantity};
-use evenpair_core::analysis::measured::measure;
+use evenpair_core::analysis::measured::{Known, measure_with};
 use evenpair_core::bench::PairSpec;
 use evenpair_core::sequence::{CapturePlan, OnVoid};
 use tokio_util::sync::CancellationToken;
 use uuid::Uuid;
 
-use super::correction::{conditions_now, for_software, judge, rejection_bands};
+use super::correction::{conditions_now, drift, for_software, freedom, judge, rejection_bands};
 use super::limits;
 use super::tell::Tell;
 use super::trouble::Trouble;
@@ -49,8 +49,10 @@ pub(crate) async fn capture(
     let software = for_software(&correction, settings_n.delay_s - settings_p.delay_s);
     let bands = rejection_bands(&correction.rejection);
     let scale_spec = workshop.bench.instrument(&pair.scope).and_then(|scope| scope.scale_spec);
+    let (drift, freedom, asked) = (drift(&correction, pair, made_at), freedom(&correction), plan.asked);
     let work = move || {
-        let measured = measure(&positive, &negative, &software, &bands, scale_spec);
+        let known = Known { rejection: &bands, scale_spec, drift, freedom, asked };
+        let measured = measure_with(&positive, &negative, &software, &known);
         measured.map(|measured| (positive, negative, measured))
     };
     let (positive, negative, mut measured) = compute("correcting a capture", work)

@@ -79,9 +79,11 @@ async fn make(
     conditions.gain_reference.clone_from(&wish.gain_reference.name);
 
     let mut skew = on_skew.combined.skew_s.estimate;
+    let mut carried_u_s = 0.0;
     if !on_skew.acquisition.same_range(&on_gain.acquisition) {
         let carry_u_s = wish.skew_reference.carry_u_s.unwrap_or(0.0);
         skew.u = skew.u.hypot(carry_u_s);
+        carried_u_s = carry_u_s;
         conditions.carried = Some(Carried { from_span_v: on_skew.acquisition.span_v, u_s: carry_u_s });
         if carry_u_s == 0.0 {
             warnings.push(format!(
@@ -109,6 +111,12 @@ async fn make(
         gain: Quantity::new(gain.value, gain.u, "1"),
         offset: Quantity::new(offset.value, offset.u, "V"),
         gain_offset_correlation: Some(on_gain.combined.gain_offset),
+        freedom: api::CorrectionFreedom {
+            skew: on_skew.combined.skew_s.freedom_beside(carried_u_s),
+            gain: on_gain.combined.gain.freedom,
+            offset: on_gain.combined.offset_v.freedom,
+        },
+        limited_by: Some(on_skew.combined.limited_by(carried_u_s).to_string()),
         scope_skew: Quantity::exact(scope_skew_s, "s"),
         state: api::CorrectionState::Fresh,
         reasons: Vec::new(),

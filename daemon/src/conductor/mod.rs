@@ -19,6 +19,7 @@ mod resume;
 mod run;
 mod scope;
 mod settle;
+mod spectrum;
 mod tell;
 mod trouble;
 mod verify;

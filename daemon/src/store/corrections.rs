@@ -1,6 +1,6 @@
 //! Corrections and the rejection that they reach.
 
-use evenpair_api::{Carried, Correction, CorrectionConditions, LegConditions, RejectionPoint};
+use evenpair_api::{Carried, Correction, CorrectionConditions, CorrectionFreedom, LegConditions, RejectionPoint};
 use rusqlite::{Connection, Row, named_params, params};
 use uuid::Uuid;
 
@@ -146,10 +146,10 @@ fn insert(connection: &Connection, correction: &Correction) -> Result<(), Fault>
     let from_span = conditions.carried.as_ref().map(|c| numbers("the span", &c.from_span, "V")).transpose()?;
     let added = conditions.carried.as_ref().map(|c| numbers("the added uncertainty", &c.added, "s")).transpose()?;
     let sql = "insert into corrections (id, pair, made_at, state, skew_s, skew_u, gain, gain_u, offset_v, offset_u, \
-               gain_offset_r, scope_skew_s, scope_skew_u, acquisitions, scope_identity, skew_reference, gain_reference, carried, \
+               gain_offset_r, skew_freedom, gain_freedom, offset_freedom, limited_by, scope_skew_s, scope_skew_u, acquisitions, scope_identity, skew_reference, gain_reference, carried, \
                carried_from_span_v, carried_from_span_u, carried_added_s, carried_added_u, reasons_json, \
                warnings_json) values (:id, :pair, :made_at, :state, :skew_s, :skew_u, :gain, :gain_u, :offset_v, \
-               :offset_u, :gain_offset_r, :scope_skew_s, :scope_skew_u, :acquisitions, :scope_identity, :skew_reference, \
+               :offset_u, :gain_offset_r, :skew_freedom, :gain_freedom, :offset_freedom, :limited_by, :scope_skew_s, :scope_skew_u, :acquisitions, :scope_identity, :skew_reference, \
                :gain_reference, :carried, :from_span_v, :from_span_u, :added_s, :added_u, :reasons, :warnings)";
     let params = named_params! {
         ":id": correction.id.to_string(),
@@ -163,6 +163,10 @@ fn insert(connection: &Connection, correction: &Correction) -> Result<(), Fault>
         ":offset_v": offset_v,
         ":offset_u": offset_u,
         ":gain_offset_r": correction.gain_offset_correlation,
+        ":skew_freedom": correction.freedom.skew,
+        ":gain_freedom": correction.freedom.gain,
+        ":offset_freedom": correction.freedom.offset,
+        ":limited_by": correction.limited_by,
         ":scope_skew_s": scope_skew_s,
         ":scope_skew_u": scope_skew_u,
         ":acquisitions": correction.acquisitions,
@@ -237,6 +241,12 @@ fn read_head(
         gain: quantity(row, "gain", "gain_u", "1")?,
         offset: quantity(row, "offset_v", "offset_u", "V")?,
         gain_offset_correlation: row.get("gain_offset_r")?,
+        freedom: CorrectionFreedom {
+            skew: row.get("skew_freedom")?,
+            gain: row.get("gain_freedom")?,
+            offset: row.get("offset_freedom")?,
+        },
+        limited_by: row.get("limited_by")?,
         scope_skew: quantity(row, "scope_skew_s", "scope_skew_u", "s")?,
         state: from_word("a correction's state", row.get("state")?)?,
         reasons: from_json("a correction's reasons", &row.get::<_, String>("reasons_json")?)?,

@@ -10,6 +10,7 @@ mod band;
 pub mod budget;
 pub mod coarse;
 pub mod correction;
+pub mod density;
 pub mod deskew;
 pub mod figures;
 pub mod grade;

@@ -1,6 +1,7 @@
 //! What a checked sequence is made of.
 
 use super::machine::{Plan, StepPlan};
+use crate::analysis::figures::Asked;
 use crate::bench::{Acquisition, Bench, Role};
 use crate::units::Unit;
 
@@ -101,6 +102,8 @@ pub struct CapturePlan {
     pub pair: String,
     /// How both legs are acquired.
     pub acquisition: Acquisition,
+    /// What is asked of its figures: thresholds, the band of settling.
+    pub asked: Asked,
     /// What to do where the pair's correction does not hold.
     pub on_void: OnVoid,
     /// What the figures must keep to.

@@ -58,6 +58,10 @@ create table corrections (
     offset_v            real,                      -- o: volts at the tips that the negative leg has too much
     offset_u            real,                      -- its standard uncertainty in volts
     gain_offset_r       real,                      -- correlation coefficient of gain and offset; null where not known
+    skew_freedom        real,                      -- degrees of freedom of skew_u; null where it is taken as well known
+    gain_freedom        real,                      -- the same of gain_u
+    offset_freedom      real,                      -- the same of offset_u
+    limited_by          text,                      -- what limits the skew most, in words; null where not known
     scope_skew_s        real,                      -- the part of skew_s that the scope itself takes off
     scope_skew_u        real,                      -- its standard uncertainty in seconds
     acquisitions        integer not null,          -- acquisitions of the pair that went into it
@@ -172,6 +176,7 @@ create table terms (
     distribution    text not null, -- normal or rectangular
     correlated_with text,     -- name of the term that it is correlated with; null for none
     correlation     real,     -- correlation coefficient of the two contributions
+    freedom real,             -- degrees of freedom of u; null where it is taken as well known
     kind    text not null,    -- A (from repeats) or B (from other knowledge)
     share   real,             -- share of the variance, half of a covariance included; all sum to 1
     primary key (run, capture, figure, place),

@@ -116,4 +116,8 @@ mod coverage;
 #[cfg(test)]
 mod gtc;
 #[cfg(test)]
+mod hostile;
+#[cfg(test)]
 mod tests;
+#[cfg(test)]
+mod vectors;
