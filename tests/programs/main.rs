@@ -21,4 +21,5 @@ mod response;
 mod rest;
 mod scripts;
 mod sequences;
+mod spectrum;
 mod worlds;

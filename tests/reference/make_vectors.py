@@ -15,6 +15,9 @@ from pathlib import Path
 import numpy as np
 from scipy import signal, special, stats
 
+sys.dont_write_bytecode = True  # no cache beside the sources
+import figure_vectors
+
 with warnings.catch_warnings():
     warnings.simplefilter("ignore")
     from scipy import odr
@@ -164,3 +167,5 @@ if __name__ == "__main__":
     HERE.mkdir(exist_ok=True)
     for make in (spectrum, correlation, line, both_errors, interpolation, edge, kernel, low_pass, deming):
         make()
+    for make in figure_vectors.MAKERS:
+        make(write)

@@ -30,6 +30,9 @@ pub(crate) fn correction(correction: &Correction) -> String {
             show(conditions.positive.span.value, Unit::Volt, 3)
         ),
     ];
+    if let Some(limit) = &correction.limited_by {
+        text.push(format!("  the skew is limited by {limit}"));
+    }
     if let Some(carried) = &conditions.carried {
         let (from, added) = (show(carried.from_span.value, Unit::Volt, 3), show(carried.added.value, Unit::Second, 2));
         text.push(format!("  skew was taken on a span of {from}; carrying it adds {added} to its u"));

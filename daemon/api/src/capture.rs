@@ -108,6 +108,9 @@ pub struct UncertaintyTerm {
     pub correlated: Option<CorrelatedTerm>,
     /// `A` (from repeats) or `B` (from other knowledge).
     pub kind: String,
+    /// Degrees of freedom of `u`, where it is that of a few repeats; absent where it is taken as well known.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub freedom: Option<f64>,
     /// Its share of the variance, half of the covariance with its partner included; all shares sum to 1.
     pub share: f64,
 }

@@ -158,6 +158,7 @@ impl From<&CoreFigure> for Figure {
             distribution: term.distribution.name().to_owned(),
             correlated: term.correlated.map(|c| CorrelatedTerm { with: c.with.to_owned(), coefficient: c.coefficient }),
             kind: term.kind.name().to_owned(),
+            freedom: term.freedom,
             share,
         };
         Self {

@@ -35,6 +35,12 @@ pub struct Correction {
     /// The rejection beyond which nothing linear goes, where a verification swept through the converters' levels.
     #[serde(default, skip_serializing_if = "Option::is_none")]
     pub limit: Option<RejectionLimit>,
+    /// Degrees of freedom of the three standard uncertainties.
+    #[serde(default)]
+    pub freedom: CorrectionFreedom,
+    /// What limits the skew most, and what would help, in words; absent where it is not known.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub limited_by: Option<String>,
     /// The part of `skew` that was written into the scope's own skew setting; 0 s where none was.
     pub scope_skew: Quantity,
     /// Whether it holds now.
@@ -54,6 +60,21 @@ pub struct Correction {
     /// What a person should know about it.
     #[serde(default, skip_serializing_if = "Vec::is_empty")]
     pub warnings: Vec<String>,
+}
+
+/// Degrees of freedom of a correction's standard uncertainties (JCGM 100, G.3); one that is absent is not that of a few
+/// repeats' scatter, and its uncertainty is taken as well known.
+#[derive(Debug, Clone, Copy, Default, PartialEq, Serialize, Deserialize, ToSchema)]
+pub struct CorrectionFreedom {
+    /// Of the skew's.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub skew: Option<f64>,
+    /// Of the gain's.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub gain: Option<f64>,
+    /// Of the offset's.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub offset: Option<f64>,
 }
 
 /// Whether a correction holds.

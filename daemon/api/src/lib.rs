@@ -18,6 +18,7 @@ mod quantity;
 mod response;
 mod run;
 mod sequence;
+mod spectrum;
 mod transfer;
 
 pub use analysis::{Analysis, AnalysisRequest, Guess, Reading, ReferenceShape, SavedRecords, SavedText, VerifiedOn};
@@ -32,8 +33,8 @@ pub use capture::{
     UncertaintyTerm,
 };
 pub use correction::{
-    Carried, Correction, CorrectionConditions, CorrectionState, DeskewRequest, LegConditions, RejectionPoint,
-    VerifyRequest,
+    Carried, Correction, CorrectionConditions, CorrectionFreedom, CorrectionState, DeskewRequest, LegConditions,
+    RejectionPoint, VerifyRequest,
 };
 pub use event::{Event, EventKind};
 pub use problem::{Problem, ProblemCode};
@@ -41,6 +42,7 @@ pub use quantity::Quantity;
 pub use response::{Compensation, PoleZero, RejectionLimit, Response, ResponseBand};
 pub use run::{LimitFailure, Run, RunKind, RunProgress, RunRequest, RunState, Runs, StageReport};
 pub use sequence::{CheckReport, MistakeReport, SequenceInfo, Sequences};
+pub use spectrum::{Spectrum, SpectrumLine};
 pub use transfer::{Corrections, TransferChoice, TransferRequest, TransferWay, TransferredFrom};
 
 /// Where every path of this API begins.

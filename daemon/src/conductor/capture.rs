@@ -9,7 +9,7 @@ use evenpair_core::sequence::{CapturePlan, OnVoid};
 use tokio_util::sync::CancellationToken;
 use uuid::Uuid;
 
-use super::correction::{conditions_now, for_software, judge, newest_for, rejection_bands};
+use super::correction::{conditions_now, drift, for_software, freedom, judge, newest_for, rejection_bands};
 use super::limits;
 use super::tell::Tell;
 use super::trouble::Trouble;
@@ -52,8 +52,9 @@ pub(crate) async fn capture(
     let bands = rejection_bands(&correction.rejection);
     let beyond = correction.beyond();
     let scale_spec = workshop.bench.instrument(&pair.scope).and_then(|scope| scope.scale_spec);
+    let (drift, freedom, asked) = (drift(&correction, pair, made_at), freedom(&correction), plan.asked);
     let work = move || {
-        let known = Known { beyond: Some(&beyond), rejection: &bands, scale_spec, ..Known::default() };
+        let known = Known { beyond: Some(&beyond), rejection: &bands, scale_spec, drift, freedom, asked };
         let measured = measure_with(&positive, &negative, &software, &known);
         measured.map(|measured| (positive, negative, measured))
     };

@@ -4,7 +4,7 @@
 
 use evenpair_api::{self as api, CorrectionState, Quantity, TransferWay};
 use evenpair_core::analysis::rejection::RejectionBand;
-use evenpair_core::analysis::{Correction, Estimate};
+use evenpair_core::analysis::{Correction, Drift, Estimate, Freedom};
 use evenpair_core::bench::conditions::{self, Carried, Conditions, LegConditions};
 use evenpair_core::bench::{Acquisition, LegSpec, PairSpec};
 
@@ -24,6 +24,17 @@ pub(crate) fn for_software(correction: &api::Correction, scope_skew_s: f64) -> C
         offset_v: estimate(&correction.offset),
         gain_offset: correction.gain_offset_correlation.unwrap_or(0.0),
     }
+}
+
+/// How well a correction's uncertainties are known.
+pub(crate) fn freedom(correction: &api::Correction) -> Freedom {
+    let api::CorrectionFreedom { skew, gain, offset } = correction.freedom;
+    Freedom { gain, skew, offset }
+}
+
+/// What a pair's correction may have drifted by `at`, by what the bench file says of it.
+pub(crate) fn drift(correction: &api::Correction, pair: &PairSpec, at: jiff::Timestamp) -> Drift {
+    pair.drift.after(at.duration_since(since(correction)).as_secs_f64(), pair.max_age_s)
 }
 
 /// Rejection as the API tells it.

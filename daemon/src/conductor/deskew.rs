@@ -86,9 +86,11 @@ async fn make(
     let mut skew = on_skew.combined.skew_s.estimate;
     let turns = if one_for_all { None } else { told_by(&on_gain.combined, &on_skew.combined, wish.skew_reference) };
     skew.value += turns.unwrap_or(0.0) / wish.skew_reference.frequency_hz;
+    let mut carried_u_s = 0.0;
     if !on_skew.acquisition.same_range(&on_gain.acquisition) {
         let carry_u_s = wish.skew_reference.carry_u_s.unwrap_or(0.0);
         skew.u = skew.u.hypot(carry_u_s);
+        carried_u_s = carry_u_s;
         conditions.carried = Some(Carried { from_span_v: on_skew.acquisition.span_v, u_s: carry_u_s });
         if carry_u_s == 0.0 {
             warnings.push(format!(
@@ -123,6 +125,12 @@ async fn make(
         compensation: found.compensation.as_ref().map(api::Compensation::from),
         response: found.response.as_ref().map(api::Response::from),
         limit: None,
+        freedom: api::CorrectionFreedom {
+            skew: on_skew.combined.skew_s.freedom_beside(carried_u_s),
+            gain: on_gain.combined.gain.freedom,
+            offset: on_gain.combined.offset_v.freedom,
+        },
+        limited_by: Some(on_skew.combined.limited_by(carried_u_s).to_string()),
         scope_skew: Quantity::exact(scope_skew_s, "s"),
         state: api::CorrectionState::Fresh,
         reasons: Vec::new(),

@@ -21,6 +21,7 @@ mod resume;
 mod run;
 mod scope;
 mod settle;
+mod spectrum;
 mod tell;
 mod transfer;
 mod trouble;

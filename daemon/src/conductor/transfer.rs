@@ -94,6 +94,8 @@ async fn make(
         gain: Quantity::new(values.gain.value, values.gain.u, "1"),
         offset: Quantity::new(values.offset_v.value, values.offset_v.u, "V"),
         gain_offset_correlation: Some(values.gain_offset),
+        freedom: from.freedom,
+        limited_by: None,
         // They belong to probes and legs more than to a range.
         compensation: from.compensation.clone(),
         response: from.response.clone(),

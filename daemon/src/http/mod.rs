@@ -15,6 +15,7 @@ mod pairs;
 mod problem;
 mod runs;
 mod sequences;
+mod spectrum;
 
 use axum::Router;
 use axum::extract::DefaultBodyLimit;
@@ -64,6 +65,7 @@ fn resources() -> OpenApiRouter<Desk> {
         .merge(pairs::routes())
         .merge(runs::routes())
         .merge(sequences::routes())
+        .merge(spectrum::routes())
 }
 
 #[cfg(test)]

@@ -1,6 +1,8 @@
 //! Corrections and the rejection that they reach.
 
-use evenpair_api::{Carried, Correction, CorrectionConditions, LegConditions, RejectionLimit, RejectionPoint};
+use evenpair_api::{
+    Carried, Correction, CorrectionConditions, CorrectionFreedom, LegConditions, RejectionLimit, RejectionPoint,
+};
 use rusqlite::{Connection, Row, named_params, params};
 use serde::de::DeserializeOwned;
 use uuid::Uuid;
@@ -164,12 +166,14 @@ fn insert(connection: &Connection, correction: &Correction) -> Result<(), Fault>
     let from_span = conditions.carried.as_ref().map(|c| numbers("the span", &c.from_span, "V")).transpose()?;
     let added = conditions.carried.as_ref().map(|c| numbers("the added uncertainty", &c.added, "s")).transpose()?;
     let sql = "insert into corrections (id, pair, made_at, state, skew_s, skew_u, gain, gain_u, offset_v, offset_u, \
-               gain_offset_r, scope_skew_s, scope_skew_u, acquisitions, scope_identity, skew_reference, gain_reference, carried, \
-               carried_from_span_v, carried_from_span_u, carried_added_s, carried_added_u, reasons_json, \
-               warnings_json, compensation_json, response_json, limit_json) values (:id, :pair, :made_at, :state, :skew_s, :skew_u, :gain, :gain_u, :offset_v, \
-               :offset_u, :gain_offset_r, :scope_skew_s, :scope_skew_u, :acquisitions, :scope_identity, :skew_reference, \
-               :gain_reference, :carried, :from_span_v, :from_span_u, :added_s, :added_u, :reasons, :warnings, \
-               :compensation, :response, :limit)";
+               gain_offset_r, skew_freedom, gain_freedom, offset_freedom, limited_by, scope_skew_s, scope_skew_u, \
+               acquisitions, scope_identity, skew_reference, gain_reference, carried, carried_from_span_v, \
+               carried_from_span_u, carried_added_s, carried_added_u, reasons_json, warnings_json, compensation_json, \
+               response_json, limit_json) values (:id, :pair, :made_at, :state, \
+               :skew_s, :skew_u, :gain, :gain_u, :offset_v, :offset_u, :gain_offset_r, :skew_freedom, :gain_freedom, \
+               :offset_freedom, :limited_by, :scope_skew_s, :scope_skew_u, :acquisitions, :scope_identity, \
+               :skew_reference, :gain_reference, :carried, :from_span_v, :from_span_u, :added_s, :added_u, :reasons, \
+               :warnings, :compensation, :response, :limit)";
     let params = named_params! {
         ":id": correction.id.to_string(),
         ":pair": correction.pair,
@@ -182,6 +186,10 @@ fn insert(connection: &Connection, correction: &Correction) -> Result<(), Fault>
         ":offset_v": offset_v,
         ":offset_u": offset_u,
         ":gain_offset_r": correction.gain_offset_correlation,
+        ":skew_freedom": correction.freedom.skew,
+        ":gain_freedom": correction.freedom.gain,
+        ":offset_freedom": correction.freedom.offset,
+        ":limited_by": correction.limited_by,
         ":scope_skew_s": scope_skew_s,
         ":scope_skew_u": scope_skew_u,
         ":acquisitions": correction.acquisitions,
@@ -262,6 +270,12 @@ fn read_head(
         compensation: optional(row, "compensation_json", "a correction's compensation")?,
         response: optional(row, "response_json", "a correction's response")?,
         limit: optional(row, "limit_json", "a correction's limit")?,
+        freedom: CorrectionFreedom {
+            skew: row.get("skew_freedom")?,
+            gain: row.get("gain_freedom")?,
+            offset: row.get("offset_freedom")?,
+        },
+        limited_by: row.get("limited_by")?,
         scope_skew: quantity(row, "scope_skew_s", "scope_skew_u", "s")?,
         state: from_word("a correction's state", row.get("state")?)?,
         reasons: from_json("a correction's reasons", &row.get::<_, String>("reasons_json")?)?,

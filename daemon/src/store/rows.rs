@@ -117,9 +117,9 @@ fn insert_figure(connection: &Connection, run: &str, capture: u32, place: u32, f
     change(connection, sql, params)?;
     for (term_place, term) in (0_u32..).zip(&figure.budget) {
         let sql = "insert into terms (run, capture, figure, place, name, u, kind, share, sensitivity, \
-                   distribution, correlated_with, correlation) \
-                   values (?1, ?2, ?3, ?4, ?5, ?6, ?7, ?8, ?9, ?10, ?11, ?12)";
-        let UncertaintyTerm { name, u, sensitivity, distribution, correlated, kind, share } = term;
+                   distribution, correlated_with, correlation, freedom) \
+                   values (?1, ?2, ?3, ?4, ?5, ?6, ?7, ?8, ?9, ?10, ?11, ?12, ?13)";
+        let UncertaintyTerm { name, u, sensitivity, distribution, correlated, kind, freedom, share } = term;
         let (with, coefficient) = (correlated.as_ref().map(|c| &c.with), correlated.as_ref().map(|c| c.coefficient));
         let params = params![
             run,
@@ -133,7 +133,8 @@ fn insert_figure(connection: &Connection, run: &str, capture: u32, place: u32, f
             sensitivity,
             distribution,
             with,
-            coefficient
+            coefficient,
+            freedom
         ];
         change(connection, sql, params)?;
     }
@@ -205,6 +206,7 @@ fn read_figures(connection: &Connection, run: &str, capture: u32) -> Result<Vec<
                 None => None,
             },
             kind: row.get("kind")?,
+            freedom: row.get("freedom")?,
             share: number(row, "share")?,
         };
         Ok((row.get::<_, u32>("figure")?, term))

@@ -14,6 +14,7 @@ pub(super) const STEPS: &[&str] = &[
     include_str!("schema/0001.sql"),
     include_str!("schema/0002-response.sql"),
     include_str!("schema/0003-transfers.sql"),
+    include_str!("schema/0004-freedom.sql"),
 ];
 
 /// Marks a database file as ours (SQLite's `application_id`): the letters `EvPr`.

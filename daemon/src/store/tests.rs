@@ -8,9 +8,9 @@ use std::sync::Mutex;
 use std::sync::atomic::{AtomicUsize, Ordering};
 
 use evenpair_api::{
-    Capture, Carried, Condition, Correction, CorrectionConditions, CorrectionState, CorrelatedTerm, Coverage,
-    CoverageBasis, Figure, Grade, LeakBound, LegConditions, LimitFailure, LimitVerdict, Quantity, RejectionPoint, Run,
-    RunKind, RunProgress, RunState, StageReport, UncertaintyTerm,
+    Capture, Carried, Condition, Correction, CorrectionConditions, CorrectionFreedom, CorrectionState, CorrelatedTerm,
+    Coverage, CoverageBasis, Figure, Grade, LeakBound, LegConditions, LimitFailure, LimitVerdict, Quantity,
+    RejectionPoint, Run, RunKind, RunProgress, RunState, StageReport, UncertaintyTerm,
 };
 use evenpair_core::analysis::{Record, Samples};
 use rusqlite::types::Value;
@@ -67,6 +67,8 @@ pub(super) fn a_correction(pair: &str, second: i64) -> Correction {
         compensation: None,
         response: None,
         limit: None,
+        freedom: CorrectionFreedom { skew: None, gain: Some(3.0), offset: Some(11.0 / 3.0) },
+        limited_by: Some("noise: more acquisitions or faster edges help".to_owned()),
         scope_skew: Quantity::exact(1.2e-9, "s"),
         state: CorrectionState::Fresh,
         reasons: Vec::new(),
@@ -99,10 +101,12 @@ pub(super) fn a_capture(run: Uuid, number: u32, correction: Option<&Correction>,
         distribution: "normal".to_owned(),
         correlated: None,
         kind: "B".to_owned(),
+        freedom: None,
         share,
     };
     let correlated = |term: UncertaintyTerm, with: &str| UncertaintyTerm {
         sensitivity: Some(-48.0 / 7.0),
+        freedom: Some(17.25),
         correlated: Some(CorrelatedTerm { with: with.to_owned(), coefficient: -0.7 }),
         ..term
     };

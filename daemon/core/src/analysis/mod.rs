@@ -12,6 +12,7 @@ pub mod budget;
 pub mod coarse;
 pub mod compensation;
 pub mod correction;
+pub mod density;
 pub mod deskew;
 pub mod figures;
 pub mod grade;

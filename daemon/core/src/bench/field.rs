@@ -17,6 +17,21 @@ pub(crate) fn number(table: &mut Table<'_>, key: &str, range: &RangeInclusive<f6
     in_range(table, key, &item, Unit::One, range)
 }
 
+/// A ratio within `range`, as a number or as a text in percent; a mistake and `None` outside it.
+pub(crate) fn ratio(table: &mut Table<'_>, key: &str, range: &RangeInclusive<f64>) -> Option<f64> {
+    if !table.is_text(key) {
+        return number(table, key, range);
+    }
+    let item = table.text(key)?;
+    match crate::planning::parse_ratio(&item.value) {
+        Ok(value) => in_range(table, key, &Item { value, span: item.span }, Unit::One, range),
+        Err(error) => {
+            table.mistakes().add(item.span, format!("`{key}`: {error}"), format!("such as `{key} = \"2 %\"`"));
+            None
+        }
+    }
+}
+
 /// `item`'s value if it lies within `range`; a mistake and `None` otherwise.
 pub(crate) fn in_range(
     table: &Table<'_>,

@@ -1,6 +1,7 @@
 //! What a bench file says, in plain types with units in their names.
 
 use super::{Acquisition, BenchCall, Overrides};
+use crate::analysis::Drift;
 use crate::dialect::Value;
 use crate::scpi::address::Resource;
 use crate::units::Unit;
@@ -137,6 +138,8 @@ pub struct PairSpec {
     pub most_acquisitions: u32,
     /// The age at which a correction is `stale`, in seconds.
     pub max_age_s: f64,
+    /// How far a correction may move within that age, as half-widths.
+    pub drift: Drift,
     /// Whether a deskew writes the rounded skew into the scope's own skew setting.
     pub use_scope_skew: bool,
     /// Whether a deskew fits the response that is left between the legs.

@@ -217,3 +217,23 @@ fn the_bundled_dialect_has_words_for_all_that_the_bundled_bench_does() {
         assert!(dialect.plan(&entry.call).is_ok(), "{entry:?}: {:?}", dialect.plan(&entry.call));
     }
 }
+
+/// What a correction may move by: each key in its own unit, the gain as a ratio; a slip of the pen is a mistake.
+#[test]
+fn drift_is_read_and_its_mistakes_are_named() {
+    assert_eq!(read(GREENHOUSE).unwrap().pair("gate").unwrap().drift, crate::analysis::Drift::default());
+    let line = "max_age = \"43200 s\"";
+    let drift = format!("{line}\ndrift = {{ gain = \"0.05 %\", skew = \"20 ps\", offset = \"1 mV\" }}");
+    let found = read(&GREENHOUSE.replace(line, &drift)).unwrap().pair("gate").unwrap().drift;
+    assert!((found.gain - 5e-4).abs() < 1e-15 && (found.skew_s - 20e-12).abs() < 1e-21, "{found:?}");
+    assert!((found.offset_v - 1e-3).abs() < 1e-15);
+    let after = found.after(86_400.0, 43_200.0);
+    assert!((after.skew_s - 40e-12).abs() < 1e-21 && found.after(60.0, 43_200.0) == found, "{after:?}");
+    for (wrong, what) in
+        [("gain = \"1 V\"", "`gain`"), ("skew = \"1 s\"", "`skew` is 1 s"), ("time = 1", "`time` is not a key")]
+    {
+        let text = GREENHOUSE.replace(line, &format!("{line}\ndrift = {{ {wrong} }}"));
+        let found = mistakes(&text);
+        assert!(found.iter().any(|(_, text)| text.contains(what)), "{wrong}: {found:?}");
+    }
+}

@@ -2,6 +2,7 @@
 
 use super::machine::{Plan, StepPlan};
 use super::transfer::TransferPlan;
+use crate::analysis::figures::Asked;
 use crate::bench::{Acquisition, Bench, PairSpec, ReferenceSpec, Role};
 use crate::units::Unit;
 
@@ -104,6 +105,8 @@ pub struct CapturePlan {
     pub pair: String,
     /// How both legs are acquired.
     pub acquisition: Acquisition,
+    /// What is asked of its figures: thresholds, the band of settling.
+    pub asked: Asked,
     /// What to do where the pair's correction does not hold.
     pub on_void: OnVoid,
     /// What the figures must keep to.

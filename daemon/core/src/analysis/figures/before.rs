@@ -34,8 +34,9 @@ impl Bench<'_> {
         let measured = &self.shape.measured;
         let step = measured.len().div_ceil(MOST).max(1);
         let region = |(i, t): &(usize, super::super::transition::Transition)| {
-            // The transition begins as long before its middle as it ends after it.
-            let start = 2.0 * t.middle - t.end - 0.5 * t.duration;
+            // The transition begins as long before its middle as it ends after it; a duration earlier nothing of an edge of
+            // Gaussian shape is left (6·10⁻⁵).
+            let start = 2.0 * t.middle - t.end - t.duration;
             let last = i.checked_sub(1).and_then(|i| self.layout.edges.get(i)).map_or(0, |e| e.middle()) as f64;
             let from = (start - (10.0 * t.duration).max(16.0)).max(0.5 * (start + last)).max(0.0);
             let range = from.ceil() as usize..start.max(0.0) as usize;

@@ -24,8 +24,11 @@ fn two_standard_uncertainties_hold_the_truth() {
         (FigureKind::Duty, 0.4),
         (FigureKind::Overshoot, 0.08),
         (FigureKind::Maximum, 13.0),
+        (FigureKind::RiseSlew, 0.8 * 12.5 / EDGE_S),
+        (FigureKind::FallSlew, 0.8 * 12.5 / EDGE_S),
+        (FigureKind::CommonSlew, 48.0 / (8e-9 * 2.506_628_27)),
     ];
-    let mut inside = [0u32; 11];
+    let mut inside = [0u32; 14];
     let mut rng = ChaCha8Rng::seed_from_u64(2026);
     for seed in 0..300 {
         let records = scene.acquire(seed, gate);

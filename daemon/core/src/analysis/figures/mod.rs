@@ -123,4 +123,8 @@ mod coverage;
 #[cfg(test)]
 mod gtc;
 #[cfg(test)]
+mod hostile;
+#[cfg(test)]
 mod tests;
+#[cfg(test)]
+mod vectors;

@@ -34,6 +34,17 @@ pub(super) fn model(input: &FigureInput<'_>, sources: &Sources, m: &Moments) -> 
     }
 }
 
+/// The interval of the root of a power that had noise's part taken off, so that it may be hardly above nothing: that of the
+/// power itself, whose uncertainty is `2·value·u`, and never below what it is where the root could be nothing, `4·u²`.
+pub(super) fn of_root(value: f64, u: f64, terms: &[Term]) -> Coverage {
+    let (half, basis) = budget::expanded(terms);
+    if u <= LEAST_BEND * value {
+        return Coverage { low: value - half, high: value + half, basis };
+    }
+    let (square, reach) = (value * value, 2.0 * half * value.max(2.0 * u));
+    Coverage { low: (square - reach).max(0.0).sqrt(), high: (square + reach).sqrt(), basis: Basis::Propagated }
+}
+
 /// The interval of an rms of `value` with this budget.
 pub(super) fn coverage(
     input: &FigureInput<'_>,

@@ -133,6 +133,21 @@ fn the_gate_s_figures_come_out_on_a_swinging_node() {
     near(FigureKind::Minimum, -0.5, 0.06);
     near(FigureKind::PeakToPeak, 13.5, 0.08);
     assert!(of(&figures, FigureKind::Undershoot).value < 0.005);
+    near(FigureKind::RiseSlew, 0.8 * 12.5 / EDGE_S, 1.5e7);
+    near(FigureKind::FallSlew, 0.8 * 12.5 / EDGE_S, 1.5e7);
+    // A Gaussian edge of 48 V: steepest at 48 V/(σ·√(2π)).
+    near(FigureKind::CommonSlew, 48.0 / (8e-9 * 2.506_628), 6e7);
+    // Rising: until the bump of 1 V, 60 ns after the middle, is down to 2 % of 12.5 V. Falling: Φ(−2.0537) is 2 %.
+    let settled = 0.5 * (60e-9 + 15e-9 * (2.0 * 4f64.ln()).sqrt() + 2.053_7 * EDGE_S / 2.5631);
+    near(FigureKind::SettlingTime, settled, 1.5e-9);
+    let before = of(&figures, FigureKind::PreAberration);
+    assert!(before.valid && before.value < 0.005 && before.coverage.is_some_and(|c| c.low >= 0.0), "{before:?}");
+    for (kind, why) in [(FigureKind::Jitter, "3 whole periods"), (FigureKind::Thd, "two states")] {
+        let f = of(&figures, kind);
+        assert!(!f.valid && f.why.as_deref().unwrap().contains(why), "{f:?}");
+    }
+    // Nobody asked for a threshold.
+    assert!(figures.iter().all(|f| !matches!(f.kind, FigureKind::TimeAbove | FigureKind::TimeBelow)));
     let rms = (0..5000).map(|i| gate(1e-9 * f64::from(i)).powi(2)).sum::<f64>() / 5000.0;
     // The 45 samples lost at the ends are 0.2 % of the record.
     near(FigureKind::Rms, rms.sqrt(), 0.012);

@@ -12,6 +12,11 @@ fn of(measured: &Measured, kind: FigureKind) -> &Figure {
     measured.figures.iter().find(|figure| figure.kind == kind).unwrap()
 }
 
+/// What is known beyond the correction, and nothing else.
+fn seen(beyond: &Beyond) -> Known<'_> {
+    Known { beyond: Some(beyond), scale_spec: Some(0.0), ..Known::default() }
+}
+
 fn term(figure: &Figure, name: &str) -> f64 {
     figure.budget.iter().find(|term| term.name == name).map_or(0.0, |term| term.u)
 }
@@ -25,7 +30,7 @@ fn a_response_is_applied_and_what_it_leaves_is_in_every_budget() {
     let with = Beyond { response: Some(found), ..Beyond::default() };
     let (p, n) = acquire(&NEGATIVE, 57_500, 0.05, 32, 1);
     let plain = measure(&p[0], &n[0], &correction, &[], Some(0.0)).unwrap();
-    let measured = measure_with(&p[0], &n[0], &correction, &with, &[], Some(0.0)).unwrap();
+    let measured = measure_with(&p[0], &n[0], &correction, &seen(&with)).unwrap();
     let (before, after) = (of(&plain, FigureKind::Rms), of(&measured, FigureKind::Rms));
     assert!(after.value < before.value / 10.0, "{} {}", before.value, after.value);
     assert!(term(after, "response") > 0.0 && after.coverage.unwrap().low <= 1e-9, "{after:?}");
@@ -35,7 +40,7 @@ fn a_response_is_applied_and_what_it_leaves_is_in_every_budget() {
 
     let (mut p, mut n) = (p[0].clone(), n[0].clone());
     (p.interval_s, n.interval_s) = (2.0 * p.interval_s, 2.0 * n.interval_s);
-    let other = measure_with(&p, &n, &correction, &with, &[], Some(0.0)).unwrap();
+    let other = measure_with(&p, &n, &correction, &seen(&with)).unwrap();
     assert!(other.warnings.iter().any(|warning| warning.contains("the response is not applied")), "{other:?}");
     assert!(term(of(&other, FigureKind::Rms), "response") < 1e-12);
 }
@@ -47,7 +52,7 @@ fn nothing_claims_more_than_the_converters_limit() {
     let (p, n) = acquire(&NEGATIVE, 25_100, 0.05, 33, 2);
     let correction = deskewed(&p, &n);
     let with = Beyond { limit_db: Some(40.0), ..Beyond::default() };
-    let measured = measure_with(&p[0], &n[0], &correction, &with, &[], Some(0.0)).unwrap();
+    let measured = measure_with(&p[0], &n[0], &correction, &seen(&with)).unwrap();
     assert!((0.97..1.1).contains(&measured.leak.rms_v), "{:?}", measured.leak);
     let rms = of(&measured, FigureKind::Rms);
     assert!((0.97..1.03).contains(&term(rms, "response")), "{rms:?}");
@@ -63,7 +68,7 @@ fn a_compensation_counts_by_the_distance_from_the_references_mean() {
         let compensation =
             Compensation { relative: Estimate { value: 0.6e-3, u: 0.8e-3 }, time_constant_s: 95e-6, level_v };
         let with = Beyond { compensation: Some(compensation), ..Beyond::default() };
-        measure_with(&p[0], &n[0], &correction, &with, &[], Some(0.0)).unwrap()
+        measure_with(&p[0], &n[0], &correction, &seen(&with)).unwrap()
     };
     let (far, near) = (at(100.0), at(0.0));
     let u = |measured: &Measured| term(of(measured, FigureKind::Mean), "compensation");

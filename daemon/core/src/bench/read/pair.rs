@@ -1,6 +1,7 @@
 //! Pairs and their legs.
 
 use super::{Declared, overrides};
+use crate::analysis::Drift;
 use crate::bench::spec::{Coupling, LegSpec, PairSpec, ProbeSpec};
 use crate::bench::{Acquisition, field};
 use crate::document::Table;
@@ -51,6 +52,7 @@ pub(super) fn pair(name: String, table: &mut Table<'_>, declared: &Declared, pro
     let target_u_skew_s = field::amount(table, "target_u_skew", Unit::Second, &(1e-15..=1e-6));
     let most_acquisitions = field::whole(table, "most_acquisitions", &(2..=10_000));
     let max_age_s = field::amount(table, "max_age", Unit::Second, &(1.0..=1e8));
+    let drift = drift(table);
     let use_scope_skew = table.flag("use_scope_skew").is_some_and(|item| item.value);
     let response = table.flag("response").is_some_and(|item| item.value);
     table.refuse_others();
@@ -66,9 +68,20 @@ pub(super) fn pair(name: String, table: &mut Table<'_>, declared: &Declared, pro
         target_u_skew_s: target_u_skew_s.unwrap_or(DEFAULT_TARGET_U_SKEW_S),
         most_acquisitions: most_acquisitions.unwrap_or(DEFAULT_MOST_ACQUISITIONS),
         max_age_s: max_age_s.unwrap_or(DEFAULT_MAX_AGE_S),
+        drift,
         use_scope_skew,
         response,
     })
+}
+
+/// What a correction may move by within `max_age`, each a half-width; what is not stated does not move.
+fn drift(table: &mut Table<'_>) -> Drift {
+    let Some(mut inner) = table.table("drift") else { return Drift::default() };
+    let gain = field::ratio(&mut inner, "gain", &(0.0..=0.5));
+    let skew_s = field::amount(&mut inner, "skew", Unit::Second, &(0.0..=1e-6));
+    let offset_v = field::amount(&mut inner, "offset", Unit::Volt, &(0.0..=1e4));
+    inner.refuse_others();
+    Drift { gain: gain.unwrap_or(0.0), skew_s: skew_s.unwrap_or(0.0), offset_v: offset_v.unwrap_or(0.0) }
 }
 
 /// How the pair measures: the same keys as elsewhere, but the four that have no sensible default must be there.

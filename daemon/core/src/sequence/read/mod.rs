@@ -1,5 +1,6 @@
 //! From the text of a sequence to checked, unrolled steps, with every mistake at its place.
 
+mod asked;
 mod axis;
 mod stage;
 mod unroll;
@@ -22,6 +23,9 @@ struct Context<'a> {
 pub fn read(text: &str, bench: &Bench, figure_names: &dyn Fn(&str) -> Option<Unit>) -> Result<Sequence, Vec<Mistake>> {
     document::read(text, |top| sequence(top, &Context { bench, figures: figure_names }))
 }
+
+#[cfg(test)]
+mod tests;
 
 fn sequence(top: &mut Table<'_>, context: &Context<'_>) -> Option<Sequence> {
     let title = top.text("title").or_else(|| top.missing("title", "say in a few words what the sequence is for"));

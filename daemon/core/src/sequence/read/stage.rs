@@ -3,6 +3,7 @@
 use std::ops::Range;
 
 use super::Context;
+use super::asked;
 use super::axis::{self, Axis};
 use crate::analysis::transfer::Choice;
 use crate::bench::{OFFSETS_V, SPANS_V, field, overrides};
@@ -256,15 +257,17 @@ fn verify(table: &mut Table<'_>, context: &Context<'_>) -> Option<VerifyPlan> {
 fn capture(table: &mut Table<'_>, context: &Context<'_>) -> Option<CapturePlan> {
     let pair = pair(table, context);
     let overrides = overrides(table);
+    let asked = asked::read(table);
     let on_void = field::choice(table, "on_void", &[("mark", OnVoid::Mark), ("refuse", OnVoid::Refuse)]);
     let on_limit = field::choice(table, "on_limit", &[("continue", OnLimit::Continue), ("end", OnLimit::End)]);
     let on_void = on_void.unwrap_or(OnVoid::Refuse);
-    let limits = table
+    let limits: Vec<Limit> = table
         .tables("limit")
         .unwrap_or_default()
         .into_iter()
         .filter_map(|mut entry| limit(&mut entry, context))
         .collect();
+    asked::needed(table, &asked, &limits);
     let spec = context.bench.pair(&pair?)?;
     let acquisition = spec.acquisition.with(&overrides);
     let channel = acquisition.trigger.channel;
@@ -278,6 +281,7 @@ fn capture(table: &mut Table<'_>, context: &Context<'_>) -> Option<CapturePlan> 
     Some(CapturePlan {
         pair: spec.name.clone(),
         acquisition,
+        asked,
         on_void,
         limits,
         on_limit: on_limit.unwrap_or(OnLimit::Continue),
