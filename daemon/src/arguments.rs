@@ -68,12 +68,12 @@ pub(crate) struct DialectArguments {
     /// The dialect: a file that ends in `.toml`, or the name of one that comes with the daemon.
     #[arg(value_name = "FILE")]
     pub(crate) file: String,
-    /// The instrument's address, such as `TCPIP::192.168.1.20::5025::SOCKET`.
+    /// The instrument's address, such as `TCPIP::192.168.1.20::5025::SOCKET`; without it, the file is only read.
     #[arg(long, value_name = "RESOURCE")]
-    pub(crate) at: String,
+    pub(crate) at: Option<String>,
     /// Also change settings: each is set to something near by, asked for, compared, and given back. An acquisition is
     /// started too.
-    #[arg(long)]
+    #[arg(long, requires = "at")]
     pub(crate) allow_set: bool,
     /// Try only what an instrument in this role needs; without it, all that the dialect has words for.
     #[arg(long = "as", value_name = "ROLE")]

@@ -63,21 +63,28 @@ fn main() -> ExitCode {
 
 /// Tries a dialect: 0 when all that was tried works, 1 when not, 2 when nothing could be tried.
 fn dialect(arguments: &arguments::DialectArguments) -> ExitCode {
+    let failed = |error: &dyn std::error::Error| {
+        eprintln!("evenpaird: {error}");
+        ExitCode::from(NOT_STARTED)
+    };
+    let Some(at) = &arguments.at else {
+        return match probe::look(&arguments.file) {
+            Ok(words) => {
+                println!("{words}");
+                ExitCode::SUCCESS
+            }
+            Err(error) => failed(&error),
+        };
+    };
     let runtime = match tokio::runtime::Builder::new_current_thread().enable_all().build() {
         Ok(runtime) => runtime,
-        Err(error) => {
-            eprintln!("evenpaird: starting: {error}");
-            return ExitCode::from(NOT_STARTED);
-        }
+        Err(error) => return failed(&error),
     };
-    match runtime.block_on(probe::run(arguments)) {
+    match runtime.block_on(probe::run(at, arguments)) {
         Ok(findings) => {
             println!("{findings}");
-            ExitCode::from(if findings.good() { 0 } else { 1 })
+            ExitCode::from(u8::from(!findings.good()))
         }
-        Err(error) => {
-            eprintln!("evenpaird: {error}");
-            ExitCode::from(NOT_STARTED)
-        }
+        Err(error) => failed(&error),
     }
 }

@@ -92,3 +92,57 @@ fn paths_named_in_the_documents_exist() {
     }
     assert!(wrong.is_empty(), "these lead nowhere: {wrong:#?}");
 }
+
+/// The words in backquotes of a document.
+fn quoted_words(text: &str) -> BTreeSet<&str> {
+    let quoted = text.split('`').skip(1).step_by(2);
+    quoted.flat_map(|code| code.split(|c: char| !(c.is_alphanumeric() || matches!(c, '_' | '.')))).collect()
+}
+
+#[test]
+fn every_key_and_intent_of_a_dialect_is_documented() {
+    let guide = std::fs::read_to_string(project().join("configs/dialects/README.md")).unwrap();
+    let words = quoted_words(&guide);
+    let mut seen = BTreeSet::new();
+    for path in below(&project().join("daemon/core/src/dialect/read"), ".rs") {
+        let source = std::fs::read_to_string(&path).unwrap();
+        for (at, _) in source.match_indices('"') {
+            // A key is asked for as `table.text("key")`, or by a helper that takes the table first.
+            let before = source[..at].trim_end();
+            let asked = ["text(", "texts(", "whole(", "flag(", "amount(", "table(", "tables(", "(&mut table,"];
+            let key = source[at + 1..].split('"').next().unwrap_or_default();
+            let word = !key.is_empty() && key.chars().all(|c| c.is_ascii_lowercase() || c == '_');
+            if word && asked.iter().any(|asked| before.ends_with(asked)) {
+                seen.insert(key.to_owned());
+            }
+        }
+    }
+    assert!(seen.len() >= 35, "keys are asked for in another way now: {seen:?}");
+    let missing: Vec<&String> = seen.iter().filter(|key| !words.contains(key.as_str())).collect();
+    assert!(missing.is_empty(), "describe these keys in configs/dialects/README.md: {missing:?}");
+
+    let intents: Vec<&str> = evenpair_core::dialect::Intent::all()
+        .map(evenpair_core::dialect::Intent::name)
+        // They have tables of their own.
+        .filter(|name| !matches!(*name, "error" | "complete"))
+        .collect();
+    let missing: Vec<&&str> = intents.iter().filter(|name| !words.contains(**name)).collect();
+    assert!(missing.is_empty(), "describe these intents in configs/dialects/README.md: {missing:?}");
+}
+
+#[test]
+fn the_examples_of_the_dialects_guide_are_dialects() {
+    let guide = std::fs::read_to_string(project().join("configs/dialects/README.md")).unwrap();
+    let examples: Vec<&str> = guide.split("```toml\n").skip(1).filter_map(|rest| rest.split("```").next()).collect();
+    assert!(examples.len() >= 3, "the guide has examples");
+    for example in examples {
+        // A piece of a file is laid over the bundled dialect.
+        let piece = if example.contains("like = ") { String::new() } else { "like = \"scpi-99\"\n".to_owned() };
+        if let Err(found) = evenpair_core::dialect::Dialect::read(&format!("{piece}{example}")) {
+            // An expression over names of a preamble that is not shown is right as it stands.
+            let others: Vec<_> =
+                found.iter().filter(|mistake| !mistake.what.contains("which no reply gives")).collect();
+            assert!(others.is_empty(), "{example}\n{others:#?}");
+        }
+    }
+}

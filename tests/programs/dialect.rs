@@ -146,6 +146,9 @@ async fn what_cannot_be_tried_says_why() {
     let (status, said) = tried("scpi-99", "TCPIP::x::y::SOCKET", &[]).await;
     assert_eq!(status, 2, "{said}");
     assert!(said.contains("`y` is not a port"), "{said}");
+    let Output { status, stdout, .. } = run_to_end("evenpaird", &["dialect", "scpi-99"]).await;
+    let said = String::from_utf8_lossy(&stdout);
+    assert!(status.success() && said.contains("words for: identify, options, clear"), "{said}");
     let (status, said) = tried("scpi-98", &nobody, &[]).await;
     assert_eq!(status, 2, "{said}");
     assert!(said.contains("scpi-99"), "{said}");

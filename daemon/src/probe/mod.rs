@@ -11,6 +11,7 @@ use std::path::Path;
 use std::sync::Arc;
 use std::time::Duration;
 
+use evenpair_core::dialect::Intent;
 use evenpair_core::scpi::address::{AddressError, Resource};
 use tokio_util::sync::CancellationToken;
 use tokio_util::task::TaskTracker;
@@ -37,13 +38,32 @@ pub(crate) enum ProbeError {
     Unspoken { resource: String },
 }
 
-/// Tries the dialect on the instrument.
+/// What a dialect has words for, when there is no instrument to try it on.
+///
+/// # Errors
+/// When it cannot be read.
+pub(crate) fn look(file: &str) -> Result<String, ProbeError> {
+    let dialect = dialects::load(file, Path::new(""))?;
+    let named = |speaks: bool| {
+        let intents = Intent::all().filter(|intent| dialect.supports(*intent) == speaks);
+        let names: Vec<&str> = intents.map(Intent::name).collect();
+        if names.is_empty() { "nothing".to_owned() } else { names.join(", ") }
+    };
+    Ok(format!(
+        "the dialect {} has no mistakes\nwords for: {}\nno words for: {}",
+        dialect.name(),
+        named(true),
+        named(false)
+    ))
+}
+
+/// Tries the dialect on the instrument at `at`.
 ///
 /// # Cancel safety
 /// Dropping it leaves a setting that was being tried as it is.
-pub(crate) async fn run(arguments: &DialectArguments) -> Result<Findings, ProbeError> {
+pub(crate) async fn run(at: &str, arguments: &DialectArguments) -> Result<Findings, ProbeError> {
     let dialect = Arc::new(dialects::load(&arguments.file, Path::new(""))?);
-    let resource: Resource = arguments.at.parse().map_err(|source| ProbeError::Address { source })?;
+    let resource: Resource = at.parse().map_err(|source| ProbeError::Address { source })?;
     let Some((host, port, protocol)) = place_of(&resource) else {
         return Err(ProbeError::Unspoken { resource: resource.to_string() });
     };

@@ -4,7 +4,7 @@ use std::collections::BTreeMap;
 
 use super::intent::BESIDES;
 use super::split::parts;
-use super::template::{Refusal, Spelling};
+use super::template::{Listing, Refusal, SPELLINGS, Spelling};
 use super::words::{Words, same};
 use super::{DialectError, Fields, Intent, ReplyKind, Value};
 use crate::scpi::value::{self, ValueError};
@@ -29,8 +29,8 @@ struct Field {
 /// How the parts of a line are told apart.
 #[derive(Debug, Clone, PartialEq)]
 enum Form {
-    /// By their place in a comma list.
-    List,
+    /// By their place in a list, which has this sign between them.
+    List(char),
     /// By their keys, one for each field.
     Keys { keys: Vec<String>, signs: Signs },
     /// There is one part, the line.
@@ -61,10 +61,14 @@ pub(super) struct Whose<'w> {
 }
 
 impl Shape {
-    /// A comma list of these places, each `name`, `name:spelling` or `_`.
-    pub(super) fn list<'p>(places: impl Iterator<Item = &'p str>, whose: Whose<'_>) -> Result<Self, Refusal> {
+    /// A list of these places, each `name`, `name:spelling` or `_`.
+    pub(super) fn list<'p>(
+        places: impl Iterator<Item = &'p str>,
+        between: char,
+        whose: Whose<'_>,
+    ) -> Result<Self, Refusal> {
         let fields = places.map(|place| field(place, whose)).collect::<Result<_, _>>()?;
-        Ok(Self { fields, form: Form::List })
+        Ok(Self { fields, form: Form::List(between) })
     }
 
     /// Entries with keys: the place of each, and the instrument's key for it.
@@ -107,7 +111,7 @@ impl Shape {
         let unparted = |source| DialectError::Reply { command: command.to_owned(), reply: shown(), source };
         let parts = match &self.form {
             Form::Whole => vec![body],
-            Form::List => parts(body, ',').map_err(unparted)?,
+            Form::List(between) => parts(body, *between).map_err(unparted)?,
             Form::Keys { keys, signs } => {
                 let entries = parts(body, signs.between).map_err(unparted)?;
                 let pairs: Vec<(&str, &str)> = entries
@@ -165,10 +169,11 @@ fn plain(part: &str, spelling: &Spelling, manner: Manner) -> Result<Value, Value
     let number = |text: &str| if manner.units { value::number_with_unit(text) } else { value::number(text) };
     Ok(match spelling {
         Spelling::Flag => Value::Flag(value::boolean(part)?),
-        Spelling::List => {
+        Spelling::Listed(_) => {
             // Both `1,0` and `(@101,102)`.
             let inner = part.trim().strip_prefix("(@").and_then(|rest| rest.strip_suffix(')')).unwrap_or(part);
-            Value::List(value::list(inner)?.into_iter().map(value::whole).collect::<Result<_, _>>()?)
+            let sign = if matches!(spelling, Spelling::Listed(Listing::Blanks)) { ' ' } else { ',' };
+            Value::List(parts(inner, sign)?.into_iter().map(value::whole).collect::<Result<_, _>>()?)
         }
         Spelling::Number => Value::Number(number(part)?),
         Spelling::Percent => Value::Number(number(part)? / 100.0),
@@ -210,7 +215,7 @@ fn field(place: &str, whose: Whose<'_>) -> Result<Field, Refusal> {
     let spelling = match (spelling, kind) {
         (Some(spelling), _) => spelling,
         (None, ReplyKind::Flag) => Spelling::Flag,
-        (None, ReplyKind::List) => Spelling::List,
+        (None, ReplyKind::List) => Spelling::Listed(Listing::Channels),
         (None, ReplyKind::Number) => Spelling::Number,
         (None, ReplyKind::Text | ReplyKind::Block) => Spelling::Text,
         (None, ReplyKind::Whole) => Spelling::Whole,
@@ -223,7 +228,7 @@ fn field(place: &str, whose: Whose<'_>) -> Result<Field, Refusal> {
         (&spelling, kind),
         (Spelling::Words(_), _)
             | (Spelling::Flag, ReplyKind::Flag)
-            | (Spelling::List, ReplyKind::List)
+            | (Spelling::Listed(_), ReplyKind::List)
             | (Spelling::Number, ReplyKind::Number | ReplyKind::Whole)
             | (Spelling::Percent, ReplyKind::Number)
             | (Spelling::Text, ReplyKind::Text | ReplyKind::Block)
@@ -238,8 +243,7 @@ fn field(place: &str, whose: Whose<'_>) -> Result<Field, Refusal> {
 
 fn refuse_words(name: &str, kind: ReplyKind, map: &str, words: &BTreeMap<String, Words>) -> Result<(), Refusal> {
     let Some(map_found) = words.get(map) else {
-        let help = "spellings are flag, list, number, percent, text, whole, or the name of a `[words.…]`";
-        return Err((format!("`{map}` is neither a spelling nor a map of words"), help.to_owned()));
+        return Err((format!("`{map}` is neither a spelling nor a map of words"), SPELLINGS.to_owned()));
     };
     let lacking = match kind {
         ReplyKind::Keyword(keys) => map_found.lacks(keys),

@@ -11,8 +11,8 @@ use crate::scpi::write;
 pub(super) enum Spelling {
     /// `1` or `0`.
     Flag,
-    /// A channel list.
-    List,
+    /// Whole numbers.
+    Listed(Listing),
     /// A decimal number.
     Number,
     /// A fraction as a percentage.
@@ -25,12 +25,29 @@ pub(super) enum Spelling {
     Words(String),
 }
 
+/// How a list of whole numbers is spelled.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(super) enum Listing {
+    /// `101 102`.
+    Blanks,
+    /// `(@101,102)`, a channel list (SCPI-99 volume 1, 8.3.2).
+    Channels,
+    /// `101,102`.
+    Commas,
+}
+
+/// Every spelling, for messages.
+pub(super) const SPELLINGS: &str =
+    "spellings are blanks, commas, flag, list, number, percent, text, whole, or the name of a `[words.…]`";
+
 impl Spelling {
     /// The spelling of this name; every other name is that of a map of words.
     pub(super) fn parse(name: &str) -> Self {
         match name {
+            "blanks" => Self::Listed(Listing::Blanks),
+            "commas" => Self::Listed(Listing::Commas),
             "flag" => Self::Flag,
-            "list" => Self::List,
+            "list" => Self::Listed(Listing::Channels),
             "number" => Self::Number,
             "percent" => Self::Percent,
             "text" => Self::Text,
@@ -43,7 +60,7 @@ impl Spelling {
     fn usual(kind: ArgKind) -> Option<Self> {
         match kind {
             ArgKind::Channel | ArgKind::Whole(..) => Some(Self::Whole),
-            ArgKind::Channels => Some(Self::List),
+            ArgKind::Channels => Some(Self::Listed(Listing::Channels)),
             ArgKind::Flag => Some(Self::Flag),
             ArgKind::Keyword(_) => None,
             ArgKind::Number => Some(Self::Number),
@@ -57,7 +74,7 @@ impl Spelling {
             // Which numbers come is not known before: one without a word is refused when it does.
             Self::Words(name) if words.contains_key(name) => None,
             Self::Words(name) => Some(format!("`{name}` is neither a spelling nor a map of words")),
-            Self::Flag | Self::List | Self::Text => Some("an expression gives a number".to_owned()),
+            Self::Flag | Self::Listed(_) | Self::Text => Some("an expression gives a number".to_owned()),
         }
     }
 
@@ -85,7 +102,7 @@ impl Spelling {
                 }
             }
             (Self::Flag, ArgKind::Flag)
-            | (Self::List, ArgKind::Channels)
+            | (Self::Listed(_), ArgKind::Channels)
             | (Self::Number, ArgKind::Number | ArgKind::Channel | ArgKind::Whole(..))
             | (Self::Percent, ArgKind::Number)
             | (Self::Whole, ArgKind::Channel | ArgKind::Whole(..)) => None,
@@ -201,10 +218,7 @@ impl Template {
 fn argument(place: &str, places: &Places<'_>, words: &BTreeMap<String, Words>) -> Result<Part, Refusal> {
     let (name, spelling) = place.split_once(':').map_or((place, None), |(name, spelling)| (name, Some(spelling)));
     let (name, spelling) = (name.trim(), spelling.map(|spelling| Spelling::parse(spelling.trim())));
-    let unfit = |why: String| {
-        let help = "spellings are flag, list, number, percent, text, whole, or the name of a `[words.…]`";
-        (format!("`{{{place}}}` cannot be spelled so: {why}"), help.to_owned())
-    };
+    let unfit = |why: String| (format!("`{{{place}}}` cannot be spelled so: {why}"), SPELLINGS.to_owned());
     if places.derived.contains(&name) {
         let spelling = spelling.unwrap_or(Spelling::Number);
         return match spelling.refuse_derived(words) {
@@ -238,9 +252,18 @@ fn spell(
     args: &Args,
     words: &BTreeMap<String, Words>,
 ) -> Result<String, DialectError> {
+    let unwritten = |source| DialectError::Write { intent, name: name.to_owned(), source };
     let written = match spelling {
         Spelling::Flag => Ok(write::boolean(args.flag(name)?)),
-        Spelling::List => write::channels(args.list(name)?),
+        Spelling::Listed(listing) => {
+            let sign = match listing {
+                Listing::Blanks => " ",
+                Listing::Channels => return write::channels(args.list(name)?).map_err(unwritten),
+                Listing::Commas => ",",
+            };
+            let numbers: Vec<String> = args.list(name)?.iter().map(|number| write::whole(*number)).collect();
+            Ok(numbers.join(sign))
+        }
         Spelling::Number => write::number(args.number(name)?),
         Spelling::Percent => write::percent(args.number(name)?),
         Spelling::Text => write::quoted(args.text(name)?),
@@ -257,5 +280,5 @@ fn spell(
             };
         }
     };
-    written.map_err(|source| DialectError::Write { intent, name: name.to_owned(), source })
+    written.map_err(unwritten)
 }

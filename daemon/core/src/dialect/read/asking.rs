@@ -17,7 +17,7 @@ pub(super) fn errors(mut table: Table<'_>, words: &Maps) -> Option<Errors> {
     let shape = places.and_then(|places| {
         let span = places.first().map_or_else(|| table.span(), |first| first.span.clone());
         let whose = Whose { intent: Intent::Error, free: false, words };
-        let shape = Shape::list(places.iter().map(|item| item.value.as_str()), whose);
+        let shape = Shape::list(places.iter().map(|item| item.value.as_str()), ',', whose);
         match shape {
             Ok(shape) if shape.place_of("number").is_some() => Some(shape),
             Ok(_) => {

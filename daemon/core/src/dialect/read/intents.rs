@@ -131,7 +131,8 @@ fn question(mut table: Table<'_>, whose: Whose<'_>, places: &Places<'_>, general
         None
     } else if let Some(places) = table.texts("reply") {
         let begin = places.first().map_or_else(|| table.span(), |first| first.span.clone());
-        Shape::list(places.iter().map(|item| item.value.as_str()), whose)
+        let between = choice_of_sign(&mut table, "between", ',');
+        Shape::list(places.iter().map(|item| item.value.as_str()), between, whose)
             .map_err(|refusal| refuse(&table, begin, refusal))
             .ok()
             .map(Wanted::Line)

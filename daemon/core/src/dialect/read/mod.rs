@@ -10,7 +10,7 @@ use std::ops::Range;
 
 use super::reply::{Manner, is_name};
 use super::split::refuse_sign;
-use super::template::Refusal;
+use super::template::{Refusal, Spelling};
 use super::words::Words;
 use super::{Dialect, Intent, SkewSetting};
 use crate::document::Table;
@@ -95,9 +95,7 @@ fn refuse(table: &Table<'_>, span: Range<usize>, (what, help): Refusal) {
 fn words(top: &mut Table<'_>) -> Maps {
     let mut maps = Maps::new();
     for (name, mut table) in top.named_tables("words") {
-        if !is_name(&name.value)
-            || matches!(name.value.as_str(), "flag" | "list" | "number" | "percent" | "text" | "whole")
-        {
+        if !is_name(&name.value) || !matches!(Spelling::parse(&name.value), Spelling::Words(_)) {
             let help = "use small letters, digits and `_`, and none of the names of spellings";
             table.mistakes().add(name.span, format!("`{}` cannot name a map of words", name.value), help);
             continue;

@@ -125,3 +125,27 @@ fn a_scope_that_cannot_be_stopped_serves_no_pair() {
     assert!(dialect.runs_freely() && dialect.one_client());
     assert!(!scpi_99().runs_freely() && !scpi_99().one_client());
 }
+
+#[test]
+fn lists_with_other_signs_between() {
+    let dialect = dialect(
+        r#"
+name = "x"
+[intent."route.close"]
+send = ["JOIN {channels:blanks}"]
+[intent."route.open"]
+send = ["PART {channels:commas}"]
+[intent."route.get"]
+ask = [{ send = "JOINED {channels:commas}?", line = "closed:blanks" }]
+[intent."vertical.get"]
+ask = [{ send = "V{channel}?", reply = ["span_v", "offset_v"], between = " " }]
+"#,
+    );
+    let route = |intent| Call::new(intent).with("channels", vec![101, 103]);
+    assert_eq!(said(&dialect, &route(Intent::RouteClose)), "JOIN 101 103\n");
+    assert_eq!(said(&dialect, &route(Intent::RouteOpen)), "PART 101,103\n");
+    let closed = dialect.parse(&route(Intent::RouteGet), &lines(&["1  0"])).unwrap();
+    assert_eq!(closed.list("closed").unwrap(), [1, 0]);
+    let vertical = dialect.parse(&Call::new(Intent::VerticalGet).with("channel", 1), &lines(&["8.0  -0.5"])).unwrap();
+    assert_eq!((vertical.number("span_v"), vertical.number("offset_v")), (Ok(8.0), Ok(-0.5)));
+}
