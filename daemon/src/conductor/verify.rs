@@ -2,7 +2,7 @@
 
 use evenpair_api as api;
 use evenpair_core::analysis::rejection::{RejectionBand, measure};
-use evenpair_core::bench::{Acquisition, PairSpec, ReferenceSpec};
+use evenpair_core::bench::{Acquisition, PairSpec, ReferenceKind, ReferenceSpec};
 use tokio_util::sync::CancellationToken;
 
 use super::correction::{for_software, newest_by_bench, rejection_points};
@@ -69,7 +69,8 @@ pub(crate) async fn on_range(
 ) -> Result<Vec<RejectionBand>, Trouble> {
     scope.prepare(acquisition).await?;
     workshop.start_reference(reference, stop).await?;
-    let outcome = acquire_and_measure(scope, correction, *acquisition, tell, stop).await;
+    let bands = bands_of(reference);
+    let outcome = acquire_and_measure(scope, correction, *acquisition, bands, tell, stop).await;
     let ended = workshop.stop_reference(reference, set, stop).await;
     let bands = outcome?;
     ended?;
@@ -79,10 +80,19 @@ pub(crate) async fn on_range(
     Ok(bands)
 }
 
+/// Where rejection is told on a reference: a sine holds its own frequency only, which may lie between all others.
+fn bands_of(reference: &ReferenceSpec) -> Vec<f64> {
+    match reference.kind {
+        ReferenceKind::Sine => vec![reference.frequency_hz],
+        _ => BANDS_HZ.to_vec(),
+    }
+}
+
 async fn acquire_and_measure(
     scope: &Scope<'_>,
     correction: &api::Correction,
     acquisition: Acquisition,
+    bands_hz: Vec<f64>,
     tell: &Tell,
     stop: &CancellationToken,
 ) -> Result<Vec<RejectionBand>, Trouble> {
@@ -103,6 +113,6 @@ async fn acquire_and_measure(
         all_p.push(p);
         all_n.push(n);
     }
-    let measured = compute("measuring the rejection", move || measure(&all_p, &all_n, &software, &BANDS_HZ)).await?;
+    let measured = compute("measuring the rejection", move || measure(&all_p, &all_n, &software, &bands_hz)).await?;
     measured.map_err(|source| Trouble::Apply { pair: scope.pair.name.clone(), source })
 }
