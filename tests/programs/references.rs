@@ -59,10 +59,18 @@ async fn covers(what: &str, plan: &LabPlan) {
     offset.judge(&format!("{what}: offset"));
 }
 
-/// Catches: an estimator that is right for one kind of signal only, or is not told which kind it has.
+/// Catches: an estimator that is right for one kind of signal only, or is not told which kind it has; and edges of three
+/// samples that all meet the sampler at one phase (1 MHz at 1 GS/s) without an allowance for what then folds back.
 #[tokio::test(flavor = "multi_thread", worker_threads = 2)]
 async fn a_square_wave_gives_the_truth() {
     covers("square", &bench("square", "1 MHz", "call = \"source.square\", edge_s = \"3 ns\"")).await;
+}
+
+/// At a frequency that does not divide the sample rate the noise is all there is.
+#[tokio::test(flavor = "multi_thread", worker_threads = 2)]
+async fn a_square_wave_of_another_frequency_gives_the_truth() {
+    let plan = bench("square", "1.0107 MHz", "call = \"source.square\", edge_s = \"3 ns\"");
+    covers("square, 1.0107 MHz", &plan).await;
 }
 
 /// A pulse of a tenth of its period.

@@ -5,7 +5,7 @@ use std::sync::Arc;
 use evenpair_api as api;
 use evenpair_api::Quantity;
 use evenpair_core::analysis::Correction;
-use evenpair_core::analysis::deskew::{Combined, combine, enough, whole_periods};
+use evenpair_core::analysis::deskew::{Combined, combine, enough, sampled_alike, whole_periods};
 use evenpair_core::analysis::skew::{Reference, Shape, SkewError, SkewEstimate, Warning, estimate_records};
 use evenpair_core::bench::conditions::Carried;
 use evenpair_core::bench::{Acquisition, PairSpec, ReferenceKind, ReferenceSpec};
@@ -235,8 +235,22 @@ async fn acquire_until_enough(
         let gain_enough = !is_gain_reference || combined.gain.estimate.u <= TARGET_U_GAIN;
         let count = u32::try_from(repeats.len()).unwrap_or(u32::MAX);
         if count >= most || (count >= LEAST_ACQUISITIONS && skew_enough && gain_enough) {
+            let mut combined = combined;
+            combined.skew_s.estimate.u = combined.skew_s.estimate.u.hypot(alike(reference, &acquisition));
             return Ok(OnReference { combined, acquisition, kept: Arc::new(kept), known });
         }
+    }
+}
+
+/// What no scatter shows: edges that all meet the sampler at the same phase, standard uncertainty in seconds.
+pub(crate) fn alike(reference: &ReferenceSpec, acquisition: &Acquisition) -> f64 {
+    match reference.kind {
+        ReferenceKind::Square | ReferenceKind::Pulse => {
+            let Acquisition { interval_s, points, .. } = *acquisition;
+            sampled_alike(1.0 / reference.frequency_hz, reference.edge_s, interval_s, points)
+        }
+        // Sines hold nothing that folds back, and the node of a device runs on a clock of its own.
+        ReferenceKind::InSitu | ReferenceKind::Multitone | ReferenceKind::Sine => 0.0,
     }
 }
 

@@ -13,7 +13,7 @@ use tokio_util::sync::CancellationToken;
 use uuid::Uuid;
 
 use super::correction::{conditions_now, for_software, judge, newest_for, since, to_api};
-use super::deskew::{LEAST_ACQUISITIONS, TARGET_U_GAIN, shape_of};
+use super::deskew::{LEAST_ACQUISITIONS, TARGET_U_GAIN, alike, shape_of};
 use super::scope::Scope;
 use super::tell::Tell;
 use super::trouble::Trouble;
@@ -77,6 +77,7 @@ async fn make(
     let mut warnings: Vec<String> =
         reasons.iter().map(|reason| format!("it comes from a stale one: {reason}")).collect();
     warnings.extend(found.disagreements.iter().map(|one| in_words(one, reference)));
+    warnings.extend(found.few_steps.map(|steps| of_few_steps(steps, found.level_way, reference)));
     warnings.extend(found.warnings.iter().map(ToString::to_string));
     let measured_anew = [found.skew_way, found.level_way].iter().all(|way| *way == transfer::Way::Common);
     if !measured_anew {
@@ -167,6 +168,7 @@ async fn acquire_until_enough(
 ) -> Result<(Transferred, bool), Trouble> {
     let (plan, reference) = (wish.plan, wish.reference);
     let known = Reference { shape: shape_of(reference.kind), period_s: Some(1.0 / reference.frequency_hz) };
+    let alike_u_s = alike(reference, &ranges[1]);
     let correction = for_software(from, 0.0);
     let failed = |source| Trouble::Transfer {
         pair: scope.pair.name.clone(),
@@ -194,7 +196,8 @@ async fn acquire_until_enough(
         let [Some(old), Some(new)] = records else { continue };
         let repeat = compute("comparing two ranges", move || compare(&old, &new, &known)).await?;
         repeats.push(repeat.map_err(failed)?);
-        let found = transfer::transfer(&correction, &repeats, reference.carry_u_s, plan.choice).map_err(failed)?;
+        let found = transfer::transfer(&correction, &repeats, reference.carry_u_s, alike_u_s, plan.choice);
+        let found = found.map_err(failed)?;
         let u_skew = show(found.correction.skew_s.u, Unit::Second, 2);
         tell.doing(format!(
             "reference `{}`: acquisition {} on both ranges, u(gain) {:.1e}, u(skew) {u_skew}",
@@ -238,6 +241,20 @@ fn in_words(disagreement: &Disagreement, reference: &ReferenceSpec) -> String {
     format!(
         "on the old range the reference `{}` gives another {what} than the correction ({found}, k = 2): the pair has \
          drifted since, or its legs respond differently to that signal; deskew again to tell which",
+        reference.name
+    )
+}
+
+/// What a person should know of a signal that is small on one of the ranges.
+fn of_few_steps(steps: f64, way: transfer::Way, reference: &ReferenceSpec) -> String {
+    let where_it_counts = match way {
+        transfer::Way::Common => "a comparison of the old range with the new",
+        transfer::Way::Carried | transfer::Way::Legs => "gain and offset on the new range",
+    };
+    format!(
+        "the reference `{}` moves over only {steps:.0} converter steps of the wider range: the converter's own \
+         non-linearity counts in {where_it_counts} and is in no uncertainty; a larger signal that both ranges still \
+         show is better",
         reference.name
     )
 }

@@ -5,7 +5,7 @@ use evenpair_core::analysis::apply::ApplyError;
 use evenpair_core::analysis::rejection::{RejectionBand, measure_with};
 use evenpair_core::analysis::response::{Nonlinearity, nonlinearity};
 use evenpair_core::analysis::{Beyond, Correction, Record};
-use evenpair_core::bench::{Acquisition, PairSpec, ReferenceSpec};
+use evenpair_core::bench::{Acquisition, PairSpec, ReferenceKind, ReferenceSpec};
 use tokio_util::sync::CancellationToken;
 
 use super::correction::{for_software, newest_by_bench, rejection_points};
@@ -84,7 +84,8 @@ pub(crate) async fn on_range(
 ) -> Result<Shown, Trouble> {
     scope.prepare(acquisition).await?;
     workshop.start_reference(reference, stop).await?;
-    let outcome = acquire_and_measure(scope, correction, *acquisition, tell, stop).await;
+    let bands = bands_of(reference);
+    let outcome = acquire_and_measure(scope, correction, *acquisition, bands, tell, stop).await;
     let ended = workshop.stop_reference(reference, set, stop).await;
     let shown = outcome?;
     ended?;
@@ -94,10 +95,19 @@ pub(crate) async fn on_range(
     Ok(shown)
 }
 
+/// Where rejection is told on a reference: a sine holds its own frequency only, which may lie between all others.
+fn bands_of(reference: &ReferenceSpec) -> Vec<f64> {
+    match reference.kind {
+        ReferenceKind::Sine => vec![reference.frequency_hz],
+        _ => BANDS_HZ.to_vec(),
+    }
+}
+
 async fn acquire_and_measure(
     scope: &Scope<'_>,
     correction: &api::Correction,
     acquisition: Acquisition,
+    bands_hz: Vec<f64>,
     tell: &Tell,
     stop: &CancellationToken,
 ) -> Result<Shown, Trouble> {
@@ -119,19 +129,26 @@ async fn acquire_and_measure(
         all_n.push(n);
     }
     let beyond = correction.beyond();
-    let measured = compute("measuring the rejection", move || show(&all_p, &all_n, &software, &beyond)).await?;
+    let work = move || show(&all_p, &all_n, &software, &beyond, &bands_hz);
+    let measured = compute("measuring the rejection", work).await?;
     measured.map_err(|source| Trouble::Apply { pair: scope.pair.name.clone(), source })
 }
 
 /// Rejection with all that is applied, a response that does not hold for these records left out as in a capture. No band
 /// claims more than the converters let through.
-fn show(p: &[Record], n: &[Record], software: &Correction, beyond: &Beyond) -> Result<Shown, ApplyError> {
+fn show(
+    p: &[Record],
+    n: &[Record],
+    software: &Correction,
+    beyond: &Beyond,
+    bands_hz: &[f64],
+) -> Result<Shown, ApplyError> {
     let mut response = beyond.response.as_ref();
-    let mut bands = measure_with(p, n, software, response, &BANDS_HZ);
+    let mut bands = measure_with(p, n, software, response, bands_hz);
     if let Err(ApplyError::Response(error)) = &bands {
         tracing::warn!(%error, "the response is not applied to a verification");
         response = None;
-        bands = measure_with(p, n, software, None, &BANDS_HZ);
+        bands = measure_with(p, n, software, None, bands_hz);
     }
     let mut bands = bands?;
     let limit = nonlinearity(p, n, software, response)?;

@@ -175,6 +175,28 @@ fn each_mistake_is_named_at_its_place() {
             8,
             "the tips are still on its reference",
         ),
+        (
+            "do = \"transfer\"\npair = \"gate\"\nreference = \"fast\"\nspan = \"8 V\"",
+            5,
+            "records of pair `gate` would hold 1 V to 9 V",
+        ),
+        (
+            "do = \"transfer\"\npair = \"gate\"\nreference = \"fast\"\nspan = \"100 V\"\noffset = \"35 V\"",
+            5,
+            "a deskew makes the correction of that range",
+        ),
+        ("do = \"transfer\"\npair = \"gate\"\nspan = \"20 V\"", 5, "`stage` has no `reference`"),
+        ("do = \"transfer\"\npair = \"gate\"\nreference = \"fast\"", 5, "`stage` has no `span`"),
+        (
+            "do = \"transfer\"\npair = \"gate\"\nreference = \"fast\"\nspan = \"20 V\"\nby = \"luck\"",
+            10,
+            "`by` cannot be `luck`",
+        ),
+        (
+            "do = \"transfer\"\npair = \"gate\"\nreference = \"fast\"\nspan = \"20 V\"\n[[stage]]\ndo = \"capture\"\npair = \"gate\"",
+            10,
+            "the tips are still on its reference",
+        ),
         ("do = \"sweep\"\naxes = []\n[[stage.stage]]\ndo = \"wait\"\ntime = 1", 5, "at least one axis"),
         (
             "do = \"sweep\"\naxes = [{ setting = \"bus_voltage\", list = [1, 99] }]\n[[stage.stage]]\ndo = \"wait\"\ntime = 1",
@@ -279,6 +301,27 @@ fn a_deskew_or_a_verification_alone_is_a_sequence_too() {
     assert!(matches!(DeskewPlan::of(&bench, "bus", None, None), Err(PlanError::UnknownPair { .. })));
     assert!(matches!(DeskewPlan::of(&bench, "gate", Some("x"), None), Err(PlanError::UnknownReference { .. })));
     assert!(matches!(DeskewPlan::of(&bench, "gate", None, Some("fast")), Err(PlanError::Misfit { .. })));
+}
+
+#[test]
+fn a_capture_on_another_range_needs_a_transfer_to_it() {
+    let bench = greenhouse();
+    let with = |span: &str| {
+        format!(
+            "title = \"t\"\n[[stage]]\ndo = \"transfer\"\npair = \"gate\"\nreference = \"fast\"\nspan = \"{span}\"\n\
+             [[stage]]\ndo = \"route\"\nroute = \"device\"\n\
+             [[stage]]\ndo = \"capture\"\npair = \"gate\"\nspan = \"50 V\"\noffset = \"5 V\"\n"
+        )
+    };
+    let found = steps(&with("50 V"), &bench);
+    assert_eq!(found[1], "transfer gate to a span of 50 V around 5 V by fast");
+    assert!(mistakes(&with("20 V"), &bench)[0].1.contains("another range than the corrections"));
+    let plan = TransferPlan::of(&bench, "gate", "fast", 50.0, None).unwrap();
+    let (pair, reference) = (bench.pair("gate").unwrap(), bench.reference("fast").unwrap());
+    let [old, new] = plan.acquisitions(pair, reference);
+    assert_eq!((old.span_v, old.offset_v, new.span_v, new.offset_v), (100.0, 35.0, 50.0, 5.0));
+    assert_eq!((old.averages, new.points), (64, 10_000), "all else as the reference has it");
+    assert_eq!(transfer_alone(&bench, plan).steps.len(), 2, "the bench is prepared first");
 }
 
 /// The configuration guide names every key that the readers of benches and sequences ask for, every kind of stage and

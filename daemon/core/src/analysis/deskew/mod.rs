@@ -4,6 +4,10 @@
 //! what the single uncertainties promise and what the scatter shows (type A, JCGM 100, 4.2). Repeats are not averaged
 //! down where the converter has too little dither: its error is then the same in all of them.
 
+mod alike;
+
+pub use alike::sampled_alike;
+
 use super::skew::{Limit, SkewEstimate, Warning, limit_of};
 use super::{Correction, Estimate};
 use statrs::distribution::{ContinuousCDF, StudentsT};

@@ -95,6 +95,8 @@ pub struct Repeat {
     pub negative: SkewEstimate,
     /// Both legs against each other, on the old range and on the new one; none where they show no common signal.
     pub common: Option<[SkewEstimate; 2]>,
+    /// Over how many converter steps the signal moves, twice its rms, on the range and the leg where it is least.
+    pub steps: f64,
 }
 
 /// Estimates from one acquisition on each range, positive leg first. The scope's own skew settings are the same in both.
@@ -106,10 +108,15 @@ pub fn compare(old: &[Record; 2], new: &[Record; 2], reference: &Reference) -> R
         estimate_records(&old[index], &new[index], reference).map_err(|source| TransferError::Leg { leg, source })
     };
     let both = |[p, n]: &[Record; 2]| estimate_records(p, n, reference).ok();
+    let (positive, negative) = (leg("positive", 0)?, leg("negative", 1)?);
+    let steps = |found: &SkewEstimate, index: usize| {
+        2.0 * found.signal_rms_v / old[index].step_v.max(new[index].step_v).max(f64::MIN_POSITIVE)
+    };
     Ok(Repeat {
-        positive: leg("positive", 0)?,
-        negative: leg("negative", 1)?,
         common: both(old).zip(both(new)).map(|(old, new)| [old, new]),
+        steps: steps(&positive, 0).min(steps(&negative, 1)),
+        positive,
+        negative,
     })
 }
 
@@ -126,6 +133,9 @@ pub struct Transferred {
     pub disagreements: Vec<Disagreement>,
     /// How many repeats there were.
     pub repeats: usize,
+    /// Over how many converter steps the signal moves where it is least, if these are so few that the converters' own
+    /// non-linearity, which is in no uncertainty here, may matter.
+    pub few_steps: Option<f64>,
     /// What a person should know of the estimates.
     pub warnings: Vec<Warning>,
 }
@@ -150,11 +160,17 @@ pub enum Quantity {
     Skew,
 }
 
+/// Converter steps that a signal should move over: an integral non-linearity of 0.3 steps, usual for a scope's 8 bits
+/// (common practice, no source), is then 0.3 % of it, and on fewer more.
+pub const FEW_STEPS: f64 = 100.0;
+
 /// Standard uncertainties beyond which two estimates do not differ by chance: 0.3 % of those that agree exceed it.
 const CHANCE: f64 = 3.0;
 
 /// Transfers `correction` by `repeats`. `carry_u_s` is the standard uncertainty that carrying the skew to the new range
-/// unmeasured would add, if it is known.
+/// unmeasured would add, if it is known; nought is as good as unknown, for no two ranges are quite alike.
+/// `alike_u_s` is the standard uncertainty of a skew from this signal that no scatter shows (see
+/// [`super::deskew::sampled_alike`]).
 ///
 /// # Errors
 /// Without repeats, and where `choice` wants a common node and there is none.
@@ -162,6 +178,7 @@ pub fn transfer(
     correction: &Correction,
     repeats: &[Repeat],
     carry_u_s: Option<f64>,
+    alike_u_s: f64,
     choice: Choice,
 ) -> Result<Transferred, TransferError> {
     let pick = |of: fn(&Repeat) -> &SkewEstimate| {
@@ -169,7 +186,12 @@ pub fn transfer(
         combine(&all).ok_or(TransferError::NoRepeats)
     };
     let (positive, negative) = (pick(|repeat| &repeat.positive)?, pick(|repeat| &repeat.negative)?);
-    let common = common(repeats);
+    let common = common(repeats).map(|both| {
+        both.map(|mut one| {
+            one.skew_s.estimate.u = one.skew_s.estimate.u.hypot(alike_u_s);
+            one
+        })
+    });
     let disagreements = common.as_ref().map_or_else(Vec::new, |[old, _]| disagreements(correction, old));
     let differs = |quantities: &[Quantity]| disagreements.iter().any(|found| quantities.contains(&found.quantity));
     let on_new = common.as_ref().map(|[_, new]| new.correction());
@@ -189,7 +211,7 @@ pub fn transfer(
         let moved = moved(repeats);
         let legs = Estimate { value: correction.skew_s.value + moved.value, u: correction.skew_s.u.hypot(moved.u) };
         skews.push((Way::Legs, legs));
-        skews.extend(carry_u_s.map(|carry_u_s| {
+        skews.extend(carry_u_s.filter(|u_s| *u_s > 0.0).map(|carry_u_s| {
             let u = correction.skew_s.u.hypot(carry_u_s);
             (Way::Carried, Estimate { value: correction.skew_s.value, u })
         }));
@@ -209,6 +231,7 @@ pub fn transfer(
         level_way,
         disagreements,
         repeats: repeats.len(),
+        few_steps: repeats.iter().map(|repeat| repeat.steps).reduce(f64::min).filter(|steps| *steps < FEW_STEPS),
         warnings: {
             let taken = [skew_way, level_way].contains(&Way::Common);
             let of_common = common.iter().filter(|_| taken).flat_map(|[_, new]| new.warnings.clone());

@@ -144,7 +144,7 @@ struct Lab {
 }
 
 const INTERVAL_S: f64 = 1e-9;
-const SAMPLES: usize = 3_000;
+const SAMPLES: usize = 2_000;
 const KNOWN: Reference = Reference { shape: Shape::Edges, period_s: Some(1000.0 * INTERVAL_S) };
 
 impl Lab {
@@ -196,7 +196,7 @@ fn square(phase: f64) -> Signal {
 /// the new range.
 #[test]
 fn transfers_cover_the_truth_either_way() {
-    let trials = 150;
+    let trials = 100;
     for choice in [Choice::Legs, Choice::Common, Choice::Best] {
         let mut covered = [0; 3];
         for seed in 0..trials {
@@ -205,16 +205,16 @@ fn transfers_cover_the_truth_either_way() {
             let signals = [signal.clone(), signal];
             let repeats: Vec<Repeat> = (0..4).map(|_| lab.repeat(&signals, 0.37)).collect();
             let from = lab.correction();
-            let found = transfer(&from, &repeats, None, choice).unwrap();
+            let found = transfer(&from, &repeats, None, 0.0, choice).unwrap();
             let truth = Lab::truth(lab.new);
             let all = [found.correction.skew_s, found.correction.gain, found.correction.offset_v];
             for ((count, found), truth) in covered.iter_mut().zip(all).zip(truth) {
                 *count += usize::from((found.value - truth).abs() <= 2.0 * found.u);
             }
         }
-        // 95.45 % of 150 are 143.2, three standard deviations 7.7. The larger of bound and scatter is stated, so that
+        // 95.45 % of 100 are 95.5, three standard deviations 6.3. The larger of bound and scatter is stated, so that
         // more may be covered.
-        assert!(covered.iter().all(|count| *count >= 136), "{choice:?}: {covered:?} of {trials}");
+        assert!(covered.iter().all(|count| *count >= 89), "{choice:?}: {covered:?} of {trials}");
     }
 }
 
@@ -225,7 +225,7 @@ fn tips_on_different_nodes_are_compared_leg_by_leg() {
     let slow = Signal::sine(500.0, 0.4);
     let repeats: Vec<Repeat> = (0..4).map(|_| lab.repeat(&[square(77.3), slow.clone()], 0.2)).collect();
     let from = lab.correction();
-    let found = transfer(&from, &repeats, None, Choice::Best).unwrap();
+    let found = transfer(&from, &repeats, None, 0.0, Choice::Best).unwrap();
     assert_eq!((found.skew_way, found.level_way), (Way::Legs, Way::Legs));
     let truth = Lab::truth(lab.new);
     for (found, truth) in [found.correction.skew_s, found.correction.gain, found.correction.offset_v].iter().zip(truth)
@@ -241,9 +241,9 @@ fn legs_that_see_nothing_in_common_cannot_be_deskewed() {
     let repeats: Vec<Repeat> = (0..2).map(|_| lab.repeat(&[Signal::sine(333.0, 0.0), other.clone()], 0.0)).collect();
     let from = lab.correction();
     assert_eq!(repeats[0].common, None);
-    assert_eq!(transfer(&from, &repeats, None, Choice::Common), Err(TransferError::NotCommon));
-    assert!(transfer(&from, &repeats, None, Choice::Best).is_ok());
-    assert_eq!(transfer(&from, &[], None, Choice::Best), Err(TransferError::NoRepeats));
+    assert_eq!(transfer(&from, &repeats, None, 0.0, Choice::Common), Err(TransferError::NotCommon));
+    assert!(transfer(&from, &repeats, None, 0.0, Choice::Best).is_ok());
+    assert_eq!(transfer(&from, &[], None, 0.0, Choice::Best), Err(TransferError::NoRepeats));
 }
 
 /// Catches: a deskew on the new range that is believed although the same signal says that the correction is wrong.
@@ -254,17 +254,17 @@ fn a_correction_that_the_signal_contradicts_is_told_and_not_replaced() {
     let signals = [signal.clone(), signal];
     let repeats: Vec<Repeat> = (0..4).map(|_| lab.repeat(&signals, 0.0)).collect();
     let right = lab.correction();
-    let found = transfer(&right, &repeats, None, Choice::Best).unwrap();
+    let found = transfer(&right, &repeats, None, 0.0, Choice::Best).unwrap();
     assert_eq!((found.skew_way, found.level_way), (Way::Common, Way::Common));
     assert_eq!(found.disagreements, []);
     let drifted = Correction { gain: estimate(right.gain.value + 0.002, right.gain.u), ..right };
-    let found = transfer(&drifted, &repeats, None, Choice::Best).unwrap();
+    let found = transfer(&drifted, &repeats, None, 0.0, Choice::Best).unwrap();
     assert_eq!((found.skew_way, found.level_way), (Way::Common, Way::Legs));
     let [told] = found.disagreements[..] else { panic!("{found:?}") };
     assert_eq!(told.quantity, Quantity::Gain);
     assert!((told.apart.value + 0.002).abs() < 4.0 * told.apart.u, "{told:?}");
     // Asked for by name it is taken all the same, and the disagreement is told.
-    let found = transfer(&drifted, &repeats, None, Choice::Common).unwrap();
+    let found = transfer(&drifted, &repeats, None, 0.0, Choice::Common).unwrap();
     assert_eq!((found.level_way, found.disagreements.len()), (Way::Common, 1));
 }
 
@@ -276,11 +276,16 @@ fn skew_is_carried_where_that_is_surer_than_measuring() {
     let signals = [signal.clone(), signal];
     let repeats: Vec<Repeat> = (0..4).map(|_| lab.repeat(&signals, 0.0)).collect();
     let from = lab.correction();
-    let found = transfer(&from, &repeats, Some(1e-12), Choice::Legs).unwrap();
+    let found = transfer(&from, &repeats, Some(1e-12), 0.0, Choice::Legs).unwrap();
     assert_eq!(found.skew_way, Way::Carried);
     assert!((found.correction.skew_s.u - from.skew_s.u.hypot(1e-12)).abs() < 1e-18);
     assert!((found.correction.skew_s.value - from.skew_s.value).abs() < 1e-18);
-    let found = transfer(&from, &repeats, Some(1e-9), Choice::Legs).unwrap();
+    // A tenth of the old range's noise is a step here; no signal of 5 V is few of those.
+    assert!(found.few_steps.is_none() && (repeats[0].steps - 10.0 / 0.009).abs() < 100.0, "{}", repeats[0].steps);
+    let coarse = Repeat { steps: 26.0, ..repeats[1].clone() };
+    let found = transfer(&from, &[repeats[0].clone(), coarse], Some(0.0), 0.0, Choice::Legs).unwrap();
+    assert_eq!((found.few_steps, found.skew_way), (Some(26.0), Way::Legs));
+    let found = transfer(&from, &repeats, Some(1e-9), 0.0, Choice::Legs).unwrap();
     assert_eq!(found.skew_way, Way::Legs);
     assert!(!enough(&found, &from, 0.0, 1e-12));
     assert!(enough(&found, &from, 1.0, 1.0));
