@@ -7,6 +7,7 @@
 
 mod hislip;
 mod life;
+mod mean;
 mod repair;
 mod timing;
 mod wire;
