@@ -5,7 +5,8 @@
 //!
 //! What of the standards is *not* understood, and why:
 //!
-//! - indefinite-length blocks `#0` (488.2, 8.7.10): their end is the END message, which a raw socket does not have;
+//! - indefinite-length blocks `#0` (488.2, 8.7.10) on a raw socket: their end is the END message, which it does not have
+//!   ([`hislip`] has it);
 //! - expression data, except for the channel lists that are written (SCPI-99 volume 1, 8.3.2);
 //! - replies of several queries joined by `;`: one query is asked at a time.
 

@@ -7,12 +7,12 @@ use tokio::time::advance;
 use super::*;
 
 /// The instrument's ends of both connections.
-struct Server {
-    sync: DuplexStream,
-    r#async: DuplexStream,
+pub(super) struct Server {
+    pub(super) sync: DuplexStream,
+    pub(super) r#async: DuplexStream,
 }
 
-async fn hear(stream: &mut DuplexStream) -> (Header, Vec<u8>) {
+pub(super) async fn hear(stream: &mut DuplexStream) -> (Header, Vec<u8>) {
     let mut head = [0; HEADER_BYTES];
     in_time(stream.read_exact(&mut head)).await.unwrap();
     let header = Header::read(&head).unwrap();
@@ -21,7 +21,7 @@ async fn hear(stream: &mut DuplexStream) -> (Header, Vec<u8>) {
     (header, payload)
 }
 
-async fn say(stream: &mut DuplexStream, header: Header, payload: &[u8]) {
+pub(super) async fn say(stream: &mut DuplexStream, header: Header, payload: &[u8]) {
     stream.write_all(&header.message(payload)).await.unwrap();
 }
 
@@ -42,7 +42,7 @@ impl Server {
         server
     }
 
-    async fn greet(&mut self) {
+    pub(super) async fn greet(&mut self) {
         self.answer("*IDN?", &format!("{WHO}\n")).await;
         self.no_errors().await;
         self.told("*CLS").await;
@@ -60,14 +60,14 @@ impl Server {
     }
 
     /// The next message must be this line; its number.
-    async fn told(&mut self, line: &str) -> u32 {
+    pub(super) async fn told(&mut self, line: &str) -> u32 {
         let (header, payload) = hear(&mut self.sync).await;
         assert_eq!(header.kind, Kind::DataEnd);
         assert_eq!(String::from_utf8(payload).unwrap(), format!("{line}\n"));
         header.parameter
     }
 
-    async fn reply(&mut self, id: u32, text: &[u8]) {
+    pub(super) async fn reply(&mut self, id: u32, text: &[u8]) {
         say(&mut self.sync, Header::new(Kind::DataEnd).parameter(id), text).await;
     }
 
@@ -76,14 +76,18 @@ impl Server {
         self.reply(id, text.as_bytes()).await;
     }
 
-    async fn no_errors(&mut self) {
+    pub(super) async fn no_errors(&mut self) {
         self.answer("SYSTem:ERRor?", "0,\"No error\"\n").await;
     }
 
     /// Waits for a device clear, says something late into it, and ends it.
     async fn cleared(&mut self, late: &[u8]) {
+        self.cleared_with(0xFFFF_FF06, late).await;
+    }
+
+    pub(super) async fn cleared_with(&mut self, id: u32, late: &[u8]) {
         assert_eq!(hear(&mut self.r#async).await.0.kind, Kind::AsyncDeviceClear);
-        self.reply(0xFFFF_FF06, late).await;
+        self.reply(id, late).await;
         self.say_async(Kind::AsyncDeviceClearAcknowledge, 0, b"").await;
         assert_eq!(hear(&mut self.sync).await.0.kind, Kind::DeviceClearComplete);
         say(&mut self.sync, Header::new(Kind::DeviceClearAcknowledge), b"").await;
@@ -100,13 +104,13 @@ fn bench() -> Bench {
     Bench::speaking(Protocol::Hislip { device: "hislip0".to_owned() }, bundled("scpi-99").unwrap())
 }
 
-async fn up() -> (Bench, Server) {
+pub(super) async fn up() -> (Bench, Server) {
     let mut bench = bench();
     let server = Server::up(&mut bench).await;
     (bench, server)
 }
 
-fn counts(bench: &Bench) -> (u64, u64) {
+pub(super) fn counts(bench: &Bench) -> (u64, u64) {
     let watch = bench.handle.watch();
     let report = watch.borrow();
     (report.clears, report.reconnects)

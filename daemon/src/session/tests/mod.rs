@@ -7,6 +7,7 @@
 
 mod hislip;
 mod life;
+mod mean;
 mod one_client;
 mod repair;
 mod timing;

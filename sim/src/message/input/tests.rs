@@ -17,6 +17,24 @@ fn a_newline_ends_a_message() {
 }
 
 #[test]
+fn where_the_transport_has_an_end_it_ends_a_message_too() {
+    // IEEE 488.2 7.5.2 (from memory): NL, NL with END, or END alone.
+    let mut input = Input::default();
+    assert_eq!(input.push(b"*CLS\n"), vec![message(b"*CLS")]);
+    assert_eq!(input.end(), None, "NL with END is one ending");
+    assert_eq!(input.push(b"*IDN?"), vec![]);
+    assert_eq!(input.end(), Some(message(b"*IDN?")));
+    // A string or a block that is not finished ends with it as well, and does not swallow the next message.
+    assert_eq!(input.push(b"A \"b"), vec![]);
+    assert_eq!(input.end(), Some(message(b"A \"b")));
+    assert_eq!(input.push(b"A #19b"), vec![]);
+    assert_eq!(input.end(), Some(message(b"A #19b")));
+    assert_eq!(input.push(&vec![b'x'; LONGEST_MESSAGE + 1]), vec![Arrival::Overrun]);
+    assert_eq!(input.end(), None, "what was too long is gone");
+    assert_eq!(input.push(b"*TST?\n"), vec![message(b"*TST?")]);
+}
+
+#[test]
 fn a_newline_inside_a_block_is_data() {
     // IEEE 488.2 7.7.6: the contents of a definite-length block are any bytes.
     let mut input = Input::default();
