@@ -74,6 +74,11 @@ pub fn compute(input: &FigureInput<'_>) -> Vec<Figure> {
                     let valid = why.is_none();
                     let coverage = valid.then(|| match kind {
                         FigureKind::Rms => power::coverage(input, &bench.sources, &bench.moments, found.value, &budget),
+                        // A magnitude is not below nothing.
+                        FigureKind::PreAberration => {
+                            let whole = Coverage::of(found.value, &budget);
+                            Coverage { low: whole.low.max(0.0), ..whole }
+                        }
                         FigureKind::Jitter | FigureKind::Thd => power::of_root(found.value, u, &budget),
                         _ => Coverage::of(found.value, &budget),
                     });

@@ -85,7 +85,8 @@ fn much_noise() {
         near(&found, FigureKind::RiseSlew, 0.8 * VOLTS / EDGE, 0.12 * 0.8 * VOLTS / EDGE);
         near(&found, FigureKind::Period, PERIOD, 1.5);
         near(&found, FigureKind::Duty, 0.4, 1e-3);
-        near(&found, FigureKind::Maximum, VOLTS, 0.01 * VOLTS);
+        let maximum = of(&found, FigureKind::Maximum);
+        assert!((maximum.value - VOLTS).abs() <= 3.0 * maximum.u && maximum.u < 0.006 * VOLTS, "{maximum:?}");
         let settling = of(&found, FigureKind::SettlingTime);
         assert!(!settling.valid && settling.why.as_deref().unwrap().contains("noise"), "{settling:?}");
         // A band that noise leaves room in: Φ(−1.282) is 10 %.
@@ -104,8 +105,8 @@ fn ringing() {
     let wave = |t: f64| {
         pulses(t, 0.4) + edges.iter().map(|at| ring(t - at - 10.0) - ring(t - at - 10.0 - 0.4 * PERIOD)).sum::<f64>()
     };
-    // The truth on a grid of a hundredth of a sample.
-    let fine: Vec<f64> = (0..100_000).map(|i| wave(400.3 + 0.01 * f64::from(i))).collect();
+    // The truth on a grid of a hundredth of a sample, up to the next transition.
+    let fine: Vec<f64> = (0..90_000).map(|i| wave(400.3 + 0.01 * f64::from(i))).collect();
     let top = fine.iter().copied().fold(0.0, f64::max) - 1.0;
     let settled = 0.01 * fine.iter().rposition(|v| (v - 1.0).abs() > 0.02).unwrap() as f64;
     for seed in 0..5 {

@@ -156,7 +156,7 @@ impl Profile {
     }
 
     fn read(&self, band: f64, of_level: f64) -> Reading {
-        let percent = 100.0 * band;
+        let percent = (1e8 * band).round() / 1e6;
         if CLEAR * self.noise > band {
             return Err(format!(
                 "the noise is too large to see the waveform settle within {percent} %: averaged over like transitions it \

@@ -21,7 +21,7 @@ const ENOUGH_EDGES: usize = 24;
 const MOST_CYCLES: usize = 128;
 
 /// From this many repeats on, their scatter is trusted to show what the noise alone does not: jitter.
-pub(super) const ENOUGH_REPEATS: usize = 5;
+const ENOUGH_REPEATS: usize = 5;
 
 /// A flat stretch has its extreme where noise made it: what is left of that lift after the fit, in parts of a single
 /// fit's uncertainty. It is the same in every cycle (measured: 0.63).

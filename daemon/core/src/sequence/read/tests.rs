@@ -12,7 +12,9 @@ fn unit(name: &str) -> Option<Unit> {
 }
 
 fn capture(keys: &str) -> String {
-    format!("title = \"gate\"\n[[stage]]\ndo = \"capture\"\npair = \"gate\"\n{keys}\n")
+    format!(
+        "title = \"gate\"\n[[stage]]\ndo = \"route\"\nroute = \"device\"\n[[stage]]\ndo = \"capture\"\npair = \"gate\"\n{keys}\n"
+    )
 }
 
 fn asked(keys: &str) -> Asked {
@@ -34,11 +36,11 @@ fn thresholds_and_the_band_are_read() {
 fn each_mistake_is_named_at_its_line() {
     let bench = bench::read(GREENHOUSE).unwrap();
     for (keys, line, what) in [
-        ("thresholds = {}", 5, "`thresholds` needs `high`, `low` or both"),
-        ("thresholds = { high = \"8 s\" }", 5, "`high`: this is in s"),
-        ("thresholds = { top = \"8 V\" }", 5, "`top` is not a key"),
-        ("settling_band = \"90 %\"", 5, "`settling_band` is 0.9"),
-        ("[[stage.limit]]\nfigure = \"time_above\"\nmin = \"1 us\"", 2, "there is no threshold for it"),
+        ("thresholds = {}", 8, "`thresholds` needs `high`, `low` or both"),
+        ("thresholds = { high = \"8 s\" }", 8, "`high`: this is in s"),
+        ("thresholds = { top = \"8 V\" }", 8, "`top` is not a key"),
+        ("settling_band = \"90 %\"", 8, "`settling_band` is 0.9"),
+        ("[[stage.limit]]\nfigure = \"time_above\"\nmin = \"1 us\"", 5, "there is no threshold for it"),
     ] {
         let text = capture(keys);
         let found: Vec<(u32, String)> = read(&text, &bench, &unit)
