@@ -105,6 +105,7 @@ impl Truth {
     /// The errors of skew, gain and offset that an estimator which knows signal and noise would make on these records,
     /// `(GᵀG)⁻¹Gᵀe`: it reaches the bound exactly, so that its spread over the trials of a case says how lucky these
     /// were. (The noise of P enters at the nearest whole sample: right in spread, and for gain and offset in value.)
+    #[allow(dead_code, reason = "for the example estimator_marks, which includes this file")]
     pub(crate) fn efficient(&self, signal: &Signal, p: &[f64], n: &[f64]) -> [f64; 3] {
         let (mut information, mut score) = (Matrix3::zeros(), Vector3::zeros());
         let whole = self.tau.round();
