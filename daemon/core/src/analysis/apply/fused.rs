@@ -16,6 +16,7 @@ use super::super::signal::{BLOCK, Outline, extremes_of};
 use super::super::wide::widest;
 use super::super::{Record, Samples};
 use super::sums::{LEAD, REACH, Sums};
+use super::wave::Wave;
 
 /// Output samples per chunk: whole blocks of the outlines.
 const CHUNK: usize = 4 * BLOCK;
@@ -36,8 +37,8 @@ const LONG: usize = 500_000;
 /// What the pass leaves behind.
 #[derive(Default)]
 pub(super) struct Pass {
-    pub(super) difference_v: Vec<f32>,
-    pub(super) negative_v: Vec<f32>,
+    pub(super) difference_v: Wave,
+    pub(super) negative_v: Wave,
     pub(super) sums: Sums,
     pub(super) outlines: [Outline; 2],
 }
@@ -73,8 +74,8 @@ pub(super) fn pass_by(task: &Task<'_>, threads: usize) -> Pass {
             scope.spawn(|| some(task, half..points, &mut rest, &mut others));
             some(task, 0..half, &mut found, &mut parts);
         });
-        found.difference_v.append(&mut rest.difference_v);
-        found.negative_v.append(&mut rest.negative_v);
+        found.difference_v.extend(&rest.difference_v);
+        found.negative_v.extend(&rest.negative_v);
         for (outline, rest) in found.outlines.iter_mut().zip(rest.outlines) {
             outline.append(rest);
         }
@@ -89,8 +90,8 @@ pub(super) fn pass_by(task: &Task<'_>, threads: usize) -> Pass {
 impl Pass {
     fn with_capacity(points: usize) -> Self {
         Self {
-            difference_v: Vec::with_capacity(points),
-            negative_v: Vec::with_capacity(points),
+            difference_v: Wave::with_capacity(points),
+            negative_v: Wave::with_capacity(points),
             sums: Sums::default(),
             outlines: [(); 2].map(|()| Outline::with_capacity(points)),
         }
@@ -108,8 +109,8 @@ fn some(task: &Task<'_>, range: Range<usize>, found: &mut Pass, parts: &mut Vec<
             let count = CHUNK.min(end - from);
             chunk.compute(task, from, count, &mut sums);
             let own = chunk.before..chunk.before + count;
-            found.difference_v.extend_from_slice(&chunk.difference[own.clone()]);
-            found.negative_v.extend_from_slice(&chunk.negative[own]);
+            found.difference_v.extend(&chunk.difference[own.clone()]);
+            found.negative_v.extend(&chunk.negative[own]);
             for block in 0..count.div_ceil(BLOCK) {
                 found.outlines.iter_mut().zip(chunk.extremes[block]).for_each(|(outline, both)| outline.push(both));
             }

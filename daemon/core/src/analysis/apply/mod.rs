@@ -11,9 +11,13 @@ use super::wide::widest;
 use super::{Correction, Record, Samples};
 
 mod fused;
+mod plain;
 mod sums;
+mod wave;
 
+pub use plain::{Plain, plain};
 pub use sums::{Moments, Sums};
+pub use wave::Wave;
 
 /// The least number of valid samples that is worth calling a result.
 const LEAST_POINTS: usize = 16;
@@ -23,9 +27,9 @@ const LEAST_POINTS: usize = 16;
 #[derive(Debug, Clone, PartialEq)]
 pub struct Corrected {
     /// D in volts: positive leg minus corrected negative leg.
-    pub difference_v: Vec<f32>,
+    pub difference_v: Wave,
     /// The corrected negative leg in volts, `(N(t + τ) − o)/g`.
-    pub negative_v: Vec<f32>,
+    pub negative_v: Wave,
     /// Sums of both, of the slope, and of their products.
     pub sums: Sums,
     /// Index, in the positive leg's record, of the first sample here.
@@ -49,6 +53,7 @@ impl Corrected {
         for (d, n) in difference_v.chunks(BLOCK).zip(negative_v.chunks(BLOCK)) {
             outlines.iter_mut().zip(extremes_of(d, n)).for_each(|(outline, both)| outline.push(both));
         }
+        let (difference_v, negative_v) = (difference_v.into(), negative_v.into());
         Self { difference_v, negative_v, sums, outlines, first: 0, interval_s, start_s, noise_gain }
     }
 
@@ -121,6 +126,11 @@ impl Signal for Common<'_> {
     fn load(&self, from: usize, out: &mut [f32]) {
         let range = from..from + out.len();
         common_of(&self.0.negative_v[range.clone()], &self.0.difference_v[range], out);
+    }
+
+    fn means(&self) -> Option<(f64, f64)> {
+        let moments = self.0.moments();
+        Some((moments.common(), moments.common_square()))
     }
 
     fn outline(&self) -> Option<&Outline> {
@@ -245,64 +255,6 @@ pub fn correct(p: &Record, n: &Record, correction: &Correction) -> Result<Correc
         start_s: (first as f64).mul_add(p.interval_s, p.start_s),
         noise_gain: interpolator.noise_gain(),
     })
-}
-
-/// Plain subtraction in volts: each sample of P less the sample of N that is nearest in time, nothing else done. Where
-/// the time axes agree that is sample by sample; samples without a partner are left out.
-///
-/// # Errors
-/// When the records do not belong together, hold something that is not a number, or do not overlap in time.
-pub fn plain<'a>(p: &'a Record, n: &'a Record) -> Result<Plain<'a>, ApplyError> {
-    let points = belong(p, n)?;
-    let shift = (p.start_s - n.start_s) / p.interval_s;
-    if !(shift.is_finite() && shift.abs() < points as f64) {
-        return Err(ApplyError::TooShort { points, valid: 0, shift_samples: shift });
-    }
-    let whole = shift.round() as isize;
-    let skip_p = usize::try_from(-whole).unwrap_or(0);
-    let skip_n = usize::try_from(whole).unwrap_or(0);
-    let valid = points.saturating_sub(skip_p.max(skip_n));
-    if valid < LEAST_POINTS {
-        return Err(ApplyError::TooShort { points, valid, shift_samples: shift });
-    }
-    Ok(Plain { p, n, skip_p, skip_n, points: valid })
-}
-
-/// The difference by plain subtraction, computed as it is read. See [`plain`].
-#[derive(Debug, Clone, Copy)]
-pub struct Plain<'a> {
-    p: &'a Record,
-    n: &'a Record,
-    skip_p: usize,
-    skip_n: usize,
-    points: usize,
-}
-
-impl Signal for Plain<'_> {
-    fn points(&self) -> usize {
-        self.points
-    }
-
-    fn at(&self, index: usize) -> f64 {
-        let volts = |record: &Record, index: usize| {
-            let code = match &record.samples {
-                Samples::Codes(codes) => f64::from(codes[index]),
-                Samples::Numbers(numbers) => f64::from(numbers[index]),
-            };
-            code.mul_add(record.volts_per_code, record.zero_v)
-        };
-        volts(self.p, self.skip_p + index) - volts(self.n, self.skip_n + index)
-    }
-
-    fn load(&self, from: usize, out: &mut [f32]) {
-        fused::load_volts(self.p, self.skip_p + from, out);
-        let mut negative = [0.0; BLOCK];
-        for (i, out) in out.chunks_mut(negative.len()).enumerate() {
-            let negative = &mut negative[..out.len()];
-            fused::load_volts(self.n, self.skip_n + from + i * BLOCK, negative);
-            out.iter_mut().zip(negative).for_each(|(p, n)| *p -= *n);
-        }
-    }
 }
 
 /// The number of samples of two records, once they are known to belong together.

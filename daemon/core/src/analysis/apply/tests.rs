@@ -141,8 +141,50 @@ fn the_fused_pass_agrees_with_double_precision() {
         close(m.ns, mean(&|i| slow[i] * slope(i)), 350.0 * 1e10);
         close(m.common_square(), mean(&|i| (slow[i] + 0.5 * difference[i]).powi(2)), 350.0 * 350.0);
         close(m.common(), mean(&|i| slow[i] + 0.5 * difference[i]), 350.0);
-        let again = Corrected::of(found.difference_v.clone(), found.negative_v.clone(), 1e-9, 0.0, 1.0).moments();
+        let again = Corrected::of(found.difference_v.to_vec(), found.negative_v.to_vec(), 1e-9, 0.0, 1.0).moments();
         close(again.ds, m.ds, 50.0 * 1e10);
         close(again.nn, m.nn, 350.0 * 350.0);
     }
+}
+
+/// One thread and two give the same bits; sections, chunks and blocks that are not full are among them.
+#[test]
+fn two_threads_give_the_same_bits() {
+    for points in [150_043, 131_072 + 43, 65_536 + 44, 65_536 + 1024 + 44, 700] {
+        let codes = |scale: f64| {
+            let code = |i: usize| (scale * (9000.0 * (0.01 * i as f64).sin() + 700.0 * (1.9 * i as f64).cos())) as i16;
+            Samples::Codes((0..points).map(code).collect())
+        };
+        let mut p = record([0.0].into_iter(), 0.0);
+        p.volts_per_code = 1e-3;
+        let mut n = p.clone();
+        (p.samples, n.samples) = (codes(1.0), codes(0.97));
+        let interpolator = Interpolator::new(2.3);
+        let valid = interpolator.support(points);
+        let task =
+            fused::Task { p: &p, n: &n, interpolator: &interpolator, gain: 0.97, offset_v: 0.1, valid: valid.clone() };
+        let (one, two) = (fused::pass_by(&task, 1), fused::pass_by(&task, 2));
+        assert_eq!(one.difference_v.len(), valid.len());
+        assert!(one.difference_v == two.difference_v && one.negative_v == two.negative_v);
+        assert_eq!(one.sums, two.sums);
+        assert_eq!(one.outlines, two.outlines);
+        // What is made of the finished waveforms agrees: the outlines to the bit, the sums to their rounding.
+        let whole = Corrected::of(one.difference_v.to_vec(), one.negative_v.to_vec(), 1e-9, 0.0, 1.0);
+        assert_eq!(whole.outlines, one.outlines);
+        let (a, b) = (whole.moments(), one.sums.moments(1e-9));
+        assert!((a.ns - b.ns).abs() <= 1e-9 * (a.nn * a.ss).sqrt() && (a.s - b.s).abs() <= 1e-9 * a.ss.sqrt());
+        assert!((a.dd / b.dd - 1.0).abs() < 1e-9 && (a.nn / b.nn - 1.0).abs() < 1e-9);
+    }
+}
+
+/// The memory of a waveform is used again, never its samples.
+#[test]
+fn kept_memory_holds_nothing() {
+    let before = Wave::from(vec![7.0; 200_000]);
+    drop(before);
+    let mut after = Wave::with_capacity(150_000);
+    assert!(after.is_empty());
+    after.extend(&[1.0, 2.0]);
+    assert_eq!(after.clone().into_vec(), vec![1.0, 2.0]);
+    assert_eq!(after.points(), 2);
 }

@@ -1,7 +1,7 @@
 //! Spectra for the rejection and the leak bound: a window of very low leakage, and the transforms.
 
-use realfft::num_complex::Complex;
 use realfft::RealToComplex;
+use realfft::num_complex::Complex;
 
 use super::signal::Signal;
 use super::spectrum::cosines;

@@ -12,6 +12,7 @@ use std::sync::Arc;
 
 use super::super::band::plans;
 use super::super::signal::{BLOCK, Outline, Signal, blocks, range_of};
+use super::super::spectrum::cosines;
 use super::super::wide::widest;
 use super::{Moving, quadrature};
 
@@ -180,9 +181,9 @@ impl Segments {
             plans::single(|planner| (planner.plan_fft_forward(SEGMENT), planner.plan_fft_inverse(SEGMENT)));
         let weights: Vec<f64> = (0..=HALF).map(|k| weight(k as f64 * bin_hz)).collect();
         let scratch = forward.get_scratch_len().max(inverse.get_scratch_len());
-        let angle = |i: usize| std::f64::consts::TAU * (i as f64 + 0.5) / SEGMENT as f64;
+        let step = std::f64::consts::TAU / SEGMENT as f64;
         Self {
-            window: (0..SEGMENT).map(|i| (0.5 - 0.5 * angle(i).cos()) as f32).collect(),
+            window: cosines(0.5 * step, step).take(SEGMENT).map(|cosine| (0.5 - 0.5 * cosine) as f32).collect(),
             noise_gain: weights.iter().map(|w| w * w).sum::<f64>() / weights.len() as f64,
             weights: weights.iter().map(|w| (w / SEGMENT as f64) as f32).collect(),
             buffer: forward.make_input_vec(),

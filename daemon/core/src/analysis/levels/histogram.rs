@@ -18,8 +18,24 @@ const ENOUGH: usize = 65_536;
 /// A block whose samples range over less than this part of the whole range belongs to one state.
 const STILL: f64 = 0.125;
 
-/// At most every so many-th sample of a block is counted, so that at least eight are.
-const MOST_STEP: usize = BLOCK / 8;
+/// Of every so many blocks in a row and of every so many samples of a block one is counted.
+#[derive(Debug, Clone, Copy)]
+struct Step {
+    blocks: usize,
+    samples: usize,
+}
+
+impl Step {
+    const ONE: Self = Self { blocks: 1, samples: 1 };
+
+    /// For so many samples in all. A state that is short against the record must not be passed over: at least a fourth
+    /// of the blocks and sixteen samples of each count.
+    fn of(points: usize) -> Self {
+        let every = (points / ENOUGH).max(1);
+        let blocks = every.min(4);
+        Self { blocks, samples: (every / blocks).clamp(1, BLOCK / 16) }
+    }
+}
 
 /// What [`Histogram::settle`] finds.
 pub(super) struct Settled {
@@ -56,17 +72,17 @@ impl Counter {
         })
     }
 
-    /// Counts every `step`th sample of a block, `step` times over; all of them for steps up to one.
-    fn count(&mut self, part: &[f32], step: usize) {
+    /// Counts the samples of a block that a step chooses, each for all that it stands for.
+    fn count(&mut self, part: &[f32], step: Step) {
         let mut chosen = [0.0f32; BLOCK];
-        let step = step.clamp(1, MOST_STEP);
-        let (part, weight) = if step == 1 {
-            (part, 1)
+        let part = if step.samples == 1 {
+            part
         } else {
-            let count = part.len() / step;
-            chosen.iter_mut().zip(part.iter().step_by(step)).take(count).for_each(|(out, x)| *out = *x);
-            (&chosen[..count], step as u32)
+            let count = part.len().div_ceil(step.samples);
+            chosen.iter_mut().zip(part.iter().step_by(step.samples)).for_each(|(out, x)| *out = *x);
+            &chosen[..count]
         };
+        let weight = (step.blocks * step.samples) as u32;
         let mut places = [0u16; BLOCK];
         let places = &mut places[..part.len()];
         places_of(part, self.origin, self.scale, places);
@@ -103,12 +119,21 @@ impl Histogram {
         let (low, high) = outline.range();
         let mut counter = Counter::new(low, high)?;
         let points = signal.points();
-        let part = points / ENOUGH;
+        let step = Step::of(points);
         let little = ((high - low) * STILL) as f32;
+        // Every so many-th of the blocks that follow each other without a transition, the first one always.
+        let mut still = 0;
         for (block, (least, most)) in outline.blocks.iter().enumerate() {
-            let from = block * BLOCK;
-            let step = if most - least < little { part } else { 1 };
-            blocks(signal, from..(from + BLOCK).min(points), |_, part| counter.count(part, step));
+            let range = block * BLOCK..((block + 1) * BLOCK).min(points);
+            if most - least >= little {
+                still = 0;
+                blocks(signal, range, |_, part| counter.count(part, Step::ONE));
+            } else {
+                if still % step.blocks == 0 {
+                    blocks(signal, range, |_, part| counter.count(part, step));
+                }
+                still += 1;
+            }
         }
         Some(counter.finish(low))
     }
@@ -122,10 +147,11 @@ impl Histogram {
         high: f64,
     ) -> Option<Self> {
         let mut counter = Counter::new(low, high)?;
-        let step = stretches.iter().map(Range::len).sum::<usize>() / ENOUGH;
+        let step = Step::of(stretches.iter().map(Range::len).sum());
         for stretch in stretches {
-            let step = if stretch.len() >= BLOCK { step } else { 1 };
-            blocks(signal, stretch.clone(), |_, part| counter.count(part, step));
+            for from in stretch.clone().step_by(step.blocks * BLOCK) {
+                blocks(signal, from..(from + BLOCK).min(stretch.end), |_, part| counter.count(part, step));
+            }
         }
         Some(counter.finish(low))
     }

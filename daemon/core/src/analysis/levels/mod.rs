@@ -10,7 +10,7 @@
 
 use std::ops::Range;
 
-use super::signal::{Outline, Signal, blocks};
+use super::signal::{BLOCK, Outline, Signal, blocks};
 use super::transition::{self, Edge};
 use super::wide::widest;
 
@@ -27,6 +27,9 @@ const LEAST_SEPARATION: f64 = 6.0;
 
 /// Width of the fine histogram's bins in parts of the spread; it reaches 64 spreads to each side.
 const FINENESS: f64 = 128.0 / BINS as f64;
+
+/// So many samples of a state are enough to tell how errors of the correction move its level.
+const ENOUGH: usize = 65_536;
 
 /// One state's level.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -83,13 +86,13 @@ impl Levels {
         self.high.value - self.low.value
     }
 
-    /// The mean of another signal over the samples that made the low level.
+    /// The mean of another signal over samples that made the low level; in a long record not all of them are read.
     #[must_use]
     pub fn mean_at_low<S: Signal + ?Sized, T: Signal + ?Sized>(&self, signal: &S, other: &T) -> f64 {
         mean_of(signal, other, &self.low_stays, &self.low)
     }
 
-    /// The mean of another signal over the samples that made the high level.
+    /// The mean of another signal over samples that made the high level; in a long record not all of them are read.
     #[must_use]
     pub fn mean_at_high<S: Signal + ?Sized, T: Signal + ?Sized>(&self, signal: &S, other: &T) -> f64 {
         mean_of(signal, other, &self.high_stays, &self.high)
@@ -189,10 +192,17 @@ widest! {
             sums[k] += if inside { y - zero } else { 0.0 };
             counts[k] += if inside { 1.0 } else { 0.0 };
         }
-        let count: f64 = counts.iter().map(|count| f64::from(*count)).sum();
+        let (mut sum, mut count) = ([0.0f64; 8], [0.0f64; 8]);
+        for (sums, counts) in sums.as_chunks::<8>().0.iter().zip(counts.as_chunks::<8>().0) {
+            for k in 0..8 {
+                sum[k] += f64::from(sums[k]);
+                count[k] += f64::from(counts[k]);
+            }
+        }
+        let count: f64 = count.iter().sum();
         // What the centre lost in single precision is given back.
         let lost = if zero.abs() > 0.0 { (f64::from(middle) - centre) * count } else { 0.0 };
-        (sums.iter().map(|sum| f64::from(*sum)).sum::<f64>() + lost, count)
+        (sum.iter().sum::<f64>() + lost, count)
     }
 }
 
@@ -223,9 +233,11 @@ fn mean_of<S: Signal + ?Sized, T: Signal + ?Sized>(
     level: &Level,
 ) -> f64 {
     let (mut sum, mut count) = (0.0, 0.0);
-    let mut buffer = [0.0f32; super::signal::BLOCK];
-    for stretch in stays {
-        blocks(signal, stretch.clone(), |from, part| {
+    let mut buffer = [0.0f32; BLOCK];
+    // In long stays every so many-th block tells.
+    let every = (stays.iter().map(Range::len).sum::<usize>() / ENOUGH).max(1) * BLOCK;
+    for part in stays.iter().flat_map(|stay| stay.clone().step_by(every).map(|i| i..(i + BLOCK).min(stay.end))) {
+        blocks(signal, part, |from, part| {
             let others = match other.samples() {
                 Some(samples) => &samples[from..from + part.len()],
                 None => {

@@ -7,7 +7,7 @@
 
 use std::ops::Range;
 
-use super::signal::{BLOCK, Signal, blocks, range_of};
+use super::signal::{BLOCK, Signal, blocks, range_within};
 use super::wide::widest;
 
 /// Half-widths of the window in samples begin here.
@@ -139,12 +139,14 @@ fn extreme<S: Signal + ?Sized>(
 }
 
 widest! {
-    fn means_of_five(part: &[f32], means: &mut [f32]) {
+    /// The means of five neighbours each, and the lowest and the highest of them.
+    fn means_of_five(part: &[f32], means: &mut [f32]) -> (f32, f32) {
         let n = means.len();
         let (a, b, c, d, e) = (&part[..n], &part[1..n + 1], &part[2..n + 2], &part[3..n + 3], &part[4..n + 4]);
         for k in 0..n {
             means[k] = 0.2 * (a[k] + b[k] + c[k] + d[k] + e[k]);
         }
+        range_within(means)
     }
 }
 
@@ -160,40 +162,37 @@ impl Start {
         if range.is_empty() {
             return None;
         }
-        let (mut low, mut high) = (f32::INFINITY, f32::NEG_INFINITY);
         let mut found = Self { lowest: range.start, highest: range.start, spread: 0.0 };
         // Neighbouring stretches share four samples, so that every five in a row are seen once.
         let mut best = (f32::INFINITY, f32::NEG_INFINITY);
         let mut buffer = [0.0f32; BLOCK + 4];
         let mut smooth = [0.0f32; BLOCK];
-        let mut from = range.start;
-        while from < range.end {
+        for from in (range.start..range.end.saturating_sub(4)).step_by(BLOCK) {
             let count = (BLOCK + 4).min(range.end - from);
-            let part = &mut buffer[..count];
-            signal.load(from, part);
-            let (least, most) = range_of(part);
-            (low, high) = (low.min(least), high.max(most));
-            // A mean is never beyond its samples.
-            if count >= 5 && (least < best.0 || most > best.1) {
-                let smooth = &mut smooth[..count - 4];
-                means_of_five(part, smooth);
-                let (least, most) = range_of(smooth);
-                let place = |x: f32| from + 2 + smooth.iter().position(|y| (y - x).abs() <= 0.0).unwrap_or(0);
-                if least < best.0 {
-                    (best.0, found.lowest) = (least, place(least));
+            let part = match signal.samples() {
+                Some(samples) => &samples[from..from + count],
+                None => {
+                    signal.load(from, &mut buffer[..count]);
+                    &buffer[..count]
                 }
-                if most > best.1 {
-                    (best.1, found.highest) = (most, place(most));
-                }
+            };
+            let smooth = &mut smooth[..count - 4];
+            let (least, most) = means_of_five(part, smooth);
+            let place = |x: f32| from + 2 + smooth.iter().position(|y| (y - x).abs() <= 0.0).unwrap_or(0);
+            if least < best.0 {
+                (best.0, found.lowest) = (least, place(least));
             }
-            from += BLOCK;
+            if most > best.1 {
+                (best.1, found.highest) = (most, place(most));
+            }
         }
         if range.len() < 5 {
             let by = |a: &usize, b: &usize| signal.at(*a).total_cmp(&signal.at(*b));
             found.lowest = range.clone().min_by(by).unwrap_or(range.start);
             found.highest = range.clone().max_by(by).unwrap_or(range.start);
+            best = (signal.at(found.lowest) as f32, signal.at(found.highest) as f32);
         }
-        found.spread = f64::from(high - low).max(0.0);
+        found.spread = f64::from(best.1 - best.0).max(0.0);
         Some(found)
     }
 }

@@ -59,7 +59,6 @@ impl Noise {
 }
 
 impl Spectra {
-
     /// The spectra as they are.
     pub(super) fn corrected(&self) -> View<'_> {
         View { spectra: self, undo: None }
@@ -89,8 +88,7 @@ impl View<'_> {
     /// `⟨D·C*⟩`, `⟨|C|²⟩` and `⟨|D|²⟩` of a bin. With `A = g·e^{−jωτ}`, `u = 1 − A` and `v = (1 + A)/2` plain subtraction
     /// has `D = uC + vD`, `C = vC + uD/4` of the corrected ones.
     fn at(&self, k: usize) -> (Complex<f64>, f64, f64) {
-        let (cross, common, difference) =
-            (self.spectra.cross[k], self.spectra.common[k], self.spectra.difference[k]);
+        let (cross, common, difference) = (self.spectra.cross[k], self.spectra.common[k], self.spectra.difference[k]);
         let Some((gain, delay_s)) = self.undo else { return (cross, common, difference) };
         let a = Complex::from_polar(gain, -std::f64::consts::TAU * self.spectra.bin_hz * k as f64 * delay_s);
         let (u, v) = (1.0 - a, (1.0 + a) * 0.5);
@@ -166,11 +164,7 @@ impl View<'_> {
             if count >= LEAST_NOISE_BINS || (whole && count > 0) {
                 let averages = spectra.measured.as_ref().map_or(spectra.averages, |(.., averages)| *averages);
                 let count = count as f64;
-                return Some(Noise {
-                    cross: cross / count,
-                    difference: difference / count,
-                    looks: count * averages,
-                });
+                return Some(Noise { cross: cross / count, difference: difference / count, looks: count * averages });
             }
             if whole || spectra.elsewhere.is_some() {
                 return spectra.elsewhere;

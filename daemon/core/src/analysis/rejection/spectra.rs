@@ -160,10 +160,13 @@ fn whole<D: Signal, C: Signal>(captures: impl Iterator<Item = (D, C)>, points: u
     average.finish()
 }
 
-/// Where half-overlapping segments begin; the last one ends where the record does.
+/// Where half-overlapping segments begin; the last one ends where the record does, unless that is hardly further than the
+/// one before, which would count twice.
 fn starts(points: usize, size: usize) -> impl Iterator<Item = usize> {
     let last = points.saturating_sub(size);
-    (0..last).step_by((size / 2).max(1)).chain(std::iter::once(last))
+    let step = (size / 2).max(1);
+    let before = last.saturating_sub(1) / step * step;
+    (0..last).step_by(step).chain((last == 0 || last - before >= size / 4).then_some(last))
 }
 
 /// The segments in which the common mode moves; the second average is of some in which it does not, if there are any.

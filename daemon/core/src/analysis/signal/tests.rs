@@ -27,6 +27,6 @@ fn the_outline_holds_every_sample() {
         assert!(part.iter().all(|x| (block.0..=block.1).contains(x)));
         assert!(part.contains(&block.0) && part.contains(&block.1));
     }
-    assert!(outline.low <= 3.0 && outline.high >= 1005.0);
+    assert!(outline.range().0 <= 3.0 && outline.range().1 >= 1005.0);
     assert_eq!(range_of(&[f32::NAN, 2.0]), (2.0, 2.0));
 }

@@ -1,7 +1,5 @@
 //! The macro's function does what its body says, with and without a result.
 
-use super::widest;
-
 widest! {
     /// Adds in place.
     fn add(out: &mut [f32], other: &[f32]) {
