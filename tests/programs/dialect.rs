@@ -9,7 +9,7 @@ use serde_json::json;
 /// Tries a dialect; the exit status and what was said.
 async fn tried(dialect: &str, at: &str, more: &[&str]) -> (i32, String) {
     let Output { status, stdout, stderr } =
-        run_to_end("evenpaird", &[&["dialect", dialect, "--at", at, "--timeout", "1"], more].concat()).await;
+        run_to_end("evenpaird", &[&["dialect", dialect, "--at", at, "--timeout", "3"], more].concat()).await;
     let said = String::from_utf8_lossy(&stdout).into_owned() + &String::from_utf8_lossy(&stderr);
     (status.code().expect("it ended by itself"), said)
 }

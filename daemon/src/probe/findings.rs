@@ -81,7 +81,12 @@ impl fmt::Display for Findings {
             let Row { intent, outcome, .. } = row;
             let (sent, received) = (short(&row.sent), short(&row.received));
             let arrow = if received.is_empty() { "" } else { "→ " };
-            let line = format!("{:17} {:8} {sent:sent_width$}  {arrow}{received}", intent.name(), outcome.word());
+            let (name, word) = (intent.name(), outcome.word());
+            if sent.is_empty() {
+                writeln!(f, "{name:17} {word:8} {}", row.why)?;
+                continue;
+            }
+            let line = format!("{name:17} {word:8} {sent:sent_width$}  {arrow}{received}");
             writeln!(f, "{}", line.trim_end())?;
             if !row.why.is_empty() {
                 writeln!(f, "{:17} {:8} {}", "", "", row.why)?;

@@ -16,6 +16,9 @@ const ACQUISITION: u32 = 5;
 /// Why something that drives what is connected is not tried.
 const NEVER: &str = "never tried: it drives what is connected; try it from a bench";
 
+/// Why the instrument's settings are not all taken away.
+const RESET: &str = "never tried: it would take every setting away";
+
 /// Tries every intent that the dialect has words for.
 pub(super) async fn all(handle: &Handle, arguments: &DialectArguments, findings: &mut Findings) {
     let trial = Trial { handle, arguments };
@@ -27,10 +30,14 @@ pub(super) async fn all(handle: &Handle, arguments: &DialectArguments, findings:
         }
         let row = match intent {
             Intent::RecordData => trial.data(preamble.as_ref()).await,
+            Intent::Reset => skipped(intent, RESET),
             _ if never(intent) => skipped(intent, NEVER),
             _ if intent.spec().kind == IntentKind::Query || intent == Intent::Error => {
-                let (row, fields) = trial.ask(trial.call(intent)).await;
+                let (mut row, fields) = trial.ask(trial.call(intent)).await;
                 if intent == Intent::RecordPreamble {
+                    if fields.is_none() && !arguments.allow_set {
+                        row.why += "; before an acquisition there is no record: `--allow-set` starts one";
+                    }
                     preamble = fields;
                 }
                 row
@@ -48,7 +55,7 @@ pub(super) async fn all(handle: &Handle, arguments: &DialectArguments, findings:
 
 /// What is not tried whatever is allowed.
 fn never(intent: Intent) -> bool {
-    let drives = ["source.", "output.set", "route.close", "route.open", "reset"];
+    let drives = ["source.", "output.set", "route.close", "route.open"];
     drives.iter().any(|head| intent.name().starts_with(head))
 }
 
@@ -190,11 +197,9 @@ impl Trial<'_> {
         let Some((preamble, points)) = preamble.and_then(|fields| Some((fields, fields.whole("points").ok()?))) else {
             return skipped(Intent::RecordData, "there is no preamble that says how many samples there are");
         };
-        let calls = dialect.data_calls(self.arguments.channel, points);
-        let count = calls.len();
         let mut first = None;
         let mut blocks = Vec::new();
-        for call in calls {
+        for call in dialect.data_calls(self.arguments.channel, points) {
             let expected = u64::try_from(call.args.whole("count").unwrap_or(points)).unwrap_or(0);
             let (intent, sent) = (call.intent, self.sent(&call));
             let sent = first.get_or_insert(sent).clone();
@@ -210,8 +215,8 @@ impl Trial<'_> {
             }
             Err(error) => (Outcome::Differs, error.to_string()),
         };
-        if count > 1 {
-            why = format!("{why}, in {count} windows");
+        if blocks.len() > 1 {
+            why = format!("{why}, in {} windows", blocks.len());
         }
         Row { intent: Intent::RecordData, outcome, sent: first.unwrap_or_default(), received, why }
     }

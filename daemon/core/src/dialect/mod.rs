@@ -202,15 +202,20 @@ impl Dialect {
     }
 
     /// The calls that ask for the `points` samples of one channel, in order: one, or one for each window.
-    #[must_use]
-    pub fn data_calls(&self, channel: i64, points: i64) -> Vec<Call> {
-        let call = || Call::new(Intent::RecordData).with("channel", channel);
-        let Some(most) = self.window else { return vec![call()] };
+    pub fn data_calls(&self, channel: i64, points: i64) -> impl Iterator<Item = Call> + use<> {
+        let windowed = self.window.is_some();
+        self.windows(points).map(move |(first, count)| {
+            let call = Call::new(Intent::RecordData).with("channel", channel);
+            if windowed { call.with("first", first).with("count", count) } else { call }
+        })
+    }
+
+    /// The windows that so many samples are read in: the first sample of each, and how many there are.
+    fn windows(&self, points: i64) -> impl Iterator<Item = (i64, i64)> + use<> {
+        let points = points.max(1);
+        let most = self.window.unwrap_or(points);
         let step = usize::try_from(most).unwrap_or(usize::MAX);
-        (0..points.max(1))
-            .step_by(step)
-            .map(|first| call().with("first", first).with("count", most.min(points.max(1) - first)))
-            .collect()
+        (0..points).step_by(step).map(move |first| (first, most.min(points - first)))
     }
 
     /// Reads a record out of its preamble's fields and the replies to [`Dialect::data_calls`].
@@ -221,18 +226,15 @@ impl Dialect {
         let reading = self.reading.as_ref().ok_or_else(|| self.unsupported(Intent::RecordData))?;
         let steps = self.intents.get(&Intent::RecordData).map(|spoken| spoken.steps.as_slice()).unwrap_or_default();
         let manner = steps.last().map_or(self.manner, |step| step.manner);
-        let calls = self.data_calls(1, preamble.whole("points")?);
-        if calls.len() != data.len() {
-            let (wanted, found) = (calls.len(), data.len());
-            return Err(DialectError::Replies { intent: Intent::RecordData, wanted, found });
+        let windows = self.windows(preamble.whole("points")?);
+        let wanted = self.windows(preamble.whole("points")?).count();
+        if wanted != data.len() {
+            return Err(DialectError::Replies { intent: Intent::RecordData, wanted, found: data.len() });
         }
         let mut all: Option<Samples> = None;
-        for (call, message) in calls.iter().zip(data) {
+        for ((first, wanted), message) in windows.zip(data) {
             let samples = reading.samples(message, Intent::RecordData.name(), manner)?;
-            if let Ok(wanted) = call.args.whole("count")
-                && i64::try_from(samples.len()).ok() != Some(wanted)
-            {
-                let first = call.args.whole("first")?;
+            if self.window.is_some() && i64::try_from(samples.len()).ok() != Some(wanted) {
                 return Err(DialectError::Window { first, wanted, found: samples.len() });
             }
             match (&mut all, samples) {

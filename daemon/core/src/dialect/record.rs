@@ -7,6 +7,9 @@ use super::value::nearest_whole;
 use super::{DialectError, Fields, Message, RawRecord, Value};
 use crate::analysis::record::Samples;
 
+/// The longest record that is read, whatever a preamble says: 64 Mi samples, several times what a bench may ask for.
+const MOST_POINTS: i64 = 1 << 26;
+
 /// What `[samples]` and `[record]` of a dialect say.
 #[derive(Debug)]
 pub(super) struct Reading {
@@ -59,6 +62,11 @@ impl Reading {
             let found = fields.number(name)?;
             let whole = nearest_whole(found).ok_or(DialectError::NotWhole { name, found })?;
             fields.set(name, Value::Whole(whole));
+        }
+        let points = fields.whole("points")?;
+        if !(0..=MOST_POINTS).contains(&points) {
+            let allowed = "0 to 67108864";
+            return Err(DialectError::Preamble { name: "points".to_owned(), found: points as f64, allowed });
         }
         Ok(())
     }

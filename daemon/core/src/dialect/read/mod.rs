@@ -22,8 +22,9 @@ type Maps = BTreeMap<String, Words>;
 /// The longest pause that a dialect may ask for after a command: longer ones belong into a sequence.
 const LONGEST_PAUSE_S: f64 = 60.0;
 
-/// The longest window: what a 32-bit counter holds.
-const LONGEST_WINDOW: i64 = u32::MAX as i64;
+/// The shortest and the longest window: a record of 64 Mi samples must not become as many questions, and a 32-bit counter
+/// holds no more.
+const WINDOWS: std::ops::RangeInclusive<i64> = 16..=u32::MAX as i64;
 
 /// What holds for all intents of a file.
 #[derive(Debug, Clone, Copy)]
@@ -129,10 +130,11 @@ fn window(mut table: Table<'_>) -> Option<i64> {
     let most = table.whole("most").or_else(|| table.missing("most", "such as `most = 25_000`, in samples"));
     table.refuse_others();
     let most = most?;
-    if (1..=LONGEST_WINDOW).contains(&most.value) {
+    if WINDOWS.contains(&most.value) {
         return Some(most.value);
     }
-    table.mistakes().add(most.span, format!("a window of {} samples", most.value), format!("1 to {LONGEST_WINDOW}"));
+    let help = format!("{} to {}", WINDOWS.start(), WINDOWS.end());
+    table.mistakes().add(most.span, format!("a window of {} samples", most.value), help);
     None
 }
 

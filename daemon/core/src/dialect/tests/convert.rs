@@ -143,29 +143,32 @@ number = "1.0"
 fn samples_are_read_in_windows_and_joined() {
     let text = bundled("scpi-99").unwrap().replace(
         "[intent.\"record.data\"]\nask = [{ send = \"TRACe:DATA? CHANnel{channel}\", block = true }]",
-        "[window]\nmost = 4\n[convert.\"record.data\"]\nbegin = \"first + 1.0\"\nend = \"first + count\"\n\
+        "[window]\nmost = 16\n[convert.\"record.data\"]\nbegin = \"first + 1.0\"\nend = \"first + count\"\n\
          [intent.\"record.data\"]\nsend = [\"WIN {begin:whole},{end:whole}\"]\n\
          ask = [{ send = \"DATA? {channel}\", block = true }]",
     );
     let dialect = dialect(&text);
-    let calls = dialect.data_calls(2, 10);
-    let all: Vec<String> = calls.iter().map(|call| said(&dialect, call)).collect();
-    assert_eq!(all, ["WIN 1,4\n#DATA? 2\n", "WIN 5,8\n#DATA? 2\n", "WIN 9,10\n#DATA? 2\n"]);
-    let preamble = dialect
-        .parse(
-            &Call::new(Intent::RecordPreamble).with("channel", 2),
-            &lines(&["10,2.0E-10,-1.0E-07,0.5,0.25,-128,127,0.5,1,7"]),
-        )
-        .unwrap();
+    let all: Vec<String> = dialect.data_calls(2, 40).map(|call| said(&dialect, &call)).collect();
+    assert_eq!(all, ["WIN 1,16\n#DATA? 2\n", "WIN 17,32\n#DATA? 2\n", "WIN 33,40\n#DATA? 2\n"]);
+    let preamble = |points: &str| {
+        let line = format!("{points},2.0E-10,-1.0E-07,0.5,0.25,-128,127,0.5,1,7");
+        dialect.parse(&Call::new(Intent::RecordPreamble).with("channel", 2), &lines(&[&line]))
+    };
+    let forty = preamble("40").unwrap();
     let window = |codes: std::ops::Range<i16>| Message::Block(codes.flat_map(i16::to_le_bytes).collect());
-    let record = dialect.record(&preamble, &[window(0..4), window(4..8), window(8..10)]).unwrap();
-    assert_eq!(record.samples, Samples::Codes((0..10).collect()));
-    let error = dialect.record(&preamble, &[window(0..4), window(4..7), window(8..10)]).unwrap_err();
-    assert_eq!(error, DialectError::Window { first: 4, wanted: 4, found: 3 });
-    let error = dialect.record(&preamble, &[window(0..4), window(4..10)]).unwrap_err();
+    let record = dialect.record(&forty, &[window(0..16), window(16..32), window(32..40)]).unwrap();
+    assert_eq!(record.samples, Samples::Codes((0..40).collect()));
+    let error = dialect.record(&forty, &[window(0..16), window(16..31), window(32..40)]).unwrap_err();
+    assert_eq!(error, DialectError::Window { first: 16, wanted: 16, found: 15 });
+    let error = dialect.record(&forty, &[window(0..16), window(16..32)]).unwrap_err();
     assert!(matches!(error, DialectError::Replies { wanted: 3, found: 2, .. }));
+    // A preamble cannot make the daemon ask for ever.
+    for points in ["67108865", "1E15", "-1"] {
+        let error = preamble(points).unwrap_err();
+        assert!(matches!(&error, DialectError::Preamble { name, .. } if name == "points"), "{error}");
+    }
     // Without a window there are no numbers to ask by.
-    assert_eq!(scpi_99().data_calls(2, 10).len(), 1);
+    assert_eq!(scpi_99().data_calls(2, 10).count(), 1);
     let bare = "name = \"x\"\n[samples]\nformat = \"u8\"\n[intent.\"record.data\"]\n\
                 ask = [{ send = \"D{channel} {first}?\", block = true }]\n";
     assert_eq!(Dialect::read(bare).unwrap_err()[0].what, "`{first}` names no argument");
