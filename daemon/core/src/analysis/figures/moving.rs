@@ -19,10 +19,10 @@ impl Bench<'_> {
             up.zip(down).map_or(0.0, |(up, down)| 0.5 * (up - down) / step)
         };
         let gain = change(0, &|step| {
-            read(&Moved { signal: signal.as_slice(), along: negative.as_slice(), step }, self.between(0, step))
+            read(&Moved { signal: &signal[..], along: &negative[..], step }, self.between(0, step))
         });
         let skew =
-            change(1, &|step| read(&Moved { signal: signal.as_slice(), along: &slope, step }, self.between(1, step)));
+            change(1, &|step| read(&Moved { signal: &signal[..], along: &slope, step }, self.between(1, step)));
         [gain, -skew]
     }
 }
