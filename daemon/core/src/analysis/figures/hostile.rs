@@ -86,7 +86,8 @@ fn much_noise() {
         near(&found, FigureKind::Period, PERIOD, 1.5);
         near(&found, FigureKind::Duty, 0.4, 1e-3);
         let maximum = of(&found, FigureKind::Maximum);
-        assert!((maximum.value - VOLTS).abs() <= 3.0 * maximum.u && maximum.u < 0.006 * VOLTS, "{maximum:?}");
+        // A fifth of a single sample's noise.
+        assert!((maximum.value - VOLTS).abs() <= 3.0 * maximum.u && maximum.u < 0.01 * VOLTS, "{maximum:?}");
         let settling = of(&found, FigureKind::SettlingTime);
         assert!(!settling.valid && settling.why.as_deref().unwrap().contains("noise"), "{settling:?}");
         // A band that noise leaves room in: Φ(−1.282) is 10 %.

@@ -24,9 +24,6 @@ pub fn read(text: &str, bench: &Bench, figure_names: &dyn Fn(&str) -> Option<Uni
     document::read(text, |top| sequence(top, &Context { bench, figures: figure_names }))
 }
 
-#[cfg(test)]
-mod tests;
-
 fn sequence(top: &mut Table<'_>, context: &Context<'_>) -> Option<Sequence> {
     let title = top.text("title").or_else(|| top.missing("title", "say in a few words what the sequence is for"));
     let stages = stage::read_list(top, "stage", context, stage::Part::Stages { depth: 0 });
@@ -42,3 +39,6 @@ fn sequence(top: &mut Table<'_>, context: &Context<'_>) -> Option<Sequence> {
     let always = unroll::unroll(&always, context.bench, None, top)?;
     Some(Sequence { title: title?.value, steps, always })
 }
+
+#[cfg(test)]
+mod tests;
