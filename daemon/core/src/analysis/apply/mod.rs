@@ -222,7 +222,8 @@ pub enum ApplyError {
 /// The corrected difference and the common mode of one capture.
 ///
 /// `correction.skew_s` is the part of the skew that the scope has not taken away already; what the scope did shows in
-/// the records' time axes.
+/// the records' time axes. Records of half a million samples and more are shared between two threads where the processor
+/// has room for them; the result has the same bits as with one.
 ///
 /// # Errors
 /// When the records do not belong together, hold something that is not a number, or are too short for the shift.
