@@ -38,7 +38,13 @@ fn the_core_touches_nothing_of_the_world() {
         &[
             "std::fs",
             "std::net",
-            "std::thread",
+            // Scoped threads, which end where they began, may share a long sum as long as its bits do not show it.
+            "use std::thread",
+            "std::thread::spawn",
+            "std::thread::sleep",
+            "std::thread::park",
+            "std::thread::Builder",
+            "std::thread::current",
             "std::process",
             "std::env",
             "Instant::now",

@@ -50,6 +50,8 @@ pub(super) struct Task<'a> {
     pub(super) interpolator: &'a Interpolator,
     pub(super) gain: f64,
     pub(super) offset_v: f64,
+    /// Whether the sums are wanted.
+    pub(super) summed: bool,
     /// The outputs for which every tap has a sample.
     pub(super) valid: Range<usize>,
 }
@@ -171,7 +173,9 @@ impl Chunk {
         load_volts(task.p, place, &mut self.difference[..whole]);
         subtract(&mut self.difference[..whole], &mut self.negative[..whole], self.scale, self.zero);
         let own = self.before..self.before + count;
-        sums.extend(&self.difference[..whole], &self.negative[..whole], own.clone());
+        if task.summed {
+            sums.extend(&self.difference[..whole], &self.negative[..whole], own.clone());
+        }
         for (block, from) in own.clone().step_by(BLOCK).enumerate() {
             let part = from..(from + BLOCK).min(own.end);
             self.extremes[block] = extremes_of(&self.difference[part.clone()], &self.negative[part]);

@@ -69,12 +69,19 @@ impl Signal for Plain<'_> {
     }
 
     fn load(&self, from: usize, out: &mut [f32]) {
-        fused::load_volts(self.p, self.skip_p + from, out);
+        let (from_p, from_n) = (self.skip_p + from, self.skip_n + from);
+        if let (Samples::Codes(p), Samples::Codes(n)) = (&self.p.samples, &self.n.samples) {
+            let (p, n) = (&p[from_p..from_p + out.len()], &n[from_n..from_n + out.len()]);
+            let line = |record: &Record| (record.volts_per_code as f32, record.zero_v as f32);
+            subtract_codes(p, n, line(self.p), line(self.n), out);
+            return;
+        }
+        fused::load_volts(self.p, from_p, out);
         let mut negative = [0.0; BLOCK];
-        for (i, out) in out.chunks_mut(negative.len()).enumerate() {
+        for (i, out) in out.chunks_mut(BLOCK).enumerate() {
             let negative = &mut negative[..out.len()];
-            fused::load_volts(self.n, self.skip_n + from + i * BLOCK, negative);
-            less(out, negative);
+            fused::load_volts(self.n, from_n + i * BLOCK, negative);
+            out.iter_mut().zip(negative).for_each(|(p, n)| *p -= *n);
         }
     }
 
@@ -88,7 +95,10 @@ impl Signal for Plain<'_> {
 }
 
 widest! {
-    fn less(out: &mut [f32], other: &[f32]) {
-        out.iter_mut().zip(other).for_each(|(p, n)| *p -= *n);
+    /// Both legs' codes in volts, subtracted.
+    fn subtract_codes(p: &[i16], n: &[i16], of_p: (f32, f32), of_n: (f32, f32), out: &mut [f32]) {
+        for ((out, p), n) in out.iter_mut().zip(p).zip(n) {
+            *out = (f32::from(*p) * of_p.0 + of_p.1) - (f32::from(*n) * of_n.0 + of_n.1);
+        }
     }
 }

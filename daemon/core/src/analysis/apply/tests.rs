@@ -161,8 +161,15 @@ fn two_threads_give_the_same_bits() {
         (p.samples, n.samples) = (codes(1.0), codes(0.97));
         let interpolator = Interpolator::new(2.3);
         let valid = interpolator.support(points);
-        let task =
-            fused::Task { p: &p, n: &n, interpolator: &interpolator, gain: 0.97, offset_v: 0.1, valid: valid.clone() };
+        let task = fused::Task {
+            p: &p,
+            n: &n,
+            interpolator: &interpolator,
+            gain: 0.97,
+            offset_v: 0.1,
+            summed: true,
+            valid: valid.clone(),
+        };
         let (one, two) = (fused::pass_by(&task, 1), fused::pass_by(&task, 2));
         assert_eq!(one.difference_v.len(), valid.len());
         assert!(one.difference_v == two.difference_v && one.negative_v == two.negative_v);

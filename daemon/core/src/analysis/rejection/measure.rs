@@ -43,7 +43,7 @@ pub fn measure_with(
     bands: &[f64],
 ) -> Result<Vec<RejectionBand>, ApplyError> {
     // A response would have to be undone too: plain subtraction is then worked out from the capture without it.
-    let linear = averaged(p, n, |p, n| apply::correct(p, n, correction))?;
+    let linear = averaged(p, n, |p, n| apply::correct_without_sums(p, n, correction))?;
     let (Some(first_p), Some(first_n)) = (p.first(), n.first()) else { return Ok(Vec::new()) };
     // Plain subtraction takes the nearest sample: whole intervals between the time axes are made up for.
     let apart = first_p.start_s - first_n.start_s;

@@ -1,6 +1,7 @@
 //! One leg's samples as they are stored: converted to volts only where they are looked at.
 
 use super::super::record::{Record, Samples};
+use super::super::wide::widest;
 use std::borrow::Cow;
 use std::ops::Range;
 
@@ -58,13 +59,11 @@ impl<'a> Leg<'a> {
         let from = from.min(self.len());
         let each = 1.0 / BLOCK as f64;
         match self {
-            Self::Codes { codes, scale, zero } => codes[from..]
-                .chunks_exact(BLOCK)
-                .map(|block| {
-                    let sum: i32 = block.iter().map(|&code| i32::from(code)).sum();
-                    f64::from(sum) * (each * scale) + zero
-                })
-                .collect(),
+            Self::Codes { codes, scale, zero } => {
+                let mut sums = vec![0; (codes.len() - from) / BLOCK];
+                sums_of_blocks(&codes[from..], &mut sums);
+                sums.into_iter().map(|sum| f64::from(sum) * (each * scale) + zero).collect()
+            }
             Self::Numbers { numbers, scale, zero } => numbers[from..]
                 .chunks_exact(BLOCK)
                 .map(|block| block.iter().map(|&x| f64::from(x)).sum::<f64>() * (each * scale) + zero)
@@ -87,13 +86,28 @@ impl<'a> Leg<'a> {
     pub(super) fn reaches(&self, ends: (f64, f64)) -> bool {
         match self {
             Self::Codes { codes, .. } => {
-                // One after the other: each alone is a single wide instruction.
-                let low = codes.iter().copied().fold(i16::MAX, i16::min);
-                let high = codes.iter().copied().fold(i16::MIN, i16::max);
+                let (low, high) = ends_of(codes);
                 !codes.is_empty() && (f64::from(low) <= ends.0 || f64::from(high) >= ends.1)
             }
             Self::Numbers { numbers, .. } => numbers.iter().any(|&x| f64::from(x) <= ends.0 || f64::from(x) >= ends.1),
             Self::Volts(_) => false,
         }
+    }
+}
+
+widest! {
+    fn sums_of_blocks(codes: &[i16], sums: &mut [i32]) {
+        for (sum, block) in sums.iter_mut().zip(codes.as_chunks::<BLOCK>().0) {
+            *sum = block.iter().map(|code| i32::from(*code)).sum();
+        }
+    }
+}
+
+widest! {
+    /// The lowest and the highest code.
+    fn ends_of(codes: &[i16]) -> (i16, i16) {
+        // One after the other: each alone is a single wide instruction.
+        let low = codes.iter().copied().fold(i16::MAX, i16::min);
+        (low, codes.iter().copied().fold(i16::MIN, i16::max))
     }
 }

@@ -1,5 +1,7 @@
 //! The macro's function does what its body says, with and without a result.
 
+#![allow(clippy::float_cmp)]
+
 widest! {
     /// Adds in place.
     fn add(out: &mut [f32], other: &[f32]) {
