@@ -126,9 +126,10 @@ fn requests(text: &str, which: usize) -> (String, Value) {
 #[tokio::test]
 async fn no_request_brings_a_second_command() {
     let (fake, heard) = Fake::recording().await;
-    let plan = ["scope", "generator", "supply", "switch"]
-        .iter()
-        .fold(LabPlan::default(), |plan, name| plan.with_instrument_at(name, &fake.resource));
+    let mut plan = LabPlan::default();
+    for name in ["scope", "generator", "supply", "switch"] {
+        plan.elsewhere.push((name.to_owned(), fake.resource.clone()));
+    }
     let lab = Lab::start(&plan).await;
     let mut runner = TestRunner::deterministic();
     let mut refused = 0;

@@ -119,7 +119,7 @@ impl Trial<'_> {
         }
         let (asked_first, before) = self.ask(self.call(get)).await;
         let Some(before) = before else {
-            return skipped(set, &format!("`{get}` {}, so it could not be given back", asked_first.why));
+            return skipped(set, &format!("`{get}`: {}; so it could not be given back", asked_first.why));
         };
         let skew = self.handle.dialect().skew();
         let wanted = other(set, &before, skew);
