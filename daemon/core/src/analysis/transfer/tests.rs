@@ -280,8 +280,9 @@ fn skew_is_carried_where_that_is_surer_than_measuring() {
     assert_eq!(found.skew_way, Way::Carried);
     assert!((found.correction.skew_s.u - from.skew_s.u.hypot(1e-12)).abs() < 1e-18);
     assert!((found.correction.skew_s.value - from.skew_s.value).abs() < 1e-18);
-    // A tenth of the old range's noise is a step here; no signal of 5 V is few of those.
-    assert!(found.few_steps.is_none() && (repeats[0].steps - 10.0 / 0.009).abs() < 100.0, "{}", repeats[0].steps);
+    // The step is a tenth of the old range's noise; the signal moves by ±5 times itself.
+    let expected = 2.0 * 5.0 * signals[0].rms(SAMPLES) / 0.009;
+    assert!(found.few_steps.is_none() && (repeats[0].steps / expected - 1.0).abs() < 0.02, "{}", repeats[0].steps);
     let coarse = Repeat { steps: 26.0, ..repeats[1].clone() };
     let found = transfer(&from, &[repeats[0].clone(), coarse], Some(0.0), 0.0, Choice::Legs).unwrap();
     assert_eq!((found.few_steps, found.skew_way), (Some(26.0), Way::Legs));
