@@ -69,6 +69,20 @@ fn a_balanced_line_s_sine_is_a_multiple_and_its_edges_fit() {
 }
 
 #[test]
+fn an_instrument_speaks_plain_text_unless_told_otherwise() {
+    let protocols = |text: &str| -> Result<Vec<Protocol>, ScenarioError> {
+        Ok(Scenario::read(text)?.instruments.iter().map(|instrument| instrument.protocol).collect())
+    };
+    let (line, text) = ("protocol = \"socket\"\n", Protocol::Socket);
+    assert_eq!(protocols(DEMO).unwrap(), [text; 4]);
+    assert_eq!(protocols(&DEMO.replace(line, "")).unwrap(), [text; 4]);
+    let hislip = DEMO.replacen(line, "protocol = \"hislip\"\n", 1);
+    assert_eq!(protocols(&hislip).unwrap(), [Protocol::Hislip, text, text, text]);
+    let error = protocols(&DEMO.replacen(line, "protocol = \"vxi\"\n", 1)).unwrap_err().to_string();
+    assert!(error.contains("hislip") && error.contains("socket"), "{error}");
+}
+
+#[test]
 fn leaves_out_what_has_a_default() {
     let text = "seed = 1\ninstrument = []\n[device]\nkind = \"divider\"\nresistors_ohm = [1.0, 2.0, 3.0]\n";
     let scenario = Scenario::read(text).unwrap();

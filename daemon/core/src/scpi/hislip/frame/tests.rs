@@ -6,9 +6,12 @@ use proptest::prelude::*;
 
 use super::*;
 
+/// A header and its payload.
+type Whole = (Header, Vec<u8>);
+
 /// All messages in the pieces, with their payloads put together.
-fn feed<'a>(pieces: impl Iterator<Item = &'a [u8]>) -> (Vec<(Header, Vec<u8>)>, Result<(), Malformed>) {
-    let (mut state, mut buffer, mut messages) = (ScanState::new(), Vec::new(), Vec::<(Header, Vec<u8>)>::new());
+fn feed<'a>(pieces: impl Iterator<Item = &'a [u8]>) -> (Vec<Whole>, Result<(), Malformed>) {
+    let (mut state, mut buffer, mut messages) = (ScanState::new(), Vec::new(), Vec::<Whole>::new());
     for piece in pieces {
         buffer.extend_from_slice(piece);
         loop {
@@ -33,7 +36,7 @@ fn feed<'a>(pieces: impl Iterator<Item = &'a [u8]>) -> (Vec<(Header, Vec<u8>)>, 
     (messages, Ok(()))
 }
 
-fn message() -> impl Strategy<Value = (Header, Vec<u8>)> {
+fn message() -> impl Strategy<Value = Whole> {
     let payload = proptest::collection::vec(any::<u8>(), 0..60);
     (any::<u8>(), any::<u8>(), any::<u32>(), payload).prop_map(|(kind, control, parameter, payload)| {
         let header = Header::new(kind.into()).control(control).parameter(parameter);
