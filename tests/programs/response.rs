@@ -91,14 +91,18 @@ async fn with_its_response_a_pair_rejects_more_and_its_intervals_hold() {
     assert!(response["taps"].as_array().unwrap().len() > 1, "{response}");
     println!("{:?}\n{:?}", after(&plain), after(&full));
     for ((frequency_hz, before), (_, after)) in after(&plain).into_iter().zip(after(&full)) {
+        // Measured: 41, 33, 25, 15 and 1 dB at 300 kHz to 30 MHz; from 1 MHz on noise hides what is left, all of it at 30 MHz.
         let gained = match frequency_hz {
-            f if f < 2e6 => 15.0,
-            f if f < 2e7 => 6.0,
-            _ => 0.0,
+            f if f < 5e5 => 30.0,
+            f if f < 2e6 => 25.0,
+            f if f < 5e6 => 18.0,
+            f if f < 2e7 => 10.0,
+            _ => -1.0,
         };
         assert!(after > before + gained, "{frequency_hz} Hz: {before} dB without, {after} dB with the response");
     }
 
+    assert_eq!(lab.daemon.signal("TERM").await.code(), Some(0), "{}", lab.log());
     lab.restart_daemon().await;
     for volts in [24, 48, 60] {
         let with = capture(&lab, &on_the_node(volts)).await;

@@ -36,7 +36,8 @@ fn a_response_is_applied_and_what_it_leaves_is_in_every_budget() {
     assert!(term(after, "response") > 0.0 && after.coverage.unwrap().low <= 1e-9, "{after:?}");
     let mean = of(&measured, FigureKind::Mean);
     assert!(mean.coverage.unwrap().low <= 0.0 && mean.coverage.unwrap().high >= 0.0, "{mean:?}");
-    assert!(measured.leak.rms_v >= after.value && measured.warnings.is_empty(), "{:?}", measured.leak);
+    assert!(measured.leak.rms_v + 2.0 * after.u >= after.value, "{:?} {after:?}", measured.leak);
+    assert!(measured.warnings.iter().all(|warning| !warning.contains("response")), "{:?}", measured.warnings);
 
     let (mut p, mut n) = (p[0].clone(), n[0].clone());
     (p.interval_s, n.interval_s) = (2.0 * p.interval_s, 2.0 * n.interval_s);

@@ -73,12 +73,10 @@ fn join(filter: &Response, slow: &Response, alone: &Response, fast: &Response) -
     let before = |band: &BandGain| {
         // Without the filter.
         let before_db = same(alone, band).map_or(band.before_db, |other| other.before_db);
-        // What noise hides in situ the fast edges may show: the filter was judged on them too.
+        // What noise hides in situ the fast edges may show, before and after: the filter was judged on them too.
         let hidden = band.after_db >= band.floor_db;
-        match same(fast, band).filter(|other| hidden && other.after_db > band.after_db) {
-            Some(BandGain { after_db, floor_db, .. }) => BandGain { before_db, after_db, floor_db, ..*band },
-            None => BandGain { before_db, ..*band },
-        }
+        let shown = same(fast, band).filter(|other| hidden && other.after_db > band.after_db);
+        shown.unwrap_or(BandGain { before_db, ..*band })
     };
     let mut improved: Vec<BandGain> = slow.improved.iter().map(before).collect();
     let highest = improved.last().map_or(0.0, |band| band.to_hz);
