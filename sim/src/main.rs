@@ -3,13 +3,17 @@
 
 #![cfg_attr(test, allow(clippy::unwrap_used))]
 
+mod control;
+mod faults;
 mod instrument;
+mod link;
 mod message;
 mod scenario;
 mod server;
 mod status;
 mod world;
 
+use std::collections::BTreeMap;
 use std::io::{Read, Write};
 use std::path::{Path, PathBuf};
 use std::process::ExitCode;
@@ -21,8 +25,9 @@ use tokio::signal::unix::{SignalKind, signal};
 use tokio::sync::oneshot;
 use tracing_subscriber::EnvFilter;
 
+use crate::control::Control;
 use crate::instrument::{Bench, Device, kind_name};
-use crate::scenario::{Scenario, ScenarioError};
+use crate::scenario::{CONTROL, Scenario, ScenarioError};
 
 /// Exit status when the bench could not be started.
 const CANNOT_START: u8 = 2;
@@ -107,26 +112,17 @@ async fn run(scenario: &Scenario, arguments: &Arguments) -> Result<(), StartErro
     let mut terminate = signal(SignalKind::terminate()).map_err(system("listen for SIGTERM"))?;
     let mut interrupt = signal(SignalKind::interrupt()).map_err(system("listen for SIGINT"))?;
     let bench = Arc::new(Bench::new(scenario));
+    let mut devices = BTreeMap::new();
     let mut lines = String::new();
     for spec in &scenario.instruments {
-        let failed = |source| StartError::Listen {
-            name: spec.name.clone(),
-            host: arguments.host.clone(),
-            port: spec.port,
-            source,
-        };
-        let listener = TcpListener::bind((arguments.host.as_str(), spec.port)).await.map_err(failed)?;
-        let address = listener.local_addr().map_err(failed)?;
-        let line = Announcement {
-            name: &spec.name,
-            kind: kind_name(spec.kind),
-            resource: format!("TCPIP::{}::{}::SOCKET", address.ip(), address.port()),
-        };
-        let line = serde_json::to_string(&line).map_err(|error| failed(error.into()))?;
-        lines.push_str(&line);
-        lines.push('\n');
+        let listener = listen(arguments, &spec.name, kind_name(spec.kind), spec.port, &mut lines).await?;
         let device = Arc::new(Device::new(spec, &bench));
+        devices.insert(spec.name.clone(), Arc::clone(&device));
         tokio::spawn(server::serve(listener, device, spec.name.clone()));
+    }
+    if let Some(spec) = &scenario.control {
+        let listener = listen(arguments, CONTROL, CONTROL, spec.port, &mut lines).await?;
+        tokio::spawn(control::serve(listener, Control::new(scenario, bench, devices)));
     }
     lines.push_str("ready\n");
     announce(&lines).map_err(system("tell where the instruments listen"))?;
@@ -136,6 +132,24 @@ async fn run(scenario: &Scenario, arguments: &Arguments) -> Result<(), StartErro
         () = stdin_end(arguments.exit_with_stdin) => {}
     }
     Ok(())
+}
+
+/// Listens on a port and adds the line that tells where.
+async fn listen(
+    arguments: &Arguments,
+    name: &str,
+    kind: &'static str,
+    port: u16,
+    lines: &mut String,
+) -> Result<TcpListener, StartError> {
+    let failed = |source| StartError::Listen { name: name.to_owned(), host: arguments.host.clone(), port, source };
+    let listener = TcpListener::bind((arguments.host.as_str(), port)).await.map_err(failed)?;
+    let address = listener.local_addr().map_err(failed)?;
+    let resource = format!("TCPIP::{}::{}::SOCKET", address.ip(), address.port());
+    let line = Announcement { name, kind, resource };
+    lines.push_str(&serde_json::to_string(&line).map_err(|error| failed(error.into()))?);
+    lines.push('\n');
+    Ok(listener)
 }
 
 fn announce(lines: &str) -> std::io::Result<()> {

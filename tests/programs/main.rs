@@ -9,6 +9,7 @@ mod commands;
 mod crash;
 mod demo;
 mod deskew;
+mod faults;
 mod files;
 mod refusals;
 mod rest;

@@ -1,10 +1,11 @@
-//! The supply: output 1 feeds the bus, output 2 the brake. Headers after SCPI-99's power supply class.
+//! The supply: output 1 feeds the bus, output 2 the brake. What it can do, without any header.
 
 use std::sync::Arc;
 
 use super::bench::{Bench, lock};
-use super::tree::{Action, Call, Model, Place, number};
-use crate::message::{Limits, Quantity, nr3};
+use super::tree::{Call, Model, Number, Place, number};
+use crate::message::{Limits, Quantity};
+use crate::scenario::Setting;
 use crate::status::Fault;
 use crate::world::Controls;
 
@@ -13,7 +14,8 @@ const VOLTAGE: [Limits; 2] =
     [Limits { min: 0.0, max: 60.0, default: 0.0 }, Limits { min: 0.0, max: 30.0, default: 0.0 }];
 /// The bus may draw all that its output can give; the brake is released.
 const CURRENT: [Limits; 2] = [Limits { min: 0.0, max: 5.0, default: 5.0 }, Limits { min: 0.0, max: 2.0, default: 0.0 }];
-const OUTPUTS: usize = VOLTAGE.len();
+/// Outputs of the supply.
+pub(crate) const OUTPUTS: usize = VOLTAGE.len();
 
 /// The supply on a bench; its settings are the bench's controls.
 pub(crate) struct Supply {
@@ -27,7 +29,7 @@ impl Supply {
     }
 
     /// Voltage and current at an output, as its meters show them.
-    fn reading(&self, call: &mut Call<'_>) -> Result<(f64, f64), Fault> {
+    pub(crate) fn reading(&self, call: &mut Call<'_>) -> Result<(f64, f64), Fault> {
         call.args.finish()?;
         if call.index >= OUTPUTS {
             return Err(Fault::HeaderSuffix);
@@ -56,31 +58,35 @@ impl Model for Supply {
         });
         self.changed();
     }
-
-    fn commands() -> Vec<(&'static str, Action<Self>)> {
-        let voltage =
-            number(Quantity::Volt, &VOLTAGE, OUTPUTS, |all: &mut Controls, output| &mut all.supply[output].voltage_v);
-        let current =
-            number(Quantity::Ampere, &CURRENT, OUTPUTS, |all: &mut Controls, output| &mut all.supply[output].current_a);
-        let on = Place { count: OUTPUTS, of: |all: &mut Controls, output| &mut all.supply[output].on };
-        vec![
-            ("[:SOURce#]:VOLTage[:LEVel][:IMMediate][:AMPLitude]", Action::Number(voltage)),
-            ("[:SOURce#]:CURRent[:LEVel][:IMMediate][:AMPLitude]", Action::Number(current)),
-            (":OUTPut#[:STATe]", Action::Flag(on)),
-            (":MEASure#[:SCALar]:VOLTage[:DC]", Action::Query(measure_voltage)),
-            (":MEASure#[:SCALar]:CURRent[:DC]", Action::Query(measure_current)),
-        ]
-    }
 }
 
-fn measure_voltage(supply: &Supply, call: &mut Call<'_>) -> Result<(), Fault> {
+/// The wanted voltage.
+pub(crate) fn voltage() -> Number<Supply> {
+    let place: fn(&mut Controls, usize) -> &mut f64 = |all, output| &mut all.supply[output].voltage_v;
+    Number { clamp: Some(Setting::Voltage), ..number(Quantity::Volt, &VOLTAGE, OUTPUTS, place) }
+}
+
+/// The limit of the current.
+pub(crate) fn current() -> Number<Supply> {
+    let place: fn(&mut Controls, usize) -> &mut f64 = |all, output| &mut all.supply[output].current_a;
+    Number { clamp: Some(Setting::Current), ..number(Quantity::Ampere, &CURRENT, OUTPUTS, place) }
+}
+
+/// Whether the output is connected.
+pub(crate) fn state() -> Place<Supply, bool> {
+    Place { count: OUTPUTS, of: |all: &mut Controls, output| &mut all.supply[output].on }
+}
+
+/// Answers with the voltage that the output's meter shows.
+pub(crate) fn measure_voltage(supply: &Supply, call: &mut Call<'_>) -> Result<(), Fault> {
     let (voltage_v, _) = supply.reading(call)?;
-    call.answer(nr3(voltage_v));
+    call.answer_number(voltage_v, Quantity::Volt);
     Ok(())
 }
 
-fn measure_current(supply: &Supply, call: &mut Call<'_>) -> Result<(), Fault> {
+/// Answers with the current that the output's meter shows.
+pub(crate) fn measure_current(supply: &Supply, call: &mut Call<'_>) -> Result<(), Fault> {
     let (_, current_a) = supply.reading(call)?;
-    call.answer(nr3(current_a));
+    call.answer_number(current_a, Quantity::Ampere);
     Ok(())
 }

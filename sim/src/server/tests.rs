@@ -1,16 +1,23 @@
 //! Literal bytes over real connections, and over split ones.
 
 use proptest::prelude::*;
-use tokio::io::{AsyncBufReadExt, BufReader};
+use tokio::io::{AsyncBufReadExt, AsyncReadExt, AsyncWriteExt, BufReader};
 use tokio::net::TcpStream;
 
 use super::*;
 use crate::instrument::Bench;
-use crate::scenario::{InstrumentSpec, Kind, Scenario};
+use crate::scenario::{InstrumentSpec, Kind, PersonalitySpec, Scenario};
 
 fn device(kind: Kind) -> Arc<Device> {
     let scenario = Scenario::read(include_str!("../../../configs/scenarios/greenhouse-fan.toml")).unwrap();
-    let spec = InstrumentSpec { name: "one".into(), kind, port: 0, serial: None, identity: Some("A,B,C,D".into()) };
+    let spec = InstrumentSpec {
+        name: "one".into(),
+        kind,
+        personality: PersonalitySpec::Standard,
+        port: 0,
+        serial: None,
+        identity: Some("A,B,C,D".into()),
+    };
     Arc::new(Device::new(&spec, &Arc::new(Bench::new(&scenario))))
 }
 
