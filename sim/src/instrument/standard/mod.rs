@@ -116,6 +116,8 @@ impl Device {
                 return Ok(());
             }
             ("OPC", true) => 1,
+            // No options are fitted (IEEE 488.2 10.20).
+            ("OPT", true) => 0,
             ("RST", false) => {
                 self.core.disarm();
                 self.instrument.reset();
