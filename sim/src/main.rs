@@ -3,13 +3,17 @@
 
 #![cfg_attr(test, allow(clippy::unwrap_used))]
 
+mod control;
+mod faults;
 mod instrument;
+mod link;
 mod message;
 mod scenario;
 mod server;
 mod status;
 mod world;
 
+use std::collections::BTreeMap;
 use std::io::{Read, Write};
 use std::net::SocketAddr;
 use std::path::{Path, PathBuf};
@@ -22,8 +26,9 @@ use tokio::signal::unix::{SignalKind, signal};
 use tokio::sync::oneshot;
 use tracing_subscriber::EnvFilter;
 
+use crate::control::Control;
 use crate::instrument::{Bench, Device, kind_name};
-use crate::scenario::{Protocol, Scenario, ScenarioError};
+use crate::scenario::{CONTROL, Protocol, Scenario, ScenarioError};
 
 /// Exit status when the bench could not be started.
 const CANNOT_START: u8 = 2;
@@ -108,23 +113,18 @@ async fn run(scenario: &Scenario, arguments: &Arguments) -> Result<(), StartErro
     let mut terminate = signal(SignalKind::terminate()).map_err(system("listen for SIGTERM"))?;
     let mut interrupt = signal(SignalKind::interrupt()).map_err(system("listen for SIGINT"))?;
     let bench = Arc::new(Bench::new(scenario));
+    let mut devices = BTreeMap::new();
     let mut lines = String::new();
     for spec in &scenario.instruments {
-        let failed = |source| StartError::Listen {
-            name: spec.name.clone(),
-            host: arguments.host.clone(),
-            port: spec.port,
-            source,
-        };
-        let listener = TcpListener::bind((arguments.host.as_str(), spec.port)).await.map_err(failed)?;
-        let address = listener.local_addr().map_err(failed)?;
-        let line =
-            Announcement { name: &spec.name, kind: kind_name(spec.kind), resource: resource(spec.protocol, address) };
-        let line = serde_json::to_string(&line).map_err(|error| failed(error.into()))?;
-        lines.push_str(&line);
-        lines.push('\n');
+        let place = (spec.protocol, spec.port);
+        let listener = listen(arguments, &spec.name, kind_name(spec.kind), place, &mut lines).await?;
         let device = Arc::new(Device::new(spec, &bench));
+        devices.insert(spec.name.clone(), Arc::clone(&device));
         tokio::spawn(server::serve(listener, device, spec.protocol, spec.name.clone()));
+    }
+    if let Some(spec) = &scenario.control {
+        let listener = listen(arguments, CONTROL, CONTROL, (Protocol::Socket, spec.port), &mut lines).await?;
+        tokio::spawn(control::serve(listener, Control::new(scenario, bench, devices)));
     }
     lines.push_str("ready\n");
     announce(&lines).map_err(system("tell where the instruments listen"))?;
@@ -144,6 +144,23 @@ fn resource(protocol: Protocol, address: SocketAddr) -> String {
         Protocol::Hislip => format!("TCPIP::{host}::{},{port}::INSTR", server::SUB_ADDRESS),
         Protocol::Socket => format!("TCPIP::{host}::{port}::SOCKET"),
     }
+}
+
+/// Listens on a port and adds the line that tells where.
+async fn listen(
+    arguments: &Arguments,
+    name: &str,
+    kind: &'static str,
+    (protocol, port): (Protocol, u16),
+    lines: &mut String,
+) -> Result<TcpListener, StartError> {
+    let failed = |source| StartError::Listen { name: name.to_owned(), host: arguments.host.clone(), port, source };
+    let listener = TcpListener::bind((arguments.host.as_str(), port)).await.map_err(failed)?;
+    let address = listener.local_addr().map_err(failed)?;
+    let line = Announcement { name, kind, resource: resource(protocol, address) };
+    lines.push_str(&serde_json::to_string(&line).map_err(|error| failed(error.into()))?);
+    lines.push('\n');
+    Ok(listener)
 }
 
 fn announce(lines: &str) -> std::io::Result<()> {

@@ -1,17 +1,15 @@
-//! Connections: bytes to a device and its replies back, as plain text or in HiSLIP messages.
+//! Listening: connections to a device, each a task of its own, as plain text or in HiSLIP messages.
 
 mod hislip;
 
-use std::io;
 use std::sync::Arc;
 use std::time::Duration;
 
-use tokio::io::{AsyncRead, AsyncReadExt, AsyncWrite, AsyncWriteExt};
 use tokio::net::TcpListener;
 use tokio::sync::Semaphore;
 
 use crate::instrument::Device;
-use crate::message::{Arrival, Input};
+use crate::link::converse;
 use crate::scenario::Protocol;
 
 pub(crate) use hislip::SUB_ADDRESS;
@@ -40,44 +38,27 @@ pub(crate) async fn serve(listener: TcpListener, device: Arc<Device>, protocol: 
         if let Err(error) = stream.set_nodelay(true) {
             tracing::debug!(instrument = name, %error, "replies may be delayed");
         }
+        let Some(guest) = device.admit() else {
+            tracing::debug!(instrument = name, %peer, "turned away");
+            continue;
+        };
         tracing::debug!(instrument = name, %peer, "connected");
         let (device, hislip, name) = (Arc::clone(&device), Arc::clone(&hislip), name.clone());
         tokio::spawn(async move {
+            let mut life = device.life();
             let outcome = match protocol {
-                Protocol::Hislip => hislip.converse(stream).await,
+                Protocol::Hislip => tokio::select! {
+                    done = hislip.converse(stream) => done,
+                    _ = life.changed() => Ok(()),
+                },
                 Protocol::Socket => converse(stream, &device).await,
             };
             match outcome {
                 Ok(()) => tracing::debug!(instrument = name, %peer, "disconnected"),
                 Err(error) => tracing::debug!(instrument = name, %peer, %error, "connection lost"),
             }
-            drop(place);
+            drop((guest, place));
         });
-    }
-}
-
-/// Carries out the messages of one connection, one after the other, until the peer closes it. A message that the peer did
-/// not finish is dropped. While `*OPC?` or `*WAI` waits nothing is read.
-///
-/// # Errors
-/// When reading or writing fails.
-pub(crate) async fn converse(mut stream: impl AsyncRead + AsyncWrite + Unpin, device: &Device) -> io::Result<()> {
-    let mut input = Input::default();
-    let mut buffer = vec![0; 16 * 1024];
-    loop {
-        let count = stream.read(&mut buffer).await?;
-        if count == 0 {
-            return Ok(());
-        }
-        for arrival in input.push(buffer.get(..count).unwrap_or_default()) {
-            match arrival {
-                Arrival::Message(message) => {
-                    let reply = device.run(&message).await;
-                    stream.write_all(&reply).await?;
-                }
-                Arrival::Overrun => device.overrun(),
-            }
-        }
     }
 }
 

@@ -11,6 +11,7 @@ mod demo;
 mod devices;
 mod deskew;
 mod dialect;
+mod faults;
 mod files;
 mod hislip;
 mod hostile;

@@ -8,6 +8,7 @@ use serde_json::Value;
 use tempfile::TempDir;
 
 use crate::api::Api;
+use crate::control::Control;
 use crate::process::{Program, run_to_end};
 use crate::rewrite::set_resource;
 
@@ -36,6 +37,27 @@ impl LabPlan {
     #[must_use]
     pub fn with_bench(mut self, table: &str, key: &str, value: &str) -> Self {
         self.bench = crate::set_in_table(&self.bench, table, key, value);
+        self
+    }
+
+    /// The same plan with the simulator's control port, for [`Lab::control`].
+    #[must_use]
+    pub fn with_control(mut self) -> Self {
+        self.scenario.push_str("\n[control]\nport = 0\n");
+        self
+    }
+
+    /// The same plan with all instruments of one of the simulator's personalities, and with its dialect, which lies in
+    /// `tests/dialects`.
+    #[must_use]
+    pub fn speaking(mut self, personality: &str) -> Self {
+        let dialect = crate::project().join("tests/dialects").join(format!("{personality}.toml"));
+        for (nth, name) in ["scope", "generator", "supply", "switch"].into_iter().enumerate() {
+            let value = format!("0\npersonality = \"{personality}\"");
+            self.scenario = crate::set_in_nth(&self.scenario, "[[instrument]]", nth, "port", &value);
+            let table = format!("instrument.{name}");
+            self.bench = crate::set_in_table(&self.bench, &table, "dialect", &format!("\"{}\"", dialect.display()));
+        }
         self
     }
 
@@ -80,6 +102,7 @@ pub struct Lab {
     pub daemon: Program,
     /// Where the simulator has each instrument: name, VISA resource string.
     pub instruments: BTreeMap<String, String>,
+    control: Option<String>,
     folder: TempDir,
 }
 
@@ -102,7 +125,7 @@ impl Lab {
             &["--scenario", text(&scenario), "--exit-with-stdin"],
             &place.join("sim.log"),
         );
-        let mut instruments = BTreeMap::new();
+        let (mut instruments, mut control) = (BTreeMap::new(), None);
         loop {
             let line = sim.line().await.expect("the simulator becomes ready");
             if line == "ready" {
@@ -110,7 +133,11 @@ impl Lab {
             }
             let told: Value = serde_json::from_str(&line).expect("the simulator tells JSON");
             let word = |key: &str| told[key].as_str().expect("name and resource").to_owned();
-            instruments.insert(word("name"), word("resource"));
+            if word("kind") == "control" {
+                control = Some(word("resource"));
+            } else {
+                instruments.insert(word("name"), word("resource"));
+            }
         }
         let mut bench = plan.bench.clone();
         for (name, resource) in instruments.iter().chain(plan.elsewhere.iter().map(|(name, at)| (name, at))) {
@@ -123,7 +150,7 @@ impl Lab {
         bench = crate::set_in_table(&bench, "", "sequences", "\"sequences\"");
         write("bench.toml", &bench);
         let (daemon, url) = Self::start_daemon(place).await;
-        Self { api: Api::new(&url), url, sim, daemon, instruments, folder }
+        Self { api: Api::new(&url), url, sim, daemon, instruments, control, folder }
     }
 
     async fn start_daemon(place: &Path) -> (Program, String) {
@@ -158,6 +185,14 @@ impl Lab {
     pub async fn ask(&self, instrument: &str, query: &str) -> String {
         let resource = self.instruments.get(instrument).unwrap_or_else(|| panic!("no instrument `{instrument}`"));
         crate::ask(resource, query).await
+    }
+
+    /// The simulator's control port.
+    ///
+    /// # Panics
+    /// When the plan did not ask for it.
+    pub async fn control(&self) -> Control {
+        Control::connect(self.control.as_deref().expect("a plan with the control port")).await
     }
 
     /// Runs `evenpair` against this lab's daemon to its end.

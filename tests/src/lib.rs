@@ -4,6 +4,7 @@
 //! free loopback ports, with a data folder that goes when the test ends.
 
 mod api;
+mod control;
 mod fake;
 mod lab;
 mod numbers;
@@ -13,6 +14,7 @@ mod truth;
 mod wire;
 
 pub use api::{Answer, Api};
+pub use control::{Control, Strike};
 pub use fake::Fake;
 pub use lab::{Lab, LabPlan};
 pub use numbers::{Estimate, figure, quantity};

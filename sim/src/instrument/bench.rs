@@ -1,10 +1,11 @@
 //! What the instruments of one bench share: the controls they write and the world that answers.
 
-use std::sync::{Mutex, MutexGuard, PoisonError};
+use std::sync::{Arc, Mutex, MutexGuard, PoisonError};
 
 use tokio::sync::watch;
 
-use crate::scenario::Scenario;
+use crate::faults::{Faults, Ledger};
+use crate::scenario::{FaultSpec, Scenario};
 use crate::world::{Controls, World};
 
 /// Locks a mutex. A holder that panicked leaves plain data behind, which is still usable.
@@ -18,6 +19,10 @@ pub(crate) struct Bench {
     pub(crate) controls: Mutex<Controls>,
     /// The analog world. An acquisition holds it for as long as it computes.
     pub(crate) world: Mutex<World>,
+    /// What has gone wrong.
+    pub(crate) ledger: Arc<Ledger>,
+    seed: u64,
+    faults: Vec<FaultSpec>,
     changes: watch::Sender<u64>,
 }
 
@@ -27,8 +32,20 @@ impl Bench {
         Self {
             controls: Mutex::new(Controls::default()),
             world: Mutex::new(World::new(scenario)),
+            ledger: Arc::default(),
+            seed: scenario.seed,
+            faults: scenario.faults.clone(),
             changes: watch::Sender::new(0),
         }
+    }
+
+    /// The faults of an instrument, those of the scenario armed.
+    pub(crate) fn faults(&self, instrument: &str) -> Faults {
+        let faults = Faults::new(instrument, self.seed, Arc::clone(&self.ledger));
+        for spec in self.faults.iter().filter(|spec| spec.instrument == instrument) {
+            faults.arm(spec.clone());
+        }
+        faults
     }
 
     /// Tells those who wait for a trigger that it may come now.

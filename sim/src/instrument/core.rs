@@ -1,11 +1,12 @@
 //! What every instrument has: its status and the knowledge whether an operation is pending.
 
-use std::sync::Mutex;
+use std::sync::{Arc, Mutex};
 
 use tokio::sync::watch;
 
 use super::bench::lock;
-use crate::status::{Fault, Status, event};
+use crate::faults::Faults;
+use crate::status::{Fault, Status, event, operation};
 
 /// Status and pending operation of one instrument, shared by its connections and its background work.
 #[derive(Debug)]
@@ -14,6 +15,9 @@ pub(crate) struct Core {
     pub(crate) status: Mutex<Status>,
     /// Counts moments at which the status may have changed.
     changes: watch::Sender<u64>,
+    /// What goes wrong with it.
+    pub(crate) faults: Arc<Faults>,
+    life: watch::Sender<u64>,
     pending: watch::Sender<Pending>,
 }
 
@@ -27,12 +31,9 @@ struct Pending {
 
 impl Core {
     /// An idle instrument just switched on.
-    pub(crate) fn new() -> Self {
-        Self {
-            status: Mutex::new(Status::new()),
-            changes: watch::Sender::new(0),
-            pending: watch::Sender::new(Pending::default()),
-        }
+    pub(crate) fn new(faults: Arc<Faults>) -> Self {
+        let (life, pending) = (watch::Sender::new(1), watch::Sender::new(Pending::default()));
+        Self { status: Mutex::new(Status::new()), changes: watch::Sender::new(0), faults, life, pending }
     }
 
     /// Tells those who watch the status that it may have changed.
@@ -43,6 +44,18 @@ impl Core {
     /// Notices every [`touch`](Self::touch) from now on.
     pub(crate) fn changes(&self) -> watch::Receiver<u64> {
         self.changes.subscribe()
+    }
+
+    /// Changes whenever the instrument is switched off and on.
+    pub(crate) fn life(&self) -> watch::Receiver<u64> {
+        self.life.subscribe()
+    }
+
+    /// The instrument is switched off and on: its status is that of the first moment, its connections are gone.
+    pub(crate) fn restart(&self) {
+        *lock(&self.status) = Status::new();
+        self.pending.send_modify(|pending| *pending = Pending::default());
+        self.life.send_modify(|life| *life = life.wrapping_add(1));
     }
 
     /// Puts an error into the queue.
@@ -69,6 +82,16 @@ impl Core {
         });
         drop(status);
         self.touch();
+    }
+
+    /// Whether an operation is pending.
+    pub(crate) fn busy(&self) -> bool {
+        self.pending.borrow().busy
+    }
+
+    /// Whether what is pending waits for a trigger.
+    pub(crate) fn waiting(&self) -> bool {
+        lock(&self.status).operation.condition() & operation::WAITING_FOR_TRIGGER != 0
     }
 
     /// `*OPC`: sets the bit when nothing is pending any more (IEEE 488.2 10.18).

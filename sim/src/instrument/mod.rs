@@ -1,30 +1,43 @@
-//! The instruments: an IEEE 488.2 device around a table of commands.
+//! The instruments: what they can do, and the personalities by which they are spoken to.
 //!
 //! One [`Device`] serves all connections to an instrument: settings, status and pending work are shared, the input buffer
-//! and the output queue belong to the connection.
+//! and the output queue belong to the connection. What an instrument can do ([`scope`], [`generator`], [`supply`],
+//! [`switch`]) knows no header; the personalities ([`standard`], [`terse`], [`wordy`], [`slow`]) are tables of headers
+//! with a manner of speaking.
 
 mod bench;
 mod core;
+#[cfg(test)]
+pub(crate) mod fixture;
 mod generator;
-mod outputs;
+mod personality;
+mod plain;
 mod scope;
+mod slow;
+mod standard;
 mod supply;
 mod switch;
 mod system;
+mod terse;
 mod tree;
+mod wordy;
 
 use std::sync::Arc;
+use std::sync::atomic::{AtomicUsize, Ordering};
+use std::time::Duration;
 
 use tokio::sync::watch;
 
 pub(crate) use bench::{Bench, lock};
 
 use self::core::Core;
-use crate::message::{Args, Header, Path, Reply, Unit, Units};
-use crate::scenario::{InstrumentSpec, Kind};
-use crate::status::Fault;
+use crate::faults::Faults;
+use crate::scenario::{InstrumentSpec, Kind, PersonalitySpec};
+use crate::status::{Fault, QUEUE_LENGTH};
+use personality::Personality;
+use plain::Manner;
 use system::System;
-use tree::{Bound, Call, Instrument};
+use tree::{Bound, Instrument};
 
 /// One instrument.
 pub(crate) struct Device {
@@ -32,53 +45,64 @@ pub(crate) struct Device {
     core: Arc<Core>,
     instrument: Arc<dyn Instrument>,
     system: Bound<System>,
+    /// How it speaks; none for the exchange of IEEE 488.2.
+    manner: Option<&'static Manner>,
+    guests: Arc<AtomicUsize>,
 }
 
 impl Device {
-    /// An instrument as the scenario describes it, just switched on: its outputs are off, its settings those of `*RST`.
+    /// An instrument as the scenario describes it, just switched on: its outputs are off, its settings those of a reset.
     pub(crate) fn new(spec: &InstrumentSpec, bench: &Arc<Bench>) -> Self {
-        let core = Arc::new(Core::new());
+        match spec.personality {
+            PersonalitySpec::Slow => Self::speaking::<slow::Slow>(spec, bench),
+            PersonalitySpec::Standard => Self::speaking::<standard::Standard>(spec, bench),
+            PersonalitySpec::Terse => Self::speaking::<terse::Terse>(spec, bench),
+            PersonalitySpec::Wordy => Self::speaking::<wordy::Wordy>(spec, bench),
+        }
+    }
+
+    fn speaking<P: Personality>(spec: &InstrumentSpec, bench: &Arc<Bench>) -> Self {
+        let core = Arc::new(Core::new(Arc::new(bench.faults(&spec.name))));
         let instrument: Arc<dyn Instrument> = match spec.kind {
-            Kind::Generator => Arc::new(Bound::new(generator::Generator::new(Arc::clone(bench)))),
-            Kind::Scope => Arc::new(Bound::new(scope::Scope::new(Arc::clone(bench), Arc::clone(&core)))),
-            Kind::Supply => Arc::new(Bound::new(supply::Supply::new(Arc::clone(bench)))),
-            Kind::Switch => Arc::new(Bound::new(switch::Switch::new(Arc::clone(bench)))),
+            Kind::Generator => Arc::new(Bound::new(generator::Generator::new(Arc::clone(bench)), P::generator())),
+            Kind::Scope => {
+                let scope = scope::Scope::new(Arc::clone(bench), Arc::clone(&core));
+                Arc::new(Bound::with_preset(scope, P::scope(), P::preset_scope))
+            }
+            Kind::Supply => Arc::new(Bound::new(supply::Supply::new(Arc::clone(bench)), P::supply())),
+            Kind::Switch => Arc::new(Bound::new(switch::Switch::new(Arc::clone(bench)), P::switch())),
         };
         instrument.reset();
         let identity = spec.identity.clone().unwrap_or_else(|| {
             let serial = spec.serial.as_deref().unwrap_or("0");
             format!("EVENPAIR-SIM,{},{serial},1.0", kind_name(spec.kind).to_ascii_uppercase())
         });
-        let system = Bound::new(System { core: Arc::clone(&core), instrument: Arc::clone(&instrument) });
-        Self { identity, core, instrument, system }
+        let system =
+            System { core: Arc::clone(&core), instrument: Arc::clone(&instrument), identity: identity.clone() };
+        Self {
+            identity,
+            core,
+            instrument,
+            system: Bound::new(system, P::system()),
+            manner: P::MANNER,
+            guests: Arc::default(),
+        }
     }
 
-    /// Carries out one program message and returns the response message, which is empty when nothing was asked. Mistakes
-    /// go to the error queue: a command error ends the message, any other only the unit it is in.
+    /// Carries out one message and returns the reply, which is empty when nothing was asked or the question was wrong.
     ///
     /// A supply's reading waits for an acquisition that is being computed, as both need the world.
     ///
     /// # Cancel safety
-    /// Waits only at `*OPC?` and `*WAI`; if dropped there, what stood before has been done and the rest is not.
+    /// Waits only for an acquisition to end; if dropped there, what stood before has been done and the rest is not.
     pub(crate) async fn run(&self, message: &[u8]) -> Vec<u8> {
-        let mut reply = Reply::default();
-        let mut path = Path::default();
-        for unit in Units::new(message) {
-            let done = match unit {
-                Ok(unit) if unit.query && reply.is_indefinite() => Err(Fault::QueryAfterIndefinite),
-                Ok(unit) => self.execute(unit, &mut path, &mut reply).await,
-                Err(fault) => Err(fault),
-            };
-            if let Err(fault) = done {
-                self.core.report(fault);
-                if fault.ends_message() {
-                    break;
-                }
-            }
-        }
+        let reply = match self.manner {
+            None => self.exchange(message).await,
+            Some(manner) => self.converse(manner, message).await,
+        };
         // Masks, events and the queue of errors may have changed.
         self.core.touch();
-        reply.finish()
+        reply
     }
 
     /// Reports a message that was thrown away because it was too long.
@@ -108,74 +132,62 @@ impl Device {
         self.core.changes()
     }
 
-    async fn execute(&self, unit: Unit, path: &mut Path, reply: &mut Reply) -> Result<(), Fault> {
-        let mut args = Args::new(unit.data);
-        match unit.header {
-            Header::Common(name) => {
-                if matches!((name.as_str(), unit.query), ("OPC", true) | ("WAI", false)) {
-                    self.core.idle().await;
-                }
-                self.common(&name, unit.query, &mut args, reply)
-            }
-            Header::Tree { from_root, nodes } => {
-                let nodes = path.resolve(from_root, &nodes);
-                let mut call = Call { index: 0, args, reply, core: &self.core };
-                let done = self.instrument.execute(&nodes, unit.query, &mut call);
-                done.or_else(|| self.system.execute(&nodes, unit.query, &mut call))
-                    .unwrap_or(Err(Fault::UndefinedHeader))
-            }
+    /// What goes wrong with it.
+    pub(crate) fn faults(&self) -> &Faults {
+        &self.core.faults
+    }
+
+    /// Changes whenever it is switched off and on: its connections are gone then.
+    pub(crate) fn life(&self) -> watch::Receiver<u64> {
+        self.core.life()
+    }
+
+    /// Switches it off and on: settings and status are those of the first moment.
+    pub(crate) fn reboot(&self) {
+        self.instrument.reset();
+        self.core.restart();
+    }
+
+    /// Lets the error queue run over.
+    pub(crate) fn overflow(&self) {
+        for _ in 0..=QUEUE_LENGTH {
+            self.core.report(Fault::System);
         }
     }
 
-    /// The common commands (IEEE 488.2 chapter 10, from memory).
-    fn common(&self, name: &str, query: bool, args: &mut Args, reply: &mut Reply) -> Result<(), Fault> {
-        let mask = match (name, query) {
-            ("ESE" | "SRE", false) => args.mask(0xFF)?,
-            _ => 0,
-        };
-        args.finish()?;
-        // Both masks have eight bits; `mask` has seen to it.
-        let mask = u8::try_from(mask).unwrap_or(u8::MAX);
-        let number = match (name, query) {
-            ("CLS", false) => {
-                self.core.disarm();
-                lock(&self.core.status).clear();
-                return Ok(());
-            }
-            ("ESE", false) => {
-                lock(&self.core.status).event_enable = mask;
-                return Ok(());
-            }
-            ("ESE", true) => lock(&self.core.status).event_enable,
-            ("ESR", true) => lock(&self.core.status).take_events(),
-            ("IDN", true) => {
-                reply.add_indefinite(self.identity.as_bytes());
-                return Ok(());
-            }
-            ("OPC", false) => {
-                self.core.arm();
-                return Ok(());
-            }
-            ("OPC", true) => 1,
-            // No options are fitted (IEEE 488.2 10.20).
-            ("OPT", true) => 0,
-            ("RST", false) => {
-                self.core.disarm();
-                self.instrument.reset();
-                return Ok(());
-            }
-            ("SRE", false) => {
-                lock(&self.core.status).enable_requests(mask);
-                return Ok(());
-            }
-            ("SRE", true) => lock(&self.core.status).request_enable(),
-            ("STB", true) => lock(&self.core.status).status_byte(reply.waits()),
-            ("TST", true) => 0,
-            ("WAI", false) => return Ok(()),
-            _ => return Err(Fault::UndefinedHeader),
-        };
-        reply.add(number.to_string().as_bytes());
-        Ok(())
+    /// What it says by itself to whoever connects.
+    pub(crate) fn greeting(&self) -> Vec<u8> {
+        self.manner.map_or_else(Vec::new, |manner| {
+            manner.greeting.map_or_else(Vec::new, |text| [text.as_bytes(), manner.ending].concat())
+        })
+    }
+
+    /// For how long it is deaf after each message.
+    pub(crate) fn deafness(&self) -> Option<Duration> {
+        self.manner.and_then(|manner| manner.deafness)
+    }
+
+    /// Lets a connection in, for as long as the guest is kept; nobody if it serves one client and has it, or
+    /// if a fault says so.
+    pub(crate) fn admit(&self) -> Option<Guest> {
+        if self.core.faults.refuses() {
+            return None;
+        }
+        let before = self.guests.fetch_add(1, Ordering::SeqCst);
+        let guest = Guest { guests: Arc::clone(&self.guests) };
+        let alone = self.manner.is_some_and(|manner| manner.one_client);
+        if alone && before > 0 { None } else { Some(guest) }
+    }
+}
+
+/// A connection that was let in.
+pub(crate) struct Guest {
+    guests: Arc<AtomicUsize>,
+}
+
+impl Drop for Guest {
+    fn drop(&mut self) {
+        self.guests.fetch_sub(1, Ordering::SeqCst);
     }
 }
 

@@ -1,11 +1,11 @@
-//! The supply: output 1 feeds the bus, output 2 the brake. Headers after SCPI-99's power supply class.
+//! The supply: output 1 feeds the bus, output 2 the brake. What it can do, without any header.
 
 use std::sync::Arc;
 
 use super::bench::{Bench, lock};
-use super::outputs::{self, Outputs};
-use super::tree::{Action, Call, Model, number};
-use crate::message::{Limits, Quantity, nr3};
+use super::tree::{Call, Model, Number, Place, number};
+use crate::message::{Limits, Quantity};
+use crate::scenario::Setting;
 use crate::status::Fault;
 use crate::world::Controls;
 
@@ -14,12 +14,8 @@ const VOLTAGE: [Limits; 2] =
     [Limits { min: 0.0, max: 60.0, default: 0.0 }, Limits { min: 0.0, max: 30.0, default: 0.0 }];
 /// The bus may draw all that its output can give; the brake is released.
 const CURRENT: [Limits; 2] = [Limits { min: 0.0, max: 5.0, default: 5.0 }, Limits { min: 0.0, max: 2.0, default: 0.0 }];
-const OUTPUT: Outputs = Outputs {
-    count: VOLTAGE.len(),
-    level: &VOLTAGE,
-    level_v: |all, output| &mut all.supply[output].voltage_v,
-    on: |all, output| &mut all.supply[output].on,
-};
+/// Outputs of the supply.
+pub(crate) const OUTPUTS: usize = VOLTAGE.len();
 
 /// The supply on a bench; its settings are the bench's controls.
 pub(crate) struct Supply {
@@ -33,10 +29,13 @@ impl Supply {
     }
 
     /// Voltage and current at an output, as its meters show them.
-    fn reading(&self, call: &mut Call<'_>) -> Result<(f64, f64), Fault> {
-        let output = OUTPUT.asked(call)?;
+    pub(crate) fn reading(&self, call: &mut Call<'_>) -> Result<(f64, f64), Fault> {
+        call.args.finish()?;
+        if call.index >= OUTPUTS {
+            return Err(Fault::HeaderSuffix);
+        }
         let controls = lock(&self.bench.controls).clone();
-        Ok(lock(&self.bench.world).supply_reading(&controls, output))
+        Ok(lock(&self.bench.world).supply_reading(&controls, call.index))
     }
 }
 
@@ -44,7 +43,7 @@ impl Model for Supply {
     type Settings = Controls;
 
     fn with<R>(&self, act: impl FnOnce(&mut Controls) -> R) -> R {
-        outputs::with(&self.bench, act)
+        act(&mut lock(&self.bench.controls))
     }
 
     fn changed(&self) {
@@ -59,27 +58,35 @@ impl Model for Supply {
         });
         self.changed();
     }
-
-    fn commands() -> Vec<(&'static str, Action<Self>)> {
-        let current = number(Quantity::Ampere, &CURRENT, OUTPUT.count, |all: &mut Controls, output| {
-            &mut all.supply[output].current_a
-        });
-        OUTPUT.headers(vec![
-            ("[:SOURce#]:CURRent[:LEVel][:IMMediate][:AMPLitude]", Action::Number(current)),
-            (":MEASure#[:SCALar]:VOLTage[:DC]", Action::Query(measure_voltage)),
-            (":MEASure#[:SCALar]:CURRent[:DC]", Action::Query(measure_current)),
-        ])
-    }
 }
 
-fn measure_voltage(supply: &Supply, call: &mut Call<'_>) -> Result<(), Fault> {
+/// The wanted voltage.
+pub(crate) fn voltage() -> Number<Supply> {
+    let place: fn(&mut Controls, usize) -> &mut f64 = |all, output| &mut all.supply[output].voltage_v;
+    Number { clamp: Some(Setting::Voltage), ..number(Quantity::Volt, &VOLTAGE, OUTPUTS, place) }
+}
+
+/// The limit of the current.
+pub(crate) fn current() -> Number<Supply> {
+    let place: fn(&mut Controls, usize) -> &mut f64 = |all, output| &mut all.supply[output].current_a;
+    Number { clamp: Some(Setting::Current), ..number(Quantity::Ampere, &CURRENT, OUTPUTS, place) }
+}
+
+/// Whether the output is connected.
+pub(crate) fn state() -> Place<Supply, bool> {
+    Place { count: OUTPUTS, of: |all: &mut Controls, output| &mut all.supply[output].on }
+}
+
+/// Answers with the voltage that the output's meter shows.
+pub(crate) fn measure_voltage(supply: &Supply, call: &mut Call<'_>) -> Result<(), Fault> {
     let (voltage_v, _) = supply.reading(call)?;
-    call.answer(nr3(voltage_v));
+    call.answer_number(voltage_v, Quantity::Volt);
     Ok(())
 }
 
-fn measure_current(supply: &Supply, call: &mut Call<'_>) -> Result<(), Fault> {
+/// Answers with the current that the output's meter shows.
+pub(crate) fn measure_current(supply: &Supply, call: &mut Call<'_>) -> Result<(), Fault> {
     let (_, current_a) = supply.reading(call)?;
-    call.answer(nr3(current_a));
+    call.answer_number(current_a, Quantity::Ampere);
     Ok(())
 }

@@ -1,4 +1,4 @@
-//! The switch unit that connects the probe tips. Headers after SCPI-99's signal switcher class.
+//! The switch unit that connects the probe tips. What it can do, without any header.
 //!
 //! Channels: 101 the reference to both tips, 102 the node to both tips, 103 the gate to the P tip and the node to the
 //! N tip; 104 to 108 lead nowhere. Of 101 to 103 at most one can be closed.
@@ -6,7 +6,7 @@
 use std::sync::Arc;
 
 use super::bench::{Bench, lock};
-use super::tree::{Action, Call, Model};
+use super::tree::{Call, Model};
 use crate::status::Fault;
 use crate::world::Controls;
 
@@ -27,7 +27,7 @@ impl Switch {
     }
 
     /// Answers for each channel of the list whether it is in the wanted state.
-    fn tell(&self, call: &mut Call<'_>, closed: bool) -> Result<(), Fault> {
+    pub(crate) fn tell(&self, call: &mut Call<'_>, closed: bool) -> Result<(), Fault> {
         let list = channels(call)?;
         let states = self.with(|controls| {
             list.iter().map(|channel| controls.closed.contains(channel) == closed).collect::<Vec<_>>()
@@ -53,17 +53,6 @@ impl Model for Switch {
         self.with(|controls| controls.closed.clear());
         self.changed();
     }
-
-    fn commands() -> Vec<(&'static str, Action<Self>)> {
-        vec![
-            (":ROUTe:CLOSe", Action::Command(close)),
-            (":ROUTe:CLOSe", Action::Query(|switch, call| switch.tell(call, true))),
-            (":ROUTe:CLOSe:STATe", Action::Query(closed)),
-            (":ROUTe:OPEN", Action::Command(open)),
-            (":ROUTe:OPEN", Action::Query(|switch, call| switch.tell(call, false))),
-            (":ROUTe:OPEN:ALL", Action::Command(open_all)),
-        ]
-    }
 }
 
 /// The channel list of a command, all of whose channels exist.
@@ -74,7 +63,7 @@ fn channels(call: &mut Call<'_>) -> Result<Vec<u32>, Fault> {
 }
 
 /// Closes all channels of the list, or none if two sources would meet.
-fn close(switch: &Switch, call: &mut Call<'_>) -> Result<(), Fault> {
+pub(crate) fn close(switch: &Switch, call: &mut Call<'_>) -> Result<(), Fault> {
     let list = channels(call)?;
     switch.with(|controls| {
         let mut closed = controls.closed.clone();
@@ -89,20 +78,23 @@ fn close(switch: &Switch, call: &mut Call<'_>) -> Result<(), Fault> {
     Ok(())
 }
 
-fn open(switch: &Switch, call: &mut Call<'_>) -> Result<(), Fault> {
+/// Opens the channels of the list.
+pub(crate) fn open(switch: &Switch, call: &mut Call<'_>) -> Result<(), Fault> {
     let list = channels(call)?;
     switch.with(|controls| controls.closed.retain(|channel| !list.contains(channel)));
     switch.changed();
     Ok(())
 }
 
-fn open_all(switch: &Switch, call: &mut Call<'_>) -> Result<(), Fault> {
+/// Opens everything.
+pub(crate) fn open_all(switch: &Switch, call: &mut Call<'_>) -> Result<(), Fault> {
     call.args.finish()?;
     switch.reset();
     Ok(())
 }
 
-fn closed(switch: &Switch, call: &mut Call<'_>) -> Result<(), Fault> {
+/// Answers with the list of the closed channels.
+pub(crate) fn closed(switch: &Switch, call: &mut Call<'_>) -> Result<(), Fault> {
     call.args.finish()?;
     let list: Vec<String> = switch.with(|controls| controls.closed.iter().map(u32::to_string).collect());
     call.answer(format!("(@{})", list.join(",")));

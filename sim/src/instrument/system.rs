@@ -1,10 +1,10 @@
-//! `STATus` and `SYSTem`: the commands that SCPI-99 wants of every instrument (vol. 1, 4.2.1; from memory).
+//! What all kinds of instruments have: identity, status, errors, reset.
 
 use std::sync::Arc;
 
 use super::bench::lock;
 use super::core::Core;
-use super::tree::{Action, Call, Instrument, Model};
+use super::tree::{Call, Instrument, Model};
 use crate::status::{Fault, Register, Status};
 
 /// Largest mask a 16-bit register takes: bit 15 is never used.
@@ -14,8 +14,10 @@ const LARGEST_MASK: u16 = 0x7FFF;
 pub(crate) struct System {
     /// The instrument's status.
     pub(crate) core: Arc<Core>,
-    /// The instrument itself, for `SYSTem:PRESet`.
+    /// The instrument itself, for a reset.
     pub(crate) instrument: Arc<dyn Instrument>,
+    /// Who it says it is.
+    pub(crate) identity: String,
 }
 
 impl Model for System {
@@ -26,72 +28,24 @@ impl Model for System {
     }
 
     fn reset(&self) {}
-
-    fn commands() -> Vec<(&'static str, Action<Self>)> {
-        use Action::{Command, Query};
-        vec![
-            (":SYSTem:ERRor[:NEXT]", Query(next_error)),
-            (":SYSTem:ERRor:COUNt", Query(|system, call| system.tell(call, |status| status.error_count().to_string()))),
-            (":SYSTem:PRESet", Command(preset_instrument)),
-            (":SYSTem:VERSion", Query(|system, call| system.tell(call, |_| "1999.0".to_owned()))),
-            (":STATus:PRESet", Command(preset_status)),
-            (":STATus:OPERation[:EVENt]", Query(|s, call| s.register(call, |status| status.operation.take_events()))),
-            (":STATus:OPERation:CONDition", Query(|s, call| s.register(call, |status| status.operation.condition()))),
-            (":STATus:OPERation:ENABle", Query(|s, call| s.register(call, |status| status.operation.enable))),
-            (":STATus:OPERation:ENABle", Command(|s, call| s.mask(call, |status| &mut status.operation, enable))),
-            (":STATus:OPERation:PTRansition", Query(|s, call| s.register(call, |status| status.operation.positive))),
-            (
-                ":STATus:OPERation:PTRansition",
-                Command(|s, call| s.mask(call, |status| &mut status.operation, positive)),
-            ),
-            (":STATus:OPERation:NTRansition", Query(|s, call| s.register(call, |status| status.operation.negative))),
-            (
-                ":STATus:OPERation:NTRansition",
-                Command(|s, call| s.mask(call, |status| &mut status.operation, negative)),
-            ),
-            (
-                ":STATus:QUEStionable[:EVENt]",
-                Query(|s, call| s.register(call, |status| status.questionable.take_events())),
-            ),
-            (
-                ":STATus:QUEStionable:CONDition",
-                Query(|s, call| s.register(call, |status| status.questionable.condition())),
-            ),
-            (":STATus:QUEStionable:ENABle", Query(|s, call| s.register(call, |status| status.questionable.enable))),
-            (":STATus:QUEStionable:ENABle", Command(|s, call| s.mask(call, |status| &mut status.questionable, enable))),
-            (
-                ":STATus:QUEStionable:PTRansition",
-                Query(|s, call| s.register(call, |status| status.questionable.positive)),
-            ),
-            (
-                ":STATus:QUEStionable:PTRansition",
-                Command(|s, call| s.mask(call, |status| &mut status.questionable, positive)),
-            ),
-            (
-                ":STATus:QUEStionable:NTRansition",
-                Query(|s, call| s.register(call, |status| status.questionable.negative)),
-            ),
-            (
-                ":STATus:QUEStionable:NTRansition",
-                Command(|s, call| s.mask(call, |status| &mut status.questionable, negative)),
-            ),
-        ]
-    }
 }
 
 impl System {
-    fn tell(&self, call: &mut Call<'_>, text: impl FnOnce(&mut Status) -> String) -> Result<(), Fault> {
+    /// Answers with what `text` makes of the status.
+    pub(crate) fn tell(&self, call: &mut Call<'_>, text: impl FnOnce(&mut Status) -> String) -> Result<(), Fault> {
         call.args.finish()?;
         let text = self.with(text);
         call.answer(text);
         Ok(())
     }
 
-    fn register(&self, call: &mut Call<'_>, value: fn(&mut Status) -> u16) -> Result<(), Fault> {
+    /// Answers with a register.
+    pub(crate) fn register(&self, call: &mut Call<'_>, value: fn(&mut Status) -> u16) -> Result<(), Fault> {
         self.tell(call, |status| value(status).to_string())
     }
 
-    fn mask(
+    /// Sets a mask of a register group.
+    pub(crate) fn mask(
         &self,
         call: &mut Call<'_>,
         group: fn(&mut Status) -> &mut Register,
@@ -104,33 +58,25 @@ impl System {
     }
 }
 
-fn enable(register: &mut Register) -> &mut u16 {
-    &mut register.enable
-}
-
-fn positive(register: &mut Register) -> &mut u16 {
-    &mut register.positive
-}
-
-fn negative(register: &mut Register) -> &mut u16 {
-    &mut register.negative
-}
-
-fn next_error(system: &System, call: &mut Call<'_>) -> Result<(), Fault> {
-    system.tell(call, |status| match status.next_error() {
-        Some(fault) => format!("{},\"{fault}\"", fault.number()),
-        None => "0,\"No error\"".to_owned(),
-    })
-}
-
-fn preset_instrument(system: &System, call: &mut Call<'_>) -> Result<(), Fault> {
+/// Answers with the identity.
+pub(crate) fn identity(system: &System, call: &mut Call<'_>) -> Result<(), Fault> {
     call.args.finish()?;
+    call.answer(&system.identity);
+    Ok(())
+}
+
+/// Resets the instrument.
+pub(crate) fn reset(system: &System, call: &mut Call<'_>) -> Result<(), Fault> {
+    call.args.finish()?;
+    system.core.disarm();
     system.instrument.reset();
     Ok(())
 }
 
-fn preset_status(system: &System, call: &mut Call<'_>) -> Result<(), Fault> {
+/// Clears events and errors.
+pub(crate) fn clear(system: &System, call: &mut Call<'_>) -> Result<(), Fault> {
     call.args.finish()?;
-    system.with(Status::preset);
+    system.core.disarm();
+    system.with(Status::clear);
     Ok(())
 }

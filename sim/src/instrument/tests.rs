@@ -1,7 +1,7 @@
 //! Devices told literal program messages (IEEE 488.2 and SCPI-99 clauses from memory). No connection is involved.
 
 use super::*;
-use crate::scenario::Scenario;
+use crate::scenario::{PersonalitySpec, Protocol, Scenario};
 
 /// The demo's scenario: these tests use none of its physics.
 const SCENARIO: &str = include_str!("../../../configs/scenarios/greenhouse-fan.toml");
@@ -18,9 +18,18 @@ fn rack() -> Rack {
     let bench = Arc::new(Bench::new(&Scenario::read(SCENARIO).unwrap()));
     let device = |kind, serial: Option<&str>| {
         let name = kind_name(kind).to_owned();
-        let serial = serial.map(str::to_owned);
-        let protocol = crate::scenario::Protocol::Socket;
-        Device::new(&InstrumentSpec { name, kind, protocol, port: 0, serial, identity: None }, &bench)
+        Device::new(
+            &InstrumentSpec {
+                name,
+                kind,
+                protocol: Protocol::Socket,
+                personality: PersonalitySpec::Standard,
+                port: 0,
+                serial: serial.map(str::to_owned),
+                identity: None,
+            },
+            &bench,
+        )
     };
     Rack {
         scope: device(Kind::Scope, Some("SN7")),

@@ -1,10 +1,13 @@
 //! An instrument as a table: headers, and what each of them sets, answers or does.
+//!
+//! What an instrument can do (a [`Model`]) knows no header; a personality's table gives the headers to it.
 
 use super::core::Core;
 use crate::message::{Args, Limits, Mnemonic, Pattern, Quantity, Reply, nr3, short_form};
+use crate::scenario::Setting;
 use crate::status::Fault;
 
-/// An instrument behind a table of commands.
+/// What an instrument can do, whatever the headers are called.
 pub(crate) trait Model: Send + Sync + Sized + 'static {
     /// What its settings live in.
     type Settings;
@@ -18,9 +21,17 @@ pub(crate) trait Model: Send + Sync + Sized + 'static {
     /// Puts every setting to its `*RST` value and drops pending work.
     fn reset(&self);
 
-    /// The table. Of two headers that both match, the first counts.
-    fn commands() -> Vec<(&'static str, Action<Self>)>;
+    /// Begins whatever a reading needs that is to be fresh; true if it is worth waiting for.
+    ///
+    /// # Errors
+    /// When it cannot begin.
+    fn renew(&self) -> Result<bool, Fault> {
+        Ok(false)
+    }
 }
+
+/// The headers of a personality for one model. Of two headers that both match, the first counts.
+pub(crate) type Table<M> = Vec<(&'static str, Action<M>)>;
 
 /// What a header does. The settings have a query form by themselves.
 pub(crate) enum Action<M: Model> {
@@ -46,13 +57,17 @@ pub(crate) struct Place<M: Model, T> {
 
 /// A numeric setting.
 pub(crate) struct Number<M: Model> {
+    /// By what name it can be clamped.
+    pub(crate) clamp: Option<Setting>,
     /// Unit that may follow the number.
     pub(crate) quantity: Quantity,
-    /// Limits for each suffix; the last one holds for all that follow.
+    /// Limits of the header's number for each suffix; the last one holds for all that follow.
     pub(crate) limits: &'static [Limits],
-    /// How many of the header's units make one of the setting's: 100 for a fraction told in percent.
-    pub(crate) scale: f64,
-    /// Rounds to what the instrument can do.
+    /// The header's number for a setting: 50 for a fraction of a half that is told in percent.
+    pub(crate) shown: fn(f64) -> f64,
+    /// The setting that the header's number means; undoes `shown`.
+    pub(crate) meant: fn(f64) -> f64,
+    /// Rounds the setting to what the instrument can do.
     pub(crate) snap: fn(f64) -> f64,
     /// Where it lives.
     pub(crate) place: Place<M, f64>,
@@ -78,6 +93,8 @@ pub(crate) struct Call<'a> {
     pub(crate) args: Args,
     /// Where answers go.
     pub(crate) reply: &'a mut Reply,
+    /// Whether numbers are answered with their unit.
+    pub(crate) units: bool,
     /// Status, for errors that do not stop the command.
     pub(crate) core: &'a Core,
 }
@@ -87,22 +104,31 @@ impl Call<'_> {
     pub(crate) fn answer(&mut self, text: impl AsRef<str>) {
         self.reply.add(text.as_ref().as_bytes());
     }
+
+    /// Answers with a number, in the form NR3 unless it is a count, and with its unit where units are told.
+    pub(crate) fn answer_number(&mut self, value: f64, quantity: Quantity) {
+        let number = if quantity == Quantity::Count { format!("{value:.0}") } else { nr3(value) };
+        let unit = quantity.name();
+        if self.units && !unit.is_empty() { self.answer(format!("{number} {unit}")) } else { self.answer(number) }
+    }
 }
 
-/// A number without limits worth naming, rounding or scale.
+/// A number that is set as it is told, without rounding.
 pub(crate) fn number<M: Model>(
     quantity: Quantity,
     limits: &'static [Limits],
     count: usize,
     of: fn(&mut M::Settings, usize) -> &mut f64,
 ) -> Number<M> {
-    Number { quantity, limits, scale: 1.0, snap: |value| value, place: Place { count, of } }
+    let same: fn(f64) -> f64 = |value| value;
+    Number { clamp: None, quantity, limits, shown: same, meant: same, snap: same, place: Place { count, of } }
 }
 
 /// A table ready for look-up, with the instrument it belongs to.
 pub(crate) struct Bound<M: Model> {
     model: M,
     table: Vec<(Pattern, Action<M>)>,
+    preset: fn(&M),
 }
 
 /// An instrument of any kind.
@@ -112,13 +138,24 @@ pub(crate) trait Instrument: Send + Sync {
 
     /// See [`Model::reset`].
     fn reset(&self);
+
+    /// See [`Model::renew`].
+    ///
+    /// # Errors
+    /// When it cannot begin.
+    fn renew(&self) -> Result<bool, Fault>;
 }
 
 impl<M: Model> Bound<M> {
-    /// Reads the model's table.
-    pub(crate) fn new(model: M) -> Self {
-        let table = M::commands().into_iter().map(|(header, action)| (Pattern::new(header), action)).collect();
-        Self { model, table }
+    /// Gives a model its headers.
+    pub(crate) fn new(model: M, table: Table<M>) -> Self {
+        Self::with_preset(model, table, |_| {})
+    }
+
+    /// The same for a personality whose settings after a reset differ from the usual ones by what `preset` does.
+    pub(crate) fn with_preset(model: M, table: Table<M>, preset: fn(&M)) -> Self {
+        let table = table.into_iter().map(|(header, action)| (Pattern::new(header), action)).collect();
+        Self { model, table, preset }
     }
 
     fn act(&self, action: &Action<M>, query: bool, call: &mut Call<'_>) -> Result<(), Fault> {
@@ -161,8 +198,8 @@ impl<M: Model> Bound<M> {
         let limit = call.args.asked_limit(&number.limits(call.index)?)?;
         call.args.finish()?;
         let index = call.index;
-        let value = limit.unwrap_or_else(|| self.model.with(|all| *(number.place.of)(all, index) * number.scale));
-        call.answer(if number.quantity == Quantity::Count { format!("{value:.0}") } else { nr3(value) });
+        let value = limit.unwrap_or_else(|| (number.shown)(self.model.with(|all| *(number.place.of)(all, index))));
+        call.answer_number(value, number.quantity);
         Ok(())
     }
 
@@ -176,7 +213,8 @@ impl<M: Model> Bound<M> {
         if (asked - value).abs() > 1e-12 * value.abs() {
             call.core.report(Fault::OutOfRange);
         }
-        let value = (number.snap)(value) / number.scale;
+        let value = (number.snap)((number.meant)(value));
+        let value = number.clamp.map_or(value, |setting| call.core.faults.clamped(setting, value));
         self.model.with(|settings| *(number.place.of)(settings, call.index) = value);
         Ok(())
     }
@@ -229,5 +267,10 @@ impl<M: Model> Instrument for Bound<M> {
 
     fn reset(&self) {
         self.model.reset();
+        (self.preset)(&self.model);
+    }
+
+    fn renew(&self) -> Result<bool, Fault> {
+        self.model.renew()
     }
 }

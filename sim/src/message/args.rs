@@ -23,7 +23,8 @@ pub(crate) enum Quantity {
 }
 
 impl Quantity {
-    fn name(self) -> &'static str {
+    /// The unit as it is written; empty without one.
+    pub(crate) fn name(self) -> &'static str {
         match self {
             Self::Ampere => "A",
             Self::Count | Self::None => "",
@@ -111,6 +112,14 @@ impl Args {
             Data::Radix(value) => Ok(value as f64),
             Data::Character(word) => limits.named(&word),
             _ => Err(Fault::DataType),
+        }
+    }
+
+    /// A number, or one of some keywords by its place in the list.
+    pub(crate) fn number_or_word(&mut self, limits: &Limits, forms: &[&str]) -> Result<Result<f64, usize>, Fault> {
+        match self.data.as_slice().first() {
+            Some(Data::Character(_)) => self.plain_word(forms).map(Err),
+            _ => self.number(limits, Quantity::Count).map(Ok),
         }
     }
 

@@ -22,7 +22,7 @@ mod reply;
 mod unit;
 
 pub(crate) use args::{Args, Limits, Quantity};
-pub(crate) use data::Data;
+pub(crate) use data::{Cursor, Data};
 pub(crate) use header::{Header, Mnemonic, Path, Pattern, is_form_of, short_form};
 pub(crate) use input::{Arrival, Input};
 pub(crate) use reply::{Reply, nr3};

@@ -40,6 +40,11 @@ impl Reply {
         self.indefinite
     }
 
+    /// The answers by themselves.
+    pub(crate) fn into_bytes(self) -> Vec<u8> {
+        self.bytes
+    }
+
     /// The response message with its NL; nothing if nothing was asked.
     pub(crate) fn finish(mut self) -> Vec<u8> {
         if !self.bytes.is_empty() {

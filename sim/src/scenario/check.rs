@@ -1,6 +1,8 @@
 //! The values that the world can compute with.
 
-use super::{BalancedSpec, DeviceSpec, DividerSpec, HalfBridgeSpec, LegSpec, RectifierSpec, Scenario, ScenarioError};
+use super::{
+    BalancedSpec, CONTROL, DeviceSpec, DividerSpec, HalfBridgeSpec, LegSpec, RectifierSpec, Scenario, ScenarioError,
+};
 
 type Checked = Result<(), ScenarioError>;
 
@@ -26,12 +28,15 @@ pub(super) fn check(scenario: &Scenario) -> Checked {
         let twice = scenario.instruments.iter().take(i).any(|other| other.name == instrument.name);
         require(!twice && !instrument.name.is_empty(), "instrument.name", &instrument.name, "a name used only once")?;
     }
+    let hidden = scenario.control.is_some() && scenario.instruments.iter().any(|other| other.name == CONTROL);
+    require(!hidden, "instrument.name", CONTROL, "another name: the control port has this one")?;
     for (i, one) in scenario.legs.iter().enumerate() {
         let twice = scenario.legs.iter().take(i).any(|other| other.channel == one.channel);
         let right = (1..=CHANNELS).contains(&one.channel) && !twice;
         require(right, "leg.channel", one.channel, "between 1 and 4 and used only once")?;
         leg(one)?;
     }
+    scenario.faults.iter().try_for_each(|fault| fault.check(scenario))?;
     match &scenario.device {
         DeviceSpec::Balanced(spec) => balanced(spec),
         DeviceSpec::Divider(spec) => divider(spec),
@@ -149,6 +154,6 @@ fn finite(key: &str, value: f64) -> Checked {
     require(value.is_finite(), key, value, "a finite number")
 }
 
-fn require(right: bool, key: &str, value: impl ToString, wanted: &'static str) -> Checked {
+pub(super) fn require(right: bool, key: &str, value: impl ToString, wanted: &'static str) -> Checked {
     if right { Ok(()) } else { Err(ScenarioError::Range { key: key.to_owned(), value: value.to_string(), wanted }) }
 }

@@ -1,16 +1,19 @@
 //! The scenario: one TOML file that says which instruments there are and what is true behind them.
 //!
-//! Unknown keys and values out of range are refused. Every key is explained in `configs/scenarios/greenhouse-fan.toml`.
+//! Unknown keys and values out of range are refused. Every key is explained in `configs/scenarios/greenhouse-fan.toml`
+//! and in the README.md beside it.
 
 #![cfg_attr(test, allow(clippy::unwrap_used, clippy::float_cmp))]
 
 mod check;
 mod device;
+mod fault;
 mod leg;
 #[cfg(test)]
 mod tests;
 
 pub(crate) use device::{BalancedSpec, DeviceSpec, DividerSpec, HalfBridgeSpec, RectifierSpec};
+pub(crate) use fault::{FaultSpec, Setting, What, When};
 pub(crate) use leg::{LegSpec, RangeSpec, Tip};
 
 use serde::Deserialize;
@@ -35,7 +38,25 @@ pub(crate) struct Scenario {
     pub(crate) legs: Vec<LegSpec>,
     /// What is measured.
     pub(crate) device: DeviceSpec,
+    /// What goes wrong.
+    #[serde(rename = "fault", default)]
+    pub(crate) faults: Vec<FaultSpec>,
+    /// The port that faults are ordered at; none without it.
+    #[serde(default)]
+    pub(crate) control: Option<ControlSpec>,
 }
+
+/// The control port.
+#[derive(Debug, Clone, PartialEq, Eq, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub(crate) struct ControlSpec {
+    /// TCP port; 0 takes any free one.
+    #[serde(default)]
+    pub(crate) port: u16,
+}
+
+/// The name under which the control port is announced.
+pub(crate) const CONTROL: &str = "control";
 
 /// One instrument on the network.
 #[derive(Debug, Clone, PartialEq, Eq, Deserialize)]
@@ -48,6 +69,9 @@ pub(crate) struct InstrumentSpec {
     /// What carries its messages.
     #[serde(default)]
     pub(crate) protocol: Protocol,
+    /// How it is spoken to.
+    #[serde(default)]
+    pub(crate) personality: PersonalitySpec,
     /// TCP port on the loopback interface; 0 takes any free one.
     #[serde(default)]
     pub(crate) port: u16,
@@ -68,6 +92,21 @@ pub(crate) enum Protocol {
     /// Plain text over TCP.
     #[default]
     Socket,
+}
+
+/// How an instrument is spoken to; `configs/scenarios/README.md` tells the commands of each.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Default, Deserialize)]
+#[serde(rename_all = "kebab-case")]
+pub(crate) enum PersonalitySpec {
+    /// Must be polled, is deaf after each line, runs free unless held.
+    Slow,
+    /// IEEE 488.2 and SCPI-99.
+    #[default]
+    Standard,
+    /// Two letters and a number; replies repeat them.
+    Terse,
+    /// Whole words, units, samples as text, one client.
+    Wordy,
 }
 
 /// What an instrument is.

@@ -91,3 +91,46 @@ fn leaves_out_what_has_a_default() {
     let divider = DividerSpec { resistors_ohm: [1.0, 2.0, 3.0], earth_lead: false };
     assert_eq!(scenario.device, DeviceSpec::Divider(divider));
 }
+
+/// The demo with one more table.
+fn with(text: &str) -> Result<Scenario, ScenarioError> {
+    Scenario::read(&format!("{DEMO}\n{text}\n"))
+}
+
+#[test]
+fn reads_personalities_faults_and_the_control_port() {
+    let text = DEMO.replacen("kind = \"scope\"", "kind = \"scope\"\npersonality = \"wordy\"", 1);
+    let scenario = Scenario::read(&text).unwrap();
+    assert_eq!(scenario.instruments[0].personality, PersonalitySpec::Wordy);
+    assert_eq!(scenario.instruments[1].personality, PersonalitySpec::Standard);
+    let scenario = with(
+        "[control]\nport = 0\n[[fault]]\ninstrument = \"scope\"\nwhat = \"length-absurd\"\nwhen = { chance = 0.1 }\n\
+         [[fault]]\ninstrument = \"supply\"\nwhat = \"clamp\"\nsetting = \"voltage\"\nmost = 24.0\ntimes = 3",
+    )
+    .unwrap();
+    assert_eq!(scenario.control, Some(ControlSpec { port: 0 }));
+    let faults: Vec<_> = scenario.faults.iter().map(|fault| (fault.what, fault.most_times())).collect();
+    assert_eq!(faults, [(What::LengthAbsurd, u32::MAX), (What::Clamp, 3)]);
+}
+
+#[test]
+fn refuses_faults_that_mean_nothing() {
+    for (fault, key) in [
+        ("instrument = \"nobody\"\nwhat = \"cut\"", "fault.instrument"),
+        ("instrument = \"scope\"\nwhat = \"flat\"", "fault.channel"),
+        ("instrument = \"scope\"\nwhat = \"flat\"\nchannel = 5", "fault.channel"),
+        ("instrument = \"scope\"\nwhat = \"flat\"\nchannel = 1\nto = \"x\"", "fault.to"),
+        ("instrument = \"scope\"\nwhat = \"cut\"\nchannel = 1", "fault.channel"),
+        ("instrument = \"scope\"\nwhat = \"stuck-bit\"\nchannel = 1\nbit = 8", "fault.bit"),
+        ("instrument = \"scope\"\nwhat = \"clipped\"\nchannel = 1\nlevel = 0.0", "fault.level"),
+        ("instrument = \"scope\"\nwhat = \"drip\"\nseconds = 1.0\nbytes = 0", "fault.bytes"),
+        ("instrument = \"scope\"\nwhat = \"stall\"\nseconds = -1.0", "fault.seconds"),
+        ("instrument = \"scope\"\nwhat = \"cut\"\nwhen = { queries = 0 }", "fault.when.queries"),
+        ("instrument = \"scope\"\nwhat = \"cut\"\nwhen = { chance = 1.5 }", "fault.when.chance"),
+    ] {
+        let error = with(&format!("[[fault]]\n{fault}")).unwrap_err();
+        assert!(matches!(&error, ScenarioError::Range { key: found, .. } if found == key), "{fault}: {error}");
+    }
+    let text = DEMO.replacen("name = \"supply\"", "name = \"control\"", 1);
+    assert!(Scenario::read(&format!("{text}\n[control]\n")).is_err());
+}

@@ -1,12 +1,12 @@
 //! Literal bytes over real connections, and over split ones.
 
 use proptest::prelude::*;
-use tokio::io::{AsyncBufReadExt, BufReader};
+use tokio::io::{AsyncBufReadExt, AsyncReadExt, AsyncWriteExt, BufReader};
 use tokio::net::TcpStream;
 
 use super::*;
 use crate::instrument::Bench;
-use crate::scenario::{InstrumentSpec, Kind, Scenario};
+use crate::scenario::{InstrumentSpec, Kind, PersonalitySpec, Scenario};
 
 pub(super) fn device(kind: Kind) -> Arc<Device> {
     let scenario = Scenario::read(include_str!("../../../configs/scenarios/greenhouse-fan.toml")).unwrap();
@@ -14,6 +14,7 @@ pub(super) fn device(kind: Kind) -> Arc<Device> {
         name: "one".into(),
         kind,
         protocol: Protocol::Socket,
+        personality: PersonalitySpec::Standard,
         port: 0,
         serial: None,
         identity: Some("A,B,C,D".into()),

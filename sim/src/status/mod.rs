@@ -51,7 +51,7 @@ pub(crate) mod operation {
 }
 
 /// Entries the error queue holds. SCPI-99 wants at least two; twenty is enough for a message full of mistakes.
-const QUEUE_LENGTH: usize = 20;
+pub(crate) const QUEUE_LENGTH: usize = 20;
 
 /// All that an instrument tells about itself through `*STB?`, `*ESR?`, `STATus` and `SYSTem:ERRor`.
 #[derive(Debug)]

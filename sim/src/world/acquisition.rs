@@ -63,6 +63,46 @@ pub(crate) enum TriggerSource {
     Immediate,
 }
 
+/// What goes wrong with one acquisition.
+#[derive(Debug, Clone, PartialEq, Default)]
+pub(crate) struct Disturbance {
+    /// Channels (from 0) that clip at a part of the half span.
+    pub(crate) clipped: Vec<(usize, f64)>,
+    /// Channels whose probe fell off: its tip is at nought.
+    pub(crate) flat: Vec<usize>,
+    /// No trigger comes.
+    pub(crate) no_trigger: bool,
+    /// Channels with a bit of their converter stuck at one.
+    pub(crate) stuck: Vec<(usize, u32)>,
+    /// The probes of the pair are exchanged: P's is on the negative tip.
+    pub(crate) swapped: bool,
+}
+
+impl Disturbance {
+    /// What it does to the codes of a channel. A stuck bit is that of the average if there is one.
+    pub(super) fn spoil(&self, channel: usize, data: &mut ChannelData) {
+        let finer = (data.step_v / data.volts_per_code).round() as i32;
+        for (_, bit) in self.stuck.iter().filter(|(other, _)| *other == channel) {
+            let bit = finer << bit;
+            for code in &mut data.codes {
+                // Counted from the lowest code, as a converter does. Both ends fit, so does what lies between.
+                let stuck = (i32::from(*code) - data.low_code) | bit;
+                *code = (stuck + data.low_code).min(data.high_code) as i16;
+            }
+        }
+        for (_, level) in self.clipped.iter().filter(|(other, _)| *other == channel) {
+            let (low, high) = (f64::from(data.low_code) * level, f64::from(data.high_code) * level);
+            for code in &mut data.codes {
+                if f64::from(*code) >= high {
+                    *code = data.high_code as i16;
+                } else if f64::from(*code) <= low {
+                    *code = data.low_code as i16;
+                }
+            }
+        }
+    }
+}
+
 /// The records of one acquisition.
 #[derive(Debug, Clone, PartialEq)]
 pub(crate) struct Acquisition {

@@ -30,7 +30,7 @@ mod truth;
 mod wave;
 
 pub(crate) use acquisition::{
-    Acquisition, ChannelData, ChannelSettings, Coupling, NoTrigger, ScopeSettings, Trigger, TriggerSource,
+    Acquisition, ChannelData, ChannelSettings, Coupling, Disturbance, NoTrigger, ScopeSettings, Trigger, TriggerSource,
 };
 pub(crate) use controls::{Controls, Shape};
 
@@ -40,6 +40,7 @@ use rand_chacha::ChaCha8Rng;
 use self::converter::Converter;
 use self::leg::Signal;
 use self::trigger::Triggers;
+use self::wave::Wave;
 use crate::scenario::{Scenario, Tip};
 
 /// Streams of random numbers per acquisition: one for the trigger, the others for the channels.
@@ -58,13 +59,31 @@ impl World {
         Self { scenario: scenario.clone(), acquisitions: 0 }
     }
 
-    /// Takes one acquisition of all channels, averaged as asked.
+    /// Takes one acquisition of all channels with nothing wrong.
     ///
     /// # Errors
     /// [`NoTrigger`]; the world is then as before.
+    #[cfg(test)]
     pub(crate) fn acquire(&mut self, controls: &Controls, scope: &ScopeSettings) -> Result<Acquisition, NoTrigger> {
+        self.acquire_disturbed(controls, scope, &Disturbance::default())
+    }
+
+    /// Takes one acquisition of all channels, averaged as asked. Without a disturbance the samples are the same whatever
+    /// befell acquisitions before.
+    ///
+    /// # Errors
+    /// [`NoTrigger`]; the world is then as before.
+    pub(crate) fn acquire_disturbed(
+        &mut self,
+        controls: &Controls,
+        scope: &ScopeSettings,
+        disturbance: &Disturbance,
+    ) -> Result<Acquisition, NoTrigger> {
+        if disturbance.no_trigger {
+            return Err(NoTrigger);
+        }
         let spec = &self.scenario.scope;
-        let signals = self.signals(controls, scope);
+        let signals = self.signals(controls, scope, disturbance);
         let hysteresis_v = match scope.trigger.source {
             TriggerSource::Channel(index) => scope.channels.get(index).map_or(0.0, |channel| channel.span_v),
             TriggerSource::External | TriggerSource::Immediate => 0.0,
@@ -77,7 +96,9 @@ impl World {
         let record = |(index, (channel, signal)): (usize, (&ChannelSettings, &Signal))| {
             let converter = Converter::new(spec.converter_bits, channel);
             let mut rng = self.stream(1 + index as u64);
-            converter.record(signal, &starts_s, scope.interval_s, scope.points, &mut rng)
+            let mut data = converter.record(signal, &starts_s, scope.interval_s, scope.points, &mut rng);
+            disturbance.spoil(index, &mut data);
+            data
         };
         let channels = scope.channels.iter().zip(&signals).enumerate().map(record).collect();
         self.acquisitions += 1;
@@ -90,16 +111,18 @@ impl World {
     }
 
     /// The signal at every channel's converter.
-    fn signals(&self, controls: &Controls, scope: &ScopeSettings) -> Vec<Signal> {
+    fn signals(&self, controls: &Controls, scope: &ScopeSettings, disturbance: &Disturbance) -> Vec<Signal> {
         let tips = device::tips(&self.scenario, controls);
         let signal = |(index, channel): (usize, &ChannelSettings)| {
             let Some(leg) = self.scenario.legs.iter().find(|leg| leg.channel == index + 1) else {
                 return Signal::nothing();
             };
-            let tip = match leg.tip {
-                Tip::N => &tips.n,
-                Tip::P => &tips.p,
+            let tip = match (leg.tip, disturbance.swapped) {
+                (Tip::N, false) | (Tip::P, true) => &tips.n,
+                (Tip::P, false) | (Tip::N, true) => &tips.p,
             };
+            let fallen = Wave::constant(0.0, 1.0);
+            let tip = if disturbance.flat.contains(&index) { &fallen } else { tip };
             Signal::new(leg, self.scenario.seed, self.hours(), channel, tip)
         };
         scope.channels.iter().enumerate().map(signal).collect()

@@ -2,7 +2,7 @@
 
 use std::f64::consts::TAU;
 
-use super::fixture::{bridge, component, reference, scenario, scope, spread, volts};
+use super::fixture::{bridge, component, ideal, reference, scenario, scope, spread, volts};
 use super::*;
 
 /// Skew, gain and offset of both channels from a sine at `frequency_hz`, whole periods.
@@ -163,4 +163,87 @@ fn a_channel_without_a_leg_is_at_nought() {
     scope.channels.push(scope.channels[0].clone());
     let acquisition = world.acquire(&reference(Shape::Square, 1e6), &scope).unwrap();
     assert_eq!(acquisition.channels[2].codes, [0; 100]);
+}
+
+/// Volts at the inputs of an acquisition that something befell, and the acquisition.
+fn disturbed(disturbance: &Disturbance, controls: &Controls) -> ([Vec<f64>; 2], Acquisition) {
+    let mut world = World::new(&scenario());
+    let scope = scope(2.0, 0.5, 1e-9, 2000);
+    let acquisition = world.acquire_disturbed(controls, &scope, disturbance).unwrap();
+    let volts = [0, 1].map(|index| {
+        let data: &ChannelData = &acquisition.channels[index];
+        data.codes.iter().map(|&code| data.zero_v + f64::from(code) * data.volts_per_code).collect()
+    });
+    (volts, acquisition)
+}
+
+#[test]
+fn a_probe_that_fell_off_shows_the_offset_alone() {
+    let controls = reference(Shape::Square, 1e6);
+    let (volts, _) = disturbed(&Disturbance { flat: vec![1], ..Disturbance::default() }, &controls);
+    // The fixture's offset of the range is -5 mV at the input; one converter step is 7.8 mV.
+    assert!(volts[1].iter().all(|v| (v + 0.005).abs() < 0.0079), "{:?}", &volts[1][..3]);
+    let swing = volts[0].iter().fold(0.0_f64, |most, v| most.max(*v));
+    assert!(swing > 0.9, "the other leg is as ever: {swing}");
+}
+
+#[test]
+fn exchanged_probes_change_the_sign_of_the_difference() {
+    // The bridge with the gate on P and the node on N: while the gate is high, P lies some 12 V above N.
+    let controls = bridge(0.5, 103);
+    let mean = |volts: &[Vec<f64>; 2]| spread(&volts[0]).0 - spread(&volts[1]).0;
+    let mut found = Vec::new();
+    for swapped in [false, true] {
+        let mut world = World::new(&ideal(scenario().device));
+        let scope = scope(10.0, 3.0, 5e-9, 2000);
+        let acquisition =
+            world.acquire_disturbed(&controls, &scope, &Disturbance { swapped, ..Disturbance::default() }).unwrap();
+        let volts = [0, 1].map(|index| {
+            let data: &ChannelData = &acquisition.channels[index];
+            data.codes.iter().map(|&code| data.zero_v + f64::from(code) * data.volts_per_code).collect()
+        });
+        found.push(mean(&volts));
+    }
+    assert!(found[0] > 0.3, "{found:?}");
+    assert!((found[0] + found[1]).abs() < 0.02 * found[0], "{found:?}");
+}
+
+#[test]
+fn a_stuck_bit_is_set_in_every_code() {
+    let controls = reference(Shape::Square, 1e6);
+    let (_, acquisition) = disturbed(&Disturbance { stuck: vec![(0, 4)], ..Disturbance::default() }, &controls);
+    let stuck = |channel: usize| {
+        let data = &acquisition.channels[channel];
+        data.codes.iter().filter(|code| (i32::from(**code) - data.low_code) & 16 != 0).count()
+    };
+    assert_eq!(stuck(0), 2000);
+    assert!(stuck(1) < 2000, "the other channel is as ever");
+    let data = &acquisition.channels[0];
+    assert!(data.codes.iter().all(|code| (data.low_code..=data.high_code).contains(&i32::from(*code))));
+}
+
+#[test]
+fn a_clipped_leg_stops_at_its_level_and_says_the_end_code() {
+    // 0 to 1 V at the input on -0.5 V to 1.5 V: the top lies at half the upper half, 0.3 of it clips.
+    let controls = reference(Shape::Square, 1e6);
+    let clipped = Disturbance { clipped: vec![(0, 0.3)], ..Disturbance::default() };
+    let (_, acquisition) = disturbed(&clipped, &controls);
+    let data = &acquisition.channels[0];
+    let ends = data.codes.iter().filter(|code| i32::from(**code) == data.high_code).count();
+    assert!((800..1200).contains(&ends), "about half of the time: {ends}");
+    let inside = data.codes.iter().map(|code| i32::from(*code)).filter(|code| *code != data.high_code);
+    assert!(inside.max().is_some_and(|code| f64::from(code) < 0.3 * f64::from(data.high_code)));
+}
+
+#[test]
+fn without_a_trigger_nothing_is_taken_and_a_disturbance_leaves_no_trace() {
+    let controls = reference(Shape::Square, 1e6);
+    let scope = scope(2.0, 0.5, 1e-9, 200);
+    let (mut one, mut other) = (World::new(&scenario()), World::new(&scenario()));
+    let silent = Disturbance { no_trigger: true, ..Disturbance::default() };
+    assert_eq!(one.acquire_disturbed(&controls, &scope, &silent), Err(NoTrigger));
+    let flat = Disturbance { flat: vec![0], ..Disturbance::default() };
+    one.acquire_disturbed(&controls, &scope, &flat).unwrap();
+    other.acquire(&controls, &scope).unwrap();
+    assert_eq!(one.acquire(&controls, &scope), other.acquire(&controls, &scope));
 }

@@ -8,8 +8,9 @@ use tokio::task::{JoinHandle, spawn_blocking};
 use super::super::bench::{Bench, lock};
 use super::super::core::Core;
 use super::settings::Settings;
+use crate::faults::Struck;
 use crate::status::{Fault, operation};
-use crate::world::{Acquisition, Controls, NoTrigger, ScopeSettings};
+use crate::world::{Acquisition, Controls, Disturbance, NoTrigger, ScopeSettings};
 
 /// Condition while samples are taken.
 const TAKING: u16 = operation::SWEEPING | operation::MEASURING;
@@ -66,9 +67,10 @@ impl Acquirer {
         run.busy = true;
         run.record = None;
         self.core.begin(TAKING);
+        let (disturbance, struck) = self.core.faults.acquisition();
         // Subscribed before the snapshot, so that no change can fall between the two.
         let changes = self.bench.changes();
-        let work = Arc::clone(self).work(run.turn, self.snapshot(), changes, run.worker.take());
+        let work = Arc::clone(self).work(run.turn, self.snapshot(), (disturbance, struck), changes, run.worker.take());
         run.worker = Some(tokio::spawn(work));
         Ok(())
     }
@@ -106,6 +108,7 @@ impl Acquirer {
         self: Arc<Self>,
         turn: u64,
         first: Snapshot,
+        (disturbance, struck): (Disturbance, Vec<Struck>),
         mut changes: watch::Receiver<u64>,
         predecessor: Option<JoinHandle<()>>,
     ) {
@@ -114,14 +117,21 @@ impl Acquirer {
             let _ = predecessor.await;
         }
         let mut snapshot = first;
+        let disturbance = Arc::new(disturbance);
+        if disturbance.no_trigger {
+            self.core.faults.confirm(&struck, 0);
+        }
         loop {
             let Snapshot { controls, settings } = snapshot;
-            let bench = Arc::clone(&self.bench);
+            let (bench, disturbance) = (Arc::clone(&self.bench), Arc::clone(&disturbance));
             let task = spawn_blocking(move || {
-                let outcome = lock(&bench.world).acquire(&controls, &settings);
+                let outcome = lock(&bench.world).acquire_disturbed(&controls, &settings, &disturbance);
                 outcome.map(|acquisition| Record { acquisition, settings })
             });
             let outcome = task.await;
+            if let Ok(Ok(record)) = &outcome {
+                self.core.faults.confirm(&struck, record.acquisition.number);
+            }
             if !self.settle(turn, outcome) {
                 return;
             }

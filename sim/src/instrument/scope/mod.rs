@@ -1,5 +1,4 @@
-//! The scope: four channels behind 1 MOhm inputs. Headers after SCPI-99's digitizer class; `INPut:DELay` (the scope's own
-//! skew setting) and `TRACe:PREamble` are ours.
+//! The scope: four channels behind 1 MOhm inputs. What it can do, without any header.
 
 mod acquire;
 mod settings;
@@ -9,12 +8,15 @@ use std::sync::{Arc, Mutex};
 
 use super::bench::{Bench, lock};
 use super::core::Core;
-use super::tree::{Action, Call, Model, Number, Place, Word, number};
+use super::tree::{Call, Model, Number, Word, number};
 use crate::message::Quantity;
+use crate::scenario::Setting;
 use crate::status::Fault;
-use crate::world::TriggerSource;
+use crate::world::{Coupling, TriggerSource};
 use acquire::Acquirer;
-use settings::{CHANNELS, COUPLINGS, Encoding, Settings};
+pub(crate) use acquire::Record;
+pub(crate) use settings::{CHANNELS, Encoding, Settings, delay_step, interval_step};
+pub(crate) use transfer::{binary, facts, preamble, text};
 
 /// The scope on a bench.
 pub(crate) struct Scope {
@@ -29,6 +31,38 @@ impl Scope {
         let settings = Arc::new(Mutex::new(Settings::default()));
         let acquirer = Arc::new(Acquirer::new(Arc::clone(&bench), core, Arc::clone(&settings)));
         Self { bench, settings, acquirer }
+    }
+
+    /// Starts an acquisition.
+    ///
+    /// # Errors
+    /// -213 if one is under way.
+    pub(crate) fn start(&self) -> Result<(), Fault> {
+        self.acquirer.start()
+    }
+
+    /// Drops the acquisition under way, if there is one.
+    pub(crate) fn abort(&self) {
+        self.acquirer.abort();
+    }
+
+    /// The last record.
+    ///
+    /// # Errors
+    /// -230 if there is none.
+    pub(crate) fn record(&self) -> Result<Arc<Record>, Fault> {
+        self.acquirer.record()
+    }
+
+    /// What triggers.
+    pub(crate) fn source(&self) -> TriggerSource {
+        self.with(|settings| settings.source)
+    }
+
+    /// Sets what triggers.
+    pub(crate) fn set_source(&self, source: TriggerSource) {
+        self.with(|settings| settings.source = source);
+        self.changed();
     }
 }
 
@@ -49,202 +83,152 @@ impl Model for Scope {
         self.with(|settings| *settings = Settings::default());
     }
 
-    fn commands() -> Vec<(&'static str, Action<Self>)> {
-        use Action::{Command, Flag, Query};
-        vec![
-            ("[:SENSe#]:VOLTage[:DC]:RANGe:PTPeak", span()),
-            ("[:SENSe#]:VOLTage[:DC]:RANGe:OFFSet", offset()),
-            (":INPut#:COUPling", coupling()),
-            (":INPut#:DELay", delay()),
-            ("[:SENSe]:SWEep:TINTerval", interval()),
-            ("[:SENSe]:SWEep:POINts", points()),
-            ("[:SENSe]:SWEep:OREFerence:LOCation", position()),
-            ("[:SENSe]:AVERage[:STATe]", Flag(Place { count: 1, of: |settings, _| &mut settings.averaging })),
-            ("[:SENSe]:AVERage:COUNt", averages()),
-            (":TRIGger[:SEQuence]:SOURce", Command(set_source)),
-            (":TRIGger[:SEQuence]:SOURce", Query(tell_source)),
-            (":TRIGger[:SEQuence]:LEVel", level()),
-            (":TRIGger[:SEQuence]:SLOPe", slope()),
-            (":INITiate[:IMMediate]", Command(initiate)),
-            (":ABORt", Command(abort)),
-            (":FORMat[:DATA]", Command(set_format)),
-            (":FORMat[:DATA]", Query(tell_format)),
-            (":FORMat:BORDer", border()),
-            (":TRACe[:DATA]:PREamble", Query(preamble)),
-            (":TRACe[:DATA][:DATA]", Query(data)),
-        ]
+    /// A scope that runs free takes a new acquisition for every reading.
+    fn renew(&self) -> Result<bool, Fault> {
+        if self.with(|settings| settings.free) {
+            match self.start() {
+                Ok(()) | Err(Fault::InitIgnored) => return Ok(true),
+                Err(fault) => return Err(fault),
+            }
+        }
+        Ok(false)
     }
 }
 
-type Entry = Action<Scope>;
 /// Where a number lives among the settings.
 type Placed = fn(&mut Settings, usize) -> &mut f64;
 
-fn span() -> Entry {
+/// Full vertical span at the input.
+pub(crate) fn span() -> Number<Scope> {
     let place: Placed = |settings, channel| &mut settings.channels[channel].span_v;
-    Action::Number(Number { snap: settings::span_step, ..number(Quantity::Volt, &[settings::SPAN], CHANNELS, place) })
+    Number {
+        clamp: Some(Setting::Span),
+        snap: settings::span_step,
+        ..number(Quantity::Volt, &[settings::SPAN], CHANNELS, place)
+    }
 }
 
-fn offset() -> Entry {
+/// Voltage at the middle of the span.
+pub(crate) fn offset() -> Number<Scope> {
     let place: Placed = |settings, channel| &mut settings.channels[channel].offset_v;
-    Action::Number(number(Quantity::Volt, &[settings::OFFSET], CHANNELS, place))
+    number(Quantity::Volt, &[settings::OFFSET], CHANNELS, place)
 }
 
-fn delay() -> Entry {
+/// The scope's own skew setting.
+pub(crate) fn delay() -> Number<Scope> {
     let place: Placed = |settings, channel| &mut settings.channels[channel].delay_s;
-    Action::Number(Number {
-        snap: settings::delay_step,
-        ..number(Quantity::Second, &[settings::DELAY], CHANNELS, place)
-    })
+    Number { snap: delay_step, ..number(Quantity::Second, &[settings::DELAY], CHANNELS, place) }
 }
 
-fn coupling() -> Entry {
-    Action::Word(Word {
-        forms: &["AC", "DC", "GROund"],
+/// Seconds from sample to sample.
+pub(crate) fn interval() -> Number<Scope> {
+    let place: Placed = |settings, _| &mut settings.interval_s;
+    Number {
+        clamp: Some(Setting::Interval),
+        snap: interval_step,
+        ..number(Quantity::Second, &[settings::INTERVAL], 1, place)
+    }
+}
+
+/// Samples in a record.
+pub(crate) fn points() -> Number<Scope> {
+    let place: Placed = |settings, _| &mut settings.points;
+    Number { clamp: Some(Setting::Points), snap: f64::round, ..number(Quantity::Count, &[settings::POINTS], 1, place) }
+}
+
+/// Where in the record the trigger lies, 0 to 1.
+pub(crate) fn position() -> Number<Scope> {
+    number(Quantity::None, &[settings::POSITION], 1, |settings: &mut Settings, _| &mut settings.position)
+}
+
+/// How many sweeps are averaged.
+pub(crate) fn averages() -> Number<Scope> {
+    let place: Placed = |settings, _| &mut settings.averages;
+    Number {
+        clamp: Some(Setting::Averages),
+        snap: f64::round,
+        ..number(Quantity::Count, &[settings::AVERAGES], 1, place)
+    }
+}
+
+/// Trigger level at the input.
+pub(crate) fn level() -> Number<Scope> {
+    let place: Placed = |settings, _| &mut settings.level_v;
+    Number { clamp: Some(Setting::Level), ..number(Quantity::Volt, &[settings::LEVEL], 1, place) }
+}
+
+/// How an input is coupled; the keywords stand for AC, DC and ground in this order.
+pub(crate) fn coupling(forms: &'static [&'static str; 3]) -> Word<Scope> {
+    const COUPLINGS: [Coupling; 3] = [Coupling::Ac, Coupling::Dc, Coupling::Ground];
+    Word {
+        forms,
         count: CHANNELS,
         read: |settings, channel| {
             let set = settings.channels[channel].coupling;
             COUPLINGS.iter().position(|coupling| *coupling == set).unwrap_or_default()
         },
         write: |settings, channel, place| settings.channels[channel].coupling = COUPLINGS[place],
-    })
+    }
 }
 
-fn interval() -> Entry {
-    let place: Placed = |settings, _| &mut settings.interval_s;
-    Action::Number(Number {
-        snap: settings::interval_step,
-        ..number(Quantity::Second, &[settings::INTERVAL], 1, place)
-    })
-}
-
-fn points() -> Entry {
-    let place: Placed = |settings, _| &mut settings.points;
-    Action::Number(Number { snap: f64::round, ..number(Quantity::Count, &[settings::POINTS], 1, place) })
-}
-
-fn position() -> Entry {
-    Action::Number(number(Quantity::None, &[settings::POSITION], 1, |settings: &mut Settings, _| {
-        &mut settings.position
-    }))
-}
-
-fn averages() -> Entry {
-    let place: Placed = |settings, _| &mut settings.averages;
-    Action::Number(Number { snap: f64::round, ..number(Quantity::Count, &[settings::AVERAGES], 1, place) })
-}
-
-fn level() -> Entry {
-    Action::Number(number(Quantity::Volt, &[settings::LEVEL], 1, |settings: &mut Settings, _| &mut settings.level_v))
-}
-
-fn slope() -> Entry {
-    Action::Word(Word {
-        forms: &["POSitive", "NEGative"],
+/// The direction of the trigger's crossing; the keywords stand for rising and falling in this order.
+pub(crate) fn slope(forms: &'static [&'static str; 2]) -> Word<Scope> {
+    Word {
+        forms,
         count: 1,
         read: |settings, _| usize::from(!settings.rising),
         write: |settings, _, place| settings.rising = place == 0,
-    })
+    }
 }
 
-fn border() -> Entry {
-    Action::Word(Word {
-        forms: &["NORMal", "SWAPped"],
-        count: 1,
-        read: |settings, _| usize::from(settings.swapped),
-        write: |settings, _, place| settings.swapped = place == 1,
-    })
+/// The channel of a number counted from 1, counted from 0.
+///
+/// # Errors
+/// -222 if there is no such channel.
+pub(crate) fn channel_index(number: u32) -> Result<usize, Fault> {
+    let index = usize::try_from(number.wrapping_sub(1)).unwrap_or(usize::MAX);
+    if index < CHANNELS { Ok(index) } else { Err(Fault::OutOfRange) }
 }
 
-fn set_source(scope: &Scope, call: &mut Call<'_>) -> Result<(), Fault> {
-    let source = match call.args.word(&["INTernal", "EXTernal", "IMMediate"])? {
-        (0, number) => TriggerSource::Channel(channel_index(number)?),
-        (1, None) => TriggerSource::External,
-        (2, None) => TriggerSource::Immediate,
-        _ => return Err(Fault::InvalidCharacterData),
-    };
+/// Sets how many sweeps are averaged; one switches averaging off.
+pub(crate) fn set_sweeps(scope: &Scope, call: &mut Call<'_>) -> Result<(), Fault> {
+    let limits = settings::AVERAGES;
+    let count = call.args.number(&limits, Quantity::Count)?.round().clamp(limits.min, limits.max);
+    let count = call.core.faults.clamped(Setting::Averages, count);
     call.args.finish()?;
-    scope.with(|settings| settings.source = source);
+    scope.with(|settings| (settings.averaging, settings.averages) = (count > 1.0, count));
     scope.changed();
     Ok(())
 }
 
-fn tell_source(scope: &Scope, call: &mut Call<'_>) -> Result<(), Fault> {
+/// Answers with how many sweeps are averaged; one when averaging is off.
+pub(crate) fn tell_sweeps(scope: &Scope, call: &mut Call<'_>) -> Result<(), Fault> {
     call.args.finish()?;
-    match scope.with(|settings| settings.source) {
-        TriggerSource::Channel(index) => call.answer(format!("INT{}", index + 1)),
-        TriggerSource::External => call.answer("EXT"),
-        TriggerSource::Immediate => call.answer("IMM"),
+    let count = scope.with(|settings| if settings.averaging { settings.averages } else { 1.0 });
+    call.answer_number(count, Quantity::Count);
+    Ok(())
+}
+
+/// Starts an acquisition.
+pub(crate) fn start(scope: &Scope, call: &mut Call<'_>) -> Result<(), Fault> {
+    call.args.finish()?;
+    scope.start()
+}
+
+/// Drops the acquisition under way.
+pub(crate) fn abort(scope: &Scope, call: &mut Call<'_>) -> Result<(), Fault> {
+    call.args.finish()?;
+    scope.abort();
+    Ok(())
+}
+
+/// The record and channel that a header with a numeric suffix asks for.
+///
+/// # Errors
+/// -222 if there is no such channel, -230 if there is no record.
+pub(crate) fn asked(scope: &Scope, call: &Call<'_>) -> Result<(Arc<Record>, usize), Fault> {
+    if call.index >= CHANNELS {
+        return Err(Fault::OutOfRange);
     }
-    Ok(())
-}
-
-fn initiate(scope: &Scope, call: &mut Call<'_>) -> Result<(), Fault> {
-    call.args.finish()?;
-    scope.acquirer.start()
-}
-
-fn abort(scope: &Scope, call: &mut Call<'_>) -> Result<(), Fault> {
-    call.args.finish()?;
-    scope.acquirer.abort();
-    Ok(())
-}
-
-/// `FORMat ASCii`, `INTeger,8`, `INTeger,16` (also without a length) and `REAL,32`.
-fn set_format(scope: &Scope, call: &mut Call<'_>) -> Result<(), Fault> {
-    let kind = call.args.plain_word(&["ASCii", "INTeger", "REAL"])?;
-    let bits = call.args.optional_number()?;
-    call.args.finish()?;
-    let is = |wanted: f64| bits.is_none_or(|bits| (bits - wanted).abs() < 0.5);
-    let encoding = match kind {
-        0 => Encoding::Text,
-        1 if is(16.0) => Encoding::Integer16,
-        1 if is(8.0) => Encoding::Integer8,
-        2 if is(32.0) => Encoding::Real32,
-        _ => return Err(Fault::OutOfRange),
-    };
-    scope.with(|settings| settings.encoding = encoding);
-    Ok(())
-}
-
-fn tell_format(scope: &Scope, call: &mut Call<'_>) -> Result<(), Fault> {
-    call.args.finish()?;
-    call.answer(match scope.with(|settings| settings.encoding) {
-        Encoding::Integer16 => "INT,16",
-        Encoding::Integer8 => "INT,8",
-        Encoding::Real32 => "REAL,32",
-        Encoding::Text => "ASC,0",
-    });
-    Ok(())
-}
-
-fn preamble(scope: &Scope, call: &mut Call<'_>) -> Result<(), Fault> {
-    let channel = asked_channel(call)?;
-    let record = scope.acquirer.record()?;
-    let encoding = scope.with(|settings| settings.encoding);
-    call.answer(transfer::preamble(&record, channel, encoding)?);
-    Ok(())
-}
-
-fn data(scope: &Scope, call: &mut Call<'_>) -> Result<(), Fault> {
-    let channel = asked_channel(call)?;
-    let record = scope.acquirer.record()?;
-    let (encoding, swapped) = scope.with(|settings| (settings.encoding, settings.swapped));
-    match encoding {
-        Encoding::Text => call.answer(transfer::text(&record, channel)?),
-        _ => call.reply.add_block(&transfer::binary(&record, channel, encoding, swapped)?),
-    }
-    Ok(())
-}
-
-/// The channel that `CHANnel<n>` names, counted from 0.
-fn asked_channel(call: &mut Call<'_>) -> Result<usize, Fault> {
-    let (_, number) = call.args.word(&["CHANnel"])?;
-    call.args.finish()?;
-    channel_index(number)
-}
-
-fn channel_index(number: Option<u32>) -> Result<usize, Fault> {
-    let index = usize::try_from(number.unwrap_or(1).wrapping_sub(1)).unwrap_or(usize::MAX);
-    if index < CHANNELS { Ok(index) } else { Err(Fault::OutOfRange) }
+    Ok((scope.record()?, call.index))
 }

@@ -23,9 +23,6 @@ pub(crate) const AVERAGES: Limits = Limits { min: 1.0, max: 1024.0, default: 16.
 /// Trigger level at the input.
 pub(crate) const LEVEL: Limits = Limits { min: -50.0, max: 50.0, default: 0.0 };
 
-/// Couplings in the order of their keywords AC, DC, GROund.
-pub(crate) const COUPLINGS: [Coupling; 3] = [Coupling::Ac, Coupling::Dc, Coupling::Ground];
-
 /// Step of the skew setting, in seconds.
 const DELAY_STEP_S: f64 = 50e-12;
 
@@ -67,6 +64,8 @@ pub(crate) struct Settings {
     pub(crate) encoding: Encoding,
     /// Little endian instead of big endian.
     pub(crate) swapped: bool,
+    /// Whether acquisitions follow one another unasked, so that every reading is of a new one.
+    pub(crate) free: bool,
 }
 
 impl Default for Settings {
@@ -90,6 +89,7 @@ impl Default for Settings {
             // SCPI-99 vol. 2, 9: FORMat[:DATA] is ASCii and BORDer NORMal after *RST (from memory).
             encoding: Encoding::Text,
             swapped: false,
+            free: false,
         }
     }
 }

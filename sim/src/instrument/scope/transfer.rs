@@ -41,28 +41,76 @@ impl Scale {
     }
 }
 
-/// The reply to `TRACe:PREamble?`: points, interval, time of the first sample, volts per code, volts at code 0, the
-/// converter's end codes, one converter step in volts, averages, number of the acquisition.
-pub(crate) fn preamble(record: &Record, channel: usize, encoding: Encoding) -> Result<String, Fault> {
+/// What a record's samples mean.
+#[derive(Debug, Clone, PartialEq)]
+pub(crate) struct Facts {
+    /// Samples.
+    pub(crate) points: usize,
+    /// Seconds from sample to sample.
+    pub(crate) interval_s: f64,
+    /// Time of the first sample relative to the trigger.
+    pub(crate) start_s: f64,
+    /// Volts from code to code as they are sent.
+    pub(crate) volts_per_code: f64,
+    /// Volts at code 0.
+    pub(crate) zero_v: f64,
+    /// The converter's lowest code.
+    pub(crate) low_code: i32,
+    /// The converter's highest code.
+    pub(crate) high_code: i32,
+    /// One converter step, averaged or not.
+    pub(crate) step_v: f64,
+    /// Sweeps that were averaged.
+    pub(crate) averages: u32,
+    /// Number of the acquisition.
+    pub(crate) number: u64,
+}
+
+/// What the samples of one channel mean when they are sent in an encoding.
+///
+/// # Errors
+/// -230 if there is no such channel.
+pub(crate) fn facts(record: &Record, channel: usize, encoding: Encoding) -> Result<Facts, Fault> {
     let data = channel_data(record, channel)?;
     let scale = Scale::new(data, encoding);
+    Ok(Facts {
+        points: data.codes.len(),
+        interval_s: record.settings.interval_s,
+        start_s: record.acquisition.start_s,
+        volts_per_code: scale.volts_per_code,
+        zero_v: data.zero_v,
+        low_code: scale.low_code,
+        high_code: scale.high_code,
+        step_v: data.step_v,
+        averages: record.settings.averages,
+        number: record.acquisition.number,
+    })
+}
+
+/// The standard preamble: points, interval, time of the first sample, volts per code, volts at code 0, the converter's
+/// end codes, one converter step in volts, averages, number of the acquisition.
+///
+/// # Errors
+/// -230 if there is no such channel.
+pub(crate) fn preamble(record: &Record, channel: usize, encoding: Encoding) -> Result<String, Fault> {
+    let facts = facts(record, channel, encoding)?;
     let fields = [
-        data.codes.len().to_string(),
-        nr3(record.settings.interval_s),
-        nr3(record.acquisition.start_s),
-        nr3(scale.volts_per_code),
-        nr3(data.zero_v),
-        scale.low_code.to_string(),
-        scale.high_code.to_string(),
-        nr3(data.step_v),
-        record.settings.averages.to_string(),
-        record.acquisition.number.to_string(),
+        facts.points.to_string(),
+        nr3(facts.interval_s),
+        nr3(facts.start_s),
+        nr3(facts.volts_per_code),
+        nr3(facts.zero_v),
+        facts.low_code.to_string(),
+        facts.high_code.to_string(),
+        nr3(facts.step_v),
+        facts.averages.to_string(),
+        facts.number.to_string(),
     ];
     Ok(fields.join(","))
 }
 
-/// The samples as a comma-separated list of volts.
-pub(crate) fn text(record: &Record, channel: usize) -> Result<String, Fault> {
+/// The samples as a comma-separated list of volts, each with `unit` behind it.
+pub(crate) fn text(record: &Record, channel: usize, unit: &str) -> Result<String, Fault> {
     let data = channel_data(record, channel)?;
     let mut text = String::with_capacity(data.codes.len() * 20);
     for code in &data.codes {
@@ -70,6 +118,7 @@ pub(crate) fn text(record: &Record, channel: usize) -> Result<String, Fault> {
             text.push(',');
         }
         text.push_str(&nr3(volts(data, *code)));
+        text.push_str(unit);
     }
     Ok(text)
 }

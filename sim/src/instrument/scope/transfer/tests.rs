@@ -56,7 +56,7 @@ fn averaged_sweeps_have_a_finer_grid_in_two_bytes_and_whole_steps_in_one() {
 #[test]
 fn volts_as_text_and_as_numbers() {
     let record = record(vec![-2, 0, 1], 1);
-    assert_eq!(text(&record, 0), Ok("0.0E+0,1.0E+0,1.5E+0".to_owned()));
+    assert_eq!(text(&record, 0, ""), Ok("0.0E+0,1.0E+0,1.5E+0".to_owned()));
     // IEEE 754: 1.0 is 3F800000, 1.5 is 3FC00000.
     let bytes = vec![0, 0, 0, 0, 0x3F, 0x80, 0, 0, 0x3F, 0xC0, 0, 0];
     assert_eq!(binary(&record, 0, Encoding::Real32, false), Ok(bytes.clone()));
@@ -66,5 +66,5 @@ fn volts_as_text_and_as_numbers() {
 
 #[test]
 fn a_channel_that_was_not_taken_has_no_data() {
-    assert_eq!(text(&record(vec![0], 1), 3), Err(Fault::Stale));
+    assert_eq!(text(&record(vec![0], 1), 3, ""), Err(Fault::Stale));
 }
