@@ -11,7 +11,7 @@
 //! all phases that are common to all frequencies, which is the peak of the envelope (analytic signal) of the
 //! common mode weighted by the residual.
 //!
-//! Records beyond [`LONGEST`] samples are done in two parts that add up, see [`long`].
+//! Records beyond `LONGEST` samples are done in two parts that add up, see the module `long`.
 //!
 //! The record is mirrored before the transform: a record whose ends differ then makes no jump that was never there. Its
 //! last value is held for up to a percent of its length, to one that transforms fast.
