@@ -41,7 +41,7 @@ fn the_core_touches_nothing_of_the_world() {
             // Scoped threads, which end where they began, may share a long sum as long as its bits do not show it.
             "use std::thread",
             "std::thread::spawn",
-            "std::thread::sleep",
+            "std::thread::sl",
             "std::thread::park",
             "std::thread::Builder",
             "std::thread::current",

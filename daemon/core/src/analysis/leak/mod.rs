@@ -14,7 +14,7 @@
 //! What is known beyond gain, skew and offset ([`Beyond`]) bounds it too: what a response that was applied still leaves, what
 //! the legs' slow gains may differ by, and the converters' non-linearity, below which no residual is claimed.
 //!
-//! Records beyond [`LONGEST`] samples are done in two parts that add up, see [`long`].
+//! Records beyond `LONGEST` samples are done in two parts that add up, see the module `long`.
 //!
 //! The record is mirrored before the transform: a record whose ends differ then makes no jump that was never there. Its
 //! last value is held for up to a percent of its length, to one that transforms fast.
