@@ -70,7 +70,7 @@ fn interval(capture: &Value, name: &str) -> [f64; 3] {
     let figure = figure(capture, name);
     assert_eq!(figure["valid"], true, "{figure}");
     let number = |value: &Value| value.as_f64().unwrap();
-    [number(&figure["quantity"]["value"]), number(&figure["coverage"]["low"]), number(&figure["coverage"]["high"])]
+    [number(&figure["value"]), number(&figure["coverage"]["low"]), number(&figure["coverage"]["high"])]
 }
 
 /// Catches: a response that is not fitted, not applied, applied twice, forgotten by a restart, or that claims more than it
