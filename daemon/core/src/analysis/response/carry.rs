@@ -65,7 +65,7 @@ impl LowPass {
 /// The corrected difference and the common mode of one capture, as [`apply::correct`] and then with the response.
 ///
 /// The low-frequency term needs the past. A record that is long beside its time constant loses its beginning to it; one
-/// that is not is taken to go on as it is, so that its mean is the signal's ([`LowPass::settled`]).
+/// that is not is taken to go on as it is, so that its mean is the signal's (`LowPass::settled`).
 ///
 /// # Errors
 /// As [`apply::correct`]; also when the response does not hold for the records' sample interval.
