@@ -1,5 +1,7 @@
 //! When faults strike, and what is written down.
 
+#![allow(clippy::float_cmp, reason = "a clamped value is the very limit")]
+
 use super::*;
 use crate::scenario::When;
 

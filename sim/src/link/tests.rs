@@ -213,6 +213,19 @@ async fn a_completion_that_is_never_told_and_a_trigger_that_never_comes() {
 }
 
 #[tokio::test]
+async fn a_probe_that_fell_off_the_trigger_channel_is_written_down_though_nothing_triggers() {
+    let scenario = Scenario::read(include_str!("../../../configs/scenarios/greenhouse-fan.toml")).unwrap();
+    let bench = Arc::new(Bench::new(&scenario));
+    let device = Arc::new(Device::new(&spec(Kind::Scope, PersonalitySpec::Standard), &bench));
+    device.faults().arm(fault("\"flat\"\nchannel = 1"));
+    let mut guest = Guest::of(&device);
+    guest.send("TRIG:SOUR INT1;LEV 1;:SWE:POIN 10;:INIT\n").await;
+    while guest.ask("STAT:OPER:COND?\n").await != "32\n" {}
+    let (entries, count) = bench.ledger.read();
+    assert_eq!((entries.iter().map(|entry| entry.at).collect::<Vec<_>>(), count), (vec![0], 1));
+}
+
+#[tokio::test]
 async fn settings_are_clamped_without_a_word() {
     let device = device(Kind::Scope, PersonalitySpec::Standard);
     device.faults().arm(fault("\"clamp\"\nsetting = \"span\"\nmost = 5.0"));

@@ -114,11 +114,12 @@ fn sent(strike: &Struck, mut reply: Vec<u8>) -> Vec<Piece> {
 fn wrong_length(spec: &FaultSpec, mut reply: Vec<u8>) -> Vec<u8> {
     let Some(Block { head, contents }) = block(&reply) else { return reply };
     let length = contents.len();
+    let half = length.div_ceil(2);
     let declared = match spec.what {
         What::LengthLong => length + spec.bytes.unwrap_or(USUAL_EXCESS),
-        What::LengthShort => length - spec.bytes.unwrap_or(length.div_ceil(2)).min(length),
+        What::LengthShort => length - spec.bytes.unwrap_or(half).min(length),
         What::Truncate => {
-            let lost = spec.bytes.unwrap_or(length.div_ceil(2)).min(length);
+            let lost = spec.bytes.unwrap_or(half).min(length);
             reply.drain(contents.end - lost..contents.end);
             return reply;
         }

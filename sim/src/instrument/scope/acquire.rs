@@ -118,9 +118,7 @@ impl Acquirer {
         }
         let mut snapshot = first;
         let disturbance = Arc::new(disturbance);
-        if disturbance.no_trigger {
-            self.core.faults.confirm(&struck, 0);
-        }
+        let mut struck = Some(struck);
         loop {
             let Snapshot { controls, settings } = snapshot;
             let (bench, disturbance) = (Arc::clone(&self.bench), Arc::clone(&disturbance));
@@ -129,8 +127,9 @@ impl Acquirer {
                 outcome.map(|acquisition| Record { acquisition, settings })
             });
             let outcome = task.await;
-            if let Ok(Ok(record)) = &outcome {
-                self.core.faults.confirm(&struck, record.acquisition.number);
+            // Written down at the first try: without a trigger there may never be a number.
+            if let (Ok(outcome), Some(struck)) = (&outcome, struck.take()) {
+                self.core.faults.confirm(&struck, outcome.as_ref().map_or(0, |record| record.acquisition.number));
             }
             if !self.settle(turn, outcome) {
                 return;
