@@ -34,7 +34,9 @@ pub(crate) enum ProbeError {
          ending, and the words for `identify` and for the error queue, which come first on every connection"
     )]
     Unreachable { resource: String, after: Duration, reason: String },
-    #[error("{resource} cannot be spoken to; this daemon speaks to `TCPIP::host::port::SOCKET` and `TCPIP::host::hislip0::INSTR`")]
+    #[error(
+        "{resource} cannot be spoken to; this daemon speaks to `TCPIP::host::port::SOCKET` and `TCPIP::host::hislip0::INSTR`"
+    )]
     Unspoken { resource: String },
 }
 

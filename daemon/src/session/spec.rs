@@ -4,8 +4,8 @@ use std::sync::Arc;
 use std::time::Duration;
 
 use evenpair_core::dialect::Dialect;
-use evenpair_core::scpi::frame::MOST_LINE_BYTES;
 use evenpair_core::scpi::address::Resource;
+use evenpair_core::scpi::frame::MOST_LINE_BYTES;
 
 /// Everything that a session is made from.
 #[derive(Debug, Clone)]

@@ -3,7 +3,7 @@
 use std::sync::Arc;
 
 use super::{Bench, Device, kind_name};
-use crate::scenario::{InstrumentSpec, Protocol, Kind, PersonalitySpec, Scenario};
+use crate::scenario::{InstrumentSpec, Kind, PersonalitySpec, Protocol, Scenario};
 
 /// All four instruments on one bench, which speak alike.
 pub(crate) struct Rack {
@@ -29,7 +29,15 @@ pub(crate) fn rack(personality: PersonalitySpec) -> Rack {
 /// An instrument named after its kind.
 pub(crate) fn spec(kind: Kind, personality: PersonalitySpec) -> InstrumentSpec {
     let name = kind_name(kind).to_owned();
-    InstrumentSpec { name, kind, protocol: Protocol::Socket, personality, port: 0, serial: None, identity: Some("A,B,C,D".into()) }
+    InstrumentSpec {
+        name,
+        kind,
+        protocol: Protocol::Socket,
+        personality,
+        port: 0,
+        serial: None,
+        identity: Some("A,B,C,D".into()),
+    }
 }
 
 /// Asserts replies one after the other, with whatever ends them.

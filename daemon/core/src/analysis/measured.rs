@@ -142,7 +142,15 @@ pub fn measure_with(
         );
     }
     let (first, start_s, interval_s) = (corrected.first, corrected.start_s, corrected.interval_s);
-    Ok(Measured { figures, leak, difference_v: corrected.difference_v.into_vec(), first, start_s, interval_s, warnings })
+    Ok(Measured {
+        figures,
+        leak,
+        difference_v: corrected.difference_v.into_vec(),
+        first,
+        start_s,
+        interval_s,
+        warnings,
+    })
 }
 
 /// The noise of each leg in volts rms per sample, from the part of the spectrum that holds nothing else; where there is

@@ -18,11 +18,9 @@ impl Bench<'_> {
             let (up, down) = (read(step), read(-step));
             up.zip(down).map_or(0.0, |(up, down)| 0.5 * (up - down) / step)
         };
-        let gain = change(0, &|step| {
-            read(&Moved { signal: &signal[..], along: &negative[..], step }, self.between(0, step))
-        });
-        let skew =
-            change(1, &|step| read(&Moved { signal: &signal[..], along: &slope, step }, self.between(1, step)));
+        let gain =
+            change(0, &|step| read(&Moved { signal: &signal[..], along: &negative[..], step }, self.between(0, step)));
+        let skew = change(1, &|step| read(&Moved { signal: &signal[..], along: &slope, step }, self.between(1, step)));
         [gain, -skew]
     }
 }

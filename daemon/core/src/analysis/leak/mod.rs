@@ -80,8 +80,8 @@ pub fn bound_with<S: Signal + ?Sized>(
         if f > 0.0 { linear.max(beyond.residual(f)) } else { linear }
     };
     let (mean, square) = mean_and_square(common_v);
-    let mean_v = at_zero(mean, interpolated(&points, 0.0), correction, drift)
-        + 2.0 * beyond.left(common_v, interval_s).mean_v;
+    let mean_v =
+        at_zero(mean, interpolated(&points, 0.0), correction, drift) + 2.0 * beyond.left(common_v, interval_s).mean_v;
     let noise = peaks::noise_of(common_v);
     let moving = weighted(common_v, interval_s, mean, noise, &residual);
     let extremes = peaks::extremes(common_v, noise);
