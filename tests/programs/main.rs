@@ -15,6 +15,7 @@ mod faults;
 mod files;
 mod hislip;
 mod hostile;
+mod personalities;
 mod ranges;
 mod references;
 mod refusals;
