@@ -6,9 +6,9 @@
 //! `ψ(z) = z·Φ(z/u) + u·φ(z/u)`, the integral of the normal distribution's Φ (JCGM 101, 6.4.2 and 6.4.7 for the two
 //! distributions; the convolution is elementary).
 
-use statrs::distribution::{ContinuousCDF, StudentsT};
 use statrs::function::erf::erfc;
 
+use super::student::student;
 use super::{Distribution, Term, variance};
 
 /// The coverage probability of every interval (JCGM 100, 6.2.2).
@@ -85,8 +85,7 @@ pub fn effective_freedom(terms: &[Term], variance: f64) -> Option<f64> {
 /// How much wider than a normal distribution Student's is at 95 %, for so many degrees of freedom.
 #[must_use]
 pub fn widening(freedom: Option<f64>) -> f64 {
-    let student = freedom.and_then(|freedom| StudentsT::new(0.0, 1.0, freedom).ok());
-    student.map_or(1.0, |t| (t.inverse_cdf(0.5 * (1.0 + PROBABILITY)) / NORMAL).max(1.0))
+    freedom.map_or(1.0, |freedom| (student(PROBABILITY, freedom) / NORMAL).max(1.0))
 }
 
 /// The expanded uncertainty U95 of a budget: its largest rectangular term convolved with a normal distribution that has

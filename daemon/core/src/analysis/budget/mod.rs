@@ -4,8 +4,10 @@
 use nalgebra::{DMatrix, DVector};
 
 mod coverage;
+mod student;
 
 pub use coverage::{Basis, Coverage, PROBABILITY, effective_freedom, expanded, half_width, widening};
+pub use student::student;
 
 /// How a term was evaluated (JCGM 100, 4.2 and 4.3).
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]

@@ -8,9 +8,12 @@ mod alike;
 
 pub use alike::sampled_alike;
 
+use super::budget::student;
 use super::skew::{Limit, SkewEstimate, Warning, limit_of};
 use super::{Correction, Estimate};
-use statrs::distribution::{ContinuousCDF, StudentsT};
+
+/// What a normal distribution holds within two standard deviations.
+const TWO_SIGMA: f64 = 0.954_499_736;
 
 /// The least noise, in converter steps, with which quantisation error behaves like noise.
 pub const LEAST_DITHER: f64 = 0.5;
@@ -154,14 +157,9 @@ pub(super) fn weighted(values: &[Estimate], independent: bool) -> Mean {
         (squares / total / (count - 1.0)).sqrt() * shared
     });
     let shows = scatter.filter(|scatter| *scatter > promised);
-    let coverage_factor = shows.map_or(2.0, |_| student(count - 1.0));
+    let coverage_factor = shows.map_or(2.0, |_| student(TWO_SIGMA, count - 1.0));
     let freedom = shows.map(|_| count - 1.0);
     Mean { estimate: Estimate { value, u: shows.unwrap_or(promised) }, coverage_factor, freedom, promised, scatter }
-}
-
-/// Student's two-sided 95.45 % point for `freedom` degrees of freedom (2 in the limit).
-fn student(freedom: f64) -> f64 {
-    StudentsT::new(0.0, 1.0, freedom).map_or(2.0, |t| t.inverse_cdf(0.977_249_868))
 }
 
 #[cfg(test)]
