@@ -123,7 +123,7 @@ pub fn measure_with(
         scale_spec: scale_spec.unwrap_or(0.0),
         clipped_p: clipped.0,
         clipped_n: clipped.1,
-        averages: p.averages.min(n.averages),
+        averages: p.averages_on_finer_codes().min(n.averages_on_finer_codes()),
         allowance: Allowance {
             noise_bins: noise.bins,
             drift,
@@ -163,7 +163,7 @@ fn measured_noise(p: &Record, n: &Record, gain: f64, warnings: &mut Vec<String>)
         "noise could not be measured: the record's whole spectrum holds signal; the converter's own is taken"
             .to_owned(),
     );
-    let own = |record: &Record| record.step_v / (12.0 * f64::from(record.averages.max(1))).sqrt();
+    let own = |record: &Record| record.step_v / (12.0 * f64::from(record.averages_on_finer_codes())).sqrt();
     PairNoise { p_v: own(p), n_v: own(n), bins: 0 }
 }
 

@@ -61,6 +61,15 @@ impl Record {
         }
     }
 
+    /// How many acquisitions were averaged after the converter rounded them. Some instruments send an average on the
+    /// converter's own grid, rounded once more: what dithers that last rounding is the noise of the average, as if there
+    /// were one acquisition only.
+    #[must_use]
+    pub fn averages_on_finer_codes(&self) -> u32 {
+        let coarse = matches!(self.samples, Samples::Codes(_)) && self.volts_per_code.abs() > 0.75 * self.step_v;
+        if coarse { 1 } else { self.averages.max(1) }
+    }
+
     /// How many samples lie at or beyond the converter's ends.
     #[must_use]
     pub fn clipped(&self) -> usize {

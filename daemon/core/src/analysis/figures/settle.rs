@@ -120,7 +120,7 @@ impl Profile {
             let share = (middle - whole) as f32;
             signal.load(whole as usize - stays.lead, &mut part);
             for (sum, w) in sum.iter_mut().zip(part.windows(2)) {
-                *sum += share.mul_add(w[1] - w[0], w[0]);
+                *sum += w[0] + share * (w[1] - w[0]);
             }
         }
         let count = stays.middles.len() as f64;

@@ -180,7 +180,7 @@ pub fn estimate_records(p: &Record, n: &Record, reference: &Reference) -> Result
     }
     let mut found = front(&leg_p, &leg_n, p.interval_s, reference)?;
     found.skew_s.value += n.start_s - p.start_s;
-    Ok(found.with_converter(p.step_v, n.step_v, p.averages.min(n.averages)))
+    Ok(found.with_converter(p.step_v, n.step_v, p.averages_on_finer_codes().min(n.averages_on_finer_codes())))
 }
 
 /// Chooses the way: the windows round the edges where that tells all, all samples otherwise; for a sine the better of

@@ -140,6 +140,33 @@ fn little_dither_is_told_and_widens_the_uncertainty() {
     assert_eq!(SkewEstimate { dither_steps: None, ..found }, plain);
 }
 
+/// Catches: an average that the instrument rounded to whole converter steps once more, taken for one with its digits.
+#[test]
+fn an_average_on_the_converters_own_grid_is_not_dithered_by_single_sweeps() {
+    let signal = square(400.0, 10.0, 130.0);
+    let step = 2.5 / 256.0;
+    // 0.7 steps in each of 64 sweeps.
+    let truth = Truth::with_noise(0.7 * step / 8.0);
+    let (p, n) = Dice::new(19).records(&signal, &truth, 4000);
+    let on_grid = |volts: &[f64], grid: f64| Record {
+        samples: Samples::Codes(volts.iter().map(|v| (v / grid).round() as i16).collect()),
+        volts_per_code: grid,
+        zero_v: 0.0,
+        interval_s: 1.0,
+        start_s: 0.0,
+        end_codes: (f64::from(i16::MIN), f64::from(i16::MAX)),
+        step_v: step,
+        averages: 64,
+    };
+    let told = |grid: f64| estimate_records(&on_grid(&p, grid), &on_grid(&n, grid), &reference(Shape::Edges)).unwrap();
+    let found = told(step);
+    assert!(found.warnings.iter().any(|w| matches!(w, Warning::LittleDither { .. })), "{found:?}");
+    assert!((found.gain.value - truth.gain).abs() < 2.0 * found.gain.u, "{found:?}");
+    assert!((found.offset_v.value - truth.offset).abs() < 2.0 * found.offset_v.u, "{found:?}");
+    let fine = told(step / 64.0);
+    assert!(fine.warnings.is_empty() && fine.gain.u < 0.2 * found.gain.u, "{fine:?}");
+}
+
 #[test]
 fn dither_is_measured_without_bias() {
     let step = 2.5 / 256.0;
